@@ -1,0 +1,243 @@
+"""From a solution to the answers a user reads."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from coldseam._version import __version__
+from coldseam.answers.types import Answers, BodyAnswer, BoundaryAnswer, Extremes, ProbeAnswer, SpaceAnswer
+from coldseam.errors import CaseError, Fault
+from coldseam.mesh.locate import locate
+from coldseam.mesh.measure import cell_measure, facet_measure
+from coldseam.mesh.types import Mesh
+from coldseam.solution.readings import (
+    CLASH,
+    Interval,
+    body_energy,
+    boundary_intervals,
+    coupling,
+    shape_error,
+    space_intervals,
+)
+from coldseam.solution.rounds import Solution
+from coldseam.solution.steady import Steady
+from coldseam.volumes.conditions import boundary_film
+from coldseam.volumes.section import facet_shares, node_shares_of_cells
+
+UNITS = {
+    "length": "mm",
+    "temperature": "degC",
+    "heat_flow": "W",
+    "heat_flux": "W/m2",
+    "area": "m2",
+    "volume": "m3",
+    "coupling": "W/K",
+    "psi": "W/(m K)",
+    "chi": "W/K",
+    "film": "W/(m2 K)",
+}
+SECTION_UNITS = {"heat_flow": "W/m", "area": "m2/m", "volume": "m3/m", "coupling": "W/(m K)"}
+MM = 1e3
+
+
+def build_answers(solution: Solution) -> Answers:
+    """Return the answers of a solved case.
+
+    Raises
+    ------
+    CaseError
+        A probe lies outside the model.
+    """
+    steady = solution.steady
+    case, mesh = steady.case, steady.mesh
+    section = mesh.dim == 2 and not mesh.axisymmetric
+    couplings = coupling(steady)
+    return Answers(
+        title=case.title,
+        dimensions=case.model.dimensions,
+        axisymmetric=mesh.axisymmetric,
+        coldseam=__version__,
+        case_sha256=case.source.sha256,
+        units=UNITS | (SECTION_UNITS if section else {}),
+        mesh=mesh_answer(solution),
+        accuracy=accuracy_answer(solution),
+        balance={
+            "closure": steady.closure,
+            "relative": steady.relative_closure,
+            "throughput": steady.throughput,
+            "heat_sources": steady.source_flow,
+        },
+        boundaries=_boundaries(steady),
+        spaces=_spaces(steady),
+        coupling={a: {b: i.value for b, i in row.items()} for a, row in couplings.items()},
+        coupling_intervals={a: {b: (i.low, i.high) for b, i in row.items()} for a, row in couplings.items()},
+        probes=probes(steady),
+        bodies=_bodies(steady),
+        solver={
+            "method": steady.response.method,
+            "iterations": list(steady.response.iterations),
+            "bound_method": None if steady.bounds is None else steady.bounds.response.method,
+            "bound_iterations": [] if steady.bounds is None else list(steady.bounds.response.iterations),
+        },
+        warnings=warnings(solution),
+    )
+
+
+def mesh_answer(solution: Solution) -> dict:
+    """Return the size and quality of the last mesh."""
+    mesh = solution.steady.mesh
+    quality = {key: value for key, value in mesh.quality.items() if key not in ("cad_volume", "mesh_volume")}
+    return {"nodes": mesh.n_nodes, "cells": mesh.n_cells, "rounds": len(solution.rounds), "quality": quality}
+
+
+def accuracy_answer(solution: Solution) -> dict:
+    """Return what accuracy was asked and reached, round by round."""
+    asked = solution.steady.case.model.accuracy
+    last = solution.rounds[-1]
+    return {
+        "asked": asked,
+        "reached": None if last.error is None else asked * last.error,
+        "flows_met": solution.flows_met and last.error is not None,
+        "points_met": solution.points_met,
+        "shape_error": shape_error(solution.steady),
+        "rounds": [
+            {
+                "nodes": r.nodes,
+                "cells": r.cells,
+                "reached": None if r.error is None else asked * r.error,
+                "temperatures_moved": r.moved,
+                "seconds": round(r.seconds, 3),
+            }
+            for r in solution.rounds
+        ],
+    }
+
+
+def warnings(solution: Solution) -> tuple[str, ...]:
+    """Return everything a user must know beside the numbers."""
+    steady = solution.steady
+    found = list(getattr(steady.case, "warnings", ()))
+    if steady.given.clashes:
+        found.append(CLASH)
+    asked = steady.case.model.accuracy
+    if not solution.flows_met and solution.rounds[-1].error is not None:
+        reached = asked * solution.rounds[-1].error
+        found.append(f"the asked accuracy of {asked:.2%} was not reached: the worst heat flow is known to {reached:.2%}")
+    if not solution.points_met:
+        found.append("surface and probe temperatures still moved by more than 0.2 % of their range on the last mesh")
+    found += list(solution.remarks)
+    return tuple(found)
+
+
+def extremes(mesh: Mesh, temperature: np.ndarray, facets: np.ndarray) -> Extremes:
+    """Return the temperature extremes of a set of facets (mask or numbers)."""
+    chosen = mesh.facets[facets]
+    nodes = np.unique(chosen)
+    values = temperature[nodes]
+    low, high = nodes[np.argmin(values)], nodes[np.argmax(values)]
+    shares = facet_shares(mesh, chosen)
+    mean = float((shares * temperature[chosen]).sum() / shares.sum())
+    return Extremes(
+        min=float(temperature[low]),
+        min_at=place(mesh.points[low]),
+        max=float(temperature[high]),
+        max_at=place(mesh.points[high]),
+        mean=mean,
+    )
+
+
+def place(point: np.ndarray) -> tuple[float, ...]:
+    """Return a position in mm for the answers."""
+    return tuple(round(float(x) * MM, 6) + 0.0 for x in point)
+
+
+def _boundaries(steady: Steady) -> dict[str, BoundaryAnswer]:
+    area = np.bincount(steady.facet_boundary, facet_measure(steady.mesh), len(steady.case.boundary))
+    found = {}
+    for number, (boundary, interval) in enumerate(zip(steady.case.boundary, boundary_intervals(steady), strict=True)):
+        film = boundary_film(steady.case, boundary)
+        found[boundary.name] = BoundaryAnswer(
+            kind=kind_of(boundary),
+            space=boundary.space,
+            area=float(area[number]),
+            heat_flux_mean=interval.value / float(area[number]),
+            film=float(film) if boundary.space is not None and np.isfinite(film) else None,
+            temperature=extremes(steady.mesh, steady.temperature, steady.facet_boundary == number),
+            **_flow(interval),
+        )
+    return found
+
+
+def _flow(interval: Interval) -> dict:
+    return {
+        "heat_flow": float(interval.value),
+        "heat_flow_low": None if interval.low is None else float(interval.low),
+        "heat_flow_high": None if interval.high is None else float(interval.high),
+        "interval": interval.kind,
+        "interval_reason": interval.reason,
+    }
+
+
+def kind_of(boundary) -> str:
+    """Return what a boundary of the case sets."""
+    for kind in ("space", "temperature", "heat_flux", "heat_flow"):
+        if getattr(boundary, kind) is not None:
+            return kind
+    return "adiabatic"
+
+
+def _spaces(steady: Steady) -> dict[str, SpaceAnswer]:
+    return {
+        name: SpaceAnswer(temperature=steady.case.spaces[name].temperature, **_flow(interval))
+        for name, interval in space_intervals(steady).items()
+    }
+
+
+def probes(steady: Steady) -> dict[str, ProbeAnswer]:
+    """Return the temperatures at the case's probes.
+
+    Raises
+    ------
+    CaseError
+        A probe lies outside the model.
+    """
+    if not steady.case.probe:
+        return {}
+    at = np.array([probe.at for probe in steady.case.probe], dtype=float)
+    cells, weights = locate(steady.mesh, at)
+    faults = [
+        Fault(path=("probe", n, "at"), what=f"the point {place(at[n])} mm lies outside the model")
+        for n in np.flatnonzero(cells < 0)
+    ]
+    if faults:
+        raise CaseError(faults)
+    values = (steady.temperature[steady.mesh.cells[cells]] * weights).sum(axis=1)
+    return {
+        probe.name: ProbeAnswer(temperature=float(value), at=place(point))
+        for probe, point, value in zip(steady.case.probe, at, values, strict=True)
+    }
+
+
+def _bodies(steady: Steady) -> dict[str, BodyAnswer]:
+    mesh = steady.mesh
+    volume = cell_measure(mesh)
+    energy = body_energy(steady)
+    total = float(energy.sum())
+    found = {}
+    for number, body in enumerate(mesh.bodies):
+        cells = mesh.cell_body == number
+        size = float(volume[cells].sum())
+        if size == 0.0:
+            continue
+        share = node_shares_of_cells(mesh, cells.astype(float))
+        nodes = np.unique(mesh.cells[cells])
+        found[body.name] = BodyAnswer(
+            material=body.material,
+            volume=size,
+            mean_temperature=float(share @ steady.temperature / share.sum()),
+            min_temperature=float(steady.temperature[nodes].min()),
+            max_temperature=float(steady.temperature[nodes].max()),
+            heat_source=float((steady.given.source[cells] * volume[cells]).sum()),
+            loss_share=float(energy[number]) / total if total > 0 else 0.0,
+        )
+    return found

@@ -1,0 +1,289 @@
+"""Bodies and the materials they are made of."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated, Any, ClassVar
+
+from pydantic import Field, PrivateAttr, WithJsonSchema
+
+from coldseam.case.shapes import Box, Cone, Cylinder, Disc, Enclosure, Polygon, Repeat, Ring, Sphere, Tube
+from coldseam.case.tables import Context, Table, Trouble, listing
+from coldseam.case.values import (
+    SOLIDS,
+    Amount,
+    Attached,
+    Density,
+    Emissivity,
+    Flag,
+    HeatDensity,
+    HeatFlow,
+    MaterialRef,
+    Name,
+    Numbers,
+    SpecificHeat,
+    Uncertainty,
+    _plain,
+)
+
+if TYPE_CHECKING:
+    import numpy as np
+
+Row = tuple[float, ...]
+_VALUE = Amount("conductivity", above=0.0)
+_ENTRY = Amount("conductivity")
+_DIRECTION = Amount("ratio")
+ALONG_UNIT = 1e-3
+"""How far axes typed with few digits (0.7071) may be off unit length and right angles."""
+
+
+class _Conductivity:
+    """One number, two or three along the axes, or a symmetric matrix."""
+
+    def read(self, value: Any, context: Context) -> float | Row | tuple[Row, ...]:
+        """Return the conductivity, W/(m K), in the form it was typed."""
+        if not isinstance(value, (list, tuple)):
+            return _VALUE.read(value, context)
+        if not value or any(isinstance(row, (list, tuple)) for row in value):
+            return self._matrix(value, context)
+        numbers = Numbers(_VALUE, len(value)).read(value, context)
+        if len(numbers) not in (2, 3) or (context.dim == 3 and len(numbers) == 2):
+            raise ValueError(f"expected one number, [kx, ky, kz] or a 3 x 3 matrix, not {len(numbers)} numbers")
+        return numbers
+
+    def _matrix(self, value: Any, context: Context) -> tuple[Row, ...]:
+        import numpy as np
+
+        size = len(value)
+        if size not in (2, 3) or (context.dim == 3 and size == 2) or any(not isinstance(r, (list, tuple)) or
+                                                                         len(r) != size for r in value):  # fmt: skip
+            raise ValueError("expected a matrix of three rows of three numbers (two of two in a cross-section)")
+        rows = tuple(Numbers(_ENTRY, size).read(row, context) for row in value)
+        matrix = np.array(rows)
+        largest = float(np.max(np.abs(matrix)))
+        if not np.allclose(matrix, matrix.T, rtol=0.0, atol=1e-9 * largest):
+            raise ValueError("the matrix must be symmetric")
+        if float(np.min(np.linalg.eigvalsh(matrix))) <= 1e-12 * largest:
+            raise ValueError(
+                "the matrix must be positive definite: heat must flow from warm to cold in every direction"
+            )
+        return rows
+
+    def __get_pydantic_core_schema__(self, source: Any, handler: Any) -> Any:
+        return _plain(self.read)
+
+
+class _Axes:
+    """Rows that are unit vectors at right angles."""
+
+    def read(self, value: Any, context: Context) -> tuple[Row, ...]:
+        """Return the rows as typed; ValueError says which are off."""
+        import numpy as np
+
+        size = len(value) if isinstance(value, (list, tuple)) else 0
+        if size not in (2, 3) or any(not isinstance(row, (list, tuple)) or len(row) != size for row in value):
+            raise ValueError("expected three unit vectors of three numbers each (two of two in a cross-section)")
+        rows = tuple(Numbers(_DIRECTION, size).read(row, context) for row in value)
+        gram = np.array(rows) @ np.array(rows).T
+        for i in range(size):
+            if abs(gram[i, i] - 1.0) > 2 * ALONG_UNIT:
+                raise ValueError(f"row {i + 1} must have unit length; it has {gram[i, i] ** 0.5:.4g}")
+            for j in range(i):
+                if abs(gram[i, j]) > ALONG_UNIT:
+                    raise ValueError(f"rows {j + 1} and {i + 1} must be at right angles")
+        return rows
+
+    def __get_pydantic_core_schema__(self, source: Any, handler: Any) -> Any:
+        return _plain(self.read)
+
+
+_AMOUNT_SCHEMA = {"anyOf": [{"type": "number", "exclusiveMinimum": 0}, {"type": "string"}]}
+_ROWS = {
+    "type": "array",
+    "minItems": 2,
+    "maxItems": 3,
+    "items": {"type": "array", "minItems": 2, "maxItems": 3, "items": {"type": ["number", "string"]}},
+}
+_CONDUCTIVITY_SCHEMA = {
+    "anyOf": [
+        *_AMOUNT_SCHEMA["anyOf"],
+        {"type": "array", "minItems": 2, "maxItems": 3, "items": _AMOUNT_SCHEMA},
+        _ROWS,
+    ],
+    "description": "W/(m·K): one number, [kx, ky, kz] along the axes, or a symmetric matrix",
+}
+Conductivity = Annotated[float | Row | tuple[Row, ...], _Conductivity(), WithJsonSchema(_CONDUCTIVITY_SCHEMA)]
+MaterialAxes = Annotated[
+    tuple[Row, ...],
+    _Axes(),
+    WithJsonSchema(_ROWS | {"description": "rows: unit vectors of the directions that conductivity is given in"}),
+]
+
+
+class Material(Table):
+    """A material. Values of the named entry of the library hold where the file gives none of its own."""
+
+    LATER: ClassVar = {"air_gap": "air gaps are not supported yet; give an equivalent conductivity"}
+    ANY_OF: ClassVar = (("conductivity", "library"),)
+    library: str | None = Field(None, description="name of an entry of the built-in library")
+    conductivity: Conductivity = Field()
+    axes: MaterialAxes | None = None
+    density: Density | None = Field(None, description="kg/m³")
+    specific_heat: SpecificHeat | None = Field(None, description="J/(kg·K)")
+    emissivity: Emissivity | None = None
+    uncertainty: Uncertainty | None = Field(None, description="of the conductivity, a fraction")
+    source: str = Field("", description="where the values come from")
+    _name: str = PrivateAttr("")
+
+    @property
+    def name(self) -> str:
+        """The key of the material in the case."""
+        return self._name
+
+    @classmethod
+    def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
+        """Fill in the values of the library entry."""
+        if "library" not in data:
+            needs: list[Trouble] = [] if "conductivity" in data else [
+                (("conductivity",), "is required and missing (a value, or library = the name of an entry)")
+            ]  # fmt: skip
+            return data, needs
+        entry, wrong = library_entry(data["library"])
+        if wrong:
+            # The conductivity is only missing because the entry is: one fault, not two.
+            return {"conductivity": 1.0} | data, [(("library",), wrong)]
+        own = [key for key in entry if key in data]
+        if own and "source" not in data:
+            entry["source"] = f"{entry['source']}; {listing(own)} as given in the case"
+        return {key: value for key, value in entry.items() if value is not None} | data, []
+
+    def check(self, context: Context) -> Iterator[Trouble]:
+        """Yield a fault when axes don't fit the conductivity."""
+        if self.axes is None:
+            return
+        if isinstance(self.conductivity, float):
+            yield ("axes",), "has no meaning with a single conductivity; give [kx, ky, kz]"
+        elif len(self.axes) != len(self.conductivity):
+            yield ("axes",), f"needs {len(self.conductivity)} rows, as many as conductivity has"
+
+    def tensor(self, dim: int) -> float | np.ndarray:
+        """Return the conductivity in global axes, W/(m K).
+
+        A number where the material conducts alike in all directions, else a symmetric array of
+        shape (dim, dim); in a cross-section the part in its plane.
+        """
+        import numpy as np
+
+        if isinstance(self.conductivity, float):
+            return self.conductivity
+        own = np.array(self.conductivity, dtype=float)
+        own = np.diag(own) if own.ndim == 1 else 0.5 * (own + own.T)
+        if self.axes is not None:
+            # The nearest exactly orthogonal matrix, for axes are typed with few digits.
+            left, _, right = np.linalg.svd(np.array(self.axes, dtype=float))
+            turn = left @ right
+            own = turn.T @ own @ turn
+        if len(own) < dim:
+            raise ValueError(f"the conductivity of {self.name} is two-dimensional")
+        tensor: np.ndarray = 0.5 * (own + own.T)[:dim, :dim]
+        return tensor
+
+
+def library_entry(name: Any) -> tuple[dict[str, Any], str]:
+    """Return the keys that a library entry fills in, in SI, or what is wrong with its name."""
+    from coldseam.case import library
+
+    if not isinstance(name, str):
+        return {}, "expected the name of an entry of the library"
+    try:
+        return dict(library.as_material_keys(library.lookup(name))), ""
+    except library.LibraryError as error:
+        return {}, str(error)
+
+
+FLAT_SHAPES = ("box", "disc", "ring", "polygon")
+SOLID_SHAPES = ("box", "cylinder", "sphere", "cone", "tube", "polygon", "enclosure", "file")
+SHAPES = ("box", "cylinder", "sphere", "cone", "tube", "polygon", "disc", "ring", "enclosure", "file", "group")
+
+
+class Body(Table):
+    """A body; later bodies displace earlier ones where they overlap."""
+
+    ONE_OF: ClassVar = (SHAPES,)
+    AT_MOST_ONE: ClassVar = (("heat_source", "heat_density"), ("material", "void"))
+    ANY_OF: ClassVar = (("material", "void", "enclosure", "file"),)
+    name: Name
+    material: MaterialRef | None = None
+    void: Flag = Field(False, description="true cuts the body out")
+    heat_source: HeatFlow | None = Field(None, description="W in the whole body (W/m in a plane cross-section)")
+    heat_density: HeatDensity | None = Field(None, description="W/m³")
+    box: Box | None = None
+    cylinder: Cylinder | None = None
+    sphere: Sphere | None = None
+    cone: Cone | None = None
+    tube: Tube | None = None
+    polygon: Polygon | None = None
+    disc: Disc | None = None
+    ring: Ring | None = None
+    enclosure: Enclosure | None = None
+    file: Annotated[Path, Attached(SOLIDS)] | None = Field(None, description="STEP, BREP or IGES file")
+    group: Name | None = Field(None, description="name of a part of the foreign mesh")
+    materials: dict[str, MaterialRef] | None = Field(None, description="for file: name of a solid -> material")
+    repeat: Repeat | None = None
+
+    @classmethod
+    def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
+        """Set aside shapes that the case can't take, and see to what the body is made of."""
+        troubles = list(_material_faults(data))
+        given = [key for key in SHAPES if key in data]
+        for key in given:
+            wrong = _shape_fault(key, context)
+            if wrong:
+                troubles.append(((key,), wrong))
+                data = {other: value for other, value in data.items() if other != key}
+        if "materials" in data and "file" not in given:
+            troubles.append((("materials",), "goes with file only"))
+        if "repeat" in data and "group" in given:
+            troubles.append((("repeat",), "can't repeat a part of a foreign mesh"))
+        return data, troubles
+
+    @property
+    def kind(self) -> str:
+        """The key of the body's shape, for example ``"cylinder"``."""
+        return next(key for key in SHAPES if getattr(self, key) is not None)
+
+    @property
+    def shape(self) -> Any:
+        """The shape itself: one of the classes of :mod:`coldseam.case.shapes`, a path, or a group's name."""
+        return getattr(self, self.kind)
+
+
+def _material_faults(data: dict[str, Any]) -> Iterator[Trouble]:
+    if "enclosure" in data:
+        for key in ("material", "void"):
+            if key in data:
+                yield (key,), "an enclosure has its materials in its layers"
+    elif "void" not in data and "material" not in data:
+        if "file" not in data:
+            yield (), "needs a material, or void = true"
+        elif "materials" not in data:
+            yield (), "needs a material, or materials by the names of its solids"
+    if data.get("void") is False:
+        yield ("void",), "can only be true; leave it out for a body with a material"
+    for key in ("heat_source", "heat_density"):
+        if key in data and data.get("void") is True:
+            yield (key,), "a void can't give off heat"
+
+
+def _shape_fault(key: str, context: Context) -> str:
+    """Return why a shape does not fit the case, or nothing."""
+    if context.foreign and key != "group":
+        return "the model is a foreign mesh; its bodies are given by group"
+    if context.foreign is False and key == "group":
+        return "group names a part of a foreign mesh, and [model] has no mesh"
+    if context.dim == 2 and key not in (*FLAT_SHAPES, "group"):
+        return f"is a shape of three dimensions; the case has dimensions = 2, which takes {listing(FLAT_SHAPES)}"
+    if context.dim == 3 and key not in (*SOLID_SHAPES, "group"):
+        return f"is a shape of two dimensions; the case has dimensions = 3, which takes {listing(SOLID_SHAPES)}"
+    return ""

@@ -1,0 +1,461 @@
+"""What a case file says, as frozen models: lengths in m, temperatures in °C, all else SI.
+
+Attribute names are the keys of the file, except that ``from`` and ``to`` are ``start`` and
+``end``. A key that is absent is None. Make a :class:`Case` with :mod:`coldseam.case.read`.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator
+from pathlib import Path
+from typing import Annotated, Any, ClassVar, Literal
+
+from pydantic import Field, PrivateAttr, ValidationInfo, WithJsonSchema, WrapValidator
+
+from coldseam.case.bodies import FLAT_SHAPES, SHAPES, SOLID_SHAPES, Body, Material
+from coldseam.case.crosscheck import document_troubles, unused_materials
+from coldseam.case.shapes import (
+    AXES,
+    FACES,
+    Box,
+    Cone,
+    Cylinder,
+    Disc,
+    Enclosure,
+    Extent,
+    Face,
+    Layer,
+    Layers,
+    Opening,
+    Polygon,
+    Repeat,
+    Ring,
+    Sphere,
+    Tube,
+    Within,
+)
+from coldseam.case.source import Source
+from coldseam.case.tables import Context, Table, Trouble, listing
+from coldseam.case.values import (
+    Amount,
+    Attached,
+    BodyRef,
+    BoundaryRef,
+    BridgeRef,
+    Film,
+    Flag,
+    HeatFlow,
+    HeatFlux,
+    Humidity,
+    Length,
+    MaterialRef,
+    Name,
+    ProbeRef,
+    Resistance,
+    ResistanceOrZero,
+    Size,
+    Some,
+    SpaceRef,
+    Temperature,
+    Vector,
+    _plain,
+)
+
+__all__ = [
+    "AXES", "FACES", "FLAT_SHAPES", "SHAPES", "SOLID_SHAPES", "Body", "Boundary", "Box", "Bridge", "Case", "Cone",
+    "Contact", "Cylinder", "Disc", "Enclosure", "Extent", "Flanking", "Layer", "Limit", "Material", "ModelTable",
+    "Opening", "Polygon", "Probe", "Quantity", "Repeat", "Ring", "Selector", "Sheet", "Space", "Sphere", "Tube",
+    "Within",
+]  # fmt: skip
+
+STEADY_ONLY = "not supported yet: this version computes steady cases only"
+FINEST_ACCURACY = 1e-6
+
+
+class _LengthUnit:
+    """The unit of a foreign mesh's coordinates, as a factor to metres."""
+
+    def read(self, value: Any, context: Context) -> float:
+        """Return one of the unit in m."""
+        from coldseam.case.units import QUANTITIES, parse
+
+        units = listing(QUANTITIES["length"].units, last="or")
+        if not isinstance(value, str) or not value.strip():
+            raise ValueError(f"expected a unit of length as text: {units}")
+        try:
+            return parse("length", f"1 {value}")
+        except ValueError as error:
+            raise ValueError(f'"{value}" is not a unit of length; accepted is {units}') from error
+
+    def __get_pydantic_core_schema__(self, source: Any, handler: Any) -> Any:
+        return _plain(self.read)
+
+
+class ModelTable(Table):
+    """What kind of model it is, and how good its answers must be."""
+
+    dimensions: Annotated[Literal[2, 3], WithJsonSchema({"enum": [2, 3]})] = Field(
+        description="2 = cross-section, per metre of depth; 3 = solid"
+    )
+    axisymmetric: Flag = Field(False, description="turns a cross-section: x is the radius, y the axis")
+    accuracy: Annotated[float, Amount("ratio", at_least=FINEST_ACCURACY, below=0.5)] = Field(
+        0.01, description='of every heat flow, a fraction or text such as "1 %"'
+    )
+    mesh: Annotated[Path, Attached()] | None = Field(None, description="a whole mesh in place of bodies with shapes")
+    mesh_unit: Annotated[float, _LengthUnit(), WithJsonSchema({"type": "string"})] = Field(
+        1e-3, description='unit of the coordinates in mesh, "mm" if not given'
+    )
+    size: Size | None = Field(None, description="largest element size, mm; normally left to the program")
+    max_nodes: Annotated[int, Field(strict=True, ge=10)] | None = Field(None, description="most nodes of the mesh")
+    trust_scripts: Flag = Field(False, description="permits gmsh scripts, which can run commands on this machine")
+
+    def check(self, context: Context) -> Iterator[Trouble]:
+        """Yield keys that don't go together."""
+        if self.axisymmetric and self.dimensions == 3:
+            yield ("axisymmetric",), "needs dimensions = 2"
+        if self.mesh is None and "mesh_unit" in self.model_fields_set:
+            yield ("mesh_unit",), "goes with mesh only"
+
+
+class Space(Table):
+    """Air, or whatever else is of one temperature, before the surfaces."""
+
+    ONE_OF: ClassVar = (("film", "surface_resistance"),)
+    LATER: ClassVar = {"floating": STEADY_ONLY + "; give the space a temperature"}
+    temperature: Temperature = Field(description="°C")
+    film: Film | None = Field(None, description="W/(m²·K)")
+    surface_resistance: ResistanceOrZero | None = Field(
+        None, description="m²·K/W; 0: the surface has the space's temperature"
+    )
+    relative_humidity: Humidity | None = Field(None, description='a fraction, or text such as "60 %"')
+    _name: str = PrivateAttr("")
+
+    @property
+    def name(self) -> str:
+        """The key of the space in the case."""
+        return self._name
+
+    @property
+    def h(self) -> float:
+        """Film coefficient, W/(m² K); inf when the surface resistance is 0."""
+        h = _film(self.film, self.surface_resistance)
+        assert h is not None
+        return h
+
+
+def _film(film: float | None, resistance: float | None) -> float | None:
+    if film is not None:
+        return film
+    if resistance is None:
+        return None
+    return 1.0 / resistance if resistance > 0.0 else math.inf
+
+
+class Selector(Table):
+    """Picks exterior faces; what is given must all hold."""
+
+    ANY_OF: ClassVar = (("plane", "within", "body", "facing", "shell", "group"),)
+    plane: dict[Literal["x", "y", "z"], Length] | None = Field(None, description="one axis and its position, mm")
+    within: Within | None = Field(None, description="faces wholly inside this box")
+    body: BodyRef | None = None
+    facing: Face | None = Field(None, description='direction of the outward normal, "-x" ... "+z"')
+    shell: Literal["outer", "cavity"] | None = Field(None, description="which of the connected exterior surfaces")
+    group: Name | None = Field(None, description="name of a group of an imported geometry")
+
+    @classmethod
+    def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
+        """Refuse a selector that picks everything by saying nothing."""
+        keys = cls.keys()
+        return data, [] if any(key in keys for key in data) else [((), f"needs at least one of {listing(keys)}")]
+
+    def check(self, context: Context) -> Iterator[Trouble]:
+        """Yield planes with more than one axis and directions that the case has not."""
+        if self.plane is not None and len(self.plane) != 1:
+            yield ("plane",), "needs exactly one axis, such as { x = 20 }"
+        if context.dim == 2:
+            if self.plane and "z" in self.plane:
+                yield ("plane",), "z has no meaning in two dimensions"
+            if self.facing and self.facing[1] == "z":
+                yield ("facing",), "z has no meaning in two dimensions"
+
+
+def _on(value: Any, handler: Any, info: ValidationInfo) -> Any:
+    """Read a selector or the word ``rest`` without pydantic's double complaint of a union."""
+    if value == "rest" or isinstance(value, Selector):
+        return value
+    if not isinstance(value, dict):
+        raise ValueError('expected a selector such as { plane = { x = 20 } }, or "rest"')
+    return Selector.model_validate(value, context=info.context)
+
+
+class Boundary(Table):
+    """What holds on a part of the exterior."""
+
+    ONE_OF: ClassVar = (("space", "temperature", "heat_flux", "heat_flow", "adiabatic"),)
+    AT_MOST_ONE: ClassVar = (("film", "surface_resistance"),)
+    name: Name
+    on: Annotated[Selector | Literal["rest"], WrapValidator(_on)] = Field(description='a selector, or "rest"')
+    space: SpaceRef | None = None
+    temperature: Temperature | None = Field(None, description="°C")
+    heat_flux: HeatFlux | None = Field(None, description="W/m² into the solid")
+    heat_flow: HeatFlow | None = Field(None, description="W into the solid, spread evenly (W/m in a cross-section)")
+    adiabatic: Flag | None = None
+    film: Film | None = Field(None, description="W/(m²·K), in place of that of the space")
+    surface_resistance: ResistanceOrZero | None = Field(None, description="m²·K/W, in place of that of the space")
+
+    @classmethod
+    def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
+        """See that films go with spaces, and that adiabatic is said and not denied."""
+        troubles: list[Trouble] = [
+            ((key,), "goes with space only")
+            for key in ("film", "surface_resistance")
+            if key in data and "space" not in data
+        ]
+        if data.get("adiabatic") is False:
+            troubles.append((("adiabatic",), "can only be true; leave it out otherwise"))
+        return data, troubles
+
+    @property
+    def h(self) -> float | None:
+        """The boundary's own film coefficient, W/(m² K); inf for none at all, None where the space's holds."""
+        return _film(self.film, self.surface_resistance)
+
+
+class Sheet(Table):
+    """A thin skin that conducts along a face without being meshed through its thickness."""
+
+    ONE_OF: ClassVar = (("on", "between"),)
+    name: Name
+    material: MaterialRef
+    thickness: Size = Field(description="mm")
+    on: Selector | None = Field(None, description="exterior faces")
+    between: tuple[BodyRef, BodyRef] | None = Field(None, description="two bodies that meet")
+
+    def check(self, context: Context) -> Iterator[Trouble]:
+        """Yield a fault for a sheet between a body and itself."""
+        if self.between is not None and self.between[0] == self.between[1]:
+            yield ("between",), "needs two different bodies"
+
+
+class Contact(Table):
+    """An imperfect joint between two bodies."""
+
+    name: Name
+    between: tuple[BodyRef, BodyRef]
+    resistance: Resistance = Field(description="m²·K/W")
+
+    def check(self, context: Context) -> Iterator[Trouble]:
+        """Yield a fault for a joint of a body with itself."""
+        if self.between[0] == self.between[1]:
+            yield ("between",), "needs two different bodies"
+
+
+class Probe(Table):
+    """A point whose temperature is wanted."""
+
+    name: Name
+    at: Vector = Field(description="mm")
+
+
+class Flanking(Table):
+    """A plain wall beside a linear bridge."""
+
+    layers: Annotated[Layers, Some()] = Field(description='["material", thickness in mm], in order')
+    length: Size = Field(description="mm; inside length, or outside length where the basis is external")
+    length_external: Size | None = Field(None, description="outside length, mm")
+    between: tuple[SpaceRef, SpaceRef] = Field(description="the spaces on its two sides")
+
+    def check(self, context: Context) -> Iterator[Trouble]:
+        """Yield a fault for a wall with one space on both sides."""
+        if self.between[0] == self.between[1]:
+            yield ("between",), "needs two different spaces"
+
+
+class Bridge(Table):
+    """A thermal bridge whose transmittance is wanted."""
+
+    name: Name
+    kind: Literal["linear", "point"]
+    basis: Literal["internal", "external", "both"] | None = None
+    flanking: Annotated[tuple[Flanking, ...], Some()] | None = None
+    without: Annotated[tuple[BodyRef, ...], Some()] | None = None
+    count: Annotated[int, Field(strict=True, ge=1)] | None = Field(None, description="pieces, 1 if not given")
+
+    def check(self, context: Context) -> Iterator[Trouble]:
+        """Yield keys that belong to the other kind, keys missing, and too few spaces."""
+        linear, point = ("basis", "flanking"), ("without", "count")
+        needed, barred = (linear, point) if self.kind == "linear" else (("without",), linear)
+        yield from (((key,), f'is required for kind = "{self.kind}" and missing')
+                    for key in needed if getattr(self, key) is None)  # fmt: skip
+        yield from (((key,), f'does not go with kind = "{self.kind}"')
+                    for key in barred if getattr(self, key) is not None)  # fmt: skip
+        spaces = context.names.get("space")
+        if spaces is not None and len(spaces) < 2:
+            yield (), f"a bridge lies between two spaces, and the case has {len(spaces)}"
+        for position, wall in enumerate(self.flanking or ()):
+            if self.basis == "both" and wall.length_external is None:
+                yield ("flanking", position, "length_external"), 'is required for basis = "both" and missing'
+        if self.without is not None and len(set(self.without)) < len(self.without):
+            yield ("without",), "names a body twice"
+
+    @property
+    def pieces(self) -> int:
+        """Number of pieces that a point bridge stands for."""
+        return self.count or 1
+
+
+Extreme = Literal["min", "max", "mean"]
+_TARGETS = ("space", "boundary", "probe", "bridge")
+_MEASURES = {
+    "space": ("heat_flow",),
+    "boundary": ("heat_flow", "temperature", "f_Rsi", "surface_humidity"),
+    "probe": ("temperature",),
+    "bridge": ("psi", "chi"),
+}
+_MEASURE_UNITS = {
+    "heat_flow": "heat flow",
+    "temperature": "temperature",
+    "f_Rsi": "ratio",
+    "surface_humidity": "ratio",
+    "psi": "linear transmittance",
+    "chi": "point transmittance",
+}
+
+
+class Quantity(Table):
+    """Which answer a limit is about."""
+
+    ONE_OF: ClassVar = (_TARGETS, tuple(_MEASURE_UNITS))
+    space: SpaceRef | None = None
+    boundary: BoundaryRef | None = None
+    probe: ProbeRef | None = None
+    bridge: BridgeRef | None = None
+    heat_flow: Literal[True] | None = None
+    temperature: Literal[True, "min", "max", "mean"] | None = None
+    psi: Literal[True] | None = None
+    chi: Literal[True] | None = None
+    f_Rsi: Literal[True] | None = None
+    surface_humidity: Literal[True] | None = None
+
+    @classmethod
+    def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
+        """See that what is asked goes with what it is asked of."""
+        targets = [key for key in _TARGETS if key in data]
+        measures = [key for key in _MEASURE_UNITS if key in data]
+        if len(targets) != 1 or len(measures) != 1:
+            return data, []
+        target, measure = targets[0], measures[0]
+        accepted = _MEASURES[target]
+        if measure not in accepted:
+            return data, [((measure,), f"does not go with {target}, which takes {listing(accepted, last='or')}")]
+        if target == "boundary" and measure == "temperature" and data[measure] is True:
+            return data, [((measure,), 'of a boundary is one of "min", "max" and "mean"')]
+        if target == "probe" and isinstance(data[measure], str):
+            return data, [((measure,), "of a probe is temperature = true")]
+        return data, []
+
+    @property
+    def target(self) -> str:
+        """What it is asked of: ``"space"``, ``"boundary"``, ``"probe"`` or ``"bridge"``."""
+        return next(key for key in _TARGETS if getattr(self, key) is not None)
+
+    @property
+    def measure(self) -> str:
+        """What is asked, for example ``"heat_flow"`` or ``"psi"``."""
+        return next(key for key in _MEASURE_UNITS if getattr(self, key) is not None)
+
+
+_BOUND_SCHEMA = WithJsonSchema({"type": ["number", "string"]})
+
+
+class _Bound:
+    """A bound whose unit depends on what is limited; read with the limit (see ``Limit.prepare``)."""
+
+    def __get_pydantic_core_schema__(self, source: Any, handler: Any) -> Any:
+        return _plain(lambda value, context: value)
+
+
+Bound = Annotated[float, _Bound(), _BOUND_SCHEMA]
+
+
+def _bound_unit(asked: Any) -> str | None:
+    """Return the quantity of a limit's bounds; None where what is asked makes no sense anyway."""
+    if not isinstance(asked, dict):
+        return None
+    fitting = [key for target, keys in _MEASURES.items() if target in asked for key in keys if key in asked]
+    return _MEASURE_UNITS[fitting[0]] if fitting else None
+
+
+class Limit(Table):
+    """A bound that an answer is held against; SI units of its quantity, °C."""
+
+    name: Name
+    quantity: Quantity
+    at_most: Bound | None = Field(None, description="in the unit of the quantity")
+    at_least: Bound | None = Field(None, description="in the unit of the quantity")
+
+    @classmethod
+    def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
+        """Read the bounds in the units of what is limited."""
+        given = [key for key in ("at_most", "at_least") if key in data]
+        troubles: list[Trouble] = [] if given else [((), "needs at_most or at_least")]
+        unit = _bound_unit(data.get("quantity"))
+        for key in given:
+            try:
+                data[key] = Amount(unit).read(data[key], context) if unit else 0.0
+            except ValueError as error:
+                troubles.append(((key,), str(error)))
+        if len(given) == 2 and not troubles and data["at_least"] > data["at_most"]:
+            troubles.append((("at_least",), "must not be more than at_most"))
+        return data, troubles
+
+
+class Case(Table):
+    """A whole case, validated. ``source``, ``raw`` and ``warnings`` are set when it is read."""
+
+    LATER: ClassVar = {"time": STEADY_ONLY, "event": STEADY_ONLY}
+    title: Name
+    model: ModelTable
+    spaces: dict[Name, Space] = {}
+    materials: dict[Name, Material]
+    body: Annotated[tuple[Body, ...], Some()]
+    boundary: Annotated[tuple[Boundary, ...], Some()]
+    sheet: tuple[Sheet, ...] = ()
+    contact: tuple[Contact, ...] = ()
+    probe: tuple[Probe, ...] = ()
+    bridge: tuple[Bridge, ...] = ()
+    limit: tuple[Limit, ...] = ()
+    _source: Source | None = PrivateAttr(None)
+    _raw: dict[str, Any] = PrivateAttr(default_factory=dict)
+    _warnings: tuple[str, ...] = PrivateAttr(())
+
+    @classmethod
+    def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
+        """Look for what only the whole document shows."""
+        return data, document_troubles(data)
+
+    def model_post_init(self, context: Any) -> None:
+        """Tell materials and spaces their names."""
+        for key, material in self.materials.items():
+            material._name = key
+        for key, space in self.spaces.items():
+            space._name = key
+        self._warnings = unused_materials(self)
+
+    @property
+    def source(self) -> Source:
+        """The text it was read from, and the lines of its keys."""
+        if self._source is None:
+            raise ValueError("the case was not read from a file or text")
+        return self._source
+
+    @property
+    def raw(self) -> dict[str, Any]:
+        """The document as typed."""
+        return self._raw
+
+    @property
+    def warnings(self) -> tuple[str, ...]:
+        """What is odd and no fault, one sentence each."""
+        return self._warnings

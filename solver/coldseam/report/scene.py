@@ -1,0 +1,128 @@
+"""A look at a body in space: VTK paints the faces, matplotlib adds every line and letter.
+
+The camera looks along a direction without perspective, so that a point's place on the picture is
+a product of two vectors, and lines and labels drawn afterwards fall exactly where they belong. A
+depth map decides which of them are hidden.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+PIXELS = 1300
+"""Longer side of a painted picture."""
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class Scene:
+    """What a camera saw.
+
+    Parameters
+    ----------
+    image
+        RGBA, transparent where nothing is, shape (rows, columns, 4).
+    low, high
+        Corners of the picture in its plane, mm.
+    right, up, toward
+        Unit vectors of the picture: to the right, upwards, towards the eye.
+    depth
+        Height of the seen surface above the origin along ``toward``, m; NaN where nothing is.
+    """
+
+    image: np.ndarray
+    low: np.ndarray
+    high: np.ndarray
+    right: np.ndarray
+    up: np.ndarray
+    toward: np.ndarray
+    depth: np.ndarray
+
+    def place(self, points: np.ndarray) -> np.ndarray:
+        """Return where points (m, shape (..., 3)) fall on the picture, mm, shape (..., 2)."""
+        return np.stack([points @ self.right, points @ self.up], axis=-1) * 1e3
+
+    def visible(self, points: np.ndarray, slack: float) -> np.ndarray:
+        """Return which points, shape (n, 3), lie on the seen surface or before it, within ``slack`` (m)."""
+        rows, columns = self.depth.shape
+        share = (self.place(points) - self.low) / (self.high - self.low)
+        column = np.clip((share[:, 0] * columns).astype(int), 0, columns - 1)
+        row = np.clip(((1 - share[:, 1]) * rows).astype(int), 0, rows - 1)
+        seen = self.depth[row, column]
+        return np.isfinite(seen) & (points @ self.toward >= seen - slack)
+
+
+def frame(toward: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Return the picture's unit vectors right, up, toward for an eye in a direction; z points up if it can."""
+    toward = np.asarray(toward, dtype=float) / np.linalg.norm(toward)
+    upright = np.array([0.0, 0.0, 1.0]) if abs(toward[2]) < 0.95 else np.array([0.0, 1.0, 0.0])
+    right = np.cross(upright, toward)
+    right /= np.linalg.norm(right)
+    return right, np.cross(toward, right), toward
+
+
+def paint(
+    points: np.ndarray,
+    facets: np.ndarray,
+    toward: np.ndarray,
+    *,
+    values: np.ndarray | None = None,
+    span: tuple[float, float] = (0.0, 1.0),
+    colours: np.ndarray | None = None,
+    front_only: bool = False,
+) -> Scene:
+    """Paint triangles as an eye far away in the direction ``toward`` sees them.
+
+    Parameters
+    ----------
+    points, facets
+        m, shape (n, 3); outward oriented triangles, shape (f, 3).
+    values, span
+        Temperatures at the points and the range of the colour map; or
+    colours
+        RGB of every facet, 0-255, shape (f, 3).
+    front_only
+        Leave out faces that look away (to see into a cavity).
+    """
+    import pyvista
+
+    from coldseam.report import style
+
+    right, up, toward = frame(toward)
+    used = np.unique(facets)
+    flat = np.stack([points[used] @ right, points[used] @ up], axis=1)
+    low, high = flat.min(axis=0), flat.max(axis=0)
+    margin = 0.03 * max(high - low)
+    low, high = low - margin, high + margin
+    size = np.maximum((PIXELS * (high - low) / max(high - low)).astype(int), 60)
+    high = low + size * (max(high - low) / max(size))  # square pixels
+    centre = (low + high) / 2
+    reach = float(np.ptp(points, axis=0).max()) * 4
+    focus = centre[0] * right + centre[1] * up + toward * float((points[used] @ toward).mean())
+    surface = pyvista.PolyData.from_regular_faces(np.asarray(points), np.asarray(facets))
+    plotter = pyvista.Plotter(off_screen=True, window_size=size.tolist(), lighting="none")
+    plotter.set_background("white")
+    plotter.add_light(pyvista.Light(position=focus + reach * (toward + 0.35 * up - 0.45 * right), focal_point=focus,
+                                    light_type="scene light", intensity=1.0))  # fmt: skip
+    look = {"show_scalar_bar": False, "culling": "back" if front_only else None, "lighting": True}
+    if values is not None:
+        surface.point_data["T"] = np.asarray(values)
+        plotter.add_mesh(surface, scalars="T", cmap=style.COLOUR_MAP, clim=span, ambient=0.72, diffuse=0.28,
+                         interpolate_before_map=True, n_colors=256, **look)  # fmt: skip
+    else:
+        surface.cell_data["colour"] = np.asarray(colours, dtype=np.uint8)
+        plotter.add_mesh(surface, scalars="colour", rgb=True, ambient=0.6, diffuse=0.4, **look)
+    plotter.camera.position = focus + reach * toward
+    plotter.camera.focal_point = focus
+    plotter.camera.up = up
+    plotter.enable_parallel_projection()
+    plotter.camera.parallel_scale = float(high[1] - low[1]) / 2
+    plotter.camera.clipping_range = (reach * 0.4, reach * 1.6)
+    plotter.show(auto_close=False)
+    depth = np.asarray(plotter.get_image_depth(fill_value=np.nan), dtype=float)  # negative distance from the eye
+    plotter.enable_anti_aliasing("ssaa")
+    image = np.asarray(plotter.screenshot(None, return_img=True, transparent_background=True))
+    plotter.close()
+    return Scene(image=image, low=low * 1e3, high=high * 1e3, right=right, up=up, toward=toward,
+                 depth=depth + float((focus + reach * toward) @ toward))  # fmt: skip

@@ -1,0 +1,289 @@
+"""The summary a run ends with: plain text, the answer first, built from the answers and nothing else.
+
+Numbers carry their unit and as many digits as their error allows: ``12.43 ± 0.10 W``. The interval that is
+printed always contains the interval of the answers, rounding included.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping, Sequence
+from typing import Any
+
+import numpy as np
+
+from coldseam.mesh.measure import cell_measure
+from coldseam.report.view import View, boundary_areas
+
+WITHOUT_ERROR = 4
+"""Significant digits of a number whose error is not known."""
+
+Answers = Mapping[str, Any]
+
+
+def number(value: float, digits: int = WITHOUT_ERROR) -> str:
+    """Return a number with so many significant digits, in plain notation where that is readable.
+
+    >>> number(0.0123456), number(1234.56), number(2.5e-9)
+    ('0.01235', '1235', '2.500e-09')
+    """
+    if value == 0:
+        return "0"
+    if not math.isfinite(value):
+        return "not known"
+    if not 1e-4 <= abs(value) < 1e7:
+        return f"{value:.{digits - 1}e}"
+    decimals = digits - 1 - math.floor(math.log10(abs(value)))
+    return f"{value:.{max(decimals, 0)}f}"
+
+
+def with_error(value: float, low: float | None, high: float | None, unit: str) -> str:
+    """Return a value with its error and unit; the digits follow the error.
+
+    Parameters
+    ----------
+    value, low, high
+        The value and the ends of its interval, in ``unit``; None where an end is not known.
+    unit
+        Printed behind, for example ``"W/m"``.
+
+    The error is rounded up so that value ± error covers [low, high]. It gets one significant
+    digit, or two where one would overstate it by more than a quarter.
+
+    >>> with_error(12.4321, 12.335, 12.5295, "W")
+    '12.43 ± 0.10 W'
+    >>> with_error(0.5397, 0.5391, 0.5401, "W")
+    '0.5397 ± 0.0006 W'
+    >>> with_error(1.5, None, None, "W/K")
+    '1.500 W/K'
+    """
+    if low is None or high is None or not all(map(math.isfinite, (value, low, high))):
+        return f"{number(value)} {unit}"
+    half = max(high - value, value - low)
+    if half <= 1e-9 * abs(value):
+        return f"{number(value, 6)} {unit}"
+    decimals = -math.floor(math.log10(half * (1 + 1e-9)))  # 0.1 less its rounding is 0.1
+    if _covering(value, low, high, decimals) > 1.25 * half:
+        decimals += 1
+    error = _covering(value, low, high, decimals)
+    shown = round(value, decimals) + 0.0
+    return f"{shown:.{max(decimals, 0)}f} ± {error:.{max(decimals, 0)}f} {unit}"
+
+
+def _covering(value: float, low: float, high: float, decimals: int) -> float:
+    """Return the smallest error with so many decimals that covers the interval around the rounded value."""
+    shown = round(value, decimals)
+    step = 10.0**-decimals
+    return math.ceil(max(high - shown, shown - low) / step - 1e-9) * step
+
+
+def temperature(value: float) -> str:
+    """Return a temperature (°C) to the tenth of a degree.
+
+    >>> temperature(-0.04), temperature(16.84)
+    ('0.0 °C', '16.8 °C')
+    """
+    return f"{round(value, 1) + 0.0:.1f} °C"
+
+
+def place(at: Sequence[float]) -> str:
+    """Return a position (mm).
+
+    >>> place([150, 150.04, 0])
+    '(150, 150, 0) mm'
+    """
+    return "(" + ", ".join(f"{round(x, 1) + 0.0:g}" for x in at) + ") mm"
+
+
+def flow_unit(answers: Answers) -> str:
+    """Return the unit of heat flows: W/m in a plane cross-section, W otherwise."""
+    unit = answers.get("units", {}).get("heat_flow")
+    if unit:
+        return str(unit)
+    return "W/m" if answers.get("dimensions") == 2 and not answers.get("axisymmetric") else "W"
+
+
+def summary(answers: Answers, files: Sequence[str] = ()) -> str:
+    """Return what a finished run prints.
+
+    Parameters
+    ----------
+    answers
+        The content of answers.json.
+    files
+        Paths of what was written, as the user should read them.
+    """
+    sections = [
+        [str(answers.get("title") or "Untitled case")],
+        _flows(answers),
+        _coupling(answers),
+        _trust(answers),
+        _surfaces(answers),
+        _probes(answers),
+        _bridges(answers),
+        _limits(answers),
+        _listed("Warnings", answers.get("warnings", ())),
+        _listed("Files", files),
+    ]
+    return "\n\n".join("\n".join(lines) for lines in sections if lines) + "\n"
+
+
+def _table(rows: Sequence[Sequence[str]], right: Sequence[int] = ()) -> list[str]:
+    """Return rows as lines with aligned columns, those in ``right`` to the right."""
+    if not rows:
+        return []
+    widths = [max(len(row[i]) for row in rows) for i in range(len(rows[0]))]
+    return ["  " + "   ".join(_aligned(row, widths, right)).rstrip() for row in rows]
+
+
+def _aligned(row: Sequence[str], widths: Sequence[int], right: Sequence[int]) -> list[str]:
+    return [row[i].rjust(width) if i in right else row[i].ljust(width) for i, width in enumerate(widths)]
+
+
+def _flows(answers: Answers) -> list[str]:
+    unit = flow_unit(answers)
+    area = "m²/m" if unit == "W/m" else "m²"
+    spaces = [
+        (f"from space {name}", _flow(entry, unit), f"at {temperature(entry['temperature'])}")
+        for name, entry in answers.get("spaces", {}).items()
+    ]
+    boundaries = [
+        (f"through {name}", _flow(entry, unit), f"over {number(entry['area'])} {area}")
+        for name, entry in answers.get("boundaries", {}).items()
+        if entry.get("kind") != "adiabatic"
+    ]
+    return ["Heat flow (positive: into the solid)", *_table(spaces + boundaries, right=(1,))]
+
+
+def _flow(entry: Answers, unit: str) -> str:
+    return with_error(entry["heat_flow"], entry.get("heat_flow_low"), entry.get("heat_flow_high"), unit)
+
+
+def _coupling(answers: Answers) -> list[str]:
+    unit = "W/(m·K)" if flow_unit(answers) == "W/m" else "W/K"
+    intervals = answers.get("coupling_intervals", {})
+    rows: dict[frozenset[str], tuple[str, str]] = {}
+    for one, others in answers.get("coupling", {}).items():
+        for other, value in others.items():
+            if one != other and frozenset((one, other)) not in rows:
+                low, high = intervals.get(one, {}).get(other, (None, None))
+                rows[frozenset((one, other))] = (f"{one} - {other}", with_error(value, low, high, unit))
+    return ["Thermal coupling", *_table(list(rows.values()))] if rows else []
+
+
+def _trust(answers: Answers) -> list[str]:
+    """How far the flows can be trusted: accuracy reached, balance, mesh."""
+    lines = []
+    accuracy = answers.get("accuracy")
+    if accuracy:
+        lines.append(_accuracy(accuracy, [*answers["spaces"].values(), *answers["boundaries"].values()]))
+    balance = answers.get("balance")
+    if balance:
+        closure = f"{balance['closure']:.1e} {flow_unit(answers)}"
+        lines.append(f"Balance: the heat flows add up to {closure}, {balance['relative']:.1e} of what flows through")
+    mesh = answers.get("mesh")
+    if mesh:
+        lines.append(f"Mesh: {mesh['nodes']} nodes, {mesh['cells']} cells, after {mesh['rounds']} rounds")
+    return lines
+
+
+def _accuracy(accuracy: Answers, entries: Sequence[Answers]) -> str:
+    """Return the accuracy reached and asked, and what kind of statement it is."""
+    asked = f"{100 * accuracy['asked']:.3g} % asked"
+    if accuracy["reached"] is None:
+        return f"Accuracy: the error of the heat flows is not known ({asked})"
+    reached = f"Accuracy: every heat flow to {100 * accuracy['reached']:.2g} %, {asked}"
+    if all(entry["interval"] == "guaranteed" for entry in entries):
+        return f"{reached} (a guaranteed interval)"
+    reasons = dict.fromkeys(entry["interval_reason"] for entry in entries if entry.get("interval_reason"))
+    return f"{reached} (an estimate{': ' if reasons else ''}{'; '.join(reasons)})"
+
+
+def _surfaces(answers: Answers) -> list[str]:
+    """The coldest place of every surface that heat passes, the coldest surface first."""
+    found = [
+        (entry["temperature"], name)
+        for name, entry in answers.get("boundaries", {}).items()
+        if entry.get("kind") != "adiabatic"
+    ]
+    found.sort(key=lambda pair: pair[0]["min"])
+    rows = [
+        (
+            name,
+            temperature(extremes["min"]),
+            f"at {place(extremes['min_at'])}",
+            f"warmest {temperature(extremes['max'])}",
+        )
+        for extremes, name in found
+    ]
+    return ["Coldest place of each surface", *_table(rows, right=(1,))] if rows else []
+
+
+def _probes(answers: Answers) -> list[str]:
+    rows = [
+        (name, temperature(entry["temperature"]), f"at {place(entry['at'])}")
+        for name, entry in answers.get("probes", {}).items()
+    ]
+    return ["Probes", *_table(rows, right=(1,))] if rows else []
+
+
+def _bridges(answers: Answers) -> list[str]:
+    rows = []
+    for name, entry in answers.get("bridges", {}).items():
+        for key, unit in (("psi", "W/(m·K)"), ("chi", "W/K")):
+            if isinstance(entry.get(key), int | float):
+                rows.append(
+                    (name, key, with_error(entry[key], entry.get(f"{key}_low"), entry.get(f"{key}_high"), unit))
+                )
+    return ["Thermal bridges", *_table(rows)] if rows else []
+
+
+def _limits(answers: Answers) -> list[str]:
+    rows = []
+    for name, entry in answers.get("limits", {}).items():
+        unit = f" {entry['unit']}" if entry.get("unit") else ""
+        bounds = [
+            f"{words} {number(entry[key])}{unit}"
+            for key, words in (("at_most", "at most"), ("at_least", "at least"))
+            if entry.get(key) is not None
+        ]
+        verdict = "met" if entry["met"] else "NOT MET"
+        rows.append((verdict, name, f"{number(entry['value'])}{unit}", ", ".join(bounds)))
+    return ["Limits", *_table(rows)] if rows else []
+
+
+def _listed(heading: str, lines: Sequence[str]) -> list[str]:
+    return [heading, *(f"  {line}" for line in lines)] if lines else []
+
+
+def model_summary(view: View, files: Sequence[str] = ()) -> str:
+    """Return what a check prints: the bodies and boundaries of a model with their sizes.
+
+    Parameters
+    ----------
+    view
+        The model; it needs no solution.
+    files
+        Paths of what was written, as the user should read them.
+    """
+    mesh = view.mesh
+    section = mesh.dim == 2 and not mesh.axisymmetric
+    sizes = np.bincount(mesh.cell_body, cell_measure(mesh), len(mesh.bodies))
+    bodies = [
+        (body.name, f"{number(size)} {'m³/m' if section else 'm³'}", body.material)
+        for body, size in zip(mesh.bodies, sizes.tolist(), strict=True)
+    ]
+    boundaries = [
+        (name, f"{number(area)} {'m²/m' if section else 'm²'}", f"space {space}" if space else kind.replace("_", " "))
+        for name, space, kind, area in zip(
+            view.boundary_names, view.boundary_space, view.boundary_kind, boundary_areas(view).tolist(), strict=True
+        )
+    ]
+    sections = [
+        [view.title or "Untitled case"],
+        ["Bodies", *_table(bodies, right=(1,))],
+        ["Boundaries", *_table(boundaries, right=(1,))],
+        [f"Mesh: {mesh.n_nodes} nodes, {mesh.n_cells} cells. Nothing was solved."],
+        _listed("Files", files),
+    ]
+    return "\n\n".join("\n".join(lines) for lines in sections if lines) + "\n"

@@ -1,0 +1,163 @@
+"""What the pictures, tables and field files are made from: one frozen view of a result.
+
+The report knows nothing of solvers. Whoever has a result makes a :class:`View` of it; whoever has
+only a model (``coldseam check``) makes one without fields through :func:`model_view`.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field, replace
+
+import numpy as np
+
+from coldseam.mesh.types import Mesh
+
+BOUNDARY_KINDS = ("space", "temperature", "heat_flux", "heat_flow", "adiabatic")
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class View:
+    """A result as the report sees it.
+
+    Parameters
+    ----------
+    mesh
+        The mesh, metres.
+    facet_boundary
+        Index into ``boundary_names`` of every exterior facet, shape (n_facets,).
+    boundary_names, boundary_space, boundary_kind
+        Name, space faced (or None) and kind (one of ``BOUNDARY_KINDS``) of every boundary.
+    temperature
+        °C at the nodes, shape (n_nodes,); None for a model that was not solved.
+    cell_flux
+        Heat flux in every cell, W/m², shape (n_cells, dim); None like ``temperature``.
+    title
+        The case's title.
+    probes
+        Probe name -> position, m, shape (dim,).
+    answers
+        The content of answers.json.
+    """
+
+    mesh: Mesh
+    facet_boundary: np.ndarray
+    boundary_names: tuple[str, ...]
+    boundary_space: tuple[str | None, ...]
+    boundary_kind: tuple[str, ...]
+    temperature: np.ndarray | None = None
+    cell_flux: np.ndarray | None = None
+    title: str = ""
+    probes: dict[str, np.ndarray] = field(default_factory=dict)
+    answers: dict = field(default_factory=dict)
+
+    def __post_init__(self):
+        if len(self.facet_boundary) != len(self.mesh.facets):
+            raise ValueError("facet_boundary does not have one entry per facet")
+        if not len(self.boundary_names) == len(self.boundary_space) == len(self.boundary_kind):
+            raise ValueError("boundary_names, boundary_space and boundary_kind differ in length")
+        if self.temperature is not None and len(self.temperature) != self.mesh.n_nodes:
+            raise ValueError("temperature does not have one entry per node")
+
+    @property
+    def spaces(self) -> tuple[str, ...]:
+        """Names of the spaces that some boundary faces, in order of the boundaries."""
+        return tuple(dict.fromkeys(space for space in self.boundary_space if space is not None))
+
+    def faces_space(self, space: str) -> np.ndarray:
+        """Return which exterior facets face a space, shape (n_facets,), bool."""
+        faces = np.array([other == space for other in self.boundary_space])
+        return faces[self.facet_boundary]
+
+
+@dataclass(frozen=True, kw_only=True)
+class Table:
+    """The numbers behind a picture: column headings with units, and rows."""
+
+    columns: tuple[str, ...]
+    rows: tuple[tuple, ...]
+
+
+@dataclass(frozen=True, kw_only=True)
+class Picture:
+    """One picture that was written.
+
+    Parameters
+    ----------
+    file
+        Name of the PNG in the output folder.
+    title
+        What it shows, one line.
+    alt
+        What someone who can't see it must know.
+    table
+        The numbers behind it.
+    vector
+        Name of the SVG, if there is one.
+    """
+
+    file: str
+    title: str
+    alt: str
+    table: Table
+    vector: str | None = None
+
+
+@dataclass(frozen=True, kw_only=True)
+class Drawings:
+    """The pictures that were made, and a plain sentence for whatever could not be."""
+
+    pictures: tuple[Picture, ...]
+    warnings: tuple[str, ...] = ()
+
+
+def model_view(case, mesh: Mesh, facet_boundary: np.ndarray) -> View:
+    """Return the view of a model that has not been solved.
+
+    Parameters
+    ----------
+    case
+        The case; its ``boundary`` entries give names, spaces and kinds, ``probe`` the points.
+    mesh
+        Its mesh.
+    facet_boundary
+        Index into ``case.boundary`` of every exterior facet, shape (n_facets,).
+    """
+    return View(
+        mesh=mesh,
+        facet_boundary=facet_boundary,
+        boundary_names=tuple(entry.name for entry in case.boundary),
+        boundary_space=tuple(entry.space for entry in case.boundary),
+        boundary_kind=tuple(boundary_kind(entry) for entry in case.boundary),
+        title=case.title or "",
+        probes={probe.name: np.asarray(probe.at, dtype=float) for probe in getattr(case, "probe", ())},
+    )
+
+
+def boundary_kind(entry) -> str:
+    """Return which of ``BOUNDARY_KINDS`` a ``[[boundary]]`` entry of a case is."""
+    for kind in BOUNDARY_KINDS[:-1]:
+        if getattr(entry, kind, None) is not None:
+            return kind
+    return "adiabatic"
+
+
+def without_fields(view: View) -> View:
+    """Return the same view without temperature and flux."""
+    return replace(view, temperature=None, cell_flux=None)
+
+
+def facet_area(mesh: Mesh) -> np.ndarray:
+    """Return the area of every exterior facet, shape (n_facets,).
+
+    m² in 3D, m² per metre of depth in a cross-section, m² of the whole turn if axisymmetric.
+    """
+    corner = mesh.points[mesh.facets]
+    if mesh.dim == 3:
+        return 0.5 * np.linalg.norm(np.cross(corner[:, 1] - corner[:, 0], corner[:, 2] - corner[:, 0]), axis=1)
+    length = np.linalg.norm(corner[:, 1] - corner[:, 0], axis=1)
+    return 2 * np.pi * corner[:, :, 0].mean(axis=1) * length if mesh.axisymmetric else length
+
+
+def boundary_areas(view: View) -> np.ndarray:
+    """Return the area of every boundary, in the unit of :func:`facet_area`, shape (n_boundaries,)."""
+    return np.bincount(view.facet_boundary, weights=facet_area(view.mesh), minlength=len(view.boundary_names))

@@ -1,0 +1,77 @@
+"""New element sizes from where the proof of the heat flows is still loose.
+
+Element c contributes eta_c² to the gap between upper and lower bound, and for a smooth field
+``eta_c² ~ h_c^(d + 2)``. The mesh with the fewest elements for a wanted total spreads the gap evenly:
+
+    h_new = h (theta / eta²)^(1 / (d + 2)),   theta = (wanted / sum eta^(2 d / (d + 2)))^((d + 2) / 2)
+"""
+
+from __future__ import annotations
+
+import numpy as np
+
+from coldseam.mesh.types import Mesh, SizeField
+from coldseam.solution.bounds import cell_sizes
+from coldseam.volumes.operator import cell_pairs
+
+FINEST, COARSEST = 0.2, 2.0  # limits of one round's change of size
+GROWTH = 0.6  # largest difference of size along an edge, as a part of its length
+SWEEPS = 12
+POINT_REACH = 4.0  # element sizes around a watched point that are halved
+
+
+def wanted_sizes(mesh: Mesh, gap: np.ndarray, wanted: float) -> tuple[np.ndarray, float]:
+    """Return new element sizes and how many elements they make.
+
+    Parameters
+    ----------
+    mesh
+        The present mesh.
+    gap
+        Part of the gap in every cell, any unit, (n_cells,).
+    wanted
+        Total gap to reach, same unit.
+
+    Returns
+    -------
+    sizes
+        m, (n_cells,).
+    count
+        Expected number of cells.
+    """
+    d = mesh.dim
+    h = cell_sizes(mesh)
+    gap = np.maximum(gap, 1e-12 * max(float(gap.max()), 1e-300))
+    theta = (wanted / np.sum(gap ** (d / (d + 2)))) ** ((d + 2) / 2)
+    factor = np.clip((theta / gap) ** (1.0 / (d + 2)), FINEST, COARSEST)
+    return h * factor, float(np.sum(factor**-d))
+
+
+def refine_near(mesh: Mesh, sizes: np.ndarray, points: np.ndarray) -> np.ndarray:
+    """Return sizes (n_cells,) halved around points (n, dim), growing back with the distance."""
+    centres = mesh.points[mesh.cells].mean(axis=1)
+    h = cell_sizes(mesh)
+    for point in points:  # a few watched points
+        distance = np.linalg.norm(centres - point, axis=1)
+        local = h[np.argmin(distance)]
+        sizes = np.minimum(sizes, 0.5 * local + 0.4 * np.maximum(distance - POINT_REACH * 0.5 * local, 0.0))
+    return sizes
+
+
+def size_field(mesh: Mesh, sizes: np.ndarray) -> SizeField:
+    """Return nodal sizes from cell sizes (n_cells,), smallest first, with limited growth along edges."""
+    node = np.full(mesh.n_nodes, np.inf)
+    np.minimum.at(node, mesh.cells.ravel(), np.repeat(sizes, mesh.dim + 1))
+    total = np.bincount(mesh.cells.ravel(), np.repeat(np.log(sizes), mesh.dim + 1), mesh.n_nodes)
+    count = np.bincount(mesh.cells.ravel(), minlength=mesh.n_nodes)
+    node = np.exp(0.5 * (np.log(node) + total / count))
+    pairs = cell_pairs(mesh.dim)
+    ends = np.concatenate([mesh.cells[:, pairs[:, 0]].ravel(), mesh.cells[:, pairs[:, 1]].ravel()])
+    others = np.concatenate([mesh.cells[:, pairs[:, 1]].ravel(), mesh.cells[:, pairs[:, 0]].ravel()])
+    reach = GROWTH * np.linalg.norm(mesh.points[ends] - mesh.points[others], axis=1)
+    for _ in range(SWEEPS):
+        before = node.copy()
+        np.minimum.at(node, ends, before[others] + reach)
+        if np.array_equal(before, node):
+            break
+    return SizeField(mesh=mesh, size=node)

@@ -1,0 +1,283 @@
+"""Mesh, solve, prove, refine - until every heat flow is as accurate as was asked.
+
+Each round solves the node and the facet network on one mesh. While an interval is too wide, the
+cells' parts of the gap set the sizes of the next mesh. Single temperatures (probes, the extremes of
+each surface) have no proof; they count as settled when a finer mesh moves them by less than
+``POINT_LIMIT`` of the temperatures' range (ISO 10211 asks 0.005), and refinement goes there too.
+"""
+
+from __future__ import annotations
+
+import dataclasses
+import time
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from coldseam.mesh.locate import locate
+from coldseam.mesh.types import Mesh
+from coldseam.solution.adapt import refine_near, size_field, wanted_sizes
+from coldseam.solution.bounds import cell_sizes, check_gap, local_gap, prove
+from coldseam.solution.memory import require_room, room_for
+from coldseam.solution.readings import Interval, boundary_intervals, shape_error, space_intervals, tolerated
+from coldseam.solution.steady import Steady, solve_on
+
+if TYPE_CHECKING:
+    from coldseam.case.model import Case
+
+MOST_ROUNDS = 10
+POINT_LIMIT = 0.002
+LARGEST_STEP = 12.0  # the gap is reduced by at most this factor in one round
+MARGIN = 1.3
+MOST_READINGS = 4  # unit states whose gap is looked at in one round, the worst first
+MOST_NODES = {2: 400_000, 3: 300_000}
+EXACT = 1e-6  # a relative gap below this: the field is linear, a finer mesh changes nothing
+
+
+@dataclass(frozen=True, kw_only=True)
+class Round:
+    """What one round reached.
+
+    Parameters
+    ----------
+    nodes, cells
+        Size of the mesh.
+    error
+        Worst error of a heat flow over what it is allowed; the asked accuracy is met at 1. None without proof.
+    moved
+        Largest move of a watched temperature since the round before, over the temperatures' range.
+    seconds
+        Meshing included.
+    """
+
+    nodes: int
+    cells: int
+    error: float | None
+    moved: float | None
+    seconds: float
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class Solution:
+    """A solved case: the last round's field and how the rounds went.
+
+    Parameters
+    ----------
+    steady
+        The field, its flows and their bounds.
+    rounds
+        All rounds.
+    flows_met, points_met
+        Whether the heat flows and the watched temperatures are as accurate as asked.
+    remarks
+        Why the rounds ended early, if they did.
+    """
+
+    steady: Steady
+    rounds: tuple[Round, ...]
+    flows_met: bool
+    points_met: bool
+    remarks: tuple[str, ...] = ()
+
+
+def solve(case: Case, mesher, log: Callable[[str, str], None]) -> Solution:
+    """Solve a case to its asked accuracy.
+
+    Parameters
+    ----------
+    case
+        The case.
+    mesher
+        From :func:`coldseam.geometry.mesher.open_geometry`.
+    log
+        Called with a stage and a message.
+
+    Raises
+    ------
+    ColdseamError
+        From the geometry, the mesh, the boundaries or the solver.
+    """
+    require_room(case, mesher)
+    size, target, segments = None, None, None
+    rounds: list[Round] = []
+    watched: dict[tuple, tuple[np.ndarray, float]] | None = None
+    while True:
+        start = time.perf_counter()
+        options = {"curve_segments": segments} if segments and mesher.remeshable else {}
+        mesh = mesher.mesh(size, target, **options)
+        log("solve", f"{mesh.n_nodes} nodes, {mesh.n_cells} cells")
+        steady = _proven(case, mesh, log)
+        flows = _flows(steady)
+        error = _worst(steady, flows)
+        before, watched = watched, watched_points(steady)
+        moved, restless = _moves(steady, before, watched)
+        relative = _relative_gap(steady)
+        rounds.append(
+            Round(nodes=mesh.n_nodes, cells=mesh.n_cells, error=error, moved=moved, seconds=time.perf_counter() - start)
+        )
+        log("solve", _round_text(len(rounds), rounds[-1]))
+        flows_met = error is None or error <= 1.0
+        exact = relative is not None and relative < EXACT
+        points_met = exact or not watched or (moved is not None and moved <= POINT_LIMIT)
+        if flows_met and points_met:
+            return Solution(steady=steady, rounds=tuple(rounds), flows_met=flows_met, points_met=points_met)
+        sizes = _next_sizes(steady, flows, error, restless)
+        segments = _next_segments(steady, segments)
+        size = size_field(steady.mesh, sizes)
+        growth = (cell_sizes(steady.mesh) / size.size[steady.mesh.cells].mean(axis=1)) ** mesh.dim
+        target = max(int(growth.sum()), 1)
+        stop = _reason_to_stop(case, mesh, rounds, target)
+        if stop:
+            return Solution(
+                steady=steady, rounds=tuple(rounds), flows_met=flows_met, points_met=points_met, remarks=(stop,)
+            )
+
+
+def _proven(case: Case, mesh: Mesh, log) -> Steady:
+    steady = solve_on(case, mesh)
+    if steady.given.clashes:
+        return steady
+    log("solve", "proving the heat flows")
+    return dataclasses.replace(steady, bounds=prove(steady.mesh, steady.given, steady.weights, steady.response))
+
+
+def _flows(steady: Steady) -> list[tuple[Interval, np.ndarray]]:
+    """Return every heat flow that must be accurate, with the vector that reads it from Lambda."""
+    from coldseam.solution.readings import space_terminals
+
+    readings = []
+    intervals = boundary_intervals(steady)
+    for number, terminal in enumerate(steady.given.terminals):
+        if len(terminal.boundaries) == 1:
+            readings.append((intervals[terminal.boundaries[0]], [number]))
+    for name, interval in space_intervals(steady).items():
+        terminals = space_terminals(steady)[name][0]
+        if len(terminals) > 1 or len(steady.given.terminals[terminals[0]].boundaries) > 1:
+            readings.append((interval, terminals))
+    result = []
+    for interval, terminals in readings:
+        vector = np.zeros(len(steady.state))
+        vector[terminals] = 1.0
+        result.append((interval, vector))
+    return result
+
+
+def _worst(steady: Steady, flows) -> float | None:
+    """Return the largest error over its allowance; None where nothing is proven, 0 where nothing flows."""
+    if steady.bounds is None:
+        return None
+    floor = 1e-9 * float(np.abs(steady.state).max() ** 2 * np.abs(steady.bounds.high).max())
+    if steady.throughput * max(float(np.abs(steady.state).max()), 1e-300) <= floor:
+        return 0.0
+    return max((interval.error / tolerated(steady, interval) for interval, _ in flows), default=0.0)
+
+
+def _relative_gap(steady: Steady) -> float | None:
+    if steady.bounds is None:
+        return None
+    high = abs(float(steady.state @ steady.bounds.high @ steady.state))
+    gap = float(steady.state @ (steady.bounds.high - steady.bounds.low) @ steady.state)
+    return gap / high if high > 0 else 0.0
+
+
+def watched_points(steady: Steady) -> dict[tuple, tuple[np.ndarray, float]]:
+    """Return place (m) and temperature (°C) of every probe and of each facing surface's extremes."""
+    watched: dict[tuple, tuple[np.ndarray, float]] = {}
+    if steady.case.probe:
+        at = np.array([probe.at for probe in steady.case.probe], dtype=float)
+        cells, weights = locate(steady.mesh, at)
+        values = (steady.temperature[steady.mesh.cells[cells]] * weights).sum(axis=1)
+        for probe, place, value in zip(steady.case.probe, at, values, strict=True):
+            watched["probe", probe.name] = (place, float(value))
+    for number, boundary in enumerate(steady.case.boundary):
+        if boundary.space is None:
+            continue
+        nodes = np.unique(steady.mesh.facets[steady.facet_boundary == number])
+        values = steady.temperature[nodes]
+        for kind, pick in (("min", np.argmin(values)), ("max", np.argmax(values))):
+            watched["boundary", boundary.name, kind] = (steady.mesh.points[nodes[pick]], float(values[pick]))
+    return watched
+
+
+def temperature_range(steady: Steady) -> float:
+    """Return the spread of the field's and the outside's temperatures, K."""
+    outside = steady.state[: len(steady.given.terminals)] + steady.reference
+    low = min(float(outside.min()), float(steady.temperature.min()))
+    return max(float(outside.max()), float(steady.temperature.max())) - low
+
+
+def _moves(steady: Steady, before, watched) -> tuple[float | None, list[np.ndarray]]:
+    """Return the largest relative move, and the places of points that moved too much."""
+    span = temperature_range(steady)
+    if span <= 0.0:
+        return 0.0, []
+    if before is None:
+        return None, []
+    moves = {key: abs(value - before[key][1]) / span for key, (_, value) in watched.items() if key in before}
+    restless = [watched[key][0] for key, move in moves.items() if move > POINT_LIMIT]
+    return max(moves.values(), default=0.0), restless
+
+
+def _next_sizes(steady: Steady, flows, error: float | None, restless: list[np.ndarray]) -> np.ndarray:
+    """Return element sizes (m, per cell) for the next mesh."""
+    mesh = steady.mesh
+    if steady.bounds is None:
+        return 0.5 * cell_sizes(mesh)
+    gap = _gap_indicator(steady, flows)
+    factor = np.clip(MARGIN * (error or 0.0), 1.0, LARGEST_STEP)
+    if factor > 1.0:
+        sizes, _ = wanted_sizes(mesh, gap, float(gap.sum()) / factor)
+    else:
+        # The flows are proven; another look at the temperatures needs a mesh that is finer everywhere by a step.
+        sizes = 0.75 * cell_sizes(mesh)
+    return refine_near(mesh, sizes, np.array(restless)) if restless else sizes
+
+
+def _gap_indicator(steady: Steady, flows) -> np.ndarray:
+    """Return the cells' gap, the state's and the worst readings' together, each normalised to 1."""
+    states = [steady.state]
+    ranked = sorted(flows, key=lambda flow: -flow[0].error / tolerated(steady, flow[0]))
+    late = [vector for interval, vector in ranked if interval.error > tolerated(steady, interval)]
+    if len(steady.given.terminals) > 2 or steady.response.network.has_load:
+        states += late[:MOST_READINGS]
+    total = np.zeros(steady.mesh.n_cells)
+    for state in states:
+        gap = np.maximum(_checked_gap(steady, state), 0.0)
+        total += gap / max(float(gap.sum()), 1e-300)
+    return total
+
+
+def _checked_gap(steady: Steady, state: np.ndarray) -> np.ndarray:
+    gap = local_gap(steady.mesh, steady.given, steady.weights, steady.response, steady.bounds, state)
+    check_gap(gap, steady.bounds, state)
+    return gap
+
+
+def _next_segments(steady: Steady, segments: int | None) -> int | None:
+    """Return more segments per circle while the facets' effect takes a large part of the accuracy."""
+    effect = shape_error(steady)
+    if effect <= 0.25 * steady.case.model.accuracy:
+        return segments
+    present = int(steady.mesh.quality.get("curve_segments", 24))
+    return int(np.ceil(present * min(2.0, np.sqrt(effect / (0.2 * steady.case.model.accuracy)))))
+
+
+def _reason_to_stop(case: Case, mesh: Mesh, rounds: list[Round], target: int) -> str:
+    per_node = mesh.n_cells / mesh.n_nodes
+    most = case.model.max_nodes or MOST_NODES[mesh.dim]
+    if len(rounds) >= MOST_ROUNDS:
+        return f"stopped after {MOST_ROUNDS} rounds of refinement"
+    if target / per_node > most:
+        limit = "max_nodes" if case.model.max_nodes else "the program's limit"
+        return f"a finer mesh would need some {target / per_node:,.0f} nodes, more than {limit} of {most:,}".replace(",", " ")
+    if not room_for(target):
+        return f"a finer mesh of some {target:,} cells would not fit in this computer's free memory".replace(",", " ")
+    return ""
+
+
+def _round_text(number: int, entry: Round) -> str:
+    error = "no proof" if entry.error is None else f"error {entry.error:.2f} of what is allowed"
+    moved = "" if entry.moved is None else f", temperatures moved {entry.moved:.4f} of their range"
+    return f"round {number}: {entry.nodes} nodes, {entry.cells} cells, {error}{moved}, {entry.seconds:.1f} s"

@@ -1,0 +1,153 @@
+"""The whole way from a case to its answers: geometry, meshes, solution, answers, files."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from pathlib import Path
+
+import numpy as np
+
+from coldseam.answers.build import build_answers
+from coldseam.answers.types import Answers
+from coldseam.case.model import Case
+from coldseam.errors import CaseError
+from coldseam.geometry.mesher import open_geometry
+from coldseam.mesh.boundaries import claim_facets
+from coldseam.mesh.locate import locate
+from coldseam.mesh.types import Mesh
+from coldseam.report.view import View, model_view
+from coldseam.solution.flux import cell_flux
+from coldseam.solution.rounds import Solution, solve
+
+Log = Callable[[str, str], None]
+
+
+def _quiet(stage: str, message: str) -> None:
+    """Log nothing."""
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class Result:
+    """A solved case.
+
+    Parameters
+    ----------
+    case
+        The case.
+    answers
+        What is written to answers.json, as dataclasses.
+    solution
+        Mesh, temperatures (°C at the nodes), bounds and rounds, as arrays.
+    """
+
+    case: Case
+    answers: Answers
+    solution: Solution
+
+    @property
+    def mesh(self) -> Mesh:
+        """The last mesh, m."""
+        return self.solution.steady.mesh
+
+    @property
+    def temperature(self) -> np.ndarray:
+        """Temperature at the mesh's nodes, °C, shape (n_nodes,)."""
+        return self.solution.steady.temperature
+
+    def view(self) -> View:
+        """Return what pictures and field files are made from."""
+        steady = self.solution.steady
+        plain = model_view(self.case, steady.mesh, steady.facet_boundary)
+        return View(
+            **{
+                **plain.__dict__,
+                "temperature": steady.temperature,
+                "cell_flux": cell_flux(steady),
+                "answers": self.answers.as_dict(),
+            }
+        )
+
+    def grid(self):
+        """Return the field as a ``pyvista.UnstructuredGrid`` (m, °C, W/m²)."""
+        from coldseam.report.grid import grid
+
+        return grid(self.view())
+
+    def write(self, folder: str | Path, *, pictures: bool = True, log: Log | None = None) -> list[Path]:
+        """Write answers.json, tables, fields and pictures into a folder and return the paths.
+
+        Raises
+        ------
+        OutputError
+            The folder can't be written.
+        """
+        from coldseam.report.output import write_all
+
+        return write_all(self.view(), Path(folder), pictures=pictures, log=log or _quiet)
+
+
+def run(case: Case, log: Log | None = None) -> Result:
+    """Solve a case to its asked accuracy.
+
+    Parameters
+    ----------
+    case
+        From :func:`coldseam.case.read.load`.
+    log
+        Called with a stage ("geometry", "mesh", "solve", ...) and a message; None for silence.
+
+    Raises
+    ------
+    ColdseamError
+        With one clear message; faults of the case name file, line and key.
+    """
+    log = log or _quiet
+    try:
+        with open_geometry(case, log=log) as mesher:
+            solution = solve(case, mesher, log)
+        return Result(case=case, answers=build_answers(solution), solution=solution)
+    except CaseError as error:
+        raise error.located(case.source.place) from error
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class Checked:
+    """A case whose geometry was built and whose boundaries fit, with nothing solved."""
+
+    case: Case
+    view: View
+
+
+def check(case: Case, log: Log | None = None) -> Checked:
+    """Build the geometry of a case and claim its faces, but solve nothing.
+
+    Raises
+    ------
+    ColdseamError
+        As :func:`run`.
+    """
+    log = log or _quiet
+    try:
+        with open_geometry(case, log=log) as mesher:
+            mesh = mesher.mesh()
+        facet_boundary = claim_facets(case, mesh)
+        require_probes_inside(case, mesh)
+    except CaseError as error:
+        raise error.located(case.source.place) from error
+    return Checked(case=case, view=model_view(case, mesh, facet_boundary))
+
+
+def require_probes_inside(case: Case, mesh: Mesh) -> None:
+    """Raise a CaseError that names every probe outside the model."""
+    from coldseam.errors import Fault
+
+    if not case.probe:
+        return
+    cells, _ = locate(mesh, np.array([probe.at for probe in case.probe], dtype=float))
+    faults = [
+        Fault(path=("probe", int(n), "at"), what=f'the probe "{case.probe[n].name}" lies outside the model')
+        for n in np.flatnonzero(cells < 0)
+    ]
+    if faults:
+        raise CaseError(faults)

@@ -1,0 +1,49 @@
+"""Every value of references.py, from its case file through the whole program."""
+
+from __future__ import annotations
+
+import pytest
+from published import runs
+from published.references import REFERENCES
+
+ROUND_OFF = 1e-9
+"""Relative widening of every interval: the references are exact to about this much only."""
+
+CASES = sorted({(reference.case, reference.change) for reference in REFERENCES}, key=str)
+
+
+@pytest.mark.parametrize("reference", REFERENCES, ids=lambda reference: reference.label)
+def test_value_within_the_source_s_tolerance(reference):
+    value = reference.of(runs.published(reference.case, reference.change))
+    assert value == pytest.approx(reference.value, rel=0, abs=reference.tolerance), (
+        f"{value:.8g} {reference.unit} is {value - reference.value:+.3g} from {reference.value:.8g}: {reference.source}"
+    )
+
+
+@pytest.mark.parametrize(
+    "reference", [r for r in REFERENCES if r.is_flow], ids=lambda reference: reference.label
+)
+def test_reference_within_the_interval(reference):
+    interval = reference.interval(runs.published(reference.case, reference.change))
+    assert interval is not None, "every heat flow has an interval"
+    low, high = interval
+    slack = reference.allowance + ROUND_OFF * (abs(reference.value) + abs(reference.offset))
+    assert low - slack <= reference.value <= high + slack, (
+        f"{reference.value:.8g} {reference.unit} lies outside {low:.8g} ... {high:.8g}"
+    )
+
+
+@pytest.mark.parametrize(("case", "change"), CASES, ids=str)
+def test_balance_closes_and_intervals_hold_their_flow(case, change):
+    assert runs.faults(runs.published(case, change)) == []
+
+
+def test_every_case_file_has_a_reference():
+    files = {path.stem for path in runs.HERE.glob("*.toml")}
+    assert files == {reference.case for reference in REFERENCES}
+
+
+@pytest.mark.parametrize("reference", REFERENCES, ids=lambda reference: reference.label)
+def test_every_reference_says_where_from_and_how_close(reference):
+    assert reference.source and reference.reason and reference.unit
+    assert 0 < reference.tolerance
