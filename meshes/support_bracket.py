@@ -53,7 +53,7 @@ def main(output):
 
 
 def write_names(path, names):
-    """Put the solids' names into the file, where the kernel writes numbers; it writes them in the order of their tags."""
+    """Put the solids' names into the file, where the kernel writes numbers, in the order of their tags."""
     text = path.read_text()
     product = r"(PRODUCT\(\s*)'Open CASCADE STEP translator [\d.]+ 1%s',\s*'[^']*'"
     text, count = re.subn(product % "", lambda found: f"{found[1]}'support bracket','support bracket'", text)

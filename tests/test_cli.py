@@ -5,6 +5,8 @@ from __future__ import annotations
 import io
 import json
 import os
+import resource
+import signal
 import subprocess
 import sys
 import time
@@ -55,13 +57,14 @@ def test_help_imports_nothing_heavy():
 
 
 def test_help_answers_within_0_3_s():
-    # The best of seven: what the program needs, not what else the machine is doing.
+    # Processor time of the best of five runs: what the program needs, whatever else the machine is doing.
     taken = []
-    for _ in range(7):
-        begun = time.perf_counter()
+    for _ in range(5):
+        before = resource.getrusage(resource.RUSAGE_CHILDREN)
         command("--help")
-        taken.append(time.perf_counter() - begun)
-    assert min(taken) < 0.3
+        after = resource.getrusage(resource.RUSAGE_CHILDREN)
+        taken.append(after.ru_utime + after.ru_stime - before.ru_utime - before.ru_stime)
+    assert 0 < min(taken) < 0.3
 
 
 def test_the_help_and_the_readme_name_the_same_exit_codes():
@@ -263,7 +266,7 @@ def test_cases_and_library_travel_in_the_wheel(tmp_path):
     assert {f"coldseam/shipped/{path.as_posix()}" for path in shipped.shipped_files()} <= inside
     library = (TOP / "solver" / "coldseam" / "case" / "library").glob("*.toml")
     assert {f"coldseam/case/library/{path.name}" for path in library} <= inside
-    code = {path.relative_to(TOP / "solver").as_posix() for path in (TOP / "solver" / "coldseam").rglob("*.py")}
+    code = {path.relative_to(source / "solver").as_posix() for path in (source / "solver" / "coldseam").rglob("*.py")}
     assert code <= inside
     done = command("examples", str(tmp_path / "mine"), source=tmp_path / "installed")
     assert done.returncode == 0, done.stderr
@@ -315,3 +318,120 @@ def test_progress_outlives_its_reader():
     with progress.Log(Gone(), live=False) as log:
         log("solving", "round 1")
         log("solving", "round 2")
+
+
+# -------------------------------------------------------------------------- a whole run
+
+WALL = """
+title = "Plain wall"
+[model]
+dimensions = 2
+[spaces.hall]
+temperature = 20
+surface_resistance = 0.13
+[spaces.store]
+temperature = -20
+surface_resistance = 0.13
+[materials.foam]
+conductivity = 0.025
+[[body]]
+name = "wall"
+material = "foam"
+box = { from = [0, 0], to = [100, 100] }
+[[boundary]]
+name = "warm"
+on = { plane = { y = 0 } }
+space = "hall"
+[[boundary]]
+name = "cold"
+on = { plane = { y = 100 } }
+space = "store"
+[[boundary]]
+name = "cuts"
+on = "rest"
+adiabatic = true
+"""
+# 40 K over 0.1 m of width: 40 * 0.1 / (0.13 + 0.1/0.025 + 0.13) = 0.93897 W/m.
+LIMIT = '[[limit]]\nname = "leak"\nquantity = {{ space = "hall", heat_flow = true }}\nat_most = {}\n'
+
+
+@pytest.fixture
+def wall(tmp_path):
+    """A function that writes the plain wall with something added, and returns the file."""
+
+    def write(more: str = "") -> str:
+        path = tmp_path / "wall.toml"
+        path.write_text(WALL + more, encoding="utf-8")
+        return str(path)
+
+    return write
+
+
+def test_a_run_prints_the_answer_alone_and_writes_it(wall, tmp_path, capsys):
+    out = tmp_path / "a" / "b"
+    assert cli.main(["run", wall(), "--out", str(out), "--no-pictures"]) == 0
+    shown = capsys.readouterr()
+    assert shown.out.startswith("Plain wall\n\nHeat flow")
+    assert "from space hall" in shown.out
+    assert "solve" not in shown.out
+    assert "] solve: " in shown.err
+    answers = json.loads((out / "answers.json").read_text(encoding="utf-8"))
+    assert answers["spaces"]["hall"]["heat_flow"] == pytest.approx(4 / 4.26, rel=1e-9)
+    assert not list(out.glob("*.png"))
+    named = [Path(line.strip()) for line in shown.out.split("\nFiles\n")[1].splitlines()]
+    assert sorted(named) == sorted(out.iterdir())
+
+
+@pytest.mark.parametrize(("bound", "code", "word"), [(0.95, 0, "met"), (0.93, 6, "NOT MET")])
+def test_a_limit_decides_the_exit_code(wall, tmp_path, capsys, bound, code, word):
+    case = wall(LIMIT.format(bound))
+    assert cli.main(["run", case, "--out", str(tmp_path / "out"), "--no-pictures"]) == code
+    assert f"  {word} " in capsys.readouterr().out
+    assert (tmp_path / "out" / "answers.json").exists()
+
+
+def test_a_check_names_the_parts_and_solves_nothing(wall, capsys):
+    assert cli.main(["check", wall()]) == 0
+    shown = capsys.readouterr().out
+    assert "Nothing was solved" in shown
+    assert "0.1000 m²/m   space hall" in shown
+
+
+def test_an_output_folder_that_is_a_file_is_refused_before_the_work(wall, tmp_path, capsys):
+    (tmp_path / "out").write_text("", encoding="utf-8")
+    assert cli.main(["run", wall(), "--out", str(tmp_path / "out")]) == 5
+    assert "] " not in capsys.readouterr().err  # no line of progress: nothing had begun
+
+
+def test_a_fault_that_only_the_geometry_shows_is_placed_too(wall, tmp_path):
+    more = '[[probe]]\nname = "astray"\nat = [500, 500]\n'
+    done = command("run", wall(more), "--out", str(tmp_path / "out"))
+    assert done.returncode == 2
+    line = (WALL + more).splitlines().index("at = [500, 500]") + 1
+    assert f"wall.toml:{line}: " in done.stderr
+
+
+def test_ctrl_c_in_the_middle_of_a_run_leaves_old_answers_whole(wall, tmp_path):
+    out = tmp_path / "out"
+    out.mkdir()
+    (out / "answers.json").write_text("old", encoding="utf-8")
+    fine = wall().replace("wall.toml", "fine.toml")
+    Path(fine).write_text(WALL.replace("dimensions = 2", 'dimensions = 2\nsize = "0.1 mm"'), encoding="utf-8")
+    with subprocess.Popen(
+        [sys.executable, "-m", "coldseam", "run", fine, "--out", str(out)],
+        env={**os.environ, "PYTHONPATH": str(TOP / "solver")},
+        stdout=subprocess.PIPE,
+        stderr=subprocess.PIPE,
+        text=True,
+        start_new_session=True,
+    ) as process:
+        for line in process.stderr:  # a terminal sends the signal to every process of the foreground group
+            if "geometry" in line or "mesh" in line:
+                os.killpg(process.pid, signal.SIGINT)
+                break
+        rest = process.stderr.read()
+        assert process.wait(timeout=60) == 130
+    assert rest.splitlines()[-1] == "coldseam: interrupted"
+    assert "Traceback" not in rest
+    assert [path.name for path in out.iterdir()] == ["answers.json"]
+    assert (out / "answers.json").read_text(encoding="utf-8") == "old"

@@ -9,7 +9,6 @@ from __future__ import annotations
 import argparse
 import os
 import sys
-import traceback
 from collections.abc import Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, TextIO
@@ -83,7 +82,8 @@ def main(arguments: Sequence[str] | None = None) -> int:
             stream.reconfigure(errors="replace")
     options = parser().parse_args(arguments)
     try:
-        return options.do(options)
+        code: int = options.do(options)
+        return code
     except ColdseamError as error:
         return _fail(str(error), error.exit_code, options.debug)
     except KeyboardInterrupt:
@@ -105,6 +105,8 @@ def main(arguments: Sequence[str] | None = None) -> int:
 
 def _fail(text: str, code: int, debug: bool) -> int:
     if debug:
+        import traceback
+
         traceback.print_exc(file=sys.stderr)
     _say(f"coldseam: {text}", sys.stderr)
     return code
@@ -126,6 +128,8 @@ def _log(options: argparse.Namespace) -> Log:
 
 
 def _run(options: argparse.Namespace) -> int:
+    import json
+
     from coldseam.case.read import load
     from coldseam.report.files import prepare_folder
 
@@ -138,7 +142,8 @@ def _run(options: argparse.Namespace) -> int:
 
         result = run(case, log)
         written = result.write(folder, pictures=not options.no_pictures, log=log)
-    answers = result.answers.as_dict()
+    # As written: drawing adds to the warnings what could not be drawn.
+    answers = json.loads((folder / "answers.json").read_text(encoding="utf-8"))
     _say(summary(answers, [str(path) for path in written]))
     met = all(limit["met"] for limit in answers["limits"].values())
     return 0 if met else LIMIT_NOT_MET
@@ -152,12 +157,15 @@ def _check(options: argparse.Namespace) -> int:
     folder = None if options.out is None else prepare_folder(options.out)
     with _log(options) as log:
         log("starting", "loading the numerics")
+        from coldseam.report.draw import draw_all
         from coldseam.report.summary import model_summary
+        from coldseam.report.view import Drawings
         from coldseam.study import check
 
-        checked = check(case, log)
-        written = [] if folder is None else checked.write(folder, log=log)
-    _say(model_summary(checked.view, [str(path) for path in written]))
+        view = check(case, log).view
+        drawn = Drawings(pictures=()) if folder is None else draw_all(view, folder, log)
+    files = [] if folder is None else [str(folder / picture.file) for picture in drawn.pictures]
+    _say(model_summary(view, files, [*case.warnings, *drawn.warnings]))
     return 0
 
 

@@ -2,13 +2,16 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 
 import numpy as np
 
+from coldseam.answers.bridges import BridgeAnswers, require_bridges, solve_bridges
 from coldseam.answers.build import build_answers
+from coldseam.answers.limits import require_answerable
+from coldseam.answers.superpose import superposed
 from coldseam.answers.types import Answers
 from coldseam.case.model import Case
 from coldseam.errors import CaseError
@@ -39,11 +42,34 @@ class Result:
         What is written to answers.json, as dataclasses.
     solution
         Mesh, temperatures (°C at the nodes), bounds and rounds, as arrays.
+    bridges
+        Its thermal bridges.
     """
 
     case: Case
     answers: Answers
     solution: Solution
+    bridges: BridgeAnswers = BridgeAnswers()
+
+    def at(self, temperatures: Mapping[str, float | str]) -> Result:
+        """Return the result at other temperatures of some spaces, superposed and not solved again.
+
+        Parameters
+        ----------
+        temperatures
+            By name of the space: °C, or text with its unit; the others stay.
+
+        Raises
+        ------
+        CaseError
+            An unknown space, or fixed surfaces that touch and would no longer be alike.
+        """
+        try:
+            solution = superposed(self.solution, temperatures)
+            case = solution.steady.case
+            return Result(case=case, answers=build_answers(solution, self.bridges), solution=solution, bridges=self.bridges)
+        except CaseError as error:
+            raise error.located(self.case.source.place) from error
 
     @property
     def mesh(self) -> Mesh:
@@ -104,9 +130,12 @@ def run(case: Case, log: Log | None = None) -> Result:
     """
     log = log or _quiet
     try:
+        require_bridges(case)
+        require_answerable(case)
         with open_geometry(case, log=log) as mesher:
             solution = solve(case, mesher, log)
-        return Result(case=case, answers=build_answers(solution), solution=solution)
+            bridges = solve_bridges(solution, mesher, log)
+        return Result(case=case, answers=build_answers(solution, bridges), solution=solution, bridges=bridges)
     except CaseError as error:
         raise error.located(case.source.place) from error
 

@@ -1,16 +1,19 @@
 """Reading good cases: SI values, names, materials, files, changes from Python."""
 
+import copy
 import hashlib
 import math
 import pickle
 import subprocess
 import sys
+from pathlib import Path
 
 import numpy as np
 import pytest
 from case_samples import ALL, BOX, CORNER, PANEL, ROUND
 from pydantic import ValidationError
 
+import coldseam
 from coldseam.case.read import load, loads, replace
 from coldseam.errors import CaseError
 
@@ -188,10 +191,10 @@ def test_a_path_with_a_null_character():
 )
 def test_replace(key, value, read, expected):
     case = loads(PANEL)
-    before = read(case)
+    before, typed = read(case), copy.deepcopy(case.raw)
     other = replace(case, key, value)
     assert read(other) == (None if expected is None else pytest.approx(expected))
-    assert read(case) == before != read(other)
+    assert read(case) == before != read(other) and case.raw == typed
     assert other.source.sha256 != case.source.sha256 and len(other.source.changed) == 1
     assert read(loads(other.source.text)) == read(other)
 
@@ -219,6 +222,10 @@ def test_replace_refuses(key, value, words):
 
 def test_importing_the_models_is_light():
     """The case must not pull in the meshing and drawing libraries (house rule)."""
-    code = "import sys, coldseam.case.read; print([m for m in ('gmsh', 'vtk', 'pyvista', 'scipy', 'matplotlib', 'numpy') if m in sys.modules])"
+    heavy = ("gmsh", "vtk", "pyvista", "scipy", "matplotlib", "numpy")
+    code = f"import coldseam.case.read; print([m for m in {heavy} if m in sys.modules])"
+    # The child must find the package where this process did, installed or not.
+    root = str(Path(coldseam.__file__).parents[1])
+    code = f"import sys; sys.path.insert(0, {root!r}); {code}"
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert done.stdout.strip() == "[]"

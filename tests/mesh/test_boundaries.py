@@ -9,6 +9,7 @@ from coldseam.errors import CaseError
 from coldseam.mesh.boundaries import claim_facets, select
 from coldseam.mesh.build import build_mesh
 from coldseam.mesh.measure import facet_centres, facet_measure, facet_normals
+from coldseam.mesh.surface import shell_volumes
 
 
 @pytest.fixture
@@ -99,6 +100,15 @@ def test_shells_in_the_plane_and_about_the_axis(grid, picker):
     assert area(turned, outer) == pytest.approx(2 * np.pi + 2 * np.pi, rel=1e-12)
     flat = grid(axis, axis, drop=hole)
     assert not select(picker(shell="cavity"), flat).any(), "in the plane the notch is open"
+
+
+def test_a_slender_hollow_on_the_axis_is_a_cavity(grid, picker):
+    """Its open curve closes along r = 0 and nowhere else: measured from another place it would seem to hold material."""
+    hole = lambda c: (c[:, 0] < 0.125) & (c[:, 1] > 0.25) & (c[:, 1] < 0.75)  # noqa: E731
+    axis = np.linspace(0, 1, 9)
+    mesh = grid(axis, axis, drop=hole, axisymmetric=True)
+    cavity = select(picker(shell="cavity"), mesh)
+    assert area(mesh, cavity) == pytest.approx(2 * np.pi * 0.125 * 0.5 + 2 * np.pi * 0.125**2, rel=1e-12)
 
 
 def test_two_bodies_apart_are_both_outer(grid, picker):
@@ -247,4 +257,5 @@ def test_contact_doubled_nodes_leave_one_shell(grid, picker):
         links=np.stack([left_side, twin[left_side]], axis=1),
         link_contact=np.zeros(len(left_side), dtype=int),
     )
+    assert shell_volumes(linked)[1] == pytest.approx([0.04**3, -(0.02**3)], rel=1e-12)
     assert area(linked, select(picker(shell="cavity"), linked)) == pytest.approx(6 * 0.02**2, rel=1e-12)

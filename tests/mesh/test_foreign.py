@@ -253,7 +253,7 @@ def refusal(case):
         ("garbage.vtk", b"# vtk DataFile Version 3.0\nx\nASCII\nDATASET NOTHING\n", "can't be read"),
         ("script.geo", b"Printf('x');", "is a script"),
         ("part.xyz", b"x", "of a kind that is not known"),
-        ("hollow.vtu", b"<VTKFile type='UnstructuredGrid' version='0.1'><UnstructuredGrid/></VTKFile>", "hollow"),
+        ("hollow.vtu", b"<VTKFile type='UnstructuredGrid' version='0.1'><UnstructuredGrid/></VTKFile>", "No Piece"),
     ],
 )  # fmt: skip
 def test_bad_files_are_refused_in_a_sentence(tmp_path, capfd, name, content, words):

@@ -68,10 +68,12 @@ def test_a_collapsed_hexahedron_is_a_wedge():
 
 
 def test_plane_quads_take_the_better_diagonal():
-    dart = np.array([[0, 0], [1, 0], [0.2, 0.2], [0, 1.0]])  # re-entrant at node 2
-    for turn in range(4):
-        quad = (np.arange(4) + turn) % 4
-        pieces = plane_quads_to_triangles(dart, quad[None])
-        assert signed_measure(dart, pieces).min() > 0
-        assert np.all(np.any(pieces == 2, axis=1))
-        assert signed_measure(dart, plane_quads_to_triangles(dart, quad[None, ::-1])).max() < 0
+    dart = np.array([[0, 0], [1, 0], [0.2, 0.2], [0, 1.0]])  # re-entrant at its third corner
+    for first in range(4):  # which corner has the smallest number
+        number = (np.arange(4) - first) % 4
+        points = np.empty_like(dart)
+        points[number] = dart
+        pieces = plane_quads_to_triangles(points, number[None])
+        assert signed_measure(points, pieces).min() > 0
+        assert np.all(np.any(pieces == number[2], axis=1))
+        assert signed_measure(points, plane_quads_to_triangles(points, number[None, ::-1])).max() < 0

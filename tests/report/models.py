@@ -148,8 +148,12 @@ def square(n=24):
 
 def panel2d(length=4.0, skin=0.0005, n=120):
     """A long thin panel with steel skins and a joint profile: 1:40."""
-    across = np.concatenate([[0, skin / 2, skin], np.linspace(skin, 0.1 - skin, 14)[1:-1], [0.1 - skin, 0.1 - skin / 2, 0.1]])
-    along = np.unique(np.concatenate([np.linspace(0, length, n), length / 2 + np.array([-0.002, -0.001, 0, 0.001, 0.002])]))
+    across = np.concatenate(
+        [[0, skin / 2, skin], np.linspace(skin, 0.1 - skin, 14)[1:-1], [0.1 - skin, 0.1 - skin / 2, 0.1]]
+    )
+    along = np.unique(
+        np.concatenate([np.linspace(0, length, n), length / 2 + np.array([-0.002, -0.001, 0, 0.001, 0.002])])
+    )
     rib = lambda x: np.abs(x[:, 0] - length / 2) < 0.0011  # noqa: E731
     return solved(
         (along, across),

@@ -2,10 +2,19 @@
 
 from __future__ import annotations
 
+import dataclasses
+
 import numpy as np
 
 from coldseam._version import __version__
-from coldseam.answers.types import Answers, BodyAnswer, BoundaryAnswer, Extremes, ProbeAnswer, SpaceAnswer
+from coldseam.answers.bridges import BridgeAnswers
+from coldseam.answers.enclosure import enclosures
+from coldseam.answers.limits import limit_warnings, limits
+from coldseam.answers.losses import losses
+from coldseam.answers.parts import parts
+from coldseam.answers.points import weighting
+from coldseam.answers.surfaces import surfaces
+from coldseam.answers.types import Answers, BodyAnswer, BoundaryAnswer, Extremes, ProbeAnswer, SpaceAnswer, place
 from coldseam.errors import CaseError, Fault
 from coldseam.mesh.locate import locate
 from coldseam.mesh.measure import cell_measure, facet_measure
@@ -35,23 +44,50 @@ UNITS = {
     "psi": "W/(m K)",
     "chi": "W/K",
     "film": "W/(m2 K)",
+    "transmittance": "W/(m2 K)",
+    "resistance": "m2 K/W",
+    "vapour_pressure": "Pa",
+    "humidity": "1",
+    "share": "1",
+    "f_Rsi": "1",
+    "weighting": "1",
+    "flanking": "m",
 }
 SECTION_UNITS = {"heat_flow": "W/m", "area": "m2/m", "volume": "m3/m", "coupling": "W/(m K)"}
-MM = 1e3
 
 
-def build_answers(solution: Solution) -> Answers:
+def build_answers(solution: Solution, bridges: BridgeAnswers | None = None) -> Answers:
     """Return the answers of a solved case.
+
+    Parameters
+    ----------
+    solution
+        The solved case.
+    bridges
+        Its thermal bridges, from :func:`coldseam.answers.bridges.solve_bridges`.
 
     Raises
     ------
     CaseError
-        A probe lies outside the model.
+        A probe lies outside the model, or a limit can't be answered.
     """
+    bridges = bridges or BridgeAnswers()
+    answers = _plain_answers(solution, bridges)
+    verdicts = limits(solution.steady.case, answers)
+    told = (*answers.warnings, *bridges.warnings, *limit_warnings(verdicts))
+    return dataclasses.replace(answers, limits=verdicts, warnings=told)
+
+
+def _plain_answers(solution: Solution, bridges: BridgeAnswers) -> Answers:
+    """Return the answers without the limits, which are about them."""
     steady = solution.steady
     case, mesh = steady.case, steady.mesh
     section = mesh.dim == 2 and not mesh.axisymmetric
     couplings = coupling(steady)
+    boxes = enclosures(steady)
+    where, reacts = losses(steady)
+    for name, entry in where.items():
+        entry["parts"] = parts(steady, name, bridges.entries, boxes)
     return Answers(
         title=case.title,
         dimensions=case.model.dimensions,
@@ -73,6 +109,12 @@ def build_answers(solution: Solution) -> Answers:
         coupling_intervals={a: {b: (i.low, i.high) for b, i in row.items()} for a, row in couplings.items()},
         probes=probes(steady),
         bodies=_bodies(steady),
+        bridges=bridges.entries,
+        surfaces=surfaces(steady),
+        weighting=weighting(steady),
+        losses=where,
+        sensitivities=reacts,
+        enclosures=boxes,
         solver={
             "method": steady.response.method,
             "iterations": list(steady.response.iterations),
@@ -124,7 +166,7 @@ def warnings(solution: Solution) -> tuple[str, ...]:
         reached = asked * solution.rounds[-1].error
         found.append(f"the asked accuracy of {asked:.2%} was not reached: the worst heat flow is known to {reached:.2%}")
     if not solution.points_met:
-        found.append("surface and probe temperatures still moved by more than 0.2 % of their range on the last mesh")
+        found.append("surface and probe temperatures still moved by more than 0.3 % of their range on the last mesh")
     found += list(solution.remarks)
     return tuple(found)
 
@@ -144,11 +186,6 @@ def extremes(mesh: Mesh, temperature: np.ndarray, facets: np.ndarray) -> Extreme
         max_at=place(mesh.points[high]),
         mean=mean,
     )
-
-
-def place(point: np.ndarray) -> tuple[float, ...]:
-    """Return a position in mm for the answers."""
-    return tuple(round(float(x) * MM, 6) + 0.0 for x in point)
 
 
 def _boundaries(steady: Steady) -> dict[str, BoundaryAnswer]:

@@ -7,8 +7,11 @@ places mm, areas m² (cross-section m² per metre).
 from __future__ import annotations
 
 import dataclasses
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 from typing import Any
+
+MM = 1e3
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -97,6 +100,7 @@ class Answers:
     bodies: dict[str, BodyAnswer]
     bridges: dict[str, Any] = field(default_factory=dict)
     surfaces: dict[str, Any] = field(default_factory=dict)
+    weighting: dict[str, Any] = field(default_factory=dict)
     losses: dict[str, Any] = field(default_factory=dict)
     sensitivities: dict[str, Any] = field(default_factory=dict)
     enclosures: dict[str, Any] = field(default_factory=dict)
@@ -107,6 +111,11 @@ class Answers:
     def as_dict(self) -> dict[str, Any]:
         """Return plain dicts, lists and numbers, as written to answers.json."""
         return plain(self)
+
+
+def place(point: Sequence[float]) -> tuple[float, ...]:
+    """Return a position (m) in mm for the answers."""
+    return tuple(round(float(x) * MM, 6) + 0.0 for x in point)
 
 
 def plain(value: Any) -> Any:

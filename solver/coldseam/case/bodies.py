@@ -24,7 +24,7 @@ from coldseam.case.values import (
     Numbers,
     SpecificHeat,
     Uncertainty,
-    _plain,
+    checked,
 )
 
 if TYPE_CHECKING:
@@ -71,7 +71,7 @@ class _Conductivity:
         return rows
 
     def __get_pydantic_core_schema__(self, source: Any, handler: Any) -> Any:
-        return _plain(self.read)
+        return checked(self.read)
 
 
 class _Axes:
@@ -95,7 +95,7 @@ class _Axes:
         return rows
 
     def __get_pydantic_core_schema__(self, source: Any, handler: Any) -> Any:
-        return _plain(self.read)
+        return checked(self.read)
 
 
 _AMOUNT_SCHEMA = {"anyOf": [{"type": "number", "exclusiveMinimum": 0}, {"type": "string"}]}

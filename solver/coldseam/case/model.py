@@ -26,7 +26,6 @@ from coldseam.case.shapes import (
     Extent,
     Face,
     Layer,
-    Layers,
     Opening,
     Polygon,
     Repeat,
@@ -41,8 +40,6 @@ from coldseam.case.values import (
     Amount,
     Attached,
     BodyRef,
-    BoundaryRef,
-    BridgeRef,
     Film,
     Flag,
     HeatFlow,
@@ -51,16 +48,15 @@ from coldseam.case.values import (
     Length,
     MaterialRef,
     Name,
-    ProbeRef,
     Resistance,
     ResistanceOrZero,
     Size,
     Some,
     SpaceRef,
     Temperature,
-    Vector,
-    _plain,
+    checked,
 )
+from coldseam.case.wanted import Bridge, Flanking, Limit, Probe, Quantity
 
 __all__ = [
     "AXES", "FACES", "FLAT_SHAPES", "SHAPES", "SOLID_SHAPES", "Body", "Boundary", "Box", "Bridge", "Case", "Cone",
@@ -89,7 +85,7 @@ class _LengthUnit:
             raise ValueError(f'"{value}" is not a unit of length; accepted is {units}') from error
 
     def __get_pydantic_core_schema__(self, source: Any, handler: Any) -> Any:
-        return _plain(self.read)
+        return checked(self.read)
 
 
 class ModelTable(Table):
@@ -249,166 +245,6 @@ class Contact(Table):
         """Yield a fault for a joint of a body with itself."""
         if self.between[0] == self.between[1]:
             yield ("between",), "needs two different bodies"
-
-
-class Probe(Table):
-    """A point whose temperature is wanted."""
-
-    name: Name
-    at: Vector = Field(description="mm")
-
-
-class Flanking(Table):
-    """A plain wall beside a linear bridge."""
-
-    layers: Annotated[Layers, Some()] = Field(description='["material", thickness in mm], in order')
-    length: Size = Field(description="mm; inside length, or outside length where the basis is external")
-    length_external: Size | None = Field(None, description="outside length, mm")
-    between: tuple[SpaceRef, SpaceRef] = Field(description="the spaces on its two sides")
-
-    def check(self, context: Context) -> Iterator[Trouble]:
-        """Yield a fault for a wall with one space on both sides."""
-        if self.between[0] == self.between[1]:
-            yield ("between",), "needs two different spaces"
-
-
-class Bridge(Table):
-    """A thermal bridge whose transmittance is wanted."""
-
-    name: Name
-    kind: Literal["linear", "point"]
-    basis: Literal["internal", "external", "both"] | None = None
-    flanking: Annotated[tuple[Flanking, ...], Some()] | None = None
-    without: Annotated[tuple[BodyRef, ...], Some()] | None = None
-    count: Annotated[int, Field(strict=True, ge=1)] | None = Field(None, description="pieces, 1 if not given")
-
-    def check(self, context: Context) -> Iterator[Trouble]:
-        """Yield keys that belong to the other kind, keys missing, and too few spaces."""
-        linear, point = ("basis", "flanking"), ("without", "count")
-        needed, barred = (linear, point) if self.kind == "linear" else (("without",), linear)
-        yield from (((key,), f'is required for kind = "{self.kind}" and missing')
-                    for key in needed if getattr(self, key) is None)  # fmt: skip
-        yield from (((key,), f'does not go with kind = "{self.kind}"')
-                    for key in barred if getattr(self, key) is not None)  # fmt: skip
-        spaces = context.names.get("space")
-        if spaces is not None and len(spaces) < 2:
-            yield (), f"a bridge lies between two spaces, and the case has {len(spaces)}"
-        for position, wall in enumerate(self.flanking or ()):
-            if self.basis == "both" and wall.length_external is None:
-                yield ("flanking", position, "length_external"), 'is required for basis = "both" and missing'
-        if self.without is not None and len(set(self.without)) < len(self.without):
-            yield ("without",), "names a body twice"
-
-    @property
-    def pieces(self) -> int:
-        """Number of pieces that a point bridge stands for."""
-        return self.count or 1
-
-
-Extreme = Literal["min", "max", "mean"]
-_TARGETS = ("space", "boundary", "probe", "bridge")
-_MEASURES = {
-    "space": ("heat_flow",),
-    "boundary": ("heat_flow", "temperature", "f_Rsi", "surface_humidity"),
-    "probe": ("temperature",),
-    "bridge": ("psi", "chi"),
-}
-_MEASURE_UNITS = {
-    "heat_flow": "heat flow",
-    "temperature": "temperature",
-    "f_Rsi": "ratio",
-    "surface_humidity": "ratio",
-    "psi": "linear transmittance",
-    "chi": "point transmittance",
-}
-
-
-class Quantity(Table):
-    """Which answer a limit is about."""
-
-    ONE_OF: ClassVar = (_TARGETS, tuple(_MEASURE_UNITS))
-    space: SpaceRef | None = None
-    boundary: BoundaryRef | None = None
-    probe: ProbeRef | None = None
-    bridge: BridgeRef | None = None
-    heat_flow: Literal[True] | None = None
-    temperature: Literal[True, "min", "max", "mean"] | None = None
-    psi: Literal[True] | None = None
-    chi: Literal[True] | None = None
-    f_Rsi: Literal[True] | None = None
-    surface_humidity: Literal[True] | None = None
-
-    @classmethod
-    def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
-        """See that what is asked goes with what it is asked of."""
-        targets = [key for key in _TARGETS if key in data]
-        measures = [key for key in _MEASURE_UNITS if key in data]
-        if len(targets) != 1 or len(measures) != 1:
-            return data, []
-        target, measure = targets[0], measures[0]
-        accepted = _MEASURES[target]
-        if measure not in accepted:
-            return data, [((measure,), f"does not go with {target}, which takes {listing(accepted, last='or')}")]
-        if target == "boundary" and measure == "temperature" and data[measure] is True:
-            return data, [((measure,), 'of a boundary is one of "min", "max" and "mean"')]
-        if target == "probe" and isinstance(data[measure], str):
-            return data, [((measure,), "of a probe is temperature = true")]
-        return data, []
-
-    @property
-    def target(self) -> str:
-        """What it is asked of: ``"space"``, ``"boundary"``, ``"probe"`` or ``"bridge"``."""
-        return next(key for key in _TARGETS if getattr(self, key) is not None)
-
-    @property
-    def measure(self) -> str:
-        """What is asked, for example ``"heat_flow"`` or ``"psi"``."""
-        return next(key for key in _MEASURE_UNITS if getattr(self, key) is not None)
-
-
-_BOUND_SCHEMA = WithJsonSchema({"type": ["number", "string"]})
-
-
-class _Bound:
-    """A bound whose unit depends on what is limited; read with the limit (see ``Limit.prepare``)."""
-
-    def __get_pydantic_core_schema__(self, source: Any, handler: Any) -> Any:
-        return _plain(lambda value, context: value)
-
-
-Bound = Annotated[float, _Bound(), _BOUND_SCHEMA]
-
-
-def _bound_unit(asked: Any) -> str | None:
-    """Return the quantity of a limit's bounds; None where what is asked makes no sense anyway."""
-    if not isinstance(asked, dict):
-        return None
-    fitting = [key for target, keys in _MEASURES.items() if target in asked for key in keys if key in asked]
-    return _MEASURE_UNITS[fitting[0]] if fitting else None
-
-
-class Limit(Table):
-    """A bound that an answer is held against; SI units of its quantity, °C."""
-
-    name: Name
-    quantity: Quantity
-    at_most: Bound | None = Field(None, description="in the unit of the quantity")
-    at_least: Bound | None = Field(None, description="in the unit of the quantity")
-
-    @classmethod
-    def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
-        """Read the bounds in the units of what is limited."""
-        given = [key for key in ("at_most", "at_least") if key in data]
-        troubles: list[Trouble] = [] if given else [((), "needs at_most or at_least")]
-        unit = _bound_unit(data.get("quantity"))
-        for key in given:
-            try:
-                data[key] = Amount(unit).read(data[key], context) if unit else 0.0
-            except ValueError as error:
-                troubles.append(((key,), str(error)))
-        if len(given) == 2 and not troubles and data["at_least"] > data["at_most"]:
-            troubles.append((("at_least",), "must not be more than at_most"))
-        return data, troubles
 
 
 class Case(Table):

@@ -61,7 +61,7 @@ class Amount:
         return self.kind
 
     def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:
-        return _plain(self.read)
+        return checked(self.read)
 
     def __get_pydantic_json_schema__(self, schema: CoreSchema, handler: GetJsonSchemaHandler) -> JsonSchema:
         if self.kind == "heat flow":
@@ -84,7 +84,7 @@ class Amount:
         return {"anyOf": [number, text], "description": f"{title}: a number in {unit}, or text with a unit"}
 
 
-def _plain(check: Check) -> CoreSchema:
+def checked(check: Check) -> CoreSchema:
     def validate(value: Any, info: ValidationInfo) -> Any:
         return check(value, context_of(info))
 
@@ -119,7 +119,7 @@ class Numbers:
         return tuple(numbers)
 
     def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:
-        return _plain(self.read)
+        return checked(self.read)
 
     def __get_pydantic_json_schema__(self, schema: CoreSchema, handler: GetJsonSchemaHandler) -> JsonSchema:
         items = self.amount.__get_pydantic_json_schema__(schema, handler)
@@ -140,7 +140,7 @@ class Called:
         return value
 
     def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:
-        return _plain(self.read)
+        return checked(self.read)
 
     def __get_pydantic_json_schema__(self, schema: CoreSchema, handler: GetJsonSchemaHandler) -> JsonSchema:
         return {"type": "string", "minLength": 1}
@@ -169,7 +169,7 @@ class Ref:
         raise ValueError(f'no {self.kind} is called "{value}"{nearest(value, names) or f"; {there}"}')
 
     def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:
-        return _plain(self.read)
+        return checked(self.read)
 
     def __get_pydantic_json_schema__(self, schema: CoreSchema, handler: GetJsonSchemaHandler) -> JsonSchema:
         return {"type": "string", "minLength": 1, "description": f"name of a {self.kind} of this case"}
@@ -203,7 +203,7 @@ class Attached:
         return path
 
     def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:
-        return _plain(self.read)
+        return checked(self.read)
 
     def __get_pydantic_json_schema__(self, schema: CoreSchema, handler: GetJsonSchemaHandler) -> JsonSchema:
         return {"type": "string", "minLength": 1, "description": "a file, relative to the folder of the case file"}

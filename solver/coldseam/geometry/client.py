@@ -11,6 +11,7 @@ import queue
 import subprocess
 import sys
 import threading
+import time
 from pathlib import Path
 from typing import Any
 
@@ -23,6 +24,9 @@ DEBIAN = "libgl1 libgl1-mesa-dri libegl1 libglu1-mesa libxcursor1 libxft2 libxin
 START_LIMIT = 120.0
 """Seconds that the child may take to load gmsh (a cold disk, a busy machine)."""
 
+POLL = 0.25
+"""Seconds between looks at the clock."""
+
 
 class Lost(Exception):
     """The child had to be killed or ended by itself; ``why`` says which."""
@@ -30,6 +34,10 @@ class Lost(Exception):
     def __init__(self, why: str):
         super().__init__(why)
         self.why = why
+
+
+class Ended(Lost):
+    """The child ended by itself."""
 
 
 class Refused(Exception):
@@ -89,7 +97,7 @@ class Worker:
         operation
             Name of the operation in :mod:`coldseam.geometry.worker`.
         limit
-            Seconds after which the child is killed; None waits.
+            Seconds of processor time after which the child is killed; None waits.
         keywords
             Handed to the operation.
 
@@ -123,19 +131,23 @@ class Worker:
         return value
 
     def _wait(self, limit: float | None) -> tuple[str, Any]:
-        try:
-            answer = self._answers.get(timeout=limit)
-        except queue.Empty:
-            self.close()
-            raise Lost(f"took more than {limit:.0f} s") from None
+        clock = _Clock(self._process.pid, limit)
+        while True:
+            try:
+                answer = self._answers.get(timeout=POLL)
+                break
+            except queue.Empty:
+                if clock.run_out():
+                    self.close()
+                    raise Lost(f"took more than {limit:.0f} s") from None
         if answer is None:
             raise self._lost()
         return answer
 
-    def _lost(self) -> Lost:
+    def _lost(self) -> Ended:
         code = self._process.wait() if self._process is not None else None
         self.close()
-        return Lost(f"ended by itself (exit code {code})")
+        return Ended(f"ended by itself (exit code {code})")
 
     def close(self) -> None:
         """Kill the child if there is one; safe to call again."""
@@ -155,6 +167,35 @@ class Worker:
 
     def __exit__(self, *_) -> None:
         self.close()
+
+
+class _Clock:
+    """Measures a child's processor time where the system tells it, so that a busy machine changes nothing."""
+
+    def __init__(self, pid: int, limit: float | None):
+        self._pid = pid
+        self._limit = limit
+        self._begin = time.monotonic()
+        self._begin_cpu = _cpu_seconds(pid)
+
+    def run_out(self) -> bool:
+        """Whether the limit is passed (ten times over by the clock on the wall in any case)."""
+        if self._limit is None:
+            return False
+        wall = time.monotonic() - self._begin
+        cpu = _cpu_seconds(self._pid)
+        if cpu is None or self._begin_cpu is None:
+            return wall > 3.0 * self._limit
+        return cpu - self._begin_cpu > self._limit or wall > 10.0 * self._limit
+
+
+def _cpu_seconds(pid: int) -> float | None:
+    """Return the processor time a process has used, None where the system does not tell."""
+    try:
+        fields = Path(f"/proc/{pid}/stat").read_text().rpartition(")")[2].split()
+        return (int(fields[11]) + int(fields[12])) / os.sysconf("SC_CLK_TCK")
+    except (OSError, ValueError, IndexError):
+        return None
 
 
 def _read(stream, answers: queue.SimpleQueue) -> None:

@@ -16,7 +16,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
-from coldseam.geometry import sizes
+from coldseam.geometry import fields, sizes
 from coldseam.geometry.occ import Model
 
 
@@ -69,8 +69,8 @@ def mesh_boundary(
     option("Mesh.MeshSizeMin", 0.0)
     option("Mesh.MeshSizeMax", largest if view is None else min(cap or np.inf, model.size))
     option("Mesh.MeshSizeFromCurvature", 0)
-    option("Mesh.MeshSizeFromPoints", 0 if view else 1)
-    option("Mesh.MeshSizeExtendFromBoundary", 0 if view else 1)
+    option("Mesh.MeshSizeFromPoints", 0)
+    option("Mesh.MeshSizeExtendFromBoundary", 0)
     if view is None:
         _first_sizes(gmsh, model, curves, sides, segments, largest, scale)
     else:
@@ -81,8 +81,16 @@ def mesh_boundary(
     return sum(len(gmsh.model.mesh.getElementsByType(2, tag)[0]) for _, tag in gmsh.model.getEntities(2))
 
 
-def mesh_interior(gmsh, model: Model, *, algorithm: int) -> dict:
+def mesh_interior(gmsh, model: Model, *, algorithm: int, threshold: float = 0.3) -> dict:
     """Mesh the volumes and return the whole mesh as arrays (lengths mm).
+
+    Parameters
+    ----------
+    algorithm
+        gmsh's number of the volume mesher.
+    threshold
+        Quality below which the optimiser works on a tetrahedron. Flat layers hold many that can't
+        be bettered to gmsh's usual 0.3; HXT then tries for ever.
 
     Returns
     -------
@@ -94,6 +102,7 @@ def mesh_interior(gmsh, model: Model, *, algorithm: int) -> dict:
     mesh = gmsh.model.mesh
     if dim == 3:
         gmsh.option.setNumber("Mesh.Algorithm3D", algorithm)
+        gmsh.option.setNumber("Mesh.OptimizeThreshold", threshold)
         mesh.generate(3)
     tags, coordinates, _ = mesh.getNodes()
     order = np.argsort(tags)
@@ -202,23 +211,41 @@ def _first_sizes(
 ) -> None:
     """Set the first sizes: vertices, bent curves by segments, lines along bars by number."""
     mesh = gmsh.model.mesh
-    vertices = gmsh.model.getEntities(0)
-    size = np.minimum(largest, scale * sizes.vertex_sizes(curves, len(vertices), model.dim, largest / scale))
-    for vertex, h in zip(vertices, size, strict=True):
-        mesh.setSize([vertex], float(h))
-    count = np.maximum(sizes.turn_segments(curves.turn, segments), np.where(curves.turn > 0, curves.length / largest, 0))
-    arcs = _arc_counts(curves, sides, np.ceil(count))
+    tags = [tag for _, tag in gmsh.model.getEntities(0)]
+    at_vertex = np.minimum(largest, scale * sizes.vertex_sizes(curves, len(tags), model.dim, largest / scale))
+    at_curve = sizes.curve_sizes(curves, at_vertex, largest)
+    count = sizes.turn_segments(curves.turn, segments)
+    count = np.ceil(np.maximum(count, np.where(curves.turn > 0.0, curves.length / largest, 0.0)))
+    arcs = _arc_counts(curves, sides, count)
+    number = {int(tag): k for k, tag in enumerate(curves.tag)}
     for tag, n in arcs.items():
         mesh.setTransfiniteCurve(tag, n + 1)
-    length = dict(zip(curves.tag.tolist(), curves.length.tolist(), strict=True))
+        at_curve[number[tag]] = curves.length[number[tag]] / n
     root = sizes.joined(sides.lines, sorted({line for pair in sides.lines for line in pair}))
     segment: dict[int, float] = {}
     for (arc, _), (line, _) in zip(sides.arcs, sides.lines, strict=True):
         r = root[line]
-        segment[r] = min(length[arc] / arcs[arc], segment.get(r, math.inf))
+        segment[r] = min(at_curve[number[arc]], segment.get(r, math.inf))
     for line, r in root.items():
-        n = max(sizes.bar_segments(length[r], segment[r]), math.ceil(length[r] / largest))
+        length = curves.length[number[r]]
+        n = max(sizes.bar_segments(length, segment[r]), math.ceil(length / largest))
         mesh.setTransfiniteCurve(line, n + 1)
+        at_curve[number[line]] = max(segment[r], math.sqrt(segment[r] * length / n))
+    round_ends = {int(v) for k in np.flatnonzero(curves.turn > 0.0) for v in curves.ends[k]}
+    faces = fields.round_faces(gmsh, sides.corners, segments)
+    made = fields.growing(
+        gmsh,
+        model.dim,
+        largest,
+        [(tag, float(h)) for k, (tag, h) in enumerate(zip(tags, at_vertex, strict=True)) if k not in round_ends],
+        [
+            (int(tag), float(h), float(length))
+            for tag, h, length in zip(curves.tag, at_curve, curves.length, strict=True)
+            if math.isfinite(h) and length > 0.0
+        ],
+        faces,
+    )
+    fields.use(gmsh, made + fields.constant(gmsh, faces))
 
 
 def _field_sizes(
@@ -238,15 +265,8 @@ def _field_sizes(
     for tag, n in _arc_counts(curves, sides, count).items():
         gmsh.model.mesh.setTransfiniteCurve(tag, n + 1)
     _lines_alike(gmsh, sides)
-
-    fields = gmsh.model.mesh.field
-    background = fields.add("PostView")
-    fields.setNumber(background, "ViewTag", _list_data(gmsh, view["points"], view["cells"], wanted))
-    least = [background] + _round_faces(gmsh, sides, segments)
-    if len(least) > 1:
-        background = fields.add("Min")
-        fields.setNumbers(background, "FieldsList", least)
-    fields.setAsBackgroundMesh(background)
+    faces = fields.round_faces(gmsh, sides.corners, segments) if model.dim == 3 else []
+    fields.use(gmsh, [fields.nodal(gmsh, view["points"], view["cells"], wanted), *fields.constant(gmsh, faces)])
 
 
 def _lines_alike(gmsh, sides: Sides) -> None:
@@ -264,33 +284,3 @@ def _lines_alike(gmsh, sides: Sides) -> None:
 def _midpoint(gmsh, curve: int) -> np.ndarray:
     (low,), (high,) = gmsh.model.getParametrizationBounds(1, curve)
     return np.asarray(gmsh.model.getValue(1, curve, [0.5 * (low + high)]))
-
-
-def _list_data(gmsh, points: np.ndarray, cells: np.ndarray, size: np.ndarray) -> int:
-    """Put a nodal field into a view of simplices; return the view's number."""
-    corners = np.zeros((len(cells), 3, cells.shape[1]))
-    corners[:, : points.shape[1]] = points[cells].transpose(0, 2, 1)
-    data = np.concatenate([corners.reshape(len(cells), -1), size[cells]], axis=1)
-    view = gmsh.view.add("size")
-    gmsh.view.addListData(view, "SS" if cells.shape[1] == 4 else "ST", len(cells), data.ravel())
-    return view
-
-
-def _round_faces(gmsh, sides: Sides, segments: int) -> list[int]:
-    """Return fields that keep curved faces round (mapped ones are so already)."""
-    made = []
-    for _, face in gmsh.model.getEntities(2):
-        if face in sides.corners or gmsh.model.getType(2, face) == "Plane":
-            continue
-        low, high = gmsh.model.getParametrizationBounds(2, face)
-        u, v = (np.linspace(a, b, 5)[1:-1] for a, b in zip(low, high, strict=True))
-        grid = np.stack(np.meshgrid(u, v), axis=-1).ravel()
-        curvature = np.abs(gmsh.model.getPrincipalCurvatures(face, grid)[0])
-        if curvature.max() <= 0.0:
-            continue
-        constant = gmsh.model.mesh.field.add("Constant")
-        gmsh.model.mesh.field.setNumbers(constant, "SurfacesList", [face])
-        gmsh.model.mesh.field.setNumber(constant, "VIn", 2 * math.pi / (segments * float(curvature.max())))
-        gmsh.model.mesh.field.setNumber(constant, "VOut", 1e22)
-        made.append(constant)
-    return made

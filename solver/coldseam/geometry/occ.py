@@ -57,7 +57,7 @@ def build(gmsh, _, *, parts: list[Part], dim: int, trust_scripts: bool = False) 
         Kept by the child.
     about
         ``bodies``: list of (name, part, solid name or None, measure in mm² or mm³);
-        ``groups``: {patch tag: [names]} of imported faces; ``size``: diagonal, mm.
+        ``groups``: {patch tag: [names]} of named faces; ``size``: diagonal, mm.
 
     Raises
     ------
@@ -69,16 +69,13 @@ def build(gmsh, _, *, parts: list[Part], dim: int, trust_scripts: bool = False) 
     gmsh.option.setNumber("Geometry.OCCImportLabels", 1)
     gmsh.model.add("coldseam")
     named: list[Named] = []
-    labels: list[tuple[str, list[tuple[int, int]]]] = []
     for p, part in enumerate(parts):
         if part.file is not None:
-            made, faces = _imported(gmsh, part, p, dim, trust_scripts)
-            named.extend(made)
-            labels.extend(faces)
+            named.extend(_imported(gmsh, part, p, dim, trust_scripts))
         else:
             tags = [_DRAW[solid.kind](gmsh.model.occ, solid) for solid in part.solids]
             named.append(Named(name=part.name, solid=None, part=p, tags=tags))
-    owner, marks = _fragment(gmsh, named, labels, dim)
+    owner = _fragment(gmsh, named, dim)
     kept = _assign(gmsh, named, parts, owner, dim)
     gmsh.model.occ.synchronize()
     _check_touching(gmsh, kept, parts, dim)
@@ -87,26 +84,25 @@ def build(gmsh, _, *, parts: list[Part], dim: int, trust_scripts: bool = False) 
     measure = [sum(gmsh.model.occ.getMass(dim, tag) for tag in tags) for _, tags in kept]
     about = {
         "bodies": [(n.name, n.part, n.solid, m) for (n, _), m in zip(kept, measure, strict=True)],
-        "groups": _groups(gmsh, marks, dim),
+        "groups": _groups(gmsh, dim),
         "size": size,
     }
     return Model(dim=dim, bodies=[tags for _, tags in kept], size=size), about
 
 
-def _fragment(gmsh, named: list[Named], labels, dim: int):
-    """Fragment everything; return {piece: position in ``named`` of its owner} and label marks."""
+def _fragment(gmsh, named: list[Named], dim: int) -> dict[int, int]:
+    """Fragment everything; return {piece: position in ``named`` of its owner}."""
     solids = [(dim, tag) for body in named for tag in body.tags]
     position = [k for k, body in enumerate(named) for _ in body.tags]
-    marks = [(name, _sample(gmsh, face)) for name, faces in labels for face in faces]
     if len(solids) == 1:
-        return {solids[0][1]: 0}, marks
+        return {solids[0][1]: 0}
     _, pieces = gmsh.model.occ.fragment(solids[:1], solids[1:])
     owner: dict[int, int] = {}
     for k, made in zip(position, pieces, strict=True):
         for d, tag in made:
             if d == dim:
                 owner[tag] = max(k, owner.get(tag, -1))
-    return owner, marks
+    return owner
 
 
 def _assign(gmsh, named: list[Named], parts: list[Part], owner: dict[int, int], dim: int):
@@ -265,24 +261,21 @@ _DRAW = {
 
 
 def _imported(gmsh, part: Part, p: int, dim: int, trust_scripts: bool):
-    """Read a CAD file once per copy; return its named solids and the labels of its faces."""
+    """Read a CAD file once per copy; return its named solids."""
     path = ("body", part.source, "file")
     _check_file(part.file, path, trust_scripts)
     by_name: dict[str, list[int]] = {}
-    labels: dict[str, list[tuple[int, int]]] = {}
+    names: list[str] = []
     for solid in part.solids:
-        for dim_tag, name in _read_shapes(gmsh, solid, path, dim):
-            by_name.setdefault(name, []).append(dim_tag[1])
-            for face in gmsh.model.getBoundary([dim_tag], combined=False, oriented=False):
-                label = _last(gmsh.model.getEntityName(*face))
-                if label:
-                    labels.setdefault(label, []).append(face)
+        read = _read_shapes(gmsh, solid, path, dim)
+        names = names or [name for _, name in read]  # a copy's solids are called as the first one's
+        for ((_, tag), _), name in zip(read, names, strict=True):
+            by_name.setdefault(name, []).append(tag)
     single = len(by_name) == 1
-    named = [
+    return [
         Named(name=part.name if single else f"{part.name}/{name}", solid=name, part=p, tags=tags)
         for name, tags in by_name.items()
     ]
-    return named, list(labels.items())
 
 
 def _check_file(file: str, path, trust_scripts: bool) -> None:
@@ -301,7 +294,7 @@ def _read_shapes(gmsh, solid: Solid, path, dim: int):
     """Return [(dim_tag, name)] of the shapes of highest dimension in a file."""
     try:
         shapes = gmsh.model.occ.importShapes(solid.path, highestDimOnly=True)
-    except Exception as error:  # noqa: BLE001  gmsh raises bare Exception
+    except Exception as error:
         raise fault(path, f"'{solid.path}' can't be read as {os.path.splitext(solid.path)[1]}: {error}") from error
     wanted = [shape for shape in shapes if shape[0] == dim]
     if not wanted:
@@ -323,16 +316,9 @@ def _last(label: str) -> str:
     return label.rpartition("/")[2].strip()
 
 
-def _sample(gmsh, face: tuple[int, int]):
-    """Return what finds a labelled face again after fragmentation: its centre and its box."""
-    return gmsh.model.getBoundingBox(*face)
-
-
-def _groups(gmsh, marks, dim: int) -> dict[int, list[str]]:
-    """Return the labels of imported faces by the faces of the finished model."""
+def _groups(gmsh, dim: int) -> dict[int, list[str]]:
+    """Return the names of imported faces, where the file's reader gives any and nothing has cut the face."""
     groups: dict[int, list[str]] = {}
-    if not marks:
-        return groups
     for d, tag in gmsh.model.getEntities(dim - 1):
         label = _last(gmsh.model.getEntityName(d, tag))
         if label:

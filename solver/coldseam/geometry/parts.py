@@ -334,9 +334,7 @@ def _enclosure(body, i: int, dim: int) -> list[Part]:
     own = {face: _layers(layers) for face, layers in (shape.faces or {}).items()}
     for face in own:
         if face not in _faces(dim):
-            raise fault(
-                ("body", i, "enclosure", "faces", face), f"is no face here; accepted: {', '.join(_faces(dim))}"
-            )
+            raise fault(("body", i, "enclosure", "faces", face), f"is no face here; accepted: {', '.join(_faces(dim))}")
     by_face = {face: own.get(face, default) for face in _faces(dim)}
     count = max((len(layers) for layers in by_face.values()), default=0)
     if count == 0:

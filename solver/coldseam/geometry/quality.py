@@ -53,6 +53,17 @@ def mesh_quality(mesh: Mesh) -> dict[str, float]:
     }
 
 
+def shape_of(points: np.ndarray, cells: np.ndarray) -> np.ndarray:
+    """Return the radius ratio of tetrahedra, 0 for one without volume, orientation aside, shape (n_cells,)."""
+    ratio = np.zeros(len(cells))
+    for first in range(0, len(cells), CHUNK):
+        part = cells[first : first + CHUNK]
+        volume = np.abs(signed_measure(points, part))
+        full = volume > 0.0
+        ratio[first : first + CHUNK][full] = _tetrahedron_shape(points[part[full]], volume[full])[1]
+    return ratio
+
+
 def _triangle_shape(corners: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
     """Return the smallest angle (rad) and the radius ratio of triangles, shapes (n,)."""
     edges = corners[:, [2, 0, 1]] - corners[:, [1, 2, 0]]
@@ -70,7 +81,7 @@ def _tetrahedron_shape(corners: np.ndarray, volume: np.ndarray) -> tuple[np.ndar
     faces = corners[:, local_facets(3)]
     normal = np.cross(faces[:, :, 1] - faces[:, :, 0], faces[:, :, 2] - faces[:, :, 0])
     size = np.linalg.norm(normal, axis=2)
-    unit = normal / size[:, :, None]
+    unit = normal / np.maximum(size, 1e-300)[:, :, None]
     i, j = np.triu_indices(4, 1)
     angle = np.pi - np.arccos(np.clip(np.einsum("cij,cij->ci", unit[:, i], unit[:, j]), -1.0, 1.0))
     inner = 3.0 * volume / (0.5 * size.sum(axis=1))

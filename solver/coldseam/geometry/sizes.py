@@ -2,7 +2,7 @@
 
 The aim is a valid start; later rounds refine by a size field made from the error. Sizes are given
 at the vertices of the geometry and grow from there into faces and volumes, so that a small part
-is surrounded by small elements without a rule for it. At a vertex::
+is surrounded by small elements without a rule for it (:mod:`coldseam.geometry.fields`). At a vertex::
 
     size = min(cap, longest / 4, max(FLAT * shortest, longest / many))
 
@@ -31,7 +31,12 @@ MANY = {2: 200.0, 3: 24.0}
 SEGMENTS = 24
 """Segments of a full circle in the first round."""
 
-LONG = 10.0
+SEGMENTS_OF_MANY = 16
+"""The same where there are more than ``MANY_ROUND`` round solids; later rounds raise it as the error asks."""
+
+MANY_ROUND = 25
+
+LONG = 4.0
 """Longest element along a round bar, in segments of its circle, in the first round."""
 
 
@@ -74,6 +79,16 @@ def vertex_sizes(curves: Curves, n_vertices: int, dim: int, cap: float) -> np.nd
     return np.minimum(cap, np.minimum(longest / 4.0, np.maximum(FLAT * shortest, longest / MANY[dim])))
 
 
+def curve_sizes(curves: Curves, at_vertex: np.ndarray, cap: float) -> np.ndarray:
+    """Return the size along every straight curve, that of its coarser end; inf where it asks for none.
+
+    Shape (n_curves,), mm. A curve shorter than its size asks for none: it is a step in thickness.
+    """
+    ends = np.where(curves.ends >= 0, curves.ends, 0)
+    size = at_vertex[ends].max(axis=1)
+    return np.where((curves.ends[:, 0] >= 0) & (curves.turn == 0.0) & (size < curves.length), size, np.inf)
+
+
 def turn_segments(turn: np.ndarray, segments: int) -> np.ndarray:
     """Return the number of segments of each bent curve, 0 for straight ones, shape (n,)."""
     count = np.ceil(np.minimum(turn, 8 * math.pi) * segments / (2 * math.pi) - 1e-6)
@@ -100,3 +115,8 @@ def joined(pairs: list[tuple[int, int]], members: list[int]) -> dict[int, int]:
         ra, rb = find(a), find(b)
         root[max(ra, rb)] = min(ra, rb)
     return {m: find(m) for m in members}
+
+
+def first_segments(round_solids: int) -> int:
+    """Return the segments of a full circle in the first round."""
+    return SEGMENTS if round_solids <= MANY_ROUND else SEGMENTS_OF_MANY

@@ -64,7 +64,7 @@ def _serve(gmsh, requests: BinaryIO, answers: BinaryIO) -> None:
             answer = ("case error", error.faults)
         except GeometryError as error:
             answer = ("geometry error", str(error))
-        except Exception as error:  # noqa: BLE001  gmsh raises bare Exception; the parent decides what it means
+        except Exception as error:
             answer = ("failed", _reason(gmsh, error))
         gmsh.logger.stop()
         wire.send(answers, answer)

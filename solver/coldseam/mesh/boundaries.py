@@ -7,7 +7,8 @@ answer depend on where the mesh happens to put its nodes.
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
+from collections.abc import Callable
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -59,7 +60,7 @@ def facets_satisfying(selector: Selector, mesh: Mesh) -> np.ndarray:
     return chosen
 
 
-def _on_plane(plane: dict, mesh: Mesh) -> np.ndarray:
+def _on_plane(plane: dict[str, float], mesh: Mesh) -> np.ndarray:
     ((axis, at),) = plane.items()
     if AXES.index(axis) >= mesh.dim:
         return np.zeros(len(mesh.facets), dtype=bool)
@@ -104,7 +105,7 @@ def _of_group(name: str, mesh: Mesh) -> np.ndarray:
     return carries[mesh.facet_patch]
 
 
-_PART_MASKS = {
+_PART_MASKS: dict[str, Callable[[Any, Mesh], np.ndarray]] = {
     "plane": _on_plane,
     "within": _within,
     "body": _of_body,
@@ -128,14 +129,14 @@ def claim_facets(case: Case, mesh: Mesh) -> np.ndarray:
         A facet is claimed by no boundary or by several, or a boundary claims nothing; all such
         faults at once, each face with its place, its area and the selectors that could claim it.
     """
-    by_place = [i for i, boundary in enumerate(case.boundary) if boundary.on != "rest"]
-    rest = [i for i, boundary in enumerate(case.boundary) if boundary.on == "rest"]
+    by_place = {i: boundary.on for i, boundary in enumerate(case.boundary) if not isinstance(boundary.on, str)}
+    rest = [i for i, boundary in enumerate(case.boundary) if isinstance(boundary.on, str)]
     claims = np.zeros((len(case.boundary), len(mesh.facets)), dtype=bool)
-    for i in by_place:
-        claims[i] = select(case.boundary[i].on, mesh)
+    for i, on in by_place.items():
+        claims[i] = select(on, mesh)
     faults = [
-        Fault(path=("boundary", i, "on"), what=why_nothing(case.boundary[i].on, mesh))
-        for i in by_place
+        Fault(path=("boundary", i, "on"), what=why_nothing(on, mesh))
+        for i, on in by_place.items()
         if not claims[i].any()
     ]
     for i in rest[1:]:
@@ -164,10 +165,10 @@ def _doubly_claimed(case: Case, mesh: Mesh, claims: np.ndarray, times: np.ndarra
     faults = []
     faces, count = describe_faces(mesh, which, kind.ravel(), MOST_FAULTS)
     for face in faces:
-        first, *others = np.flatnonzero(who[:, face.kind])
+        first, *others = np.flatnonzero(who[:, face.kind]).tolist()
         names = names_text([case.boundary[i].name for i in (first, *others)])
         what = f"a face is claimed by {names} at once: {face.text}; narrow one, for example with {face.selectors}"
-        faults.append(Fault(path=("boundary", int(others[0]), "on"), what=what))
+        faults.append(Fault(path=("boundary", others[0], "on"), what=what))
     return faults + _more(count, "claimed by several boundaries")
 
 
@@ -178,7 +179,7 @@ def _unclaimed(case: Case, mesh: Mesh, times: np.ndarray) -> list[Fault]:
         return []
     partly = np.zeros((len(case.boundary), len(which)), dtype=bool)
     for i, boundary in enumerate(case.boundary):
-        if boundary.on != "rest":
+        if not isinstance(boundary.on, str):
             touched = np.bincount(mesh.facet_patch, weights=facets_satisfying(boundary.on, mesh))
             partly[i] = touched[mesh.facet_patch[which]] > 0
     who, kind = np.unique(partly, axis=1, return_inverse=True)
@@ -186,7 +187,7 @@ def _unclaimed(case: Case, mesh: Mesh, times: np.ndarray) -> list[Fault]:
     faces, count = describe_faces(mesh, which, kind.ravel(), MOST_FAULTS)
     for face in faces:
         what = f"a face belongs to no boundary: {face.text}; "
-        for i in np.flatnonzero(who[:, face.kind]):
+        for i in np.flatnonzero(who[:, face.kind]).tolist():
             what += f'"{case.boundary[i].name}" takes in only part of it, and a face is claimed whole; '
         what += f'claim it with {face.selectors}, or all that is left with on = "rest"'
         faults.append(Fault(path=("boundary",), what=what))
@@ -218,7 +219,7 @@ def _largest(mesh: Mesh, which: np.ndarray) -> Face:
     return describe_faces(mesh, which, np.zeros(len(which), dtype=int), 1)[0][0]
 
 
-def _plane_hint(plane: dict, mesh: Mesh) -> str:
+def _plane_hint(plane: dict[str, float], mesh: Mesh) -> str:
     ((axis, at),) = plane.items()
     number = AXES.index(axis)
     if number >= mesh.dim:
@@ -274,7 +275,7 @@ def _group_hint(name: str, mesh: Mesh) -> str:
     return f'no face carries the group "{name}"; ' + (f"groups: {listed(groups)}" if groups else "there are no groups")
 
 
-_HINTS = {
+_HINTS: dict[str, Callable[[Any, Mesh], str]] = {
     "plane": _plane_hint,
     "within": _within_hint,
     "body": _body_hint,

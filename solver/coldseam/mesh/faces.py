@@ -138,7 +138,15 @@ def _looks(vector: np.ndarray, flat: bool) -> str:
     return f"facing {axis}" if axis else "facing (" + ", ".join(f"{part + 0.0:.3g}" for part in vector) + ")"
 
 
-def _selectors(low, high, spare, normal, body, shell, groups) -> str:
+def _selectors(
+    low: np.ndarray,
+    high: np.ndarray,
+    spare: float,
+    normal: np.ndarray | None,
+    body: str,
+    shell: str | None,
+    groups: list[str],
+) -> str:
     """Return the selectors that take in a face, as they are typed."""
     fits = [f'group = "{group}"' for group in groups[:3]]
     fits += [f"plane = {{ {AXES[i]} = {mm(low[i])} }}" for i in range(len(low)) if high[i] - low[i] <= spare]

@@ -47,7 +47,7 @@ class ForeignMesher:
     def __enter__(self) -> ForeignMesher:
         return self
 
-    def __exit__(self, *stop) -> None:
+    def __exit__(self, *stop: object) -> None:
         return None
 
     def mesh(self, size: SizeField | None = None, target_cells: int | None = None) -> Mesh:
@@ -82,7 +82,10 @@ def open_foreign(case: Case, log: Log | None = None) -> ForeignMesher:
         The file can't be read, the mesh has a defect, or groups and bodies don't match.
     """
     tell = log or (lambda stage, message: None)
-    raw = read_file(case.model.mesh)
+    path = case.model.mesh
+    if path is None:
+        raise mesh_fault("no mesh is given")
+    raw = read_file(path)
     for remark in raw.remarks:
         tell("mesh", remark)
     dim = case.model.dimensions
@@ -105,7 +108,7 @@ def open_foreign(case: Case, log: Log | None = None) -> ForeignMesher:
     mesh = build_mesh(points, cells, number[body], bodies, axisymmetric=case.model.axisymmetric, quality=quality)
     check_surface(mesh)
     mesh = replace(mesh, patch_groups=_facet_groups(raw, mesh, used, dim))
-    tell("mesh", f"{mesh.n_nodes} nodes, {mesh.n_cells} simplices read from {case.model.mesh.name}")
+    tell("mesh", f"{mesh.n_nodes} nodes, {mesh.n_cells} simplices read from {path.name}")
     return ForeignMesher(mesh)
 
 
@@ -166,7 +169,7 @@ def _available(names: list[str], lead: str = "groups of cells in the mesh") -> s
     return f"{lead}: {listed(names)}" if names else f"{lead}: none"
 
 
-def _claim(owners: list, rows: list[np.ndarray], body: int) -> dict[int, int]:
+def _claim(owners: list[np.ndarray | None], rows: list[np.ndarray], body: int) -> dict[int, int]:
     """Give cells to a body; return how many were other bodies' already, by body."""
     taken: dict[int, int] = {}
     for owner, some in zip(owners, rows, strict=True):

@@ -12,6 +12,7 @@ import re
 import struct
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 from xml.etree.ElementTree import ParseError
 
 import numpy as np
@@ -108,7 +109,7 @@ def read_file(path: Path) -> RawMesh:
     return RawMesh(points=points, blocks=blocks, groups=_groups(content, kept, blocks), remarks=remarks)
 
 
-def _meshio_read(path: Path):
+def _meshio_read(path: Path) -> Any:
     import meshio
 
     suffixes = {"".join(path.suffixes[i:]).lower() for i in range(len(path.suffixes))}
@@ -131,9 +132,12 @@ def _meshio_read(path: Path):
     raise mesh_fault(f"{what} ({why[:300]})")
 
 
-def _blocks(content, name: str, n_points: int) -> tuple[list[int], tuple[Block, ...], tuple[str, ...]]:
+def _blocks(content: Any, name: str, n_points: int) -> tuple[list[int], tuple[Block, ...], tuple[str, ...]]:
     """Return which of the file's blocks are kept, the blocks reduced to corners, and remarks."""
-    kept, blocks, strange, reduced = [], [], {}, {}
+    kept: list[int] = []
+    blocks: list[Block] = []
+    strange: dict[str, int] = {}
+    reduced: dict[str, int] = {}
     for i, block in enumerate(content.cells):
         kind = re.sub(r"\d+$", "", block.type)
         if kind == "vertex" or not len(block.data):
@@ -153,14 +157,14 @@ def _blocks(content, name: str, n_points: int) -> tuple[list[int], tuple[Block, 
         raise mesh_fault(f'"{name}" has cells of a kind that is not known: {found}; known: {", ".join(CORNERS)}')
     if not blocks:
         raise mesh_fault(f'"{name}" holds no cells')
-    remarks = ()
+    remarks: tuple[str, ...] = ()
     if reduced:
         found = ", ".join(f"{count} {kind}" for kind, count in reduced.items())
         remarks = (f"second-order cells reduced to their corners, curved sides become straight: {found}",)
     return kept, tuple(blocks), remarks
 
 
-def _groups(content, kept: list[int], blocks: tuple[Block, ...]) -> dict[str, list[np.ndarray]]:
+def _groups(content: Any, kept: list[int], blocks: tuple[Block, ...]) -> dict[str, list[np.ndarray]]:
     """Collect named groups from cell sets, physical names and integer tags."""
     groups: dict[str, list[np.ndarray]] = {}
 
@@ -190,7 +194,7 @@ def _groups(content, kept: list[int], blocks: tuple[Block, ...]) -> dict[str, li
     return groups
 
 
-def _tag_arrays(content) -> list[str]:
+def _tag_arrays(content: Any) -> list[str]:
     """Return the cell data that hold group numbers: physical tags, else the one integer field there is."""
     whole = [
         key

@@ -102,7 +102,7 @@ def refine(mesh: Mesh, size: np.ndarray) -> Mesh:
     mesh, lead = joined(mesh)
     merged = np.full(mesh.n_nodes, np.inf)
     np.minimum.at(merged, lead, size)
-    work = _Bisection(np.array(mesh.points), merged, np.array(mesh.cells), np.array(mesh.cell_body), *_sides(mesh))
+    work = _Bisection(mesh, merged)
     while work.cut():
         pass
     return _finished(mesh, work.points, work.cells, work.body, work.facets, work.patch)
@@ -139,7 +139,9 @@ def joined(mesh: Mesh) -> tuple[Mesh, np.ndarray]:
     return _finished(mesh, points, cells, mesh.cell_body, facets, mesh.facet_patch), lead
 
 
-def _finished(mesh: Mesh, points, cells, body, facets, patch) -> Mesh:
+def _finished(
+    mesh: Mesh, points: np.ndarray, cells: np.ndarray, body: np.ndarray, facets: np.ndarray, patch: np.ndarray
+) -> Mesh:
     return build_mesh(
         points,
         cells,
@@ -151,10 +153,6 @@ def _finished(mesh: Mesh, points, cells, body, facets, patch) -> Mesh:
         axisymmetric=mesh.axisymmetric,
         quality=dict(mesh.quality),
     )
-
-
-def _sides(mesh: Mesh) -> tuple[np.ndarray, np.ndarray]:
-    return np.array(mesh.facets), np.array(mesh.facet_patch)
 
 
 def _keys(a: np.ndarray, b: np.ndarray, n_nodes: int) -> np.ndarray:
@@ -170,11 +168,11 @@ def _mean_edge(points: np.ndarray, cells: np.ndarray) -> np.ndarray:
 class _Bisection:
     """The state of a refinement: arrays that grow pass by pass."""
 
-    def __init__(self, points, size, cells, body, facets, patch):
-        self.points, self.size = points, size
-        self.cells, self.body = cells, body
-        self.facets, self.patch = facets, patch
-        self.start, self.end, self.mean = self._longest(cells)
+    def __init__(self, mesh: Mesh, size: np.ndarray):
+        self.points, self.size = np.array(mesh.points), size
+        self.cells, self.body = np.array(mesh.cells), np.array(mesh.cell_body)
+        self.facets, self.patch = np.array(mesh.facets), np.array(mesh.facet_patch)
+        self.start, self.end, self.mean = self._longest(self.cells)
 
     def _longest(self, cells: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
         """Return the ends of the longest edge of cells, smaller number first, and their mean edge length."""

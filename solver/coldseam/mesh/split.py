@@ -75,7 +75,8 @@ def split_cells(kind: str, cells: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
     if kind == "tetra":
         return cells, np.arange(len(cells))
     smallest = np.argmin(cells, axis=1)
-    tetrahedra, origin = [], []
+    pieces: list[np.ndarray] = []
+    rows_of: list[np.ndarray] = []
     for apex in range(CORNERS[kind]):
         rows = np.flatnonzero(smallest == apex)
         for face in FACES[kind]:
@@ -86,9 +87,9 @@ def split_cells(kind: str, cells: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
             per = 1 if len(face) == 3 else 2
             top = np.repeat(cells[rows, apex], per)
             # The face is seen counter-clockwise from outside, so turned round as seen from the apex.
-            tetrahedra.append(np.column_stack([triangles[:, [0, 2, 1]], top]))
-            origin.append(np.repeat(rows, per))
-    tetrahedra, origin = np.concatenate(tetrahedra), np.concatenate(origin)
+            pieces.append(np.column_stack([triangles[:, [0, 2, 1]], top]))
+            rows_of.append(np.repeat(rows, per))
+    tetrahedra, origin = np.concatenate(pieces), np.concatenate(rows_of)
     ordered = np.sort(tetrahedra, axis=1)
     whole = np.all(ordered[:, 1:] != ordered[:, :-1], axis=1)
     order = np.argsort(origin[whole], kind="stable")

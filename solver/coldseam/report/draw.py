@@ -106,6 +106,10 @@ def _space_jobs(view: View):
     if view.temperature is not None:
         for k, space in enumerate(view.spaces):
             yield f"surface_{k + 1}", lambda f, n, s=space: pictures3d.draw_surface(view, f, n, space=s)
+            yield (
+                f"surface_{k + 1}_close",
+                lambda f, n, s=space: pictures3d.draw_surface(view, f, n, space=s, close=True),
+            )
 
 
 # ---------------------------------------------------------------------------------------- parent
@@ -146,7 +150,9 @@ def _missing(why: str) -> str:
     )
 
 
-def _child(packed: Path, folder: Path, group: str, listing: Path, window: str | None) -> tuple[list[Picture], list[str]]:
+def _child(
+    packed: Path, folder: Path, group: str, listing: Path, window: str | None
+) -> tuple[list[Picture], list[str]]:
     command = [sys.executable, "-m", "coldseam.report.draw", str(packed), str(folder), group, str(listing)]
     what = {"flat": "sections and charts", "space": "views in space"}[group]
     trouble = ""
@@ -191,7 +197,15 @@ def draw_group(view: View, folder: Path, group: str, listing: Path) -> int:
             try:
                 picture = make(folder, name)
                 entry = None if picture is None else asdict(picture)
-            except (OutputError, ValueError, RuntimeError, ArithmeticError, LookupError, TypeError, MemoryError) as fault:
+            except (
+                OutputError,
+                ValueError,
+                RuntimeError,
+                ArithmeticError,
+                LookupError,
+                TypeError,
+                MemoryError,
+            ) as fault:
                 traceback.print_exc()
                 entry = {"name": name, "fault": f"{fault or type(fault).__name__}"}
                 failed += 1
@@ -205,7 +219,7 @@ def main(arguments: list[str]) -> int:
     """Entry point of the child: VIEW FOLDER GROUP LIST."""
     packed, folder, group, listing = arguments
     with open(packed, "rb") as stream:
-        view = pickle.load(stream)  # noqa: S301 - written a moment ago by the parent into its own scratch folder
+        view = pickle.load(stream)
     draw_group(view, Path(folder), group, Path(listing))
     return 0
 

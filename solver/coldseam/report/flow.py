@@ -20,6 +20,10 @@ MOST_GENERATED = 0.02
 """Share of heat arising inside above which strips of equal heat would be a false claim."""
 
 
+COARSE = 0.1
+"""Misfit (energy norm) from which the heat between lines is called "about": coarse meshes, some per cent."""
+
+
 @dataclass(frozen=True, kw_only=True, eq=False)
 class FlowLines:
     """Segments (mm), shape (s, 2, 2); unit vectors along the heat flow, shape (s, 2); and what they mean."""
@@ -73,7 +77,7 @@ def _contours(view: View, section: Section, psi: StreamFunction) -> FlowLines:
     segments = np.concatenate(pieces) if pieces else np.empty((0, 2, 2))
     owner = np.concatenate(owners) if owners else np.empty(0, dtype=np.int64)
     unit = "W" if view.mesh.axisymmetric else "W per metre of depth"
-    about = "about " if len(psi.periods) > 1 else ""
+    about = "about " if len(psi.periods) > 1 or psi.misfit > COARSE else ""
     note = f"Between two neighbouring lines flows {about}{style.number(psi.step)} {unit}; isotherms are grey."
     if view.mesh.axisymmetric:
         note += " The heat is that of the whole turn, so lines stand wider apart near the axis."
@@ -96,9 +100,14 @@ def _traced(section: Section, note: str, lines: int = 90, steps: int = 400) -> F
     size = np.linalg.norm(section.flux, axis=1)
     unit = section.flux / np.where(size > 1e-9 * size.max(), size, np.inf)[:, None]
     spacing = np.sqrt(span[0] * span[1] / lines)
-    grid = np.meshgrid(*(points.min(axis=0)[k] + np.arange(spacing / 2, max(span[k], spacing), spacing) for k in (0, 1)))
+    grid = np.meshgrid(
+        *(points.min(axis=0)[k] + np.arange(spacing / 2, max(span[k], spacing), spacing) for k in (0, 1))
+    )
     seeds = np.stack([axis.ravel() for axis in grid], axis=1)
     seeds = seeds[finder(*seeds.T) >= 0]
+    peaks = [rows[np.argmax(size[rows])] for body in np.unique(section.cell_body).tolist()
+             for rows in (np.flatnonzero(section.cell_body == body),)]  # fmt: skip
+    seeds = np.vstack([points[section.cells[peaks]].mean(axis=1), seeds])  # every body gets a line, however small
     stride = float(max(span)) / steps
     taken = np.zeros(tuple(np.maximum(1, np.ceil(span / (spacing * 0.4))).astype(int) + 1), dtype=bool)
     back, forth = (_trace(finder, unit, seeds, sign * stride, steps) for sign in (-1, 1))
@@ -111,6 +120,8 @@ def _traced(section: Section, note: str, lines: int = 90, steps: int = 400) -> F
             continue
         rows = np.floor((line - points.min(axis=0)) / (spacing * 0.4)).astype(int)
         rows = np.clip(rows, 0, np.array(taken.shape) - 1)
+        if taken[rows[:, 0], rows[:, 1]].mean() > 0.3:
+            continue
         taken[rows[:, 0], rows[:, 1]] = True
         pieces.append(np.stack([line[:-1], line[1:]], axis=1))
     segments = np.concatenate(pieces) * 1e3 if pieces else np.empty((0, 2, 2))

@@ -23,7 +23,13 @@ class Wanted:
 
 
 def set_labels(
-    ax, wanted: list[Wanted], *, size: float = style.SMALL, boxed: bool = False, avoid: np.ndarray | None = None
+    ax,
+    wanted: list[Wanted],
+    *,
+    size: float = style.SMALL,
+    boxed: bool = False,
+    spare_small: bool = False,
+    avoid: np.ndarray | None = None,
 ) -> list:
     """Set labels on axes and return the text artists.
 
@@ -37,6 +43,8 @@ def set_labels(
         Font size, points.
     boxed
         Draw a circle round each text, for reference numbers.
+    spare_small
+        Leave out labels on lines hardly longer than the label itself.
     avoid
         Boxes in pixels that no label may touch, shape (n, 4): x0, y0, x1, y1.
     """
@@ -51,6 +59,8 @@ def set_labels(
         tall = size / 72 * figure.dpi * 1.25 + 2
         if boxed:
             wide = tall = max(wide, tall) + 5
+        if not boxed and spare_small and len(crowd[k]) and np.ptp(crowd[k], axis=0).max() < 1.5 * wide:
+            continue  # a label as large as the line it stands on would only hide it
         others = [points for j, points in enumerate(crowd) if j != k and len(points)]
         spot = _spot(crowd[k], np.vstack(others) if others else np.empty((0, 2)), taken, (wide, tall), frame)
         if spot is None:

@@ -100,7 +100,7 @@ def open_page(
     FigureCanvasAgg(figure)
     note_text = [style.wrapped(note, WIDTH - text_at - RIGHT, style.SMALL, 6) for note in notes if note]
     note_tall = sum(0.145 * (text.count("\n") + 1) + 0.03 for text in note_text) + (0.08 if note_text else 0)
-    head = style.wrapped(heading, WIDTH - left - RIGHT, style.HEAD * 1.1, 2)
+    head = style.wrapped(heading, WIDTH - left - RIGHT, style.HEAD, 2, bold=True)
     sub = style.wrapped(title, WIDTH - left - RIGHT, style.TEXT, 2) if title else ""
     head_tall = 0.21 * (head.count("\n") + 1) + (0.165 * (sub.count("\n") + 1) if sub else 0) + 0.16
     made_legend, legend_tall = _legend(figure, legend, WIDTH - text_at - RIGHT)

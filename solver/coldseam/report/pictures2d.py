@@ -60,7 +60,7 @@ def draw_temperature(view: View, section: Section, folder: Path, name: str, titl
             segments, _ = isolines(section.points * 1e3, section.cells, section.temperature, level)
             _lines(made.ax, segments, style.contrast((level - low) / (high - low)), style.THIN)
             wanted.append(Wanted(text=style.degrees(level, places), points=segments.mean(axis=1)))
-        set_labels(made.ax, wanted)
+        set_labels(made.ax, wanted, spare_small=True)
         pages.colour_bar(made, low, high, levels)
         file, vector = pages.save(made, folder, name, vector=view.mesh.dim == 2)
     alt = f"{title}{_where(section)}, {style.degrees(low)} to {style.degrees(high)}, "
@@ -357,4 +357,3 @@ def _draw_close_up(made: pages.Page, view: View, section: Section, close_up) -> 
     side = np.where(centre < limits.mean(axis=1), 1, -1)
     made.ax.annotate("A", centre, xytext=13 * side, textcoords="offset points", ha="center", va="center",
                      size=style.TEXT, weight="bold", path_effects=style.halo(2.5), zorder=9)  # fmt: skip
-

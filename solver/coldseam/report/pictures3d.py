@@ -78,30 +78,41 @@ def draw_boundaries(view: View, folder: Path, name: str, *, behind: bool = False
     return Picture(file=file, title=title, alt=alt, table=model_table(view))
 
 
-def draw_surface(view: View, folder: Path, name: str, *, space: str | None = None, behind: bool = False) -> Picture:
-    """Draw the surface temperature of the whole model, or of the side that faces a space as seen from there."""
+def draw_surface(
+    view: View, folder: Path, name: str, *, space: str | None = None, behind: bool = False, close: bool = False
+) -> Picture | None:
+    """Draw the surface temperature of the whole model, or of the side that faces a space as seen from there.
+
+    With ``close`` only the part where the isotherms crowd is shown, larger; None if they don't crowd.
+    """
     mesh = view.mesh
     rows = np.arange(len(mesh.facets)) if space is None else np.flatnonzero(view.faces_space(space))
     facets = mesh.facets[rows]
-    values = view.temperature[np.unique(facets)]
-    low, high = float(values.min()), float(values.max())
-    toward = _direction(behind) if space is None else _from_space(view, rows)
-    seen = scenes.paint(mesh.points, facets, toward, values=view.temperature, span=(low, max(high, low + 1e-9)),
-                        front_only=space is not None)  # fmt: skip
-    title = "Surface temperature" + (", from the opposite corner" if behind else "")
-    if space is not None:
-        title = f"Surface temperature, side of {style.shortened(space)}"
+    nodes = np.unique(facets)
+    low, high = float(view.temperature[nodes].min()), float(view.temperature[nodes].max())
     levels = style.round_levels(low, high)
     places = style.decimals(levels) if len(levels) else 2
+    toward = _direction(behind) if space is None else _from_space(view, rows)
+    window = _crowded(view, facets, toward, levels) if close else None
+    if close and window is None:
+        return None
+    seen = scenes.paint(mesh.points, facets, toward, values=view.temperature, span=(low, max(high, low + 1e-9)),
+                        front_only=space is not None, window=window)  # fmt: skip
+    title = "Surface temperature" + (", from the opposite corner" if behind else "")
+    if space is not None:
+        title = f"Surface temperature, side of {style.shortened(space)}" + (", close-up" if close else "")
     read = f"From {style.degrees(low, max(1, places))} to {style.degrees(high, max(1, places))}."
+    coldest = mesh.points[nodes[np.argmin(view.temperature[nodes])]]
+    marked = space is not None and bool(seen.visible(coldest[None], 0.01 * mesh.size)[0])
     with style.applied():
-        made = _open(view, seen, title, bar=True, notes=(read + (" ▾ marks the lowest." if space else ""), _eye_note(seen)))
+        notes = (read + (" The white-edged triangle marks the lowest." if marked else ""), _eye_note(seen))
+        made = _open(view, seen, title, bar=True, notes=notes)
         _edges(made.ax, view, seen, rows)
         _isotherms(made.ax, view, seen, facets, (low, high), levels, places)
-        if space is not None:
-            coldest = mesh.points[np.unique(facets)[np.argmin(values)]]
-            if seen.visible(coldest[None], 0.01 * mesh.size)[0]:
-                made.ax.plot(*seen.place(coldest), "v", color=style.INK, markeredgecolor=style.PAPER, markersize=7, zorder=8)
+        if marked:
+            made.ax.plot(
+                *seen.place(coldest), "v", color=style.INK, markeredgecolor=style.PAPER, markersize=7, zorder=8
+            )
         pages.colour_bar(made, low, high, levels)
         file, _ = pages.save(made, folder, name, vector=False)
     return Picture(file=file, title=title, alt=f"{title}. {read}", table=temperature_table(view))
@@ -114,21 +125,45 @@ def _direction(behind: bool) -> np.ndarray:
     return -CORNER_VIEW if behind else CORNER_VIEW
 
 
+def _crowded(view: View, facets, toward, levels) -> tuple[np.ndarray, np.ndarray] | None:
+    """Return the part of the picture plane (m) where nine tenths of the isotherms are, if that is small."""
+    right, up, _ = scenes.frame(toward)
+    lines = [isolines(view.mesh.points, facets, view.temperature, level)[0] for level in levels]
+    if not lines or sum(map(len, lines)) == 0:
+        return None
+    middle = np.concatenate(lines).mean(axis=1)
+    flat = np.stack([middle @ right, middle @ up], axis=1)
+    whole = np.stack(
+        [view.mesh.points[facets].reshape(-1, 3) @ right, view.mesh.points[facets].reshape(-1, 3) @ up], axis=1
+    )
+    coldest = np.unique(facets)[np.argmin(view.temperature[np.unique(facets)])]
+    warmest = np.unique(facets)[np.argmax(view.temperature[np.unique(facets)])]
+    ends = view.mesh.points[[coldest, warmest]] @ np.stack([right, up], axis=1)
+    # the extreme that stands among the isotherms is the one to look at (a bolt may be the coldest or the warmest)
+    near = [np.median(np.linalg.norm(flat - end, axis=1)) for end in ends]
+    centre = ends[int(np.argmin(near))]
+    reach = 1.3 * np.quantile(np.abs(flat - centre).max(axis=1), 0.6)
+    reach = max(float(reach), 1e-3 * view.mesh.size)
+    if reach > 0.25 * np.ptp(whole, axis=0).max():
+        return None
+    low = np.maximum(centre - reach, whole.min(axis=0))
+    high = np.minimum(centre + reach, whole.max(axis=0))
+    return low, high
+
+
 def _rgb(colour: str) -> list[int]:
     return [int(colour[k : k + 2], 16) for k in (1, 3, 5)]
 
 
 def _from_space(view: View, rows: np.ndarray) -> np.ndarray:
-    """Return the direction from which most of some facets is seen; oblique, so that edges show."""
+    """Return the direction from which most of some facets is seen; squarely if they are nearly one plane."""
     corner = view.mesh.points[view.mesh.facets[rows]]
     normal = np.cross(corner[:, 1] - corner[:, 0], corner[:, 2] - corner[:, 0])
     signs = np.array([[a, b, c] for a in (1, -1) for b in (-1, 1) for c in (1, -1)], dtype=float)
     mean = normal.sum(axis=0)
     size = np.linalg.norm(mean)
     if size > 0.85 * np.linalg.norm(normal, axis=1).sum():  # nearly one plane: look at it almost squarely
-        mean /= size
-        aside = np.where(np.arange(3) == np.argmax(np.abs(mean)), 0.0, 0.28 * np.array([1, -1, 0.8]))
-        return mean + aside
+        return mean / size
     choices = signs * np.array([0.62, 0.70, 0.50])
     shown = [float(np.maximum(normal @ choice, 0).sum()) for choice in choices]
     return choices[int(np.argmax(shown))]
@@ -184,7 +219,7 @@ def _feature_edges(mesh, rows, body, boundary) -> np.ndarray:
     key, owner = key[order], owner[order]
     pair = np.flatnonzero(key[1:] == key[:-1])
     a, b = owner[pair], owner[pair + 1]
-    same = (np.einsum("ij,ij->i", normal[a], normal[b]) > np.cos(np.radians(30)))
+    same = np.einsum("ij,ij->i", normal[a], normal[b]) > np.cos(np.radians(30))
     same &= (body[rows[a]] == body[rows[b]]) & (boundary[rows[a]] == boundary[rows[b]])
     hidden = np.zeros(len(key), dtype=bool)
     hidden[pair[same]] = hidden[pair[same] + 1] = True
@@ -204,7 +239,10 @@ def _visible_lines(ax, seen, segments: np.ndarray, colour: str, width: float, sl
     share = np.stack([piece, piece + 1], axis=1) / count[which][:, None]
     start, along = segments[which, 0], (segments[:, 1] - segments[:, 0])[which]
     pieces = start[:, None] + share[:, :, None] * along[:, None]
-    pieces = pieces[seen.visible(pieces.mean(axis=1), slack)]
+    middle = pieces.mean(axis=1)
+    spot = seen.place(middle)
+    inside = np.all((spot > seen.low) & (spot < seen.high), axis=1)
+    pieces = pieces[inside & seen.visible(middle, slack)]
     _lines(ax, seen.place(pieces), colour, width)
     return pieces
 
@@ -216,11 +254,11 @@ def _isotherms(ax, view: View, seen, facets, span, levels, places: int) -> None:
         segments, cell = isolines(mesh.points, facets, view.temperature, level)
         corner = mesh.points[facets[cell]]
         normal = np.cross(corner[:, 1] - corner[:, 0], corner[:, 2] - corner[:, 0])
-        segments = segments[normal @ seen.toward > 0]
+        segments = segments[normal @ seen.toward > 1e-9 * np.linalg.norm(normal, axis=1)]
         colour = style.contrast((level - span[0]) / (span[1] - span[0]))
         pieces = _visible_lines(ax, seen, segments, colour, style.THIN, 0.004 * mesh.size)
         wanted.append(Wanted(text=style.degrees(level, places), points=seen.place(pieces.mean(axis=1))))
-    set_labels(ax, wanted)
+    set_labels(ax, wanted, spare_small=True)
 
 
 def _tags(view: View, seen) -> list[Wanted]:

@@ -8,10 +8,11 @@ depth map decides which of them are hidden.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
-PIXELS = 1300
+PIXELS = 1100
 """Longer side of a painted picture."""
 
 
@@ -49,14 +50,20 @@ class Scene:
         share = (self.place(points) - self.low) / (self.high - self.low)
         column = np.clip((share[:, 0] * columns).astype(int), 0, columns - 1)
         row = np.clip(((1 - share[:, 1]) * rows).astype(int), 0, rows - 1)
-        seen = self.depth[row, column]
-        return np.isfinite(seen) & (points @ self.toward >= seen - slack)
+        return points @ self.toward >= self.farthest[row, column] - slack
+
+    @cached_property
+    def farthest(self) -> np.ndarray:
+        """Return the farthest depth seen next to every pixel, so that outlines count as seen; -inf at the rim."""
+        from scipy.ndimage import minimum_filter
+
+        return minimum_filter(np.where(np.isfinite(self.depth), self.depth, -np.inf), size=5)
 
 
 def frame(toward: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     """Return the picture's unit vectors right, up, toward for an eye in a direction; z points up if it can."""
     toward = np.asarray(toward, dtype=float) / np.linalg.norm(toward)
-    upright = np.array([0.0, 0.0, 1.0]) if abs(toward[2]) < 0.95 else np.array([0.0, 1.0, 0.0])
+    upright = np.array([0.0, 0.0, 1.0]) if abs(toward[2]) < 0.8 else np.array([0.0, 1.0, 0.0])
     right = np.cross(upright, toward)
     right /= np.linalg.norm(right)
     return right, np.cross(toward, right), toward
@@ -71,6 +78,7 @@ def paint(
     span: tuple[float, float] = (0.0, 1.0),
     colours: np.ndarray | None = None,
     front_only: bool = False,
+    window: tuple[np.ndarray, np.ndarray] | None = None,
 ) -> Scene:
     """Paint triangles as an eye far away in the direction ``toward`` sees them.
 
@@ -84,6 +92,8 @@ def paint(
         RGB of every facet, 0-255, shape (f, 3).
     front_only
         Leave out faces that look away (to see into a cavity).
+    window
+        Corners of the part of the picture plane to show, m; all of it if None.
     """
     import pyvista
 
@@ -92,7 +102,7 @@ def paint(
     right, up, toward = frame(toward)
     used = np.unique(facets)
     flat = np.stack([points[used] @ right, points[used] @ up], axis=1)
-    low, high = flat.min(axis=0), flat.max(axis=0)
+    low, high = (flat.min(axis=0), flat.max(axis=0)) if window is None else window
     margin = 0.03 * max(high - low)
     low, high = low - margin, high + margin
     size = np.maximum((PIXELS * (high - low) / max(high - low)).astype(int), 60)
@@ -103,16 +113,16 @@ def paint(
     surface = pyvista.PolyData.from_regular_faces(np.asarray(points), np.asarray(facets))
     plotter = pyvista.Plotter(off_screen=True, window_size=size.tolist(), lighting="none")
     plotter.set_background("white")
-    plotter.add_light(pyvista.Light(position=focus + reach * (toward + 0.35 * up - 0.45 * right), focal_point=focus,
-                                    light_type="scene light", intensity=1.0))  # fmt: skip
-    look = {"show_scalar_bar": False, "culling": "back" if front_only else None, "lighting": True}
-    if values is not None:
+    look = {"show_scalar_bar": False, "culling": "back" if front_only else None}
+    if values is not None:  # no light: a shade must mean a temperature and nothing else
         surface.point_data["T"] = np.asarray(values)
-        plotter.add_mesh(surface, scalars="T", cmap=style.COLOUR_MAP, clim=span, ambient=0.72, diffuse=0.28,
+        plotter.add_mesh(surface, scalars="T", cmap=style.COLOUR_MAP, clim=span, lighting=False,
                          interpolate_before_map=True, n_colors=256, **look)  # fmt: skip
     else:
+        plotter.add_light(pyvista.Light(position=focus + reach * (toward + 0.5 * up - 0.6 * right), focal_point=focus,
+                                        light_type="scene light", intensity=1.0))  # fmt: skip
         surface.cell_data["colour"] = np.asarray(colours, dtype=np.uint8)
-        plotter.add_mesh(surface, scalars="colour", rgb=True, ambient=0.6, diffuse=0.4, **look)
+        plotter.add_mesh(surface, scalars="colour", rgb=True, ambient=0.8, diffuse=0.22, specular=0.0, **look)
     plotter.camera.position = focus + reach * toward
     plotter.camera.focal_point = focus
     plotter.camera.up = up
@@ -121,8 +131,8 @@ def paint(
     plotter.camera.clipping_range = (reach * 0.4, reach * 1.6)
     plotter.show(auto_close=False)
     depth = np.asarray(plotter.get_image_depth(fill_value=np.nan), dtype=float)  # negative distance from the eye
-    plotter.enable_anti_aliasing("ssaa")
-    image = np.asarray(plotter.screenshot(None, return_img=True, transparent_background=True))
+    image = np.asarray(plotter.screenshot(None, return_img=True))[..., :3]
     plotter.close()
+    image = np.dstack([image, np.where(np.isfinite(depth), 255, 0).astype(np.uint8)])
     return Scene(image=image, low=low * 1e3, high=high * 1e3, right=right, up=up, toward=toward,
                  depth=depth + float((focus + reach * toward) @ toward))  # fmt: skip

@@ -13,6 +13,7 @@ from __future__ import annotations
 import math
 import textwrap
 from contextlib import contextmanager
+from functools import lru_cache
 
 import numpy as np
 
@@ -91,26 +92,27 @@ def shortened(text: str, most: int = 44) -> str:
     return f"{text[:head]}…{text[len(text) - (most - 1 - head) :]}"
 
 
-def wrapped(text: str, inches: float, size: float, most_lines: int = 3) -> str:
+def wrapped(text: str, inches: float, size: float, most_lines: int = 3, *, bold: bool = False) -> str:
     """Return a text broken into lines that fit a width, measured with the font itself."""
     text = plain(text)
     letters = max(8, int(inches * 72 / (0.52 * size)))
     while letters > 8:
         lines = textwrap.wrap(text, letters, max_lines=most_lines, placeholder=" …") or [""]
-        if max(text_width(line, size) for line in lines) <= inches:
+        if max(text_width(line, size, bold) for line in lines) <= inches:
             break
         letters = int(letters * 0.93)
     return "\n".join(lines)
 
 
-def text_width(text: str, size: float) -> float:
+@lru_cache(maxsize=4096)
+def text_width(text: str, size: float, bold: bool = False) -> float:
     """Return how wide a line of text is, inches."""
-    from matplotlib.font_manager import FontProperties
-    from matplotlib.textpath import TextPath
+    from matplotlib.font_manager import FontProperties, findfont, get_font
 
-    if not text.strip():
-        return 0.0
-    return TextPath((0, 0), text, prop=FontProperties(family="DejaVu Sans", size=size)).get_extents().width / 72
+    font = get_font(findfont(FontProperties(family="DejaVu Sans", weight="bold" if bold else "normal")))
+    font.set_size(size, 72)
+    font.set_text(text, 0.0)
+    return font.get_width_height()[0] / 64 / 72
 
 
 # -------------------------------------------------------------------------------------- numbers
@@ -150,7 +152,9 @@ def round_levels(low: float, high: float, about: int = 9) -> np.ndarray:
 def decimals(levels: np.ndarray) -> int:
     """Return the decimals that tell the values apart and show each exactly."""
     for count in range(7):
-        if np.allclose(np.round(levels, count), levels, rtol=0, atol=1e-9 * max(1.0, float(np.abs(levels).max(initial=0)))):
+        if np.allclose(
+            np.round(levels, count), levels, rtol=0, atol=1e-9 * max(1.0, float(np.abs(levels).max(initial=0)))
+        ):
             return count
     return 7
 

@@ -256,7 +256,7 @@ def _listed(heading: str, lines: Sequence[str]) -> list[str]:
     return [heading, *(f"  {line}" for line in lines)] if lines else []
 
 
-def model_summary(view: View, files: Sequence[str] = ()) -> str:
+def model_summary(view: View, files: Sequence[str] = (), warnings: Sequence[str] = ()) -> str:
     """Return what a check prints: the bodies and boundaries of a model with their sizes.
 
     Parameters
@@ -265,6 +265,8 @@ def model_summary(view: View, files: Sequence[str] = ()) -> str:
         The model; it needs no solution.
     files
         Paths of what was written, as the user should read them.
+    warnings
+        What is odd and no fault, one sentence each.
     """
     mesh = view.mesh
     section = mesh.dim == 2 and not mesh.axisymmetric
@@ -284,6 +286,7 @@ def model_summary(view: View, files: Sequence[str] = ()) -> str:
         ["Bodies", *_table(bodies, right=(1,))],
         ["Boundaries", *_table(boundaries, right=(1,))],
         [f"Mesh: {mesh.n_nodes} nodes, {mesh.n_cells} cells. Nothing was solved."],
+        _listed("Warnings", warnings),
         _listed("Files", files),
     ]
     return "\n\n".join("\n".join(lines) for lines in sections if lines) + "\n"

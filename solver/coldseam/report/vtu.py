@@ -1,4 +1,4 @@
-"""The field as VTK XML unstructured grids: an open format that ParaView and meshio read.
+"""The field as VTK XML unstructured grids: the open format of VTK and ParaView.
 
 Written by hand because the answers must not depend on VTK, which needs graphics libraries that a
 server may lack. Arrays are inline base64 blocks of zlib-compressed little-endian data, as the
@@ -29,7 +29,8 @@ def write_field(folder: str | Path, view: View) -> list[Path]:
     Positions are metres (the field data array ``length_unit`` says so), temperatures °C at the
     nodes, heat flux W/m² in the cells, ``body`` and ``boundary`` indices into the names that the
     field data arrays ``body_names`` and ``boundary_names`` hold. In an axisymmetric section x is
-    the radius and y the axis.
+    the radius and y the axis. (meshio, up to 5.3 at least, refuses files with text arrays; VTK,
+    pyvista and ParaView read them.)
 
     Raises
     ------
@@ -115,4 +116,6 @@ def _packed(values: np.ndarray) -> str:
 def _text_array(name: str, values: list[str]) -> str:
     """Return a VTK string array: UTF-8 codes, each text ended by a zero."""
     codes = " ".join(str(code) for value in values for code in (*value.encode(), 0))
-    return f'<Array type="String" Name={quoteattr(name)} NumberOfTuples="{len(values)}" format="ascii">{codes}</Array>\n'
+    return (
+        f'<Array type="String" Name={quoteattr(name)} NumberOfTuples="{len(values)}" format="ascii">{codes}</Array>\n'
+    )

@@ -22,7 +22,7 @@ class Interval:
     Parameters
     ----------
     value
-        From nodal balances.
+        The mean of the node and the facet network's balance; without bounds the node network's.
     low, high
         Bounds; None where there are none.
     kind
@@ -59,7 +59,8 @@ def boundary_intervals(steady: Steady) -> list[Interval]:
             result.append(_interval(steady, [terminal], float(value)))
             continue
         whole = _interval(steady, [terminal], float(steady.boundary_flow[list(group)].sum()))
-        result.append(_part_of(whole, float(value)))
+        split = steady.boundary_flow[list(group)]
+        result.append(_part_of(whole, float(value), float(split.sum()), float(np.abs(split).sum())))
     return result
 
 
@@ -135,6 +136,7 @@ def _bounded(steady: Steady, reading, state, value: float, involved: list[int]) 
         return Interval(value=value, low=None, high=None, kind="estimate", reason=CLASH)
     if steady.bounds is None:
         return Interval(value=value, low=None, high=None, kind="estimate", reason="no bounds were computed")
+    value = steady.bounds.estimate(reading, state)
     low, high = steady.bounds.interval(reading, state)
     low, high = min(low, value), max(high, value)
     reason = steady_reason(steady)
@@ -160,13 +162,16 @@ def steady_reason(steady: Steady) -> str:
     return "; ".join(reasons)
 
 
-def _part_of(whole: Interval, value: float) -> Interval:
-    """Return the interval of one boundary of a group of touching fixed faces."""
-    reason = "one of several touching faces of equal fixed temperature; only their sum has a proven interval"
+def _part_of(whole: Interval, part: float, total: float, absolute: float) -> Interval:
+    """Return the interval of one boundary of a group of touching fixed faces: the nodal split of the group's flow.
+
+    ``part``, ``total`` and ``absolute`` (sum of absolute parts) are the node network's flows.
+    """
     if whole.low is None or whole.high is None:
-        return Interval(value=value, low=None, high=None, kind="estimate", reason=whole.reason)
-    slack = whole.error
-    return Interval(value=value, low=value - slack, high=value + slack, kind="estimate", reason=reason)
+        return Interval(value=part, low=None, high=None, kind="estimate", reason=whole.reason)
+    value = part + (whole.value - total) * (abs(part) / absolute if absolute > 0 else 0.0)
+    reason = "one of several touching faces of equal fixed temperature; only their sum has a proven interval"
+    return Interval(value=value, low=value - whole.error, high=value + whole.error, kind="estimate", reason=reason)
 
 
 def body_energy(steady: Steady) -> np.ndarray:

@@ -251,8 +251,7 @@ def _with_sheets(mesh, network, facets, number, kt, from_nodes):
     in_plane = sheet_laplacian(n_plain + site_of, factor * sheet_weights(mesh, nodes, kt, harmonic=True), n_sites)
     fixed = np.full(n_sites, -1, dtype=np.int64)
     fixed[:n_plain] = network.fixed[plain]
-    held = np.repeat(network.fixed[number], dim)
-    fixed[n_plain + site_of.ravel()[held >= 0]] = held[held >= 0]
+    fixed[n_plain:] = _held_sites(facets[network.fixed >= 0], network.fixed[network.fixed >= 0], site_nodes)
     width = site_nodes.shape[1]
     average = sparse.csr_array(
         (np.full(site_nodes.size, 1.0 / width), site_nodes.ravel(), np.arange(0, site_nodes.size + 1, width)),
@@ -268,3 +267,25 @@ def _with_sheets(mesh, network, facets, number, kt, from_nodes):
         has_load=network.has_load,
     )
     return changed, spread, from_nodes, n_plain + site_of
+
+
+def _held_sites(fixed_facets: np.ndarray, terminal: np.ndarray, site_nodes: np.ndarray) -> np.ndarray:
+    """Return the terminal of sheet sites that lie on fixed faces, where the sheet ends or runs along, else -1.
+
+    Parameters
+    ----------
+    fixed_facets, terminal
+        Sorted nodes of facets with fixed temperature, (n, dim), and their terminals, (n,).
+    site_nodes
+        Node (section) or sorted edge nodes (3D) of each sheet site, (n_sites, dim - 1).
+    """
+    width = site_nodes.shape[1]
+    parts = fixed_facets if width == 1 else fixed_facets[:, [[0, 1], [0, 2], [1, 2]]]
+    parts = parts.reshape(-1, width).astype(np.int64)
+    owner = np.repeat(terminal, len(parts) // max(len(terminal), 1))
+    rows = np.vstack([parts, site_nodes])
+    _, same = np.unique(rows, axis=0, return_inverse=True)
+    same = same.ravel()
+    table = np.full(same.max() + 1, -1, dtype=np.int64)
+    table[same[: len(parts)]] = owner
+    return table[same[len(parts) :]]

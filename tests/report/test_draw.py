@@ -1,0 +1,137 @@
+"""Drawing in children: a crash costs pictures, never answers; a missing GL is said, with the packages."""
+
+import json
+import os
+import signal
+
+import numpy as np
+import pytest
+
+from coldseam.report import draw, render_probe
+from coldseam.report.render_probe import Verdict
+
+CRASH = f"import os; os.kill(os.getpid(), {int(signal.SIGSEGV)})"
+ONLY_OSMESA = f"""
+import os
+if os.environ["{render_probe.WINDOW_VARIABLE}"] != "vtkOSOpenGLRenderWindow":
+    os.kill(os.getpid(), {int(signal.SIGSEGV)})
+print("drawn")
+"""
+
+
+def test_a_crash_is_a_verdict():
+    verdict = render_probe.ask(CRASH, 20)
+    assert not verdict.able
+    assert verdict.why_not.count(f"crashed (signal {int(signal.SIGSEGV)})") == 2
+
+
+def test_the_second_way_is_tried():
+    assert render_probe.ask(ONLY_OSMESA, 20) == Verdict(way="OSMesa", window="vtkOSOpenGLRenderWindow")
+
+
+@pytest.mark.parametrize("source,words", [("import time; time.sleep(30)", "no picture within 1 s"), ("print('blank')", "blank"),
+                                          ("raise ImportError('libGL.so.1 is missing')", "libGL.so.1")])  # fmt: skip
+def test_other_failures_are_told(source, words):
+    verdict = render_probe.ask(source, 1.0 if "sleep" in source else 20)
+    assert not verdict.able and words in verdict.why_not
+
+
+def test_without_gl_sections_remain_and_the_warning_names_packages(view, tmp_path, monkeypatch):
+    monkeypatch.setattr(render_probe, "rendering", lambda: Verdict(way=None, window=None, why_not="EGL: crashed"))
+    said = []
+    made = draw.draw_all(view("bolted_panel"), tmp_path, lambda stage, message: said.append(message))
+    names = [picture.file for picture in made.pictures]
+    assert "temperature_section_1.png" in names and "model.png" not in names
+    assert all((tmp_path / name).stat().st_size > 5000 for name in names)
+    (warning,) = made.warnings
+    assert "3D pictures" in warning and "EGL: crashed" in warning and "libegl1" in warning
+    assert warning in said
+
+
+def test_a_crash_while_drawing_keeps_what_was_drawn(view, tmp_path, monkeypatch):
+    """The child dies at its second picture: the first stays listed, and the sentence says so."""
+    (tmp_path / "site").mkdir()
+    (tmp_path / "site" / "sitecustomize.py").write_text(
+        "import os, sys\n"
+        "def watch(event, arguments):\n"
+        "    if event == 'open' and 'temperature' in str(arguments[0]) : os.kill(os.getpid(), 11)\n"
+        "    if event == 'os.rename' and 'temperature' in str(arguments[1]): os.kill(os.getpid(), 11)\n"
+        "if 'coldseam.report.draw' in ' '.join(sys.orig_argv): sys.addaudithook(watch)\n"
+    )
+    monkeypatch.syspath_prepend(str(tmp_path / "site"))
+    out = tmp_path / "out"
+    out.mkdir()
+    made = draw.draw_all(view("square"), out)
+    assert [picture.file for picture in made.pictures] == ["model.png"]
+    assert len(made.warnings) == 1 and "crashed (signal 11); 1 were finished before" in made.warnings[0]
+
+
+def test_a_picture_that_fails_is_named_and_the_rest_is_drawn(view, tmp_path, monkeypatch):
+    from coldseam.report import pictures2d
+
+    def fail(*arguments):
+        raise ValueError("no reason")
+
+    monkeypatch.setattr(pictures2d, "draw_temperature", fail)
+    listing = tmp_path / "list"
+    assert draw.draw_group(view("square"), tmp_path, "flat", listing) == 1
+    pictures, wrong = draw._read_list(listing)
+    assert wrong == ["The picture temperature could not be drawn: no reason."]
+    assert {picture.file for picture in pictures} == {"model.png", "heat_flow.png", "surface_1.png", "surface_2.png"}
+
+
+def test_an_unwritable_folder_is_a_warning(view, tmp_path):
+    made = draw.draw_all(view("tall_panel"), tmp_path / "missing")
+    assert made.pictures == () and made.warnings
+
+
+def test_model_of_a_case(view, tmp_path):
+    from types import SimpleNamespace
+
+    shown = view("square")
+    entry = dict(space=None, temperature=None, heat_flux=None, heat_flow=None, adiabatic=None)
+    boundaries = (SimpleNamespace(name="cold", **{**entry, "space": "freezer"}),
+                  SimpleNamespace(name="hot plate", **{**entry, "heat_flux": 0.0}),
+                  SimpleNamespace(name="cut", **{**entry, "adiabatic": True}))  # fmt: skip
+    case = SimpleNamespace(title="a case", boundary=boundaries, probe=(SimpleNamespace(name="p", at=(0.1, 0.1)),))
+    made = draw.draw_model(case, shown.mesh, shown.facet_boundary, tmp_path)
+    (picture,) = made.pictures
+    assert made.warnings == () and picture.file == "model.png"
+    rows = [(*row[:3], pytest.approx(row[3])) for row in picture.table.rows]
+    assert rows == [
+        ("cold", "space", "freezer", 0.8),
+        ("hot plate", "heat_flux", None, 0.4),
+        ("cut", "adiabatic", None, 0.4),
+    ]
+
+
+needs_gl = pytest.mark.skipif(os.environ.get("COLDSEAM_NO_GL") == "1", reason="no GL on this machine, as told")
+
+
+@needs_gl
+def test_views_in_space(view, tmp_path):
+    """With GL (the everyday machine has EGL): all pictures in space, not blank, colours as on the colour bar."""
+    if not render_probe.rendering().able:
+        pytest.skip(render_probe.rendering().why_not)
+    scratch = tmp_path / "view"
+    import pickle
+
+    scratch.write_bytes(pickle.dumps(view("bolted_panel")))
+    made, wrong = draw._child(scratch, tmp_path, "space", tmp_path / "list", render_probe.rendering().window)
+    assert wrong == []
+    names = {picture.file for picture in made}
+    assert names == {"model.png", "model_behind.png", "surface.png", "surface_behind.png", "surface_1.png", "surface_2.png",
+                     "surface_1_close.png", "surface_2_close.png"}  # fmt: skip
+    from PIL import Image
+
+    for name in names:
+        image = np.asarray(Image.open(tmp_path / name).convert("RGB"))
+        assert len(np.unique(image.reshape(-1, 3).astype(np.int32) @ [65536, 256, 1])) > 100
+    # the warm side far from the bolt is at the top of the scale: the last colour of the map, unshaded
+    image = np.asarray(Image.open(tmp_path / "surface_1.png").convert("RGB")).reshape(-1, 3).astype(int)
+    import matplotlib
+
+    top = np.round(np.array(matplotlib.colormaps["cividis"](1.0)[:3]) * 255)
+    assert np.mean(np.abs(image - top).max(axis=1) < 12) > 0.2
+    assert len((tmp_path / "list").read_text().splitlines()) == len(names)
+    assert all(json.loads(line)["alt"] for line in (tmp_path / "list").read_text().splitlines())
