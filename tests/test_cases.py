@@ -2,7 +2,8 @@
 
 The brackets are Rayleigh's: making any part of a body a perfect conductor (isothermal planes) can only raise the heat
 flow, and cutting it with perfect insulation (adiabatic tubes) can only lower it (Maxwell, A Treatise on Electricity and
-Magnetism, 1873, articles 306-307). So the true heat flow lies between two sums of resistances, whatever the program says.
+Magnetism, 1873, articles 306-307). So the true heat flow lies between two sums of resistances, whatever the program
+says.
 """
 
 from __future__ import annotations
@@ -14,11 +15,12 @@ from published import exact, runs
 from scipy.special import iv, kv
 
 FOAM_PIR, FOAM_PUR, FOAM_XPS = 0.027, 0.026, 0.035
-STAINLESS, STEEL, SOFTWOOD, ALUMINIUM = 17.0, 50.0, 0.13, 160.0
+STAINLESS, STEEL, ALUMINIUM = 17.0, 50.0, 160.0
+SOFTWOOD, HARDWOOD, GRP = 0.13, 0.18, 0.4
 """W/(m K), typed again from the sources of the materials library so that a change there is noticed."""
 
 CHECKED = {
-    "freezer-panel": "a hundredth of a degree and a watt, between adiabatic tubes and isothermal planes",
+    "freezer-panel": "adiabatic tubes and isothermal planes",
     "skinned-panel": "adiabatic tubes, isothermal planes, and the bolt between two fins",
     "skinned-panel-meshed": "as the panel with sheets",
     "hundred-bolts": "a hundred times one bolt",
@@ -26,6 +28,8 @@ CHECKED = {
     "box-with-door-frame": "plain walls below, exact edges and corners above",
     "pipe-penetration": "two fins, a rod and a wall",
     "finned-housing": "heat over film and area, fin efficiency",
+    "step-support": "adiabatic tubes, isothermal planes",
+    "foreign-mesh": "radial sectors",
 }
 """What each case's number rests on."""
 
@@ -89,27 +93,26 @@ def test_freezer_panel_lies_between_tubes_and_planes():
     assert high < 1.25 * low, "a bracket that says something"
     answers = runs.shipped("freezer-panel")
     assert 45 * low < answers["spaces"]["bay"]["heat_flow"] < 45 * high
-    # Far from the bolts the wall is plain: its warm surface is 25 - 45 U Rsi, nearly (the bolts take heat from there too).
+    # Far from the bolts the wall is plain: its warm surface is 25 - 45 U Rsi, nearly (bolts take heat from there too).
     plain = 25 - 45 * 0.13 * exact.series(1 / 8, 0.1 / FOAM_PIR, 0.13)
     assert answers["probes"]["warm face between bolts"]["temperature"] == pytest.approx(plain, abs=0.05)
     assert answers["probes"]["middle of a warm head"]["temperature"] < plain - 1
 
 
-def test_freezer_panel_s_bolts_are_alike():
-    """By symmetry the foam at the four quarters of the panel is at one temperature, and heads leak a quarter each."""
-    areas = runs.shipped("freezer-panel")["boundaries"]
-    head = math.pi * 0.030**2 / 4 + math.pi * 0.030 * 0.004
-    # Round heads are meshed as polygons: their area is short by at most 1 % (24 segments: 1.1 % of the disc).
-    assert areas["warm bolt heads"]["area"] == pytest.approx(4 * head, rel=0.012)
-    assert areas["warm face"]["area"] == pytest.approx(0.36 - math.pi * 0.030**2, rel=1e-3)
+def test_freezer_panel_has_the_surface_that_it_is_drawn_with():
+    answers = runs.shipped("freezer-panel")
+    sides = math.pi * 0.030 * 0.004
+    # Heads are meshed as polygons of at least 24 sides: their rims are short by 0.3 % at most, of 0.4 % of the area.
+    for name in ("warm side", "cold side"):
+        assert answers["boundaries"][name]["area"] == pytest.approx(0.36 + 4 * sides, rel=2e-5)
 
 
 def skinned_bolt(k: float, h: float) -> float:
     """Return an estimate of the conductance that a bolt adds between two skins, W/K, for a quarter of the panel.
 
-    Each skin is an annular fin about the bolt (Incropera, DeWitt, section 3.6, modified Bessel functions) that takes heat
-    from the air and gives it, by itself, to the foam's middle plane; fins and bolt are in series. The foam's own heat
-    near the bolt is neglected, which costs some percent of the small difference.
+    Each skin is an annular fin about the bolt (Incropera, DeWitt, section 3.6, modified Bessel functions) that
+    exchanges heat with the air and with the foam's middle plane; fins and bolt are in series. What the foam conducts
+    into the bolt's flank is neglected, which costs some percent of the small difference.
     """
     t, radius, reach = 0.0005, 0.005, 0.3 / math.sqrt(math.pi)
     m = math.sqrt((h + 2 * k / 0.1) / (STEEL * t))
@@ -118,8 +121,8 @@ def skinned_bolt(k: float, h: float) -> float:
     skin = 2 * math.pi * STEEL * t * a * shape
     bolt = STAINLESS * math.pi * radius**2 / 0.1
     share = (0.1 / k) * exact.series(1 / h, 0.1 / k, 1 / h)
-    # The undisturbed skins differ by `share` of the rooms' difference, and a watt taken from a skin is missed by the room in
-    # the same share (reciprocity): hence the square.
+    # The undisturbed skins differ by `share` of the rooms' difference, and a watt taken from a skin is missed by the
+    # room in the same share (reciprocity): hence the square.
     return share**2 * between(1 / skin, 1 / bolt, 1 / skin) / 4
 
 
@@ -138,7 +141,7 @@ def test_skinned_panel_lies_between_tubes_and_planes(stem):
 def test_skins_as_sheets_and_as_bodies_agree():
     """The same panel modelled in two ways: the difference is within the two intervals' half widths."""
     sheets, meshed = (runs.shipped(stem)["spaces"]["bay"] for stem in ("skinned-panel", "skinned-panel-meshed"))
-    # Half a millimetre of steel has a resistance of 1e-5 m² K/W and lengthens the bolt by 1 %: some 0.3 % of the heat flow.
+    # Meshed skins lengthen the bolt by 1 %, which is some 0.3 % of the heat flow; their own 1e-5 m² K/W are nothing.
     slack = 0.003 * sheets["heat_flow"]
     assert sheets["heat_flow_low"] - slack <= meshed["heat_flow_high"]
     assert meshed["heat_flow_low"] - slack <= sheets["heat_flow_high"]
@@ -171,9 +174,9 @@ def test_panel_corner_lies_between_plain_walls_and_the_edge_s_energy():
     # Symmetry about the diagonal: both outer sides take the same heat.
     sides = [answers["boundaries"][f"outside, {name}"]["heat_flow"] for name in ("south", "west")]
     assert sides[0] == pytest.approx(sides[1], rel=0.005)
-    # The outer corner has more film than wall behind it and is warmer than the plain wall; the inner one is colder air's.
+    # At an outer corner more surface takes in what passes the wall behind: it is warmer than the plain wall.
     plain = 20 - 42 * 0.13 * exact.series(0.13, 0.12 / FOAM_PIR, 0.13)
-    assert answers["probes"]["outer corner"]["temperature"] > plain - 0.5
+    assert plain < answers["probes"]["outer corner"]["temperature"] < 20
 
 
 def test_box_with_door_frame_lies_between_plain_walls_and_edges():
@@ -196,10 +199,10 @@ def test_box_with_door_frame_lies_between_plain_walls_and_edges():
 
 
 def test_pipe_penetration_lies_between_tubes_and_planes():
-    """Fins on both sides, a rod between them: below with the pipe insulated from the foam, above with isothermal faces.
+    """Fins on both sides, a rod between: below with the pipe insulated from the foam, above with isothermal faces.
 
-    A fin with a film h at its end is sqrt(h P k A) tanh(m L + atanh(h A/sqrt(h P k A))) (Incropera, DeWitt, table 3.4 case A);
-    across the 2.6 mm of pipe wall the Biot number is 1e-3, so one dimension is good to 0.1 %.
+    A fin with a film at its end is sqrt(h P k A) tanh(m L + atanh(h A/sqrt(h P k A))) (Incropera, DeWitt, table 3.4
+    case A); across the 2.6 mm of pipe wall the Biot number is 1e-3, so one dimension is good to 0.1 %.
     """
     h, outer, inner, length = 8.0, 0.01685, 0.01425, 0.25
     section = math.pi * (outer**2 - inner**2)
@@ -230,10 +233,54 @@ def test_finned_housing_sheds_its_heat_over_its_area():
     area = 8 * 0.062 + 0.084
     mean = (fins["temperature"]["mean"] * fins["area"] + base["temperature"]["mean"] * base["area"]) / area
     assert mean == pytest.approx(35 + 60 / (10 * area), abs=1e-3)
-    # Fin efficiency tanh(mL)/(mL) with m = sqrt(2 h/(k t)), half a thickness added for the tip; an even base is 5 mm of alloy
-    # that levels the heat of the module to some tenths of a kelvin.
+    # Fin efficiency tanh(mL)/(mL) with m = sqrt(2 h/(k t)), half a thickness added for the tip; the base's 5 mm of
+    # alloy level the heat of the module to some tenths of a kelvin.
     slope = math.sqrt(2 * 10 / (ALUMINIUM * 0.002)) * 0.031
     rise = 60 / (10 * (0.084 + 8 * 0.062 * math.tanh(slope) / slope))
     assert base["temperature"]["mean"] == pytest.approx(35 + rise, abs=0.3)
-    # The hottest place is under the middle of the module: above the base by the module's own 3 mm (heat q''' t²/(2 k)) at least.
-    assert answers["probes"]["under the module"]["temperature"] > base["temperature"]["mean"] + 60 / 0.06 * 0.003 / (2 * 2)
+    # Under the middle of the module it is hotter than the base by the module's own drop q t/(2 k) at least.
+    drop = 60 / 0.06 * 0.003 / (2 * 2)
+    assert answers["probes"]["under the module"]["temperature"] > base["temperature"]["mean"] + drop
+
+
+def test_step_support_lies_between_tubes_and_planes():
+    """Below: wall and bracket insulated from one another. Above: both faces of the wall isothermal.
+
+    A plate is a fin of m = sqrt(h/(k t)) = 8.7/m and 40 mm from the studs to its rim: its efficiency is 0.96
+    (Incropera, DeWitt, section 3.6). Taking 0.9 keeps the lower value below.
+    """
+    film = 0.13
+    plate = 0.120**2 - (4 - math.pi) * 0.012**2
+    rim = (4 * 0.120 - (8 - 2 * math.pi) * 0.012) * 0.006
+    studs, tube = 4 * math.pi * 0.005**2, 0.060**2 - 0.048**2
+    steel_and_glass = STAINLESS * studs + GRP * tube
+    under = (steel_and_glass + FOAM_PIR * (plate - studs - tube)) / 0.1
+    wall, air = 0.09 - plate, (plate + rim) / film
+    low = wall * exact.series(film, 0.1 / FOAM_PIR, film) + between(1 / (0.9 * air), 1 / under, 1 / (0.9 * air))
+    through = (steel_and_glass + FOAM_PIR * (0.09 - studs - tube)) / 0.1
+    high = between(1 / (air + wall / film), 1 / through, 1 / (air + wall / film))
+    assert high < 1.4 * low, "a bracket that says something"
+    answers = runs.shipped("step-support")
+    assert 45 * low < answers["spaces"]["bay"]["heat_flow"] < 45 * high
+    volumes = {name: body["volume"] for name, body in answers["bodies"].items()}
+    assert volumes["support/tube"] == pytest.approx(tube * 0.1, rel=1e-9)
+    # Studs are meshed as polygons of at least 24 sides: at most 1.2 % short.
+    assert volumes["support/stud ++"] == pytest.approx(studs / 4 * 0.112, rel=0.012)
+
+
+def test_foreign_mesh_lies_between_radial_sectors():
+    """Below: sectors of the lagging insulated from one another, with their films. Above: no film at all.
+
+    Without films all of it has the one field ln r, so the upper value is exact for that. The mesh's arcs are polygons
+    with sides of up to 13.3 degrees: 0.9 % less section than the circle, hence 1 % of slack on both sides.
+    """
+    inside, pipe, outer, shell = 0.05355, 0.05715, 0.10715, 0.11115
+    thickness = math.log(outer / pipe)
+    foam, block = math.pi * 0.45 - math.pi / 3 * 0.15, math.pi / 3 * 0.15
+    steel = math.log(pipe / inside) / STEEL + 1 / (800 * inside)
+    low = foam * between(steel, thickness / FOAM_PUR, 1 / (8 * outer))
+    low += block * between(steel, thickness / HARDWOOD, math.log(shell / outer) / STEEL, 1 / (8 * shell))
+    high = (foam * FOAM_PUR + block * HARDWOOD) / thickness
+    assert high < 1.25 * low, "a bracket that says something"
+    answers = runs.shipped("foreign-mesh")
+    assert -50 * high * 1.01 < answers["spaces"]["brine"]["heat_flow"] < -50 * low * 0.99

@@ -7,9 +7,10 @@ number must meet. Accuracy 0.45 stops at the first mesh, so that runs of the sam
 from __future__ import annotations
 
 import pytest
+from published.runs import as_json
+
 from coldseam.case import read
 from coldseam.study import run
-from published.runs import as_json
 
 SAME = 1e-7
 """Relative difference of two runs on one mesh: solvers stop at an energy error of some 1e-8."""
@@ -172,7 +173,7 @@ conductivity = 0.15
 [[body]]
 name = "walls"
 material = "foam"
-polygon = {{ points = [[0, 0], [300, 0], [300, 100], [100, 100], [100, 300], [0, 300]], axis = "{axis}", from = 0, to = 150 }}
+polygon = {{ points = {points}, axis = "{axis}", from = 0, to = 150 }}
 [[body]]
 name = "post"
 material = "post"
@@ -196,12 +197,15 @@ adiabatic = true
 """
 
 
+ANGLE = [[0, 0], [300, 0], [300, 100], [100, 100], [100, 300], [0, 300]]
+
+
 @pytest.mark.parametrize("axis", ["x", "y", "z"])
 def test_a_section_and_the_solid_drawn_out_agree(axis):
     """150 mm of the solid carry 0.15 of what the section carries per metre, whichever way it is drawn out."""
     u, v = {"x": "yz", "y": "zx", "z": "xy"}[axis]
     low, high = ([{u: ends, v: ends, axis: along}[name] for name in "xyz"] for ends, along in ((100, 0), (300, 150)))
-    solid = as_json(run(read.loads(SOLID.format(axis=axis, u=u, v=v, low=low, high=high))))
+    solid = as_json(run(read.loads(SOLID.format(axis=axis, points=ANGLE, u=u, v=v, low=low, high=high))))
     flat = section(accuracy=0.005)
     assert meet(flat, solid, factor=0.15)
     assert flow(solid) == pytest.approx(0.15 * flow(flat), rel=0.05)

@@ -9,11 +9,12 @@ from __future__ import annotations
 from dataclasses import replace
 
 import pytest
+from published import runs
+from published.references import REFERENCES
+
 from coldseam.errors import ColdseamError
 from coldseam.study import run
 from coldseam.volumes import conditions
-from published import runs
-from published.references import REFERENCES
 
 
 def complaints(answers: dict, case: str) -> list[str]:
@@ -61,7 +62,16 @@ def _users(function):
     return [m for m in found if getattr(m, function.__name__, None) is function]
 
 
-CONDUCTING = ["plane-wall", "two-layers", "contact", "cylinder-axisymmetric", "fin", "anisotropic", "edge", "sheet-along-3d"]
+CONDUCTING = [
+    "plane-wall",
+    "two-layers",
+    "contact",
+    "cylinder-axisymmetric",
+    "fin",
+    "anisotropic",
+    "edge",
+    "sheet-along-3d",
+]
 
 
 @pytest.mark.parametrize("case", [*CONDUCTING, "source-slab", "flux", "sheet-film", "nafems-t4"])

@@ -63,23 +63,27 @@ def test_child_that_dies_at_once_names_the_packages():
 
 
 def test_orphan_ends():
-    """The parent is killed without a chance to clean up: the child notices."""
+    """The parent is killed while gmsh is at work (a million triangles, some 20 s): the child notices."""
     code = (
-        "import sys, time\n"
         "from coldseam.geometry.client import Worker\n"
-        "print(Worker().pid, flush=True)\n"
-        "time.sleep(60)\n"
+        "from coldseam.geometry.parts import Part, Solid\n"
+        "ball = Solid(kind='sphere', start=(0.0, 0.0, 0.0), radii=(10.0,))\n"
+        "w = Worker()\n"
+        "w.ask('build', parts=[Part(name='it', material='a', source=0, solids=(ball,))], dim=3)\n"
+        "print(w.pid, flush=True)\n"
+        "w.ask('boundary', algorithm=6, segments=24, cap=0.05, view=None, scale=1.0)\n"
     )
     root = str(Path(client.__file__).resolve().parents[2])
     parent = subprocess.Popen(
         [sys.executable, "-c", code], stdout=subprocess.PIPE, text=True, env={**os.environ, "PYTHONPATH": root}
     )
     pid = int(parent.stdout.readline())
+    time.sleep(0.5)
     assert alive(pid)
     parent.kill()
     parent.wait()
     parent.stdout.close()
-    end = time.monotonic() + 20
+    end = time.monotonic() + 6
     while alive(pid) and time.monotonic() < end:
         if Path(f"/proc/{pid}/stat").exists() and ") Z " in Path(f"/proc/{pid}/stat").read_text():
             break  # ended; its new parent has not collected it

@@ -116,8 +116,8 @@ def test_patches_are_whole_faces(panel):
 
 
 def test_flat_cell_is_taken_out():
-    """Four nodes on one circle between two others: the crossing edges are joined, no volume lost."""
-    points = np.array([[1, 0, 0], [-1, 0, 0], [0, 1, 0], [0, -1, 0], [0, 0, 1], [0, 0, -1.0]])
+    """Four nodes in one plane between two others: the crossing edges are joined, no volume lost."""
+    points = np.array([[1.5, 0, 0], [-1, 0, 0], [0, 1, 0], [0, -2, 0], [0, 0, 1], [0, 0, -1.0]])
     cells = np.array([[0, 1, 2, 3], [0, 1, 2, 4], [0, 1, 3, 4], [0, 2, 3, 5], [1, 2, 3, 5]])
     raw = {
         "points": points,

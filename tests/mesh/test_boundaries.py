@@ -103,7 +103,7 @@ def test_shells_in_the_plane_and_about_the_axis(grid, picker):
 
 
 def test_a_slender_hollow_on_the_axis_is_a_cavity(grid, picker):
-    """Its open curve closes along r = 0 and nowhere else: measured from another place it would seem to hold material."""
+    """Its open curve closes along r = 0 only: measured from elsewhere it would seem to hold material."""
     hole = lambda c: (c[:, 0] < 0.125) & (c[:, 1] > 0.25) & (c[:, 1] < 0.75)  # noqa: E731
     axis = np.linspace(0, 1, 9)
     mesh = grid(axis, axis, drop=hole, axisymmetric=True)

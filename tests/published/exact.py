@@ -17,8 +17,8 @@ CORNER_EXCESS = 0.1053
 def square_column(x: float, depth: float) -> float:
     """Return °C in a unit square with one side at 20 °C, the others at 0 °C.
 
-    ``depth`` is the distance from the hot side. Carslaw, Jaeger, Conduction of Heat in Solids, 2nd ed. 1959, section 5.3
-    (series from memory, checked against the printed table of ISO 10211 case 1).
+    ``depth`` is the distance from the hot side. Carslaw, Jaeger, Conduction of Heat in Solids, 2nd ed. 1959, section
+    5.3 (series from memory, checked against the printed table of ISO 10211 case 1).
     """
     y = 1.0 - depth
     n = np.arange(1, 200, 2)

@@ -3,16 +3,22 @@
 from __future__ import annotations
 
 import pytest
+
 from published import runs
 from published.references import REFERENCES
 
 ROUND_OFF = 1e-9
 """Relative widening of every interval: the references are exact to about this much only."""
 
-CASES = sorted({(reference.case, reference.change) for reference in REFERENCES}, key=str)
+CASES = sorted({(reference.case, reference.change, reference.slow) for reference in REFERENCES}, key=str)
 
 
-@pytest.mark.parametrize("reference", REFERENCES, ids=lambda reference: reference.label)
+def parameters(references):
+    """Return pytest parameters, slow ones marked."""
+    return [pytest.param(r, id=r.label, marks=[pytest.mark.slow] if r.slow else []) for r in references]
+
+
+@pytest.mark.parametrize("reference", parameters(REFERENCES))
 def test_value_within_the_source_s_tolerance(reference):
     value = reference.of(runs.published(reference.case, reference.change))
     assert value == pytest.approx(reference.value, rel=0, abs=reference.tolerance), (
@@ -20,9 +26,7 @@ def test_value_within_the_source_s_tolerance(reference):
     )
 
 
-@pytest.mark.parametrize(
-    "reference", [r for r in REFERENCES if r.is_flow], ids=lambda reference: reference.label
-)
+@pytest.mark.parametrize("reference", parameters([r for r in REFERENCES if r.is_flow]))
 def test_reference_within_the_interval(reference):
     interval = reference.interval(runs.published(reference.case, reference.change))
     assert interval is not None, "every heat flow has an interval"
@@ -33,7 +37,10 @@ def test_reference_within_the_interval(reference):
     )
 
 
-@pytest.mark.parametrize(("case", "change"), CASES, ids=str)
+@pytest.mark.parametrize(
+    ("case", "change"),
+    [pytest.param(case, change, marks=[pytest.mark.slow] if slow else []) for case, change, slow in CASES],
+)
 def test_balance_closes_and_intervals_hold_their_flow(case, change):
     assert runs.faults(runs.published(case, change)) == []
 

@@ -27,8 +27,10 @@ def lattice(*axes):
         return points, cells.reshape(-1, 3)
     corner = {
         (i, j, k): number[i : shape[0] - 1 + i, j : shape[1] - 1 + j, k : shape[2] - 1 + k]
-        for i in (0, 1) for j in (0, 1) for k in (0, 1)
-    }  # fmt: skip
+        for i in (0, 1)
+        for j in (0, 1)
+        for k in (0, 1)
+    }
     tets = []
     for order in ((0, 1, 2), (0, 2, 1), (1, 0, 2), (1, 2, 0), (2, 0, 1), (2, 1, 0)):
         at, path = [0, 0, 0], [corner[0, 0, 0]]
@@ -64,11 +66,17 @@ def solved(axes, bodies, boundaries, *, title, remove=None, axisymmetric=False, 
     conductivity = np.array([k for _, k, _ in bodies])[body]
     temperature, flux = _field(mesh, conductivity, claim, boundaries, source)
     view = View(
-        mesh=mesh, facet_boundary=claim, boundary_names=tuple(b[0] for b in boundaries),
+        mesh=mesh,
+        facet_boundary=claim,
+        boundary_names=tuple(b[0] for b in boundaries),
         boundary_space=tuple(b[1] for b in boundaries),
         boundary_kind=tuple("space" if b[1] else "adiabatic" for b in boundaries),
-        temperature=temperature, cell_flux=flux, title=title, probes=probes or {}, answers={},
-    )  # fmt: skip
+        temperature=temperature,
+        cell_flux=flux,
+        title=title,
+        probes=probes or {},
+        answers={},
+    )
     view.answers.update(_answers(view, boundaries))
     return view
 
@@ -111,19 +119,32 @@ def _answers(view, boundaries):
         nodes = np.unique(view.mesh.facets[view.facet_boundary == k])
         values = view.temperature[nodes]
         table[name] = {
-            "heat_flow": 1.25 * k, "heat_flow_low": 1.2 * k, "heat_flow_high": 1.3 * k, "interval": "estimate",
+            "heat_flow": 1.25 * k,
+            "heat_flow_low": 1.2 * k,
+            "heat_flow_high": 1.3 * k,
+            "interval": "estimate",
             "area": float(areas[k]),
-            "temperature": {"min": float(values.min()), "min_at": (view.mesh.points[nodes[values.argmin()]] * 1e3).tolist(),
-                            "max": float(values.max()), "max_at": (view.mesh.points[nodes[values.argmax()]] * 1e3).tolist(),
-                            "mean": float(values.mean())},
-        }  # fmt: skip
+            "temperature": {
+                "min": float(values.min()),
+                "min_at": (view.mesh.points[nodes[values.argmin()]] * 1e3).tolist(),
+                "max": float(values.max()),
+                "max_at": (view.mesh.points[nodes[values.argmax()]] * 1e3).tolist(),
+                "mean": float(values.mean()),
+            },
+        }
     air = {b[1]: b[3] for b in boundaries if b[1]}
     return {
-        "title": view.title, "dimensions": view.mesh.dim, "boundaries": table, "warnings": [],
-        "spaces": {s: {"heat_flow": 1.0, "heat_flow_low": 0.9, "heat_flow_high": 1.1, "temperature": t} for s, t in air.items()},
-        "coupling": {"bay": {"freezer": 0.25}}, "bodies": {b.name: {"volume": 0.5, "mean_temperature": 3.0} for b in view.mesh.bodies},
+        "title": view.title,
+        "dimensions": view.mesh.dim,
+        "boundaries": table,
+        "warnings": [],
+        "spaces": {
+            s: {"heat_flow": 1.0, "heat_flow_low": 0.9, "heat_flow_high": 1.1, "temperature": t} for s, t in air.items()
+        },
+        "coupling": {"bay": {"freezer": 0.25}},
+        "bodies": {b.name: {"volume": 0.5, "mean_temperature": 3.0} for b in view.mesh.bodies},
         "probes": {n: {"temperature": 1.5, "at": (np.asarray(p) * 1e3).tolist()} for n, p in view.probes.items()},
-    }  # fmt: skip
+    }
 
 
 def everywhere(x):
@@ -139,11 +160,16 @@ def square(n=24):
     axis = np.linspace(0, 0.4, n + 1)
     bar = lambda x: (np.abs(x[:, 0] - 0.2) < 0.034) & (x[:, 1] < 0.3)  # noqa: E731
     return solved(
-        (axis, axis), [("insulating foam", 0.025, everywhere), ("steel bar", 20.0, bar)],
-        [("cold faces", "freezer", 8.0, -20.0, everywhere), ("warm face", "bay", 7.7, 25.0, _near(1, 0.0)),
-         ("symmetry", None, 0.0, 0.0, _near(0, 0.0))],
-        title="Square column with a bar", probes={"bar head": (0.2, 0.0), "mid": (0.2, 0.2)},
-    )  # fmt: skip
+        (axis, axis),
+        [("insulating foam", 0.025, everywhere), ("steel bar", 20.0, bar)],
+        [
+            ("cold faces", "freezer", 8.0, -20.0, everywhere),
+            ("warm face", "bay", 7.7, 25.0, _near(1, 0.0)),
+            ("symmetry", None, 0.0, 0.0, _near(0, 0.0)),
+        ],
+        title="Square column with a bar",
+        probes={"bar head": (0.2, 0.0), "mid": (0.2, 0.2)},
+    )
 
 
 def panel2d(length=4.0, skin=0.0005, n=120):
@@ -157,12 +183,19 @@ def panel2d(length=4.0, skin=0.0005, n=120):
     rib = lambda x: np.abs(x[:, 0] - length / 2) < 0.0011  # noqa: E731
     return solved(
         (along, across),
-        [("PIR foam", 0.025, everywhere), ("joint profile, steel", 50.0, rib), ("skin, cold side", 50.0, lambda x: x[:, 1] < skin),
-         ("skin, warm side", 50.0, lambda x: x[:, 1] > 0.1 - skin)],
-        [("ends", None, 0.0, 0.0, everywhere), ("cold face", "freezer", 8.0, -20.0, _near(1, 0.0)),
-         ("warm face", "bay", 7.7, 25.0, _near(1, 0.1))],
+        [
+            ("PIR foam", 0.025, everywhere),
+            ("joint profile, steel", 50.0, rib),
+            ("skin, cold side", 50.0, lambda x: x[:, 1] < skin),
+            ("skin, warm side", 50.0, lambda x: x[:, 1] > 0.1 - skin),
+        ],
+        [
+            ("ends", None, 0.0, 0.0, everywhere),
+            ("cold face", "freezer", 8.0, -20.0, _near(1, 0.0)),
+            ("warm face", "bay", 7.7, 25.0, _near(1, 0.1)),
+        ],
         title="Panel 4 m long with 0.5 mm skins and a through joint",
-    )  # fmt: skip
+    )
 
 
 def tall_panel(n=80):
@@ -171,9 +204,13 @@ def tall_panel(n=80):
     return solved(
         (np.linspace(0, 0.1, 9), up),
         [("wool", 0.04, everywhere), ("rail", 15.0, lambda x: np.abs(x[:, 1] - 2.5) < 0.1)],
-        [("top and bottom", None, 0.0, 0.0, everywhere), ("cold face", "freezer", 8.0, -20.0, _near(0, 0.0)),
-         ("warm face", "bay", 7.7, 25.0, _near(0, 0.1))], title="Upright wall 5 m high",
-    )  # fmt: skip
+        [
+            ("top and bottom", None, 0.0, 0.0, everywhere),
+            ("cold face", "freezer", 8.0, -20.0, _near(0, 0.0)),
+            ("warm face", "bay", 7.7, 25.0, _near(0, 0.1)),
+        ],
+        title="Upright wall 5 m high",
+    )
 
 
 def channel(n=32):
@@ -181,10 +218,12 @@ def channel(n=32):
     axis = np.linspace(0, 0.8, n + 1)
     inside = lambda x: np.all(np.abs(x - 0.4) < 0.2 + 1e-6, axis=1)  # noqa: E731
     return solved(
-        (axis, axis), [("foam", 0.03, everywhere)],
+        (axis, axis),
+        [("foam", 0.03, everywhere)],
         [("outer faces", "hall", 8.0, 20.0, everywhere), ("inner faces", "duct", 10.0, -10.0, inside)],
-        title="Square channel", remove=inside,
-    )  # fmt: skip
+        title="Square channel",
+        remove=inside,
+    )
 
 
 def pipe(n=20):
@@ -193,12 +232,18 @@ def pipe(n=20):
     z = np.linspace(-0.1, 0.3, 41)
     wall = lambda x: (x[:, 1] > 0) & (x[:, 1] < 0.2)  # noqa: E731
     return solved(
-        (r, z), [("wall foam", 0.03, everywhere), ("pipe", 15.0, lambda x: x[:, 0] < 0.03)],
-        [("rim", None, 0.0, 0.0, everywhere), ("cold side", "freezer", 8.0, -20.0, lambda x: (x[:, 1] < 0.1) & (x[:, 0] < 0.499)),
-         ("warm side", "bay", 7.7, 25.0, lambda x: (x[:, 1] > 0.1) & (x[:, 0] < 0.499))],
-        title="Pipe penetration", remove=lambda x: ~wall(x) & (x[:, 0] > 0.03), axisymmetric=True,
+        (r, z),
+        [("wall foam", 0.03, everywhere), ("pipe", 15.0, lambda x: x[:, 0] < 0.03)],
+        [
+            ("rim", None, 0.0, 0.0, everywhere),
+            ("cold side", "freezer", 8.0, -20.0, lambda x: (x[:, 1] < 0.1) & (x[:, 0] < 0.499)),
+            ("warm side", "bay", 7.7, 25.0, lambda x: (x[:, 1] > 0.1) & (x[:, 0] < 0.499)),
+        ],
+        title="Pipe penetration",
+        remove=lambda x: ~wall(x) & (x[:, 0] > 0.03),
+        axisymmetric=True,
         probes={"pipe end": (0.0, 0.3)},
-    )  # fmt: skip
+    )
 
 
 def bolted_panel(n=16):
@@ -207,11 +252,16 @@ def bolted_panel(n=16):
     z = np.linspace(0, 0.1, 9)
     bolt = lambda x: np.all(np.abs(x[:, :2] - 0.15) < 0.0061, axis=1)  # noqa: E731
     return solved(
-        (side, side, z), [("panel", 0.025, everywhere), ("bolt", 17.0, bolt)],
-        [("cut planes", None, 0.0, 0.0, everywhere), ("warm face", "bay", 7.7, 25.0, _near(2, 0.1)),
-         ("cold face", "freezer", 8.0, -20.0, _near(2, 0.0))],
-        title="Freezer wall panel with through-bolt", probes={"bolt head": (0.15, 0.15, 0.1)},
-    )  # fmt: skip
+        (side, side, z),
+        [("panel", 0.025, everywhere), ("bolt", 17.0, bolt)],
+        [
+            ("cut planes", None, 0.0, 0.0, everywhere),
+            ("warm face", "bay", 7.7, 25.0, _near(2, 0.1)),
+            ("cold face", "freezer", 8.0, -20.0, _near(2, 0.0)),
+        ],
+        title="Freezer wall panel with through-bolt",
+        probes={"bolt head": (0.15, 0.15, 0.1)},
+    )
 
 
 def box_corner(n=14):
@@ -221,8 +271,13 @@ def box_corner(n=14):
     inner = lambda x: np.all(x > wall + 1e-9, axis=1)  # noqa: E731
     facing_in = lambda x: np.all(x > wall - 1e-9, axis=1) & np.any(np.abs(x - wall) < 1e-9, axis=1)  # noqa: E731
     return solved(
-        (axis, axis, axis), [("foam", 0.03, everywhere), ("edge frame", 2.0, lambda x: (x[:, 0] < wall) & (x[:, 1] < wall))],
-        [("symmetry planes", None, 0.0, 0.0, everywhere),
-         ("outer faces", "hall", 8.0, 20.0, lambda x: np.any(x < 1e-9, axis=1)), ("inner faces", "freezer", 8.0, -20.0, facing_in)],
-        title="Corner of a box with an edge frame", remove=inner,
-    )  # fmt: skip
+        (axis, axis, axis),
+        [("foam", 0.03, everywhere), ("edge frame", 2.0, lambda x: (x[:, 0] < wall) & (x[:, 1] < wall))],
+        [
+            ("symmetry planes", None, 0.0, 0.0, everywhere),
+            ("outer faces", "hall", 8.0, 20.0, lambda x: np.any(x < 1e-9, axis=1)),
+            ("inner faces", "freezer", 8.0, -20.0, facing_in),
+        ],
+        title="Corner of a box with an edge frame",
+        remove=inner,
+    )

@@ -110,9 +110,14 @@ def test_a_file_in_place_of_the_folder_is_refused(tmp_path):
 
 def test_answers_are_json_in_the_contracts_order_and_refuse_nan():
     text = files.answers_text(
-        {"warnings": ["w"], "title": "t", "zzz": 1, "boundaries": {"b": {"heat_flow": float("nan")}, "a": np.float64(2)},
-         "mesh": {"nodes": np.int64(3), "at": np.array([1.0, np.inf])}}
-    )  # fmt: skip
+        {
+            "warnings": ["w"],
+            "title": "t",
+            "zzz": 1,
+            "boundaries": {"b": {"heat_flow": float("nan")}, "a": np.float64(2)},
+            "mesh": {"nodes": np.int64(3), "at": np.array([1.0, np.inf])},
+        }
+    )
     read = json.loads(text, parse_constant=lambda name: pytest.fail(name))
     assert text.endswith("}\n")
     assert list(read) == ["title", "mesh", "boundaries", "warnings", "zzz"]

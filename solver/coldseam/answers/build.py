@@ -28,7 +28,7 @@ from coldseam.solution.readings import (
     shape_error,
     space_intervals,
 )
-from coldseam.solution.rounds import Solution
+from coldseam.solution.rounds import Solution, point_limit
 from coldseam.solution.steady import Steady
 from coldseam.volumes.conditions import boundary_film
 from coldseam.volumes.section import facet_shares, node_shares_of_cells
@@ -166,7 +166,9 @@ def warnings(solution: Solution) -> tuple[str, ...]:
         reached = asked * solution.rounds[-1].error
         found.append(f"the asked accuracy of {asked:.2%} was not reached: the worst heat flow is known to {reached:.2%}")
     if not solution.points_met:
-        found.append("surface and probe temperatures still moved by more than 0.3 % of their range on the last mesh")
+        found.append(
+            f"surface or probe temperatures still moved by more than {point_limit(steady.case):.2%} of their range on the last mesh"
+        )
     found += list(solution.remarks)
     return tuple(found)
 

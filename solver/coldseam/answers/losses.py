@@ -1,6 +1,8 @@
 """Where the watts go, what each would react to, and how sure a heat flow is of its inputs.
 
-See shares.py: the terms that a flow is the sum of are at once its sensitivities. Per space,
+See shares.py: the terms that a flow is the sum of are at once its sensitivities. The terms are those of the node
+network; the flow that is reported is the mean of two networks' (bounds.py), and the terms are scaled to
+it by a factor that differs from 1 by less than the flow's error. Per space,
 
 - ``by_boundary``: what its own boundaries give (only boundaries that face it);
 - ``by_body``, ``by_film``, ``by_sheet``, ``by_contact``, ``from_heat_sources``: terms that add up to the flow;
@@ -19,7 +21,7 @@ from typing import Any
 import numpy as np
 
 from coldseam.answers.shares import Shares, shares_of
-from coldseam.solution.readings import space_terminals
+from coldseam.solution.readings import boundary_intervals, space_intervals, space_terminals
 from coldseam.solution.steady import Steady
 from coldseam.volumes.conditions import boundary_film
 
@@ -56,9 +58,11 @@ class Sensitivity:
 def losses(steady: Steady) -> tuple[dict[str, Any], dict[str, Any]]:
     """Return where each space's heat goes, and what its flow is sensitive to, by space."""
     where, reacts = {}, {}
+    reported = space_intervals(steady)
     for name, (terminals, boundaries) in space_terminals(steady).items():
         shares = shares_of(steady, terminals)
-        flow = float(steady.boundary_flow[boundaries].sum())
+        flow = float(reported[name].value)
+        shares = scaled(shares, flow, NOTHING * steady.throughput)
         where[name] = _terms(steady, shares, boundaries, flow)
         found = sensitivities(steady, shares, flow)
         reacts[name] = {
@@ -70,6 +74,21 @@ def losses(steady: Steady) -> tuple[dict[str, Any], dict[str, Any]]:
     return where, reacts
 
 
+def scaled(shares: Shares, flow: float, nothing: float) -> Shares:
+    """Return shares that add up to a flow, W (2D: W/m); as they are where no more than ``nothing`` (W) flows."""
+    total = shares.total
+    if abs(total) <= nothing or abs(flow) <= nothing:
+        return shares
+    factor = flow / total
+    return Shares(
+        body=factor * shares.body,
+        film=factor * shares.film,
+        sheet=factor * shares.sheet,
+        contact=factor * shares.contact,
+        released=factor * shares.released,
+    )
+
+
 def _terms(steady: Steady, shares: Shares, boundaries: list[int], flow: float) -> dict[str, Any]:
     case, mesh = steady.case, steady.mesh
     films = [n for n, b in enumerate(case.boundary) if b.space is not None and np.isfinite(boundary_film(case, b))]
@@ -78,10 +97,11 @@ def _terms(steady: Steady, shares: Shares, boundaries: list[int], flow: float) -
         share = float(value) / flow if abs(flow) > NOTHING * steady.throughput else None
         return {"heat_flow": float(value), "share": share}
 
+    own = boundary_intervals(steady)
     present = np.bincount(mesh.cell_body, minlength=len(mesh.bodies)) > 0
     return {
         "heat_flow": flow,
-        "by_boundary": {case.boundary[n].name: entry(steady.boundary_flow[n]) for n in boundaries},
+        "by_boundary": {case.boundary[n].name: entry(own[n].value) for n in boundaries},
         "by_body": {b.name: entry(v) for b, v, here in zip(mesh.bodies, shares.body, present, strict=True) if here},
         "by_film": {case.boundary[n].name: entry(shares.film[n]) for n in films},
         "by_sheet": {sheet.name: entry(v) for sheet, v in zip(case.sheet, shares.sheet, strict=True)},

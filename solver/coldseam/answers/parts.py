@@ -13,6 +13,7 @@ import numpy as np
 
 from coldseam.answers.points import outside_points
 from coldseam.mesh.measure import facet_measure
+from coldseam.solution.readings import space_intervals
 from coldseam.solution.steady import Steady
 from coldseam.volumes.section import facet_shares
 
@@ -36,7 +37,7 @@ def parts(steady: Steady, space: str, bridges: Mapping[str, Any], enclosures: Ma
         return None
     (other,) = set(points) - {space}
     fall = float(steady.state[points[space][0]] - steady.state[points[other][0]])
-    flow = float(steady.boundary_flow[[b.space == space for b in steady.case.boundary]].sum())
+    flow = float(space_intervals(steady)[space].value)
     linear = [entry for entry in bridges.values() if entry["kind"] == "linear"]
     found: dict[str, float] = {}
     rest = REST

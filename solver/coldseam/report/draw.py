@@ -88,11 +88,15 @@ def _section_jobs(view: View):
         if view.temperature is None:
             continue
         title = "Temperature" if middle else "Temperature through the coldest point of the warm side"
-        yield (f"temperature_section_{k + 1}",
-               lambda folder, name, s=section, t=title: pictures2d.draw_temperature(view, s, folder, name, t))  # fmt: skip
+        yield (
+            f"temperature_section_{k + 1}",
+            lambda folder, name, s=section, t=title: pictures2d.draw_temperature(view, s, folder, name, t),
+        )
         if view.cell_flux is not None and middle and section.out_of_plane < 0.7:
-            yield (f"heat_flow_section_{k + 1}",
-                   lambda folder, name, s=section: pictures2d.draw_heat_flow(view, s, folder, name))  # fmt: skip
+            yield (
+                f"heat_flow_section_{k + 1}",
+                lambda folder, name, s=section: pictures2d.draw_heat_flow(view, s, folder, name),
+            )
 
 
 def _space_jobs(view: View):
@@ -119,6 +123,8 @@ def _draw(view: View, folder: Path, groups: tuple[str, ...], log: Log) -> Drawin
     say = log or (lambda stage, message: None)
     pictures: list[Picture] = []
     warnings: list[str] = []
+    if not folder.is_dir():
+        return Drawings(pictures=(), warnings=(f"No pictures: there is no folder {folder}.",))
     with tempfile.TemporaryDirectory(prefix="coldseam-") as scratch:
         packed = Path(scratch) / "view"
         try:
@@ -157,8 +163,15 @@ def _child(
     what = {"flat": "sections and charts", "space": "views in space"}[group]
     trouble = ""
     try:
-        done = subprocess.run(command, env=render_probe.child_environment(window), timeout=TIME_OUT, capture_output=True,
-                              text=True, stdin=subprocess.DEVNULL, check=False)  # fmt: skip
+        done = subprocess.run(
+            command,
+            env=render_probe.child_environment(window),
+            timeout=TIME_OUT,
+            capture_output=True,
+            text=True,
+            stdin=subprocess.DEVNULL,
+            check=False,
+        )
         if done.returncode < 0:
             trouble = f"drawing crashed (signal {-done.returncode})"
         elif done.returncode > 0:

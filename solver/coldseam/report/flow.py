@@ -105,9 +105,10 @@ def _traced(section: Section, note: str, lines: int = 90, steps: int = 400) -> F
     )
     seeds = np.stack([axis.ravel() for axis in grid], axis=1)
     seeds = seeds[finder(*seeds.T) >= 0]
-    peaks = [rows[np.argmax(size[rows])] for body in np.unique(section.cell_body).tolist()
-             for rows in (np.flatnonzero(section.cell_body == body),)]  # fmt: skip
-    seeds = np.vstack([points[section.cells[peaks]].mean(axis=1), seeds])  # every body gets a line, however small
+    reached = section.cell_body[finder(*seeds.T)] if len(seeds) else np.empty(0, dtype=np.int64)
+    missed = np.setdiff1d(section.cell_body, reached).tolist()  # every body gets a line, however small
+    peaks = [int(np.argmax(np.where(section.cell_body == body, size, -1.0))) for body in missed]
+    seeds = np.vstack([points[section.cells[np.array(peaks, dtype=int)]].mean(axis=1), seeds])
     stride = float(max(span)) / steps
     taken = np.zeros(tuple(np.maximum(1, np.ceil(span / (spacing * 0.4))).astype(int) + 1), dtype=bool)
     back, forth = (_trace(finder, unit, seeds, sign * stride, steps) for sign in (-1, 1))

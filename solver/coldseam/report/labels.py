@@ -59,10 +59,9 @@ def set_labels(
         tall = size / 72 * figure.dpi * 1.25 + 2
         if boxed:
             wide = tall = max(wide, tall) + 5
-        if not boxed and spare_small and len(crowd[k]) and np.ptp(crowd[k], axis=0).max() < 1.5 * wide:
-            continue  # a label as large as the line it stands on would only hide it
+        own = crowd[k][_roomy(crowd[k], 1.5 * wide)] if spare_small else crowd[k]
         others = [points for j, points in enumerate(crowd) if j != k and len(points)]
-        spot = _spot(crowd[k], np.vstack(others) if others else np.empty((0, 2)), taken, (wide, tall), frame)
+        spot = _spot(own, np.vstack(others) if others else np.empty((0, 2)), taken, (wide, tall), frame)
         if spot is None:
             continue
         taken = np.vstack([taken, [spot[0] - wide / 2, spot[1] - tall / 2, spot[0] + wide / 2, spot[1] + tall / 2]])
@@ -71,17 +70,52 @@ def set_labels(
 
 
 def _write(ax, text: str, at, size: float, boxed: bool):
-    look = {"path_effects": style.halo(2.2)} if not boxed else {
-        "bbox": {"boxstyle": "circle,pad=0.22", "facecolor": style.PAPER, "edgecolor": style.INK, "linewidth": style.HAIR}
-    }  # fmt: skip
-    return ax.text(at[0], at[1], text, size=size, ha="center", va="center_baseline" if not boxed else "center",
-                   zorder=9, clip_on=False, **look)  # fmt: skip
+    look = (
+        {"path_effects": style.halo(2.2)}
+        if not boxed
+        else {
+            "bbox": {
+                "boxstyle": "circle,pad=0.22",
+                "facecolor": style.PAPER,
+                "edgecolor": style.INK,
+                "linewidth": style.HAIR,
+            }
+        }
+    )
+    return ax.text(
+        at[0],
+        at[1],
+        text,
+        size=size,
+        ha="center",
+        va="center_baseline" if not boxed else "center",
+        zorder=9,
+        clip_on=False,
+        **look,
+    )
 
 
 def _thin(points: np.ndarray, most: int) -> np.ndarray:
     if len(points) <= most:
         return points
     return points[np.linspace(0, len(points) - 1, most).astype(int)]
+
+
+def _roomy(points: np.ndarray, least: float) -> np.ndarray:
+    """Return which points stand on a piece of line at least so long (pixels): labels would only hide smaller ones."""
+    if len(points) < 2:
+        return np.zeros(len(points), dtype=bool)
+    from scipy.sparse.csgraph import connected_components
+    from scipy.spatial import cKDTree
+
+    tree = cKDTree(points)
+    gap = float(np.median(tree.query(points, k=2)[0][:, 1]))
+    near = tree.sparse_distance_matrix(tree, max(0.3 * least, 2.5 * gap))
+    count, piece = connected_components(near, directed=False)
+    low, high = np.full((count, 2), np.inf), np.full((count, 2), -np.inf)
+    np.minimum.at(low, piece, points)
+    np.maximum.at(high, piece, points)
+    return ((high - low).max(axis=1) >= least)[piece]
 
 
 def _pixels(ax, points: np.ndarray) -> np.ndarray:

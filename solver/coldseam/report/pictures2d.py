@@ -226,8 +226,8 @@ def _draw_probes(ax, view: View, tags: list) -> None:
         ring = np.linspace(0, 2 * np.pi, 24, endpoint=False)
         text = style.shortened(name, 24)
         reach = np.array([_data_length(ax, 0, style.text_width(text, style.SMALL) / 2 + 0.10), gap[1]])
-        wanted.append(Wanted(text=text, points=np.stack([x + reach[0] * np.cos(ring), y + reach[1] * 1.4 * np.sin(ring)],
-                                                        axis=1)))  # fmt: skip
+        around = np.stack([x + reach[0] * np.cos(ring), y + reach[1] * 1.4 * np.sin(ring)], axis=1)
+        wanted.append(Wanted(text=text, points=around))
     set_labels(ax, wanted, avoid=boxes(tags))
 
 

@@ -140,9 +140,13 @@ def _crowded(view: View, facets, toward, levels) -> tuple[np.ndarray, np.ndarray
     warmest = np.unique(facets)[np.argmax(view.temperature[np.unique(facets)])]
     ends = view.mesh.points[[coldest, warmest]] @ np.stack([right, up], axis=1)
     # the extreme that stands among the isotherms is the one to look at (a bolt may be the coldest or the warmest)
-    near = [np.median(np.linalg.norm(flat - end, axis=1)) for end in ends]
+    near = [np.quantile(np.linalg.norm(flat - end, axis=1), 0.02) for end in ends]
     centre = ends[int(np.argmin(near))]
-    reach = 1.3 * np.quantile(np.abs(flat - centre).max(axis=1), 0.6)
+    distance = np.sort(np.abs(flat - centre).max(axis=1))
+    # the lines about this one spot end where the next lines are far away (other bolts); else most of the lines
+    gaps = np.flatnonzero(distance[1:] > 2.5 * distance[:-1])
+    gaps = gaps[gaps >= 20]
+    reach = 1.3 * (distance[gaps[0]] if len(gaps) else np.quantile(distance, 0.6))
     reach = max(float(reach), 1e-3 * view.mesh.size)
     if reach > 0.25 * np.ptp(whole, axis=0).max():
         return None

@@ -45,12 +45,13 @@ class Scene:
         return np.stack([points @ self.right, points @ self.up], axis=-1) * 1e3
 
     def visible(self, points: np.ndarray, slack: float) -> np.ndarray:
-        """Return which points, shape (n, 3), lie on the seen surface or before it, within ``slack`` (m)."""
+        """Return which points, shape (n, 3), are in the picture and not hidden by more than ``slack`` (m)."""
         rows, columns = self.depth.shape
         share = (self.place(points) - self.low) / (self.high - self.low)
         column = np.clip((share[:, 0] * columns).astype(int), 0, columns - 1)
         row = np.clip(((1 - share[:, 1]) * rows).astype(int), 0, rows - 1)
-        return points @ self.toward >= self.farthest[row, column] - slack
+        shown = np.all((share >= 0) & (share <= 1), axis=1)
+        return shown & (points @ self.toward >= self.farthest[row, column] - slack)
 
     @cached_property
     def farthest(self) -> np.ndarray:

@@ -121,7 +121,7 @@ def text_width(text: str, size: float, bold: bool = False) -> float:
 def round_step(step: float) -> float:
     """Return the nearest of 1, 2, 2.5, 5 times a power of ten (nearest in ratio).
 
-    >>> round_step(0.0031), round_step(17), round_step(22.4)
+    >>> round_step(0.0031), round_step(17), round_step(21.0)
     (0.0025, 20.0, 20.0)
     """
     if not step > 0 or not math.isfinite(step):

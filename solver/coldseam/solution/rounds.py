@@ -3,7 +3,7 @@
 Each round solves the node and the facet network on one mesh. While an interval is too wide, the
 cells' parts of the gap set the sizes of the next mesh. Single temperatures (probes, the extremes of
 each surface) have no proof; they count as settled when a finer mesh moves them by less than
-``POINT_LIMIT`` of the temperatures' range (ISO 10211 asks 0.005), and refinement goes there too.
+:func:`point_limit` of the temperatures' range (at most the 0.005 of ISO 10211), and refinement goes there too.
 """
 
 from __future__ import annotations
@@ -28,7 +28,8 @@ if TYPE_CHECKING:
     from coldseam.case.model import Case
 
 MOST_ROUNDS = 10
-POINT_LIMIT = 0.003
+POINT_LIMIT = 0.005
+"""ISO 10211: largest change of a temperature factor on a finer mesh."""
 LARGEST_STEP = 12.0  # the gap is reduced by at most this factor in one round
 MARGIN = 1.3
 POINT_STEP = 2.0
@@ -123,7 +124,7 @@ def solve(case: Case, mesher, log: Callable[[str, str], None]) -> Solution:
         log("solve", _round_text(len(rounds), rounds[-1]))
         flows_met = error is None or error <= 1.0
         exact = relative is not None and relative < EXACT
-        points_met = exact or not watched or (moved is not None and moved <= POINT_LIMIT)
+        points_met = exact or not watched or (moved is not None and moved <= point_limit(case))
         if flows_met and points_met:
             return Solution(steady=steady, rounds=tuple(rounds), flows_met=flows_met, points_met=points_met)
         sizes = _next_sizes(steady, flows, error, restless)
@@ -206,6 +207,11 @@ def watched_points(steady: Steady) -> dict[tuple, tuple[np.ndarray, float]]:
     return watched
 
 
+def point_limit(case: Case) -> float:
+    """Return how far a watched temperature may move between the last meshes, over the temperatures' range."""
+    return min(POINT_LIMIT, 0.5 * case.model.accuracy)
+
+
 def temperature_range(steady: Steady) -> float:
     """Return the spread of the field's and the outside's temperatures, K."""
     outside = steady.state[: len(steady.given.terminals)] + steady.reference
@@ -221,7 +227,7 @@ def _moves(steady: Steady, before, watched) -> tuple[float | None, list[np.ndarr
     if before is None:
         return None, []
     moves = {key: abs(value - before[key][1]) / span for key, (_, value) in watched.items() if key in before}
-    restless = [watched[key][0] for key, move in moves.items() if move > POINT_LIMIT]
+    restless = [watched[key][0] for key, move in moves.items() if move > 0.5 * point_limit(steady.case)]
     return max(moves.values(), default=0.0), restless
 
 
