@@ -30,17 +30,37 @@ CHECKED = {
     "finned-housing": "heat over film and area, fin efficiency",
     "step-support": "adiabatic tubes, isothermal planes",
     "foreign-mesh": "radial sectors",
+    "panel-joint-through": "fins and a web in series (tests/answers/test_shipped.py, as all below)",
+    "panel-joint-broken": "less than the web without break, more than none",
+    "bolt-pattern-steel": "adiabatic tubes, fins and a rod in series",
+    "bolt-pattern-stainless": "as steel",
+    "bolt-pattern-plastic": "as steel",
+    "door-gasket-heater": "the balance with the wire, the watts found by trying",
+    "floor-wall-corner": "plain walls below, edges of a perfect slab above",
 }
 """What each case's number rests on."""
 
-SLOW = {"hundred-bolts"}
-"""Cases that take more than half a minute."""
+QUICK = {
+    "box-with-door-frame": (("model.max_nodes", 12000),),
+    "step-support": (("model.max_nodes", 19000),),
+    "hundred-bolts": (
+        ("body[panel].box.to", [200, 200, 100]),
+        ("body[bolts].repeat.count", [2, 2]),
+        ("model.max_nodes", 20000),
+    ),
+}
+"""What makes a case that takes over half a minute quick enough for every day: its heat flows are proven all the same,
+if not the settling of its temperatures, or it is a part of the whole. The slow tests run the files as they are."""
+
+SLOW = {*QUICK, "floor-wall-corner"}
+"""Cases that take more than half a minute as they are shipped."""
 
 FILES = sorted(path.stem for path in runs.SHIPPED.glob("*.toml"))
 
 
-def _marked(stems):
-    return [pytest.param(stem, marks=pytest.mark.slow) if stem in SLOW else stem for stem in stems]
+def everyday(stem: str) -> dict:
+    """Return the answers of a shipped case, of its quick form where it has one."""
+    return runs.shipped(stem, QUICK.get(stem, ()))
 
 
 def test_every_case_is_checked():
@@ -54,14 +74,26 @@ def test_case_says_that_it_is_invented(stem):
     assert "Caution" in head
 
 
-@pytest.mark.parametrize("stem", _marked(FILES))
+@pytest.mark.parametrize("stem", [stem for stem in FILES if stem in QUICK or stem not in SLOW])
 def test_balance_closes_and_intervals_are_as_narrow_as_asked(stem):
-    answers = runs.shipped(stem)
-    assert runs.faults(answers) == []
+    assert complaints(stem, everyday(stem)) == []
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize("stem", sorted(SLOW))
+def test_slow_case_as_it_is_shipped(stem):
+    assert complaints(stem, runs.shipped(stem)) == []
+
+
+def complaints(stem: str, answers: dict) -> list[str]:
+    """Return what is wrong whatever the case is about: balance, intervals, and their width against what was asked."""
+    wrong = runs.faults(answers)
     accuracy = runs.case_of(runs.SHIPPED / f"{stem}.toml").model.accuracy
     for name, space in answers["spaces"].items():
         width = space["heat_flow_high"] - space["heat_flow_low"]
-        assert width <= 2 * accuracy * abs(space["heat_flow"]), f"{name}: {width:g} W wide"
+        if not width <= 2 * accuracy * abs(space["heat_flow"]):
+            wrong.append(f"{name}: {width:g} W wide")
+    return wrong
 
 
 def between(*resistances: float) -> float:
@@ -90,7 +122,7 @@ def test_freezer_panel_lies_between_tubes_and_planes():
     low, high = bolted(
         area=0.36, k=FOAM_PIR, thickness=0.1, bolts=4, diameter=0.008, h_one=8, h_other=1 / 0.13, outer=(covered, head)
     )
-    assert high < 1.25 * low, "a bracket that says something"
+    assert high < 1.35 * low, "a bracket that says something"
     answers = runs.shipped("freezer-panel")
     assert 45 * low < answers["spaces"]["bay"]["heat_flow"] < 45 * high
     # Far from the bolts the wall is plain: its warm surface is 25 - 45 U Rsi, nearly (bolts take heat from there too).
@@ -147,17 +179,18 @@ def test_skins_as_sheets_and_as_bodies_agree():
     assert meshed["heat_flow_low"] - slack <= sheets["heat_flow_high"]
 
 
-@pytest.mark.slow
-def test_hundred_bolts_leak_a_hundred_times_one():
+@pytest.mark.parametrize("side", [2, pytest.param(10, marks=pytest.mark.slow)])
+def test_bolts_leak_as_many_times_as_one(side):
     one = runs.shipped(
-        "hundred-bolts",
-        (("body[panel].box", {"from": [0, 0, 0], "to": [100, 100, 100]}), ("body[bolts].repeat.count", [1, 1])),
+        "hundred-bolts", (("body[panel].box.to", [100, 100, 100]), ("body[bolts].repeat.count", [1, 1]))
     )["spaces"]["below"]
-    all_of_them = runs.shipped("hundred-bolts")["spaces"]["below"]
-    assert all_of_them["heat_flow_low"] <= 100 * one["heat_flow_high"]
-    assert 100 * one["heat_flow_low"] <= all_of_them["heat_flow_high"]
-    low, high = bolted(area=1, k=FOAM_XPS, thickness=0.1, bolts=100, diameter=0.008, h_one=8, h_other=1 / 0.17)
-    assert 35 * low < all_of_them["heat_flow"] < 35 * high
+    whole = (everyday if side == 2 else runs.shipped)("hundred-bolts")["spaces"]["below"]
+    assert whole["heat_flow_low"] <= side**2 * one["heat_flow_high"]
+    assert side**2 * one["heat_flow_low"] <= whole["heat_flow_high"]
+    low, high = bolted(
+        area=side**2 * 0.01, k=FOAM_XPS, thickness=0.1, bolts=side**2, diameter=0.008, h_one=8, h_other=1 / 0.17
+    )
+    assert 35 * low < whole["heat_flow"] < 35 * high
 
 
 def test_panel_corner_lies_between_plain_walls_and_the_edge_s_energy():
@@ -191,7 +224,7 @@ def test_box_with_door_frame_lies_between_plain_walls_and_edges():
     # Two thicknesses from the edges the plain box's field differs from a plain wall's by less than exp(-2 pi) = 0.2 %.
     high = FOAM_PUR * plain_box + (SOFTWOOD - FOAM_PUR) * frame / 0.08 * 1.002
     assert high < 1.3 * low, "a bracket that says something"
-    answers = runs.shipped("box-with-door-frame")
+    answers = everyday("box-with-door-frame")
     assert 48 * low < answers["spaces"]["ambient"]["heat_flow"] < 48 * high
     assert answers["boundaries"]["inside"]["area"] == pytest.approx(inside, rel=1e-9)
     outside = 2 * 1.36 * 0.68 + 2 * 0.68 * 1.16 + 1.36 * 1.16
@@ -260,7 +293,7 @@ def test_step_support_lies_between_tubes_and_planes():
     through = (steel_and_glass + FOAM_PIR * (0.09 - studs - tube)) / 0.1
     high = between(1 / (air + wall / film), 1 / through, 1 / (air + wall / film))
     assert high < 1.4 * low, "a bracket that says something"
-    answers = runs.shipped("step-support")
+    answers = everyday("step-support")
     assert 45 * low < answers["spaces"]["bay"]["heat_flow"] < 45 * high
     volumes = {name: body["volume"] for name, body in answers["bodies"].items()}
     assert volumes["support/tube"] == pytest.approx(tube * 0.1, rel=1e-9)
@@ -281,6 +314,6 @@ def test_foreign_mesh_lies_between_radial_sectors():
     low = foam * between(steel, thickness / FOAM_PUR, 1 / (8 * outer))
     low += block * between(steel, thickness / HARDWOOD, math.log(shell / outer) / STEEL, 1 / (8 * shell))
     high = (foam * FOAM_PUR + block * HARDWOOD) / thickness
-    assert high < 1.25 * low, "a bracket that says something"
+    assert high < 1.35 * low, "a bracket that says something"
     answers = runs.shipped("foreign-mesh")
     assert -50 * high * 1.01 < answers["spaces"]["brine"]["heat_flow"] < -50 * low * 0.99

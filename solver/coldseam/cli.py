@@ -55,6 +55,15 @@ def parser() -> argparse.ArgumentParser:
     run.add_argument("--no-pictures", action="store_true", help="write the answers without drawing")
     run.set_defaults(do=_run)
 
+    at = commands.add_parser(
+        "at", help="solve a case once and give its answers at other temperatures of its spaces, superposed"
+    )
+    at.add_argument("case", metavar="CASE", help="the case file (TOML)")
+    at.add_argument("temperatures", metavar="SPACE=TEMP", nargs="+", help='such as hall=30 or "hall=86 degF"')
+    at.add_argument("--out", metavar="DIR", help="folder for the answers; made if need be")
+    at.add_argument("--verbose", action="store_true", help="keep every step of the run as a line, rounds included")
+    at.set_defaults(do=_at)
+
     check = commands.add_parser("check", help="read a case and build its geometry, but solve nothing")
     check.add_argument("case", metavar="CASE", help="the case file (TOML)")
     check.add_argument("--out", metavar="DIR", help="folder for pictures of the bodies and boundaries")
@@ -147,6 +156,40 @@ def _run(options: argparse.Namespace) -> int:
     _say(summary(answers, [str(path) for path in written]))
     met = all(limit["met"] for limit in answers["limits"].values())
     return 0 if met else LIMIT_NOT_MET
+
+
+def _at(options: argparse.Namespace) -> int:
+    from coldseam.answers.superpose import at_temperatures
+    from coldseam.case.read import load
+    from coldseam.errors import CaseError, Fault
+    from coldseam.report.files import prepare_folder
+
+    case = load(options.case)
+    pairs = [text.rpartition("=") for text in options.temperatures]
+    wrong = [text for text, (name, _, value) in zip(options.temperatures, pairs, strict=True) if not name or not value]
+    if wrong:
+        raise CaseError([Fault(path=(), what=f"{text!r} is not of the form SPACE=TEMPERATURE") for text in wrong])
+    temperatures = {name.strip(): _number(value.strip()) for name, _, value in pairs}
+    at_temperatures(case, temperatures)  # before the work, not after it
+    folder = None if options.out is None else prepare_folder(options.out)
+    with _log(options) as log:
+        log("starting", "loading the numerics")
+        from coldseam.report.summary import summary
+        from coldseam.study import run
+
+        result = run(case, log).at(temperatures)
+        written = [] if folder is None else result.write(folder, pictures=False, log=log)
+    answers = result.answers.as_dict()
+    _say(summary(answers, [str(path) for path in written]))
+    return 0 if all(limit["met"] for limit in answers["limits"].values()) else LIMIT_NOT_MET
+
+
+def _number(text: str) -> float | str:
+    """Return a bare number as one, other text (a number with its unit) as it is."""
+    try:
+        return float(text)
+    except ValueError:
+        return text
 
 
 def _check(options: argparse.Namespace) -> int:

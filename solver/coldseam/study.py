@@ -67,7 +67,8 @@ class Result:
         try:
             solution = superposed(self.solution, temperatures)
             case = solution.steady.case
-            return Result(case=case, answers=build_answers(solution, self.bridges), solution=solution, bridges=self.bridges)
+            answers = build_answers(solution, self.bridges)
+            return Result(case=case, answers=answers, solution=solution, bridges=self.bridges)
         except CaseError as error:
             raise error.located(self.case.source.place) from error
 

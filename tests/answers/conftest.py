@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+
 from coldseam.case import read
 from coldseam.study import run
 
@@ -126,13 +127,16 @@ at = [500, 150]
 """
 
 # A heater in the middle of the tee's foam.
-HEATED = TEE + """
+HEATED = (
+    TEE
+    + """
 [[body]]
 name = "heater"
 material = "skin"
 heat_source = 6
 box = { from = [480, 60], to = [520, 70] }
 """
+)
 
 # A pin through foam, turned: quick to solve, and its chi is large enough to be known well.
 PIN = """

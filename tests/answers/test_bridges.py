@@ -3,9 +3,12 @@
 from __future__ import annotations
 
 import pytest
+
 from coldseam.answers.bridges import whole_transmittance
+from coldseam.answers.pairs import Comparison
 from coldseam.case import read
 from coldseam.errors import CaseError
+from coldseam.solution.readings import Interval
 from coldseam.study import run
 
 EXACT_EDGE = 0.558729
@@ -106,7 +109,11 @@ def test_cut_planes_too_near_are_warned_of():
     near = FLAT.replace("[2000, 100]", "[1900, 100]").replace("length = 1000", "length = 950")
     told = run(read.loads(near)).answers.warnings
     assert sum("cut plane of flanking wall" in w and "950 mm" in w and "1000 mm" in w for w in told) == 2
-    thick = FLAT.replace('[["foam", 100]]', '[["foam", 400]]').replace("y = 100", "y = 400").replace("[2000, 100]", "[2000, 400]")
+    thick = (
+        FLAT.replace('[["foam", 100]]', '[["foam", 400]]')
+        .replace("y = 100", "y = 400")
+        .replace("[2000, 100]", "[2000, 400]")
+    )
     told = run(read.loads(thick)).answers.warnings
     assert any("asks for 1200 mm" in w for w in told)
 
@@ -149,7 +156,9 @@ def test_one_space_is_too_few(texts):
 
 
 def test_walls_between_different_spaces_are_refused(texts):
-    text = texts["tee"] + """
+    text = (
+        texts["tee"]
+        + """
 [[bridge]]
 name = "tee"
 kind = "linear"
@@ -159,6 +168,7 @@ flanking = [
   { layers = [["foam", 80], ["brick", 120]], length = 450, between = ["right", "outside"] },
 ]
 """
+    )
     with pytest.raises(CaseError, match="same two spaces"):
         run(read.loads(text))
 
@@ -178,7 +188,9 @@ def test_pin_lies_between_tubes_and_planes(pin):
     assert entry["relative_width"] <= 0.1
     bare = entry["coupling_without"]
     assert bare["low"] <= plain <= bare["high"]
-    assert bare["value"] == pytest.approx(plain, rel=1e-3)  # the lower bound's share of the mean is not exact about an axis
+    assert bare["value"] == pytest.approx(
+        plain, rel=1e-3
+    )  # the lower bound's share of the mean is not exact about an axis
 
 
 def test_interval_of_chi_holds_a_finer_answer(pin, texts):
@@ -186,6 +198,18 @@ def test_interval_of_chi_holds_a_finer_answer(pin, texts):
     coarse = pin.answers.bridges["pin"]
     assert coarse["chi_low"] <= fine["chi"] <= coarse["chi_high"]
     assert fine["relative_width"] < coarse["relative_width"]
+
+
+def test_interval_of_a_difference_takes_the_far_ends():
+    def between(low, value, high, kind="guaranteed"):
+        return Interval(value=value, low=low, high=high, kind=kind)
+
+    parts = dict(nodes=(1, 1), rounds=1, stopped="", whole=None)
+    found = Comparison(present=between(4.0, 4.5, 5.0), absent=between(1.0, 1.2, 1.6), **parts)
+    assert found.difference == between(4.0 - 1.6, 4.5 - 1.2, 5.0 - 1.0)
+    assert found.relative_width == pytest.approx((4.0 - 2.4) / 3.3)
+    vague = Comparison(present=between(4.0, 4.5, 5.0, "estimate"), absent=between(None, 1.2, None), **parts)
+    assert (vague.difference.low, vague.difference.kind, vague.relative_width) == (None, "estimate", None)
 
 
 def test_chi_is_per_piece(pin, texts):
@@ -209,12 +233,15 @@ def test_effect_on_the_whole(pin):
 
 def test_two_point_bridges_of_one_model(texts):
     """Pin and head each left out by themselves: the head alone adds little, without the pin nearly nothing is left."""
-    text = texts["pin"] + """
+    text = (
+        texts["pin"]
+        + """
 [[bridge]]
 name = "head only"
 kind = "point"
 without = ["head"]
 """
+    )
     bridges = run(read.loads(text)).answers.bridges
     assert 0 < bridges["head only"]["chi"] < bridges["pin"]["chi"]
 
@@ -242,11 +269,14 @@ def test_bodies_that_cannot_be_left_out(texts, change, what):
 
 
 def test_three_spaces_need_a_choice(texts):
-    text = texts["pin"] + """
+    text = (
+        texts["pin"]
+        + """
 [spaces.third]
 temperature = 0
 film = 5
 """
+    )
     text = text.replace('space = "warm"\n[[boundary]]\nname = "cut"', 'space = "third"\n[[boundary]]\nname = "cut"')
     with pytest.raises(CaseError, match="3 outside points"):
         run(read.loads(text))

@@ -5,7 +5,11 @@ from __future__ import annotations
 import math
 
 import pytest
+
+from coldseam.answers.enclosure import enclosures
 from coldseam.case import read
+from coldseam.geometry.mesher import open_geometry
+from coldseam.solution.steady import solve_on
 from coldseam.study import run
 
 FURNACE = """
@@ -23,7 +27,9 @@ surface_resistance = 0
 conductivity = 1.04
 [[body]]
 name = "walls"
-enclosure = { inside = { from = [0, 0, 0], to = [250, 250, 250] }, layers = [["firebrick", 100]], faces = { "-x" = [], "-y" = [], "-z" = [] } }
+enclosure.inside = { from = [0, 0, 0], to = [250, 250, 250] }
+enclosure.layers = [["firebrick", 100]]
+enclosure.faces = { "-x" = [], "-y" = [], "-z" = [] }
 [[boundary]]
 name = "hot"
 on = { within = { from = [0, 0, 0], to = [250, 250, 250] } }
@@ -96,6 +102,13 @@ def test_edges_and_corners_share(furnace):
     assert parts["edges and corners"]["heat_flow"] == pytest.approx(450 * (entry["leak"] - plain), rel=1e-6)
 
 
+def first_mesh(text: str) -> dict:
+    """Return the enclosures of a case solved on its first mesh only."""
+    case = read.loads(text)
+    with open_geometry(case) as mesher:
+        return enclosures(solve_on(case, mesher.mesh()))
+
+
 def test_whole_box_with_films_and_two_layers():
     """Areas from all six faces, each with its own layers; plain walls with the films of the two sides."""
     text = """
@@ -115,7 +128,9 @@ conductivity = 0.025
 conductivity = 0.25
 [[body]]
 name = "box"
-enclosure = { inside = { from = [0, 0, 0], to = [400, 300, 200] }, layers = [["foam", 50], ["shell", 10]], faces = { "+z" = [["foam", 80]] } }
+enclosure.inside = { from = [0, 0, 0], to = [400, 300, 200] }
+enclosure.layers = [["foam", 50], ["shell", 10]]
+enclosure.faces = { "+z" = [["foam", 80]] }
 [[boundary]]
 name = "outside"
 on = { shell = "outer" }
@@ -125,7 +140,7 @@ name = "inside"
 on = { shell = "cavity" }
 space = "inside"
 """
-    entry = run(read.loads(text)).answers.enclosures["box"]
+    entry = first_mesh(text)["box"]
     assert (entry["inside"], entry["outside"]) == ("inside", "ambient")
     assert entry["inside_area"] == pytest.approx(2 * (0.12 + 0.08 + 0.06))
     x, y, z = 0.52, 0.42, 0.34
@@ -143,11 +158,16 @@ space = "inside"
 
 def test_contents_make_k_undefined():
     """Two temperatures inside: no K, and the remark says why."""
-    text = FURNACE.replace('name = "hot"\non = { within = { from = [0, 0, 0], to = [250, 250, 250] } }\nspace = "inside"',
-        'name = "hot"\non = { plane = { x = 250 }, within = { from = [0, 0, 0], to = [250, 250, 250] } }\nspace = "inside"\n'
-        '[[boundary]]\nname = "warm"\non = { plane = { y = 250 }, within = { from = [0, 0, 0], to = [250, 250, 250] } }\nheat_flux = 0\n'
-        '[[boundary]]\nname = "cool"\non = { plane = { z = 250 }, within = { from = [0, 0, 0], to = [250, 250, 250] } }\nspace = "third"'
-    ).replace("[materials.firebrick]", "[spaces.third]\ntemperature = 400\nfilm = 5\n[materials.firebrick]").replace("3 %", "30 %")
-    entry = run(read.loads(text)).answers.enclosures["walls"]
+    box = "{ from = [0, 0, 0], to = [250, 250, 250] }"
+    hot = f'name = "hot"\non = {{ within = {box} }}\nspace = "inside"'
+    faces = {"x": 'space = "inside"', "y": "heat_flux = 0", "z": 'space = "third"'}
+    split = "\n[[boundary]]\n".join(
+        f'name = "to {axis}"\non = {{ plane = {{ {axis} = 250 }}, within = {box} }}\n{what}'
+        for axis, what in faces.items()
+    )
+    assert hot in FURNACE
+    text = FURNACE.replace(hot, split)
+    text = text.replace("[materials.firebrick]", "[spaces.third]\ntemperature = 400\nfilm = 5\n[materials.firebrick]")
+    entry = first_mesh(text)["walls"]
     assert "K" not in entry
     assert "one temperature inside" in entry["remarks"][-1] and "inside, third" in entry["remarks"][-1]

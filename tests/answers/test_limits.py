@@ -3,15 +3,19 @@
 from __future__ import annotations
 
 import pytest
-from coldseam.answers.limits import judge, magnitude
+
+from coldseam.answers.limits import judge, limit_warnings, limits, magnitude, require_answerable
 from coldseam.case import read
 from coldseam.errors import CaseError
 from coldseam.study import run
 
 
-def limited(text: str, quantity: str, bounds: str):
-    """Return answers of a case with one limit."""
-    return run(read.loads(f'{text}\n[[limit]]\nname = "it"\nquantity = {{ {quantity} }}\n{bounds}\n')).answers
+def limited(texts, name: str, result, quantity: str, bounds: str) -> dict:
+    """Return the verdict on one limit of a solved case."""
+    text = f'{texts[name]}\n[[limit]]\nname = "it"\nquantity = {{ {quantity} }}\n{bounds}\n'
+    case = read.loads(text)
+    require_answerable(case)
+    return limits(case, result.answers)["it"]
 
 
 def test_judge():
@@ -34,20 +38,19 @@ def test_a_space_that_gains_heat_does_not_meet_a_limit_by_its_sign(tee, texts):
     flow = tee.answers.spaces["outside"].heat_flow
     assert flow < 0
     for bound, met in ((1.1 * abs(flow), True), (0.9 * abs(flow), False)):
-        found = limited(texts["tee"], 'space = "outside", heat_flow = true', f"at_most = {bound}").limits["it"]
+        found = limited(texts, "tee", tee, 'space = "outside", heat_flow = true', f"at_most = {bound}")
         assert (found["met"], found["undecided"], found["unit"]) == (met, False, "W/m")
         assert found["margin"] == pytest.approx(bound - abs(flow), rel=1e-6)
-    signed = limited(texts["tee"], 'space = "outside", heat_flow = true', f"at_least = {1.1 * flow}").limits["it"]
+    signed = limited(texts, "tee", tee, 'space = "outside", heat_flow = true', f"at_least = {1.1 * flow}")
     assert signed["met"] and signed["value"] == pytest.approx(flow, rel=1e-6)
 
 
 def test_a_limit_inside_the_interval_is_undecided(tee, texts):
     entry = tee.answers.spaces["outside"]
     bound = -0.5 * (entry.heat_flow + entry.heat_flow_low)
-    answers = limited(texts["tee"], 'space = "outside", heat_flow = true', f"at_most = {bound!r}")
-    found = answers.limits["it"]
+    found = limited(texts, "tee", tee, 'space = "outside", heat_flow = true', f"at_most = {bound!r}")
     assert (found["met"], found["undecided"]) == (False, True) and found["margin"] > 0
-    assert any('limit "it" is undecided' in w for w in answers.warnings)
+    assert limit_warnings({"it": found})[0].startswith('limit "it" is undecided')
 
 
 @pytest.mark.parametrize(
@@ -63,18 +66,18 @@ def test_a_limit_inside_the_interval_is_undecided(tee, texts):
 )
 def test_every_quantity(tee, texts, quantity, look, unit):
     value = look(tee.answers)
-    found = limited(texts["tee"], quantity, f"at_least = {value - 0.5 * abs(value)!r}").limits["it"]
+    found = limited(texts, "tee", tee, quantity, f"at_least = {value - 0.5 * abs(value)!r}")
     assert found["value"] == pytest.approx(value, rel=1e-9)
     assert (found["met"], found["unit"]) == (True, unit)
-    assert not limited(texts["tee"], quantity, f"at_least = {value + 0.5 * abs(value)!r}").limits["it"]["met"]
+    assert not limited(texts, "tee", tee, quantity, f"at_least = {value + 0.5 * abs(value)!r}")["met"]
 
 
-def test_bridges_have_limits(corner, texts):
+def test_bridges_have_limits(corner, pin, texts):
     psi = corner.answers.bridges["corner"]["psi"]
-    found = limited(texts["corner"], 'bridge = "corner", psi = true', f"at_most = {psi + 0.1}").limits["it"]
+    found = limited(texts, "corner", corner, 'bridge = "corner", psi = true', f"at_most = {psi + 0.1}")
     assert found["met"] and found["margin"] == pytest.approx(0.1, abs=1e-9)
     assert found["low"] <= found["value"] <= found["high"]
-    pin = limited(texts["pin"], 'bridge = "pin", chi = true', "at_most = 1e-4").limits["it"]
+    pin = limited(texts, "pin", pin, 'bridge = "pin", chi = true', "at_most = 1e-4")
     assert not pin["met"] and pin["unit"] == "W/K"
 
 
@@ -87,12 +90,18 @@ def test_bridges_have_limits(corner, texts):
         ("corner", 'bridge = "corner", chi = true', "linear bridge and has no chi"),
     ],
 )
-def test_limits_that_have_no_answer_are_refused(texts, name, quantity, what):
+def test_limits_that_have_no_answer_are_refused(texts, request, name, quantity, what):
     with pytest.raises(CaseError, match=what):
-        limited(texts[name], quantity, "at_most = 0.5")
+        limited(texts, name, request.getfixturevalue(name), quantity, "at_most = 0.5")
 
 
-def test_limits_follow_other_temperatures(texts):
-    text = texts["tee"] + '\n[[limit]]\nname = "it"\nquantity = { space = "outside", heat_flow = true }\nat_most = 35\n'
+def test_limits_of_a_run_follow_other_temperatures(texts, tee):
+    """The whole way: a bound between the flow as it is and the flow at another temperature."""
+    bound = 1.2 * abs(tee.answers.spaces["outside"].heat_flow)
+    text = (
+        texts["tee"]
+        + f'\n[[limit]]\nname = "it"\nquantity = {{ space = "outside", heat_flow = true }}\nat_most = {bound}\n'
+    )
     result = run(read.loads(text))
-    assert result.answers.limits["it"]["met"] != result.at({"outside": -60}).answers.limits["it"]["met"]
+    assert result.answers.limits["it"]["met"]
+    assert not result.at({"outside": -60}).answers.limits["it"]["met"]

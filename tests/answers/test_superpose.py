@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+
 from coldseam.case import read
 from coldseam.errors import CaseError
 from coldseam.solution.steady import solve_on
@@ -23,7 +24,11 @@ def again(result, **changes):
 @pytest.fixture(scope="session")
 def seamless(texts):
     """The heated tee without its contact: a mesh that is open already can't be opened again."""
-    text = texts["heated"].replace(texts["heated"].split("[[contact]]")[1].split("[[sheet]]")[0], "").replace("[[contact]]", "")
+    text = (
+        texts["heated"]
+        .replace(texts["heated"].split("[[contact]]")[1].split("[[sheet]]")[0], "")
+        .replace("[[contact]]", "")
+    )
     return run(read.loads(text))
 
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+
 from coldseam.answers.surfaces import area_below, fraction_below, humidity_map
 from coldseam.case import read
 from coldseam.physics import humidity
@@ -125,7 +126,9 @@ def test_share_in_trouble_near_a_pin(pin):
     level = float(np.median(values))
     part = area_below(steady, mask, level)
     radius = steady.mesh.points[steady.mesh.facets[mask], 0]
-    below = values.max(axis=1) < level  # temperature rises with the radius: the disc of the facets that are wholly below
+    below = (
+        values.max(axis=1) < level
+    )  # temperature rises with the radius: the disc of the facets that are wholly below
     disc = (radius[below].max() ** 2 - radius.min() ** 2) / (0.15**2 - radius.min() ** 2)
     ring = radius[~below].min(), np.sort(radius[values.max(axis=1) >= level].ravel())[2]
     assert disc - 1e-9 <= part <= disc + (ring[1] ** 2 - ring[0] ** 2) / 0.15**2 + 1e-3

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+
 from coldseam.physics import humidity
 
 # Pa; the formulas of ISO 13788 (from memory, constants confirmed in public code) evaluated independently.
@@ -32,10 +33,14 @@ def test_temperature_factor_of_the_german_minimum():
     assert (coldest + 5) / 25 == pytest.approx(0.70498, abs=6e-6)
 
 
-@pytest.mark.parametrize(("over", "temperatures"), [("water", (-25, -3, 4, 30)), ("ice", (-30, -0.1)), ("standard", (-8, 8))])
+@pytest.mark.parametrize(
+    ("over", "temperatures"), [("water", (-25, -3, 4, 30)), ("ice", (-30, -0.1)), ("standard", (-8, 8))]
+)
 def test_saturation_temperature_is_the_inverse(over, temperatures):
     for t in temperatures:
-        assert humidity.saturation_temperature(humidity.saturation_pressure(t, over), over) == pytest.approx(t, abs=1e-9)
+        assert humidity.saturation_temperature(humidity.saturation_pressure(t, over), over) == pytest.approx(
+            t, abs=1e-9
+        )
 
 
 def test_the_two_conventions_below_zero():
@@ -50,7 +55,7 @@ def test_the_two_conventions_below_zero():
 
 
 def test_ashrae_s_equation_is_near():
-    """psychrolib (Hyland, Wexler 1983): within 0.25 % from -10 to 43 °C, 0.5 % (printed to 0.1) at -20, 1.1 % at -30 °C."""
+    """psychrolib (Hyland, Wexler 1983): 0.25 % from -10 to 43 °C, 0.5 % (printed to 0.1) at -20, 1.1 % at -30 °C."""
     psychrolib = pytest.importorskip("psychrolib")
     psychrolib.SetUnitSystem(psychrolib.SI)
     for temperature, allowed in ((-30, 0.011), (-20, 0.0055), (-10, 0.0025), (5, 0.0025), (20, 0.0025), (43, 0.0025)):

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+
 from coldseam.physics import iso6946
 
 # ISO 6946, table of unventilated air layers (from memory): emissivity 0.9, 10 °C; mm: (up, horizontal, down).
@@ -18,7 +19,7 @@ def test_air_layers(thickness, row):
 
 
 def test_air_layer_unrounded():
-    """[independent calculation with the printed h_r0 of 5.1, not 5.149] 25 mm up, horizontal, down; 300 mm; emissivity 0.2."""
+    """[independent calculation, printed h_r0 of 5.1] 25 mm up, horizontal, down; 300 mm; emissivity 0.2."""
     at = dict(temperature=(5.1 / (4 * iso6946.STEFAN_BOLTZMANN)) ** (1 / 3) - 273.15)
     found = [iso6946.air_layer_resistance(0.025, way, **at) for way in ("up", "horizontal", "down")]
     assert found == pytest.approx([0.1633, 0.1844, 0.1933], abs=6e-5)

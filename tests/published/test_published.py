@@ -10,7 +10,8 @@ from published.references import REFERENCES
 ROUND_OFF = 1e-9
 """Relative widening of every interval: the references are exact to about this much only."""
 
-CASES = sorted({(reference.case, reference.change, reference.slow) for reference in REFERENCES}, key=str)
+_RUNS = {str((r.case, r.change, r.slow)): (r.case, r.change, r.slow) for r in REFERENCES}  # changes hold dicts
+CASES = [_RUNS[key] for key in sorted(_RUNS)]
 
 
 def parameters(references):

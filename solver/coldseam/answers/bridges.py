@@ -55,10 +55,16 @@ def _point_faults(case: Case, number: int) -> list[Fault]:
     bridge = case.bridge[number]
     faults = []
     if case.model.mesh is not None:
-        what = "a point bridge is found by leaving bodies out and letting others fill their place, which a given mesh can't do; draw the bodies in the case"
+        what = (
+            "a point bridge is found by leaving bodies out and letting others fill their place, which a given mesh "
+            "can't do; draw the bodies in the case"
+        )
         faults.append(Fault(path=("bridge", number, "without"), what=what))
     if case.model.dimensions == 2 and not case.model.axisymmetric:
-        what = "a point bridge needs dimensions = 3 or an axisymmetric section; in a plane cross-section every body is a bar without end"
+        what = (
+            "a point bridge needs dimensions = 3 or an axisymmetric section; in a plane cross-section every body is a "
+            "bar without end"
+        )
         faults.append(Fault(path=("bridge", number, "kind"), what=what))
     left = [body for body in case.body if body.name not in (bridge.without or ())]
     if all(body.void for body in left):
@@ -69,7 +75,8 @@ def _point_faults(case: Case, number: int) -> list[Fault]:
 
 
 def _which_two(names: list[str]) -> str:
-    return f"the case has {len(names)} outside points ({', '.join(names)}); name the two that chi is meant for: between = [...]"
+    listed = ", ".join(names)
+    return f"the case has {len(names)} outside points ({listed}); name the two that chi is meant for: between = [...]"
 
 
 def solve_bridges(solution: Solution, mesher, log: Log) -> BridgeAnswers:
@@ -186,7 +193,8 @@ def _point_entry(bridge: Bridge, pair: tuple[str, str], result: Comparison) -> d
         "chi_high": None if chi.high is None else chi.high / n,
         "interval": chi.kind,
         "interval_reason": chi.reason,
-        "relative_width": result.relative_width,
+        # Bodies like what they displace have a chi of 0, which no interval is small against.
+        "relative_width": result.relative_width if chi.value else None,
         "coupling_with": _bounds(result.present),
         "coupling_without": _bounds(result.absent),
         "nodes_with": result.nodes[0],
@@ -204,6 +212,8 @@ def _point_warnings(bridge: Bridge, result: Comparison) -> list[str]:
     found = list(result.remarks)
     if result.relative_width is None:
         found.append(f'bridge "{bridge.name}": chi has no proven interval')
+    elif result.difference.value == 0.0:
+        found.append(f'bridge "{bridge.name}": chi is 0 within its interval')
     elif result.relative_width > WIDEST:
         found.append(
             f'bridge "{bridge.name}": chi is known within an interval {result.relative_width:.0%} as wide as itself, '

@@ -164,17 +164,20 @@ def warnings(solution: Solution) -> tuple[str, ...]:
     asked = steady.case.model.accuracy
     if not solution.flows_met and solution.rounds[-1].error is not None:
         reached = asked * solution.rounds[-1].error
-        found.append(f"the asked accuracy of {asked:.2%} was not reached: the worst heat flow is known to {reached:.2%}")
+        found.append(
+            f"the asked accuracy of {asked:.2%} was not reached: the worst heat flow is known to {reached:.2%}"
+        )
     if not solution.points_met:
         found.append(
-            f"surface or probe temperatures still moved by more than {point_limit(steady.case):.2%} of their range on the last mesh"
+            f"surface or probe temperatures still moved by more than {point_limit(steady.case):.2%} of their range on "
+            "the last mesh"
         )
     found += list(solution.remarks)
     return tuple(found)
 
 
 def extremes(mesh: Mesh, temperature: np.ndarray, facets: np.ndarray) -> Extremes:
-    """Return the temperature extremes of a set of facets (mask or numbers)."""
+    """Return the extremes of a temperature, °C (n_nodes,), on facets given as a mask (n_facets,) or numbers (n,)."""
     chosen = mesh.facets[facets]
     nodes = np.unique(chosen)
     values = temperature[nodes]

@@ -145,7 +145,9 @@ def _two_sides(steady: Steady, walls: Walls) -> tuple[str, str, float] | str:
         return f"K needs one temperature inside and another outside; inside is {names[0]}, outside {names[1]}"
     area = facet_measure(steady.mesh)
     film = np.array([boundary_film(steady.case, boundary) for boundary in steady.case.boundary])[steady.facet_boundary]
-    resistance = sum(float(area[mask] @ (1.0 / film[mask]) / area[mask].sum()) for mask in (facing & within, facing & ~within))
+    resistance = sum(
+        float(area[mask] @ (1.0 / film[mask]) / area[mask].sum()) for mask in (facing & within, facing & ~within)
+    )
     return sides[0].pop(), sides[1].pop(), resistance
 
 
@@ -184,6 +186,6 @@ def _handbook(walls: Walls, films: float, leak: Interval) -> dict[str, Any]:
             "corners": corners,
             "total": total,
             "over_computed": total / leak.value,
-            "source": "0.54 k D an edge, 0.15 k t a corner: Langmuir, Adams, Meikle 1913, as in Incropera, DeWitt, table 4.1",
+            "source": "0.54 k D an edge, 0.15 k t a corner: Langmuir, Adams, Meikle 1913 (Incropera, table 4.1)",
         },
     }

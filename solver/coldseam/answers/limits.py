@@ -18,7 +18,14 @@ if TYPE_CHECKING:
     from coldseam.answers.types import Answers
     from coldseam.case.model import Case, Limit
 
-FLOW_UNITS = {"heat_flow": "W", "psi": "W/(m·K)", "chi": "W/K", "temperature": "°C", "f_Rsi": "", "surface_humidity": ""}
+FLOW_UNITS = {
+    "heat_flow": "W",
+    "psi": "W/(m·K)",
+    "chi": "W/K",
+    "temperature": "°C",
+    "f_Rsi": "",
+    "surface_humidity": "",
+}
 Value = tuple[float, float | None, float | None]
 
 
@@ -41,7 +48,9 @@ def require_answerable(case: Case) -> None:
         elif asked.psi or asked.chi:
             kind = next(bridge.kind for bridge in case.bridge if bridge.name == asked.bridge)
             key = "psi" if asked.psi else "chi"
-            lacking = "" if (kind == "linear") == (key == "psi") else f'"{asked.bridge}" is a {kind} bridge and has no {key}'
+            lacking = (
+                "" if (kind == "linear") == (key == "psi") else f'"{asked.bridge}" is a {kind} bridge and has no {key}'
+            )
         if lacking:
             faults.append(Fault(path=("limit", number, "quantity"), what=f"can't be answered: {lacking}"))
     if faults:
@@ -68,7 +77,10 @@ def _verdict(case: Case, number: int, limit: Limit, answers: Answers) -> dict[st
     section = case.model.dimensions == 2 and not case.model.axisymmetric
     unit = "W/m" if measure == "heat_flow" and section else FLOW_UNITS[measure]
     return {
-        "quantity": {limit.quantity.target: getattr(limit.quantity, limit.quantity.target), measure: getattr(limit.quantity, measure)},
+        "quantity": {
+            limit.quantity.target: getattr(limit.quantity, limit.quantity.target),
+            measure: getattr(limit.quantity, measure),
+        },
         "value": value,
         "low": low,
         "high": high,
@@ -151,8 +163,8 @@ def _unanswered(number: int, why: str) -> CaseError:
 def limit_warnings(found: Mapping[str, Mapping[str, Any]]) -> list[str]:
     """Return a sentence for each limit that is undecided."""
     return [
-        f'limit "{name}" is undecided: it lies inside the interval {entry["low"]:.6g} to {entry["high"]:.6g} {entry["unit"]}; '
-        "it counts as not met - ask for a better accuracy"
+        f'limit "{name}" is undecided: it lies inside the interval {entry["low"]:.6g} to {entry["high"]:.6g} '
+        f"{entry['unit']}; it counts as not met - ask for a better accuracy"
         for name, entry in found.items()
         if entry["undecided"]
     ]

@@ -120,7 +120,10 @@ def compare(steady: Steady, number: int, pair: tuple[str, str], mesher, widest: 
             absent = _solved(bare, mesh, number)
             result = _comparison(steady, absent, pair, rounds, remarks)
             width = result.relative_width
-            log("bridge", f"{bridge.name}: {steady.mesh.n_nodes} and {mesh.n_nodes} nodes, interval of {_percent(width)} of chi")
+            log(
+                "bridge",
+                f"{bridge.name}: {steady.mesh.n_nodes} and {mesh.n_nodes} nodes, interval of {_percent(width)} of chi",
+            )
             if width is None or width <= widest:
                 return result
             size, target, stop = _finer(steady, pair[0], min(MARGIN * width / widest, LARGEST_STEP))

@@ -20,7 +20,9 @@ from coldseam.volumes.section import facet_shares
 PLAIN, EDGES, REST = "plain walls", "edges and corners", "the rest"
 
 
-def parts(steady: Steady, space: str, bridges: Mapping[str, Any], enclosures: Mapping[str, Any]) -> dict[str, Any] | None:
+def parts(
+    steady: Steady, space: str, bridges: Mapping[str, Any], enclosures: Mapping[str, Any]
+) -> dict[str, Any] | None:
     """Return the parts of a space's heat flow, W (2D: W/m), and their shares; None where nothing is told apart.
 
     Parameters

@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import dataclasses
 from collections.abc import Mapping
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -18,6 +19,9 @@ from coldseam.solution.readings import boundary_intervals, space_intervals, tole
 from coldseam.solution.rounds import Solution
 from coldseam.solution.steady import Steady, boundary_flows
 from coldseam.volumes.conditions import boundary_temperature
+
+if TYPE_CHECKING:
+    from coldseam.case.model import Case
 
 
 def superposed(solution: Solution, temperatures: Mapping[str, float | str]) -> Solution:
@@ -36,26 +40,38 @@ def superposed(solution: Solution, temperatures: Mapping[str, float | str]) -> S
         An unknown space, a temperature that can't be read, or touching fixed surfaces that would no longer be alike.
     """
     steady = solution.steady
-    unknown = [name for name in temperatures if name not in steady.case.spaces]
-    if unknown:
-        known = ", ".join(steady.case.spaces)
-        raise CaseError([Fault(path=("spaces", name), what=f"there is no such space; the case has {known}") for name in unknown])
-    case = steady.case
-    for name, value in temperatures.items():
-        case = replace(case, ("spaces", name, "temperature"), value)
+    case = at_temperatures(steady.case, temperatures)
     changed = _at(steady, case)
     error = _error(changed)
     rounds = (*solution.rounds[:-1], dataclasses.replace(solution.rounds[-1], error=error))
     return dataclasses.replace(solution, steady=changed, rounds=rounds, flows_met=error is None or error <= 1.0)
 
 
-def _at(steady: Steady, case) -> Steady:
+def at_temperatures(case: Case, temperatures: Mapping[str, float | str]) -> Case:
+    """Return a case with other temperatures of some spaces (°C, or text with its unit).
+
+    Raises
+    ------
+    CaseError
+        An unknown space, or a temperature that can't be read.
+    """
+    unknown = [name for name in temperatures if name not in case.spaces]
+    if unknown:
+        known = ", ".join(case.spaces)
+        what = f"there is no such space; the case has {known}"
+        raise CaseError([Fault(path=("spaces", name), what=what) for name in unknown])
+    for name, value in temperatures.items():
+        case = replace(case, ("spaces", name, "temperature"), value)
+    return case
+
+
+def _at(steady: Steady, case: Case) -> Steady:
     terminals = []
     for terminal in steady.given.terminals:
         new = {boundary_temperature(case, case.boundary[b]) for b in terminal.boundaries}
         if len(new) > 1:
             names = ", ".join(f'"{case.boundary[b].name}"' for b in terminal.boundaries)
-            what = f"the fixed surfaces {names} touch and were solved as one; at different temperatures they need a run of their own"
+            what = f"the fixed surfaces {names} touch and were solved as one; apart they need their own run"
             raise CaseError([Fault(path=("spaces",), what=what)])
         terminals.append(dataclasses.replace(terminal, temperature=new.pop()))
     outside = np.array([terminal.temperature for terminal in terminals])

@@ -123,7 +123,10 @@ def temperature_factor(steady: Steady, space: str, nodes: np.ndarray) -> Factor:
     worst = int(np.argmin(factors))
     remark = ""
     if len(outside) > 2:
-        remark = f"of {len(outside)} outside points the one farthest in temperature was taken; it holds for these temperatures only"
+        remark = (
+            f"of {len(outside)} outside points the one farthest in temperature was taken; it holds for these "
+            "temperatures only"
+        )
     at = place(steady.mesh.points[nodes[worst]])
     return Factor(value=float(factors[worst]), at=at, inside=space, outside=other, remark=remark)
 
@@ -152,7 +155,9 @@ def moisture(steady: Steady, space: str, mask: np.ndarray, coldest: float) -> Mo
     at_surface = float(humidity.surface_humidity(pressure, coldest))
     dew, frost, first, over = _saturation(pressure)
     trouble = {name: _critical(pressure, limit) for name, limit in _LIMITS.items()}
-    begins = {name: float(humidity.critical_humidity(air.temperature, coldest, limit)) for name, limit in _LIMITS.items()}
+    begins = {
+        name: float(humidity.critical_humidity(air.temperature, coldest, limit)) for name, limit in _LIMITS.items()
+    }
     shares = {name: 0.0 if t is None else area_below(steady, mask, t) for name, t in trouble.items()}
     return Moisture(
         space_humidity=air.relative_humidity,

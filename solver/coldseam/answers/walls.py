@@ -61,7 +61,9 @@ def flanking_walls(case: Case, bridge: Bridge) -> list[Wall]:
 def transmittance(case: Case, wall: Flanking) -> float:
     """Return U of a flanking wall, W/(m²·K): its layers between the films of its two spaces."""
     films = math.fsum(1.0 / case.spaces[name].h for name in wall.between)
-    return 1.0 / (films + math.fsum(layer.thickness / layer_conductivity(case, layer.material) for layer in wall.layers))
+    return 1.0 / (
+        films + math.fsum(layer.thickness / layer_conductivity(case, layer.material) for layer in wall.layers)
+    )
 
 
 def layer_conductivity(case: Case, material: str) -> float:
@@ -74,7 +76,9 @@ def layer_conductivity(case: Case, material: str) -> float:
     """
     k = case.materials[material].tensor(case.model.dimensions)
     if np.ndim(k) > 0:
-        raise ValueError(f'"{material}" conducts differently by direction; give the wall a material with one conductivity')
+        raise ValueError(
+            f'"{material}" conducts differently by direction; give the wall a material with one conductivity'
+        )
     return float(k)
 
 
@@ -84,7 +88,7 @@ def wall_faults(case: Case, number: int) -> list[Fault]:
     at = ("bridge", number)
     faults = []
     if case.model.dimensions == 3 or case.model.axisymmetric:
-        what = 'a linear bridge is computed in a plane cross-section: dimensions = 2 and not axisymmetric'
+        what = "a linear bridge is computed in a plane cross-section: dimensions = 2 and not axisymmetric"
         faults.append(Fault(path=(*at, "kind"), what=what))
     pairs = {frozenset(wall.between) for wall in bridge.flanking or ()}
     if len(pairs) > 1:
@@ -109,13 +113,16 @@ def require_fitting(steady: Steady, number: int, walls: list[Wall]) -> None:
     """
     bridge = steady.case.bridge[number]
     area = np.bincount(steady.facet_boundary, facet_measure(steady.mesh), len(steady.case.boundary))
-    faces = {name: float(area[[b.space == name for b in steady.case.boundary]].sum()) for name in bridge.flanking[0].between}
+    faces = {
+        name: float(area[[b.space == name for b in steady.case.boundary]].sum()) for name in bridge.flanking[0].between
+    }
     for key in ("length", "length_external"):
         lengths = [getattr(wall, key) for wall in walls]
         if None in lengths or math.fsum(lengths) <= (1.0 + FITS) * max(faces.values()):
             continue
         shown = " and ".join(f"{1e3 * length:.4g} mm facing {name}" for name, length in faces.items())
-        what = f"don't fit the model: the walls add up to {1e3 * math.fsum(lengths):.4g} mm ({key}), and it has surfaces of {shown}"
+        total = f"{1e3 * math.fsum(lengths):.4g} mm ({key})"
+        what = f"don't fit the model: the walls add up to {total}, and it has surfaces of {shown}"
         raise CaseError([Fault(path=("bridge", number, "flanking"), what=what)])
 
 
@@ -125,7 +132,9 @@ def wall_warnings(steady: Steady, bridge: Bridge, walls: list[Wall]) -> list[str
     pair = bridge.flanking[0].between
     for name in pair:
         for boundary in case.boundary:
-            if boundary.space == name and not math.isclose(boundary_film(case, boundary), case.spaces[name].h, rel_tol=1e-9):
+            if boundary.space == name and not math.isclose(
+                boundary_film(case, boundary), case.spaces[name].h, rel_tol=1e-9
+            ):
                 found.append(
                     f'bridge "{bridge.name}": boundary "{boundary.name}" has a film of its own; the flanking walls are '
                     f'reckoned with that of the space "{name}", and the difference is in psi'
@@ -136,8 +145,9 @@ def wall_warnings(steady: Steady, bridge: Bridge, walls: list[Wall]) -> list[str
         least = max(CUT_DISTANCE, CUT_THICKNESSES * wall.thickness)
         if length is not None and length < (1.0 - FITS) * least:
             found.append(
-                f'bridge "{bridge.name}": the cut plane of flanking wall {position} is {1e3 * length:.4g} mm from the detail; '
-                f"ISO 10211 asks for {1e3 * least:.4g} mm (1 m or three thicknesses) unless it is a symmetry plane"
+                f'bridge "{bridge.name}": the cut plane of flanking wall {position} is {1e3 * length:.4g} mm from the '
+                f"detail; ISO 10211 asks for {1e3 * least:.4g} mm (1 m or three thicknesses) unless it is a "
+                "symmetry plane"
             )
         if not any(math.isclose(width, wall.thickness, rel_tol=FITS) for width in cuts):
             found.append(

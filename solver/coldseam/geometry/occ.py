@@ -225,7 +225,28 @@ def _draw_sphere(occ, solid: Solid) -> int:
 
 
 def _draw_round(occ, solid: Solid) -> int:
+    if solid.half:
+        return _half_round(occ, solid.start, solid.radii)
     return _round_face(occ, (*solid.start[:2], 0.0), solid.radii, (0.0, 0.0, 1.0))
+
+
+def _half_round(occ, centre, radii) -> int:
+    """Draw the right half of a disc, or of a ring when there are two radii, about the axis x = 0."""
+    x, y = centre[:2]
+    ends, arcs, middles = [], [], []
+    for radius in radii:
+        low, high = occ.addPoint(x, y - radius, 0.0), occ.addPoint(x, y + radius, 0.0)
+        ends.append((low, high))
+        middles.append((0, occ.addPoint(x + radius, y, 0.0)))
+        arcs.append(occ.addCircleArc(low, middles[-1][1], high, center=False))
+    if len(radii) == 1:
+        curves = [arcs[0], occ.addLine(ends[0][1], ends[0][0])]
+    else:
+        (low, high), (inner_low, inner_high) = ends
+        curves = [arcs[0], occ.addLine(high, inner_high), arcs[1], occ.addLine(inner_low, low)]
+    face = occ.addPlaneSurface([occ.addCurveLoop(curves)])
+    occ.remove(middles)
+    return face
 
 
 def _draw_polygon(occ, solid: Solid) -> int:

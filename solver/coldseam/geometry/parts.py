@@ -12,7 +12,7 @@ number that only own faces have takes the whole outline, z over y over x.
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 from coldseam.errors import CaseError, Fault, KeyPath
 
@@ -41,6 +41,8 @@ class Solid:
         Axis along which a polygon is drawn out from ``start[0]`` to ``end[0]``; None in the plane.
     path
         File of the shapes.
+    half
+        True for the right half only of a disc or ring centred on the axis of a turned section.
     """
 
     kind: str
@@ -50,6 +52,7 @@ class Solid:
     points: tuple[tuple[float, float], ...] = ()
     axis: str | None = None
     path: str | None = None
+    half: bool = False
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -106,6 +109,7 @@ def expand(case) -> list[Part]:
         try:
             made = _body_parts(body, i, dim)
             if case.model.axisymmetric:
+                made = [_halved(part) for part in made]
                 _check_axis(made, i)
         except CaseError as error:
             faults.extend(error.faults)
@@ -305,13 +309,22 @@ def _cross(a, b, c, d) -> bool:
     return side(a, b, c) * side(a, b, d) < 0 and side(c, d, a) * side(c, d, b) < 0
 
 
+def _halved(part: Part) -> Part:
+    """Return the part with discs and rings about the axis x = 0, which mean spheres, cut to their right half."""
+    solids = tuple(
+        replace(solid, half=True) if solid.kind in ("disc", "ring") and abs(solid.start[0]) < 1e-6 else solid
+        for solid in part.solids
+    )
+    return replace(part, solids=solids)
+
+
 def _check_axis(parts: list[Part], i: int) -> None:
     """Refuse parts that reach across the axis x = 0 of a turned section."""
     for part in parts:
         for solid in part.solids:
             if solid.kind == "polygon":
                 low = min(point[0] for point in solid.points)
-            elif solid.kind in ("disc", "ring"):
+            elif solid.kind in ("disc", "ring") and not solid.half:
                 low = solid.start[0] - solid.radii[0]
             elif solid.kind == "box":
                 low = solid.start[0]

@@ -82,7 +82,7 @@ def build_mesh(
         An exterior facet has no patch.
     """
     dim = points.shape[1]
-    points = np.ascontiguousarray(points, dtype=float)
+    points = np.array(points, dtype=float)
     cells = np.array(cells, dtype=np.int64)
     negative = signed_measure(points, cells) < 0
     cells[negative, :2] = cells[negative, 1::-1]
