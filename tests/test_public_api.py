@@ -23,7 +23,7 @@ UNIT = re.compile(
     r"|°C|W/|J/|kg/|m²|m³|[Uu]nit|[Ff]raction|[Ff]actor|[Ii]nd(ex|ices)|[Nn]umber|[Nn]odes|[Pp]osition|[Mm]ask|[Tt]rue"
 )
 WITHOUT_UNIT = {"cells", "facets", "edges", "links", "cell_body", "facet_cell", "facet_patch", "facet_boundary", "mask"}
-SHAPE = re.compile(r"\([\w .*+-]+,[\w .,*+-]*\)")
+SHAPE = re.compile(r"\([\w .*+-]+(?: \[\+ 1\])?,[\w .,*+-]*\)")
 
 
 def module_names() -> list[str]:

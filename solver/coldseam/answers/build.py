@@ -177,7 +177,17 @@ def warnings(solution: Solution) -> tuple[str, ...]:
 
 
 def extremes(mesh: Mesh, temperature: np.ndarray, facets: np.ndarray) -> Extremes:
-    """Return the extremes of a temperature, °C (n_nodes,), on facets given as a mask (n_facets,) or numbers (n,)."""
+    """Return the extremes of a temperature on facets.
+
+    Parameters
+    ----------
+    mesh
+        The mesh.
+    temperature
+        °C, shape (n_nodes,).
+    facets
+        A mask, shape (n_facets,), or positions among the exterior facets, shape (n,).
+    """
     chosen = mesh.facets[facets]
     nodes = np.unique(chosen)
     values = temperature[nodes]

@@ -54,7 +54,7 @@ def mesh_quality(mesh: Mesh) -> dict[str, float]:
 
 
 def shape_of(points: np.ndarray, cells: np.ndarray) -> np.ndarray:
-    """Return the radius ratio of tetrahedra, 0 for one without volume, orientation aside, shape (n_cells,)."""
+    """Return the radius ratio (a number from 0, no volume, to 1, regular) of tetrahedra, orientation aside, shape (n_cells,)."""
     ratio = np.zeros(len(cells))
     for first in range(0, len(cells), CHUNK):
         part = cells[first : first + CHUNK]

@@ -11,8 +11,8 @@ def counting_order(keys: np.ndarray, n_keys: int) -> np.ndarray:
 
     Turning a one-entry-per-row CSR matrix into CSC is a counting sort.
 
-    >>> counting_order(np.array([2, 0, 1, 0]), 3)
-    array([1, 3, 2, 0], dtype=int32)
+    >>> counting_order(np.array([2, 0, 1, 0]), 3).tolist()
+    [1, 3, 2, 0]
     """
     n = len(keys)
     rows = sparse.csr_array((np.zeros(n, dtype=np.int8), keys, np.arange(n + 1, dtype=np.int32)), shape=(n, n_keys))

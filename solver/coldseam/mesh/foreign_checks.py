@@ -23,7 +23,7 @@ def _at(place: np.ndarray) -> str:
 
 
 def check_nodes(points: np.ndarray) -> None:
-    """Refuse nodes on top of each other: the mesh has a crack there that no heat would cross.
+    """Refuse nodes, m, shape (n_nodes, dim), on top of each other: a crack there that no heat would cross.
 
     Raises
     ------
@@ -37,6 +37,11 @@ def check_nodes(points: np.ndarray) -> None:
 
 def check_simplices(points: np.ndarray, cells: np.ndarray) -> int:
     """Refuse flat, doubled and folded cells and facets of more than two cells.
+
+    Parameters
+    ----------
+    points, cells
+        m, shape (n_nodes, dim), and node numbers, shape (n_cells, dim + 1).
 
     Returns
     -------

@@ -7,6 +7,7 @@ from scipy.spatial import cKDTree
 
 from coldseam.mesh.types import Mesh
 
+CLOSE = 4  # cells tried around each point of a whole field
 NEAREST = 64  # cells tried around each point before all of them are
 
 
@@ -42,6 +43,38 @@ def locate(mesh: Mesh, points: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
                 cells[number], weights[number] = candidates[best], found
                 break
     return cells, weights
+
+
+def interpolate(mesh: Mesh, values: np.ndarray, points: np.ndarray) -> np.ndarray:
+    """Return a field of any unit on other points, near enough to start an iteration from.
+
+    Each point takes the one of the nearest few cells that it lies best in, not surely the cell that holds it.
+
+    Parameters
+    ----------
+    mesh
+        The mesh of the field.
+    values
+        At its nodes, shape (n_nodes, m).
+    points
+        m, shape (n, dim).
+
+    Returns
+    -------
+    np.ndarray
+        Shape (n, m).
+    """
+    corners = mesh.points[mesh.cells]
+    inverse = np.linalg.inv(np.swapaxes(corners[:, 1:] - corners[:, :1], 1, 2))
+    _, near = cKDTree(corners.mean(axis=1)).query(points, k=min(CLOSE, mesh.n_cells))
+    near = near.reshape(len(points), -1)
+    rest = np.einsum("nkij,nkj->nki", inverse[near], points[:, None] - corners[near, 0])
+    weights = np.concatenate([1.0 - rest.sum(axis=2, keepdims=True), rest], axis=2)
+    best = weights.min(axis=2).argmax(axis=1)
+    rows = np.arange(len(points))
+    weights = np.clip(weights[rows, best], 0.0, None)
+    weights /= weights.sum(axis=1, keepdims=True)
+    return np.einsum("nk,nkm->nm", weights, values[mesh.cells[near[rows, best]]])
 
 
 def _barycentric(mesh: Mesh, cells: np.ndarray, point: np.ndarray) -> np.ndarray:

@@ -16,7 +16,7 @@ from coldseam.report import style
 
 @dataclass(frozen=True, kw_only=True, eq=False)
 class Wanted:
-    """A label looking for a place: its text and the points (data coordinates, (n, 2)) it may stand on."""
+    """A label looking for a place: its text and the positions (n, 2), in data coordinates, that it may stand on."""
 
     text: str
     points: np.ndarray

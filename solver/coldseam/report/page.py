@@ -185,7 +185,7 @@ def _legend(figure, legend, room: float):
 
 
 def colour_bar(page: Page, low: float, high: float, levels: np.ndarray, unit: str = "°C") -> None:
-    """Draw the colour bar: the map from lowest to highest, ticks at the isotherms."""
+    """Draw the colour bar: the map from lowest to highest in ``unit``, ticks at the isotherms ``levels``, shape (n,)."""
     places = style.decimals(levels) if len(levels) else 2
     axis = page.bar
     ramp = np.linspace(low, high, 256)[:, None] if high > low else np.full((2, 1), low)

@@ -222,7 +222,7 @@ def _successors(edges: np.ndarray) -> np.ndarray:
 
 
 def chains(edges: np.ndarray) -> list[np.ndarray]:
-    """Return directed edges as paths of edge numbers, longest in edges first."""
+    """Return directed edges, node numbers of shape (n, 2), as paths of edge numbers, longest in edges first."""
     order, path = chain(edges)
     if len(order) == 0:
         return []
@@ -230,7 +230,7 @@ def chains(edges: np.ndarray) -> list[np.ndarray]:
 
 
 def paths(edges: np.ndarray) -> list[np.ndarray]:
-    """Return directed edges as paths of nodes, longest in edges first; closed ones end where they start."""
+    """Return directed edges, shape (n, 2), as paths of nodes, longest in edges first; closed ones end where they start."""
     return [np.append(edges[part, 0], edges[part[-1], 1]) for part in chains(edges)]
 
 

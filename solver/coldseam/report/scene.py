@@ -62,7 +62,7 @@ class Scene:
 
 
 def frame(toward: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-    """Return the picture's unit vectors right, up, toward for an eye in a direction; z points up if it can."""
+    """Return the picture's unit vectors right, up, toward, shape (3,) each, for an eye in a direction; z points up if it can."""
     toward = np.asarray(toward, dtype=float) / np.linalg.norm(toward)
     upright = np.array([0.0, 0.0, 1.0]) if abs(toward[2]) < 0.8 else np.array([0.0, 1.0, 0.0])
     right = np.cross(upright, toward)

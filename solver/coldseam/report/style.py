@@ -150,7 +150,7 @@ def round_levels(low: float, high: float, about: int = 9) -> np.ndarray:
 
 
 def decimals(levels: np.ndarray) -> int:
-    """Return the decimals that tell the values apart and show each exactly."""
+    """Return the number of decimals that tell values of any unit, shape (n,), apart and show each exactly."""
     for count in range(7):
         if np.allclose(
             np.round(levels, count), levels, rtol=0, atol=1e-9 * max(1.0, float(np.abs(levels).max(initial=0)))

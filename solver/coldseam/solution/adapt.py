@@ -9,6 +9,7 @@ Element c contributes eta_c² to the gap between upper and lower bound, and for 
 from __future__ import annotations
 
 import numpy as np
+from scipy.spatial import cKDTree
 
 from coldseam.mesh.types import Mesh, SizeField
 from coldseam.solution.bounds import cell_sizes
@@ -17,7 +18,8 @@ from coldseam.volumes.operator import cell_pairs
 FINEST, COARSEST = 0.2, 2.0  # limits of one round's change of size
 GROWTH = 0.6  # largest difference of size along an edge, as a part of its length
 SWEEPS = 12
-POINT_REACH = 4.0  # element sizes around a watched point that are halved
+POINT_REACH = 4.0  # new element sizes around a watched point that stay small
+REGROWTH = 0.4  # of the size beyond, per length
 
 
 def wanted_sizes(mesh: Mesh, gap: np.ndarray, wanted: float) -> tuple[np.ndarray, float]:
@@ -48,18 +50,16 @@ def wanted_sizes(mesh: Mesh, gap: np.ndarray, wanted: float) -> tuple[np.ndarray
 
 
 def refine_near(mesh: Mesh, sizes: np.ndarray, points: np.ndarray) -> np.ndarray:
-    """Return sizes (n_cells,) halved around points (n, dim), growing back with the distance."""
+    """Return sizes, m, (n_cells,), halved around points, m, (n, dim), and growing back with the distance."""
     centres = mesh.points[mesh.cells].mean(axis=1)
-    h = cell_sizes(mesh)
-    for point in points:  # a few watched points
-        distance = np.linalg.norm(centres - point, axis=1)
-        local = h[np.argmin(distance)]
-        sizes = np.minimum(sizes, 0.5 * local + 0.4 * np.maximum(distance - POINT_REACH * 0.5 * local, 0.0))
-    return sizes
+    local = 0.5 * cell_sizes(mesh)[cKDTree(centres).query(points)[1]]
+    distance, nearest = cKDTree(points).query(centres)
+    reach = local[nearest]
+    return np.minimum(sizes, reach + REGROWTH * np.maximum(distance - POINT_REACH * reach, 0.0))
 
 
 def size_field(mesh: Mesh, sizes: np.ndarray) -> SizeField:
-    """Return nodal sizes from cell sizes (n_cells,), smallest first, with limited growth along edges."""
+    """Return nodal sizes from cell sizes, m, (n_cells,), smallest first, with limited growth along edges."""
     node = np.full(mesh.n_nodes, np.inf)
     np.minimum.at(node, mesh.cells.ravel(), np.repeat(sizes, mesh.dim + 1))
     total = np.bincount(mesh.cells.ravel(), np.repeat(np.log(sizes), mesh.dim + 1), mesh.n_nodes)

@@ -92,7 +92,8 @@ def prove(mesh: Mesh, given: Conditions, weights: np.ndarray, nodes: Response) -
         The facet solve failed, or its flux fails the check of :func:`check_gap`.
     """
     system = facet_system(mesh, given, weights)
-    response = respond(system.network, mesh.dim, FACET_TOLERANCE, _facet_solver(system, nodes, mesh.dim))
+    solver = _facet_solver(system, nodes, mesh.dim)
+    response = respond(system.network, mesh.dim, FACET_TOLERANCE, solver, lambda: system.from_nodes @ nodes.fields)
     return bounds_of(mesh, given, system, nodes, response)
 
 
@@ -220,7 +221,7 @@ def _at_cells(mesh: Mesh, system: FacetSystem, facets: np.ndarray, part: np.ndar
 
 
 def check_gap(gap: np.ndarray, bounds: Bounds, state: np.ndarray) -> float:
-    """Return the relative misfit between the gap and the sum of its local parts.
+    """Return the relative misfit between the gap of a state (n_terminals [+ 1],) and its local parts, W K, (n_cells,).
 
     The identity holds only if the facet flux truly balances and the matrices are what they should
     be: a flux that is not divergence-free, or a solve looser than it says, breaks it. What the solver

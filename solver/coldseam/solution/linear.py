@@ -47,6 +47,8 @@ class Solved:
 class DirectSolver:
     """One sparse factorisation, with one step of iterative refinement."""
 
+    iterative = False
+
     def __init__(self, matrix: sparse.csr_array):
         self.matrix = matrix
         self.method = "sparse factorisation"
@@ -104,6 +106,8 @@ class MultigridSolver:
         A pyamg solver object whose cycle is symmetric.
     """
 
+    iterative = True
+
     def __init__(self, matrix: sparse.csr_array, hierarchy):
         self.matrix = matrix
         self.hierarchy = hierarchy
@@ -118,7 +122,7 @@ class MultigridSolver:
         right
             Right-hand sides, W.
         offset
-            The constant part of each column's energy, so that J = offset - x.(right + residual), (m,).
+            Each column's energy at x = 0, so that J = offset - x.(right + residual), (m,).
         tolerance
             Stop when the estimated missing energy is below this part of J.
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -37,7 +38,9 @@ class Response:
     hierarchy: object | None
 
 
-def respond(network: Network, dim: int, tolerance: float, solver=None) -> Response:
+def respond(
+    network: Network, dim: int, tolerance: float, solver=None, guess: Callable[[], np.ndarray | None] | None = None
+) -> Response:
     """Solve a network for its unit fields.
 
     The fields of all terminals sum to 1 (all outside at 1 K, no load), so the last terminal costs
@@ -53,6 +56,8 @@ def respond(network: Network, dim: int, tolerance: float, solver=None) -> Respon
         Missing energy as a part of each field's own.
     solver
         An object with ``solve`` for the free sites; None chooses one.
+    guess
+        Called for unit fields to start from, (n, n_terminals [+ 1]), when the solver iterates; None for no guess.
     """
     free = network.free
     drive = network.right_hand_side()
@@ -62,9 +67,13 @@ def respond(network: Network, dim: int, tolerance: float, solver=None) -> Respon
     if solver is None:
         solver = choose_solver(network.matrix[free][:, free], dim)
     if asked:
+        start = guess() if guess and solver.iterative else None
+        if start is not None and start.shape == fields.shape:
+            fields[np.ix_(free, asked)] = start[np.ix_(free, asked)]
+            drive[:, asked] = network.drive_beyond(fields)[:, asked]
         offset = network.energy(fields).diagonal()[asked]
         solved = solver.solve(np.ascontiguousarray(drive[free][:, asked]), offset, tolerance)
-        fields[np.ix_(free, asked)] = solved.values
+        fields[np.ix_(free, asked)] += solved.values
         errors = np.zeros(drive.shape[1])
         errors[asked] = solved.error_energy
         errors[p - 1] = p * errors[: p - 1].sum()  # |sum of p - 1 errors|² <= (p - 1) times the sum of squares

@@ -21,18 +21,28 @@ from coldseam.mesh.types import Mesh
 from coldseam.solution.adapt import refine_near, size_field, wanted_sizes
 from coldseam.solution.bounds import cell_sizes, check_gap, local_gap, prove
 from coldseam.solution.memory import require_room, room_for
-from coldseam.solution.readings import Interval, beyond_proof, boundary_intervals, shape_error, space_intervals, steady_reason, tolerated
+from coldseam.solution.readings import (
+    Interval,
+    beyond_proof,
+    boundary_intervals,
+    shape_error,
+    space_intervals,
+    space_terminals,
+    steady_reason,
+    tolerated,
+)
 from coldseam.solution.steady import Steady, solve_on
 
 if TYPE_CHECKING:
     from coldseam.case.model import Case
 
+DEBUG=1
 MOST_ROUNDS = 10
 POINT_LIMIT = 0.005
 """ISO 10211: largest change of a temperature factor on a finer mesh."""
 LARGEST_STEP = 12.0  # the gap is reduced by at most this factor in one round
 MARGIN = 1.3
-POINT_STEP = 2.0
+SMALLEST_STEP = 2.0  # and at least by this one
 MOST_READINGS = 4  # unit states whose gap is looked at in one round, the worst first
 MOST_NODES = {2: 400_000, 3: 300_000}
 CALIBRATION = {2: 0.9, 3: 0.78}
@@ -106,13 +116,14 @@ def solve(case: Case, mesher, log: Callable[[str, str], None]) -> Solution:
     require_room(case, mesher)
     size, target, segments, calibration = None, None, None, CALIBRATION[case.model.dimensions]
     rounds: list[Round] = []
+    steady: Steady | None = None
     watched: dict[tuple, tuple[np.ndarray, float]] | None = None
     while True:
         start = time.perf_counter()
         options = {"curve_segments": segments} if segments and mesher.remeshable else {}
         mesh = mesher.mesh(size, target, **options)
         log("solve", f"{mesh.n_nodes} nodes, {mesh.n_cells} cells")
-        steady = _proven(case, mesh, log)
+        steady = _proven(case, mesh, steady, log)
         flows = _flows(steady)
         error = _worst(steady, flows)
         before, watched = watched, watched_points(steady)
@@ -141,8 +152,8 @@ def solve(case: Case, mesher, log: Callable[[str, str], None]) -> Solution:
             )
 
 
-def _proven(case: Case, mesh: Mesh, log) -> Steady:
-    steady = solve_on(case, mesh)
+def _proven(case: Case, mesh: Mesh, before: Steady | None, log) -> Steady:
+    steady = solve_on(case, mesh, before)
     if steady.given.clashes:
         return steady
     log("solve", "proving the heat flows")
@@ -151,8 +162,6 @@ def _proven(case: Case, mesh: Mesh, log) -> Steady:
 
 def _flows(steady: Steady) -> list[tuple[Interval, np.ndarray]]:
     """Return every heat flow that must be accurate, with the vector that reads it from Lambda."""
-    from coldseam.solution.readings import space_terminals
-
     readings = []
     intervals = boundary_intervals(steady)
     for number, terminal in enumerate(steady.given.terminals):
@@ -224,11 +233,22 @@ def _moves(steady: Steady, before, watched) -> tuple[float | None, list[np.ndarr
     span = temperature_range(steady)
     if span <= 0.0:
         return 0.0, []
-    if before is None:
-        return None, []
+    if before is None:  # another mesh must show whether they move, so let it be finer at each of them
+        return None, [place[None] for place, _ in watched.values()]
     moves = {key: abs(value - before[key][1]) / span for key, (_, value) in watched.items() if key in before}
-    restless = [watched[key][0] for key, move in moves.items() if move > 0.5 * point_limit(steady.case)]
+    if DEBUG: print({k: round(v,4) for k,v in moves.items() if v>.002})
+    restless = [_near_extreme(steady, key, watched[key], move * span) for key, move in moves.items() if move > 0.5 * point_limit(steady.case)]
     return max(moves.values(), default=0.0), restless
+
+
+def _near_extreme(steady: Steady, key: tuple, point: tuple[np.ndarray, float], move: float) -> np.ndarray:
+    """Return the places, m, (n, dim), that an unsettled extreme might still turn up at."""
+    place, value = point
+    if key[0] == "probe":
+        return place[None]
+    number = [boundary.name for boundary in steady.case.boundary].index(key[1])
+    nodes = np.unique(steady.mesh.facets[steady.facet_boundary == number])
+    return steady.mesh.points[nodes[np.abs(steady.temperature[nodes] - value) <= move]]
 
 
 def _next_sizes(steady: Steady, flows, error: float | None, restless: list[np.ndarray]) -> np.ndarray:
@@ -237,10 +257,11 @@ def _next_sizes(steady: Steady, flows, error: float | None, restless: list[np.nd
     if steady.bounds is None:
         return 0.5 * cell_sizes(mesh)
     gap = _gap_indicator(steady, flows)
-    # Where only temperatures are unsettled, half the gap is asked for: another look needs another mesh.
-    factor = np.clip(MARGIN * (error or 0.0), POINT_STEP, LARGEST_STEP)
+    # Where only temperatures are unsettled, the mesh gets finer there and stays as it is elsewhere.
+    late = error is not None and error > 1.0
+    factor = np.clip(MARGIN * (error or 0.0), SMALLEST_STEP if late else 1.0, LARGEST_STEP)
     sizes, _ = wanted_sizes(mesh, gap, float(gap.sum()) / factor)
-    return refine_near(mesh, sizes, np.array(restless)) if restless else sizes
+    return refine_near(mesh, sizes, np.vstack(restless)) if restless else sizes
 
 
 def _gap_indicator(steady: Steady, flows) -> np.ndarray:

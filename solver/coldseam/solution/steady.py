@@ -11,6 +11,7 @@ from scipy.sparse.csgraph import connected_components
 from coldseam.errors import CaseError, Fault, SolveError
 from coldseam.mesh.boundaries import claim_facets
 from coldseam.mesh.contacts import open_contacts
+from coldseam.mesh.locate import interpolate
 from coldseam.mesh.measure import cell_measure
 from coldseam.mesh.types import Mesh
 from coldseam.solution.bounds import Bounds
@@ -84,7 +85,7 @@ class Steady:
         return abs(self.closure) / self.throughput if self.throughput > floor else 0.0
 
 
-def solve_on(case: Case, mesh: Mesh) -> Steady:
+def solve_on(case: Case, mesh: Mesh, before: Steady | None = None) -> Steady:
     """Solve a steady case on a mesh.
 
     Parameters
@@ -93,6 +94,8 @@ def solve_on(case: Case, mesh: Mesh) -> Steady:
         The case.
     mesh
         A mesh of its geometry, contacts not yet opened.
+    before
+        The solution on another mesh of it, for the iteration to start from.
 
     Raises
     ------
@@ -107,7 +110,7 @@ def solve_on(case: Case, mesh: Mesh) -> Steady:
     operator, weights = node_operator(mesh, given)
     network = node_network(mesh, given, operator)
     require_temperatures(mesh, network)
-    response = respond(network, mesh.dim, NODE_TOLERANCE)
+    response = respond(network, mesh.dim, NODE_TOLERANCE, guess=_from(before, mesh) if before else None)
 
     temperatures = np.array([terminal.temperature for terminal in given.terminals])
     reference = 0.5 * float(temperatures.min() + temperatures.max())
@@ -132,6 +135,10 @@ def solve_on(case: Case, mesh: Mesh) -> Steady:
             f"what passes through ({CLOSURE_LIMIT:.0e} is allowed, ISO 10211); the result is refused"
         )
     return result
+
+
+def _from(before: Steady, mesh: Mesh):
+    return lambda: interpolate(before.mesh, before.response.fields, mesh.points)
 
 
 def with_contacts(case: Case, mesh: Mesh) -> Mesh:

@@ -94,7 +94,7 @@ def facet_system(mesh: Mesh, given: Conditions, weights: np.ndarray) -> FacetSys
     mesh, given
         Mesh (contacts opened) and conditions.
     weights
-        Plain cell weights from :func:`coldseam.volumes.operator.cell_weights`, (3 or 6, n_cells).
+        Plain cell weights from :func:`coldseam.volumes.operator.cell_weights`, m (2D: 1), (3 or 6, n_cells).
     """
     cell_facets, facets = number_facets(mesh.cells)
     n = len(facets)
@@ -170,7 +170,7 @@ def sheet_heat(system: FacetSystem, values: np.ndarray, terminal_values: np.ndar
 
 
 def find_facets(facets: np.ndarray, wanted: np.ndarray) -> np.ndarray:
-    """Return the number of each wanted facet (any node order) among lexicographically sorted facets."""
+    """Return the number, shape (n,), of each wanted facet (n, dim), nodes in any order, among sorted facets (n_facets, dim)."""
     n = int(facets.max()) + 1
     wanted = np.sort(wanted, axis=1)
     if float(n) ** facets.shape[1] < 2.0**62:

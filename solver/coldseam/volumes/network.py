@@ -68,10 +68,14 @@ class Network:
 
     def right_hand_side(self) -> np.ndarray:
         """Return what drives each unit field at every site, W, (n, n_terminals [+ 1])."""
+        return self.drive_beyond(self.start())
+
+    def drive_beyond(self, fields: np.ndarray) -> np.ndarray:
+        """Return what given unit fields lack to balance at every site, W, both (n, n_terminals [+ 1])."""
         drive = self.exchange.toarray()
         if self.has_load:
             drive = np.column_stack([drive, self.load])
-        return drive - self.matrix @ self.start()
+        return drive - self.matrix @ fields
 
     def energy(self, fields: np.ndarray) -> np.ndarray:
         """Return Lambda of given unit fields, W/K, symmetric, (n_terminals [+ 1],) squared.
