@@ -80,7 +80,7 @@ class Result:
     @property
     def temperature(self) -> np.ndarray:
         """Temperature at the mesh's nodes, °C, shape (n_nodes,)."""
-        return self.solution.steady.temperature
+        return self.solution.steady.bounded
 
     def view(self) -> View:
         """Return what pictures and field files are made from."""
@@ -89,7 +89,7 @@ class Result:
         return View(
             **{
                 **plain.__dict__,
-                "temperature": steady.temperature,
+                "temperature": steady.bounded,
                 "cell_flux": cell_flux(steady),
                 "answers": self.answers.as_dict(),
             }

@@ -231,6 +231,18 @@ def test_effect_on_the_whole(pin):
     assert whole["U_with_bridge"] == pytest.approx(again, rel=1e-9)
 
 
+def test_effect_on_a_wall_with_so_many(pin, corner, texts):
+    """U of the plain wall and per_area times chi or psi (ISO 6946, ISO 14683: the sum of both, from memory)."""
+    text = texts["pin"].replace('without = ["pin", "head"]', 'without = ["pin", "head"]\nper_area = "5 1/m2"')
+    entry = run(read.loads(text)).answers.bridges["pin"]
+    assert entry["wall"]["U_added"] == pytest.approx(5 * pin.answers.bridges["pin"]["chi"], rel=1e-9)
+    assert entry["wall"]["U_with_bridge"] == pytest.approx(1 / (0.26 + 0.1 / 0.03) + entry["wall"]["U_added"], rel=1e-3)
+    assert pin.answers.bridges["pin"]["wall"] is None
+    bridge = 'kind = "linear"'
+    entry = run(read.loads(texts["corner"].replace(bridge, f"{bridge}\nper_area = 0.25"))).answers.bridges["corner"]
+    assert entry["wall"]["U_added"] == pytest.approx(0.25 * corner.answers.bridges["corner"]["psi"], rel=1e-9)
+
+
 def test_two_point_bridges_of_one_model(texts):
     """Pin and head each left out by themselves: the head alone adds little, without the pin nearly nothing is left."""
     text = (
@@ -280,3 +292,5 @@ film = 5
     text = text.replace('space = "warm"\n[[boundary]]\nname = "cut"', 'space = "third"\n[[boundary]]\nname = "cut"')
     with pytest.raises(CaseError, match="3 outside points"):
         run(read.loads(text))
+    chosen = text.replace('kind = "point"', 'kind = "point"\nbetween = ["cold", "third"]')
+    assert run(read.loads(chosen)).answers.bridges["pin"]["between"] == ["cold", "third"]

@@ -34,6 +34,42 @@ def flows(case, mesh) -> dict[str, float]:
     return {name: float(steady.boundary_flow[which].sum()) for name, (_, which) in space_terminals(steady).items()}
 
 
+def solved(case):
+    from coldseam.geometry.mesher import open_geometry
+
+    with open_geometry(case) as mesher:
+        return solve_on(case, mesher.mesh())
+
+
+SLAB = """
+title = "slab"
+[model]
+dimensions = 2
+[spaces.cold]
+temperature = 0
+film = 8
+[spaces.warm]
+temperature = 20
+film = 8
+[materials.foam]
+conductivity = 0.03
+[[body]]
+name = "foam"
+material = "foam"
+box = { from = [0, 0], to = [200, 100] }
+[[boundary]]
+name = "cold"
+on = { plane = { x = 0 } }
+space = "cold"
+[[boundary]]
+name = "warm"
+on = { plane = { x = 200 } }
+space = "warm"
+[[boundary]]
+name = "sides"
+on = "rest"
+adiabatic = true
+"""
 INPUTS = {
     ("material", "brick"): (("materials", "brick", "conductivity"), 0.8, 1),
     ("material", "foam"): (("materials", "foam", "conductivity"), 0.04, 1),
@@ -79,7 +115,7 @@ def test_heat_sources_are_finite_differences(texts):
     up, down = (flows(read.replace(case, "body[heater].heat_source", 6 * (1 + s)), mesh) for s in (0.1, -0.1))
     for space, entry in reacts.items():
         base = flows(case, mesh)[space]
-        assert entry["heat_sources"].relative == pytest.approx((up[space] - down[space]) / 0.2 / base, rel=1e-4)
+        assert entry["heat_sources"]["heater"].relative == pytest.approx((up[space] - down[space]) / 0.2 / base, rel=1e-4)
 
 
 @pytest.mark.parametrize("name", ["tee", "heated", "corner", "pin"])
@@ -227,6 +263,33 @@ def test_first_order_is_near_the_true_change(texts):
     expected = 0.05 * base.answers.sensitivities["outside"]["materials"]["foam"].relative
     change = 1 - better.answers.spaces["outside"].heat_flow / base.answers.spaces["outside"].heat_flow
     assert change == pytest.approx(expected, rel=0.1)
+
+
+def test_uncertainty_of_any_input_is_stated_where_it_stands(texts):
+    """Of a space's film, a boundary's own film, a contact, a body's heat source: each found with its input."""
+    text = texts["heated"].replace('[[contact]]', '[[contact]]\nuncertainty = "30 %"')
+    text = text.replace("[spaces.outside]", '[spaces.outside]\nuncertainty = "5 %"')
+    text = text.replace("film = 4\n", 'film = 4\nuncertainty = "15 %"\n')
+    text = text.replace("heat_source = 6", 'heat_source = 6\nuncertainty = "8 %"')
+    _, reacts = losses(solved(read.loads(text)))
+    stated = {(s.kind, s.name): s.uncertainty for kind in reacts["left"].values() if isinstance(kind, dict)
+              for s in kind.values() if hasattr(s, "uncertainty")}  # fmt: skip
+    assert stated["film", "facade"] == 0.05
+    assert stated["film", "left partition"] == 0.15
+    assert stated["film", "left wall"] is None
+    assert stated["contact", "joint"] == 0.3
+    assert stated["heat source", "heater"] == 0.08
+    assert len(reacts["left"]["interval"]["stated"]) == 6  # with the two materials
+
+
+def test_given_flow_is_a_finite_difference():
+    """All of the heat given on one side of a bar leaves on the other: 10 W/m² over 100 mm, one for one."""
+    text = SLAB.replace("[spaces.warm]\ntemperature = 20\nfilm = 8\n", "").replace('space = "warm"', 'heat_flux = 10\nuncertainty = "10 %"')
+    _, reacts = losses(solved(read.loads(text)))
+    found = reacts["cold"]["given_flows"]["warm"]
+    assert found.heat_flow == pytest.approx(-10 * 0.1, rel=1e-9)  # W/m over 100 mm
+    assert found.relative == pytest.approx(1.0, rel=1e-9)
+    assert reacts["cold"]["interval"]["half_width_worst"] == pytest.approx(0.1, rel=1e-9)
 
 
 def test_no_uncertainty_no_interval(tee):

@@ -83,6 +83,7 @@ FAULTS = [
     (PANEL, "density = 7900", "density = 0", "density", "materials.bolt.density", "must be above 0"),
     (PANEL, "= 460", '= "460 J/K"', "460", "materials.bolt.specific_heat", "it is one of heat capacity"),
     (PANEL, "= 460", "= 460\nemissivity = 1.2", "emissivity", "materials.bolt.emissivity", "must be 1 or less"),
+    (PANEL, "heat_source = 5", 'uncertainty = "5 %"', "uncertainty", "body[2].uncertainty", "goes with heat_source or"),
     (PANEL, '"EN 10088-1 table A.3"', "3", "source", "materials.bolt.source", "expected text, not 3"),
     # bodies
     (PANEL, PANEL_AT, "", "[[body]]", "body[1]", "needs exactly one of box, cylinder"),

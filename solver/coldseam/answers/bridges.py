@@ -69,7 +69,7 @@ def _point_faults(case: Case, number: int) -> list[Fault]:
     left = [body for body in case.body if body.name not in (bridge.without or ())]
     if all(body.void for body in left):
         faults.append(Fault(path=("bridge", number, "without"), what="leaves nothing of the model"))
-    if len(case.spaces) > 2 and getattr(bridge, "between", None) is None:
+    if len(case.spaces) > 2 and bridge.between is None:
         faults.append(Fault(path=("bridge", number), what=_which_two(list(case.spaces))))
     return faults
 
@@ -135,6 +135,8 @@ def _linear(steady: Steady, number: int) -> tuple[dict[str, Any], list[str]]:
     bases = ("internal", "external") if bridge.basis == "both" else (bridge.basis,)
     for basis in bases:
         found |= _psi(whole, walls, basis, "psi" if basis == bases[0] else "psi_external")
+    plain = found["psi_whole"]["U_plain"]
+    found["wall"] = _wall(bridge, plain, linear=found["psi"])
     return found, [*wall_warnings(steady, bridge, walls), *_linear_warnings(steady.case, bridge, found)]
 
 
@@ -172,7 +174,7 @@ def _psi(whole: Interval, walls: list[Wall], basis: str, key: str) -> dict[str, 
 
 def _point(steady: Steady, number: int, mesher, log: Log) -> tuple[dict[str, Any], list[str]]:
     bridge = steady.case.bridge[number]
-    pair = getattr(bridge, "between", None) or tuple(nodes_of_a_space(steady))
+    pair = bridge.between or tuple(nodes_of_a_space(steady))
     if len(pair) != 2:
         raise CaseError([Fault(path=("bridge", number), what=_which_two(list(pair)))])
     _coupling(steady, pair, number)
@@ -201,7 +203,17 @@ def _point_entry(bridge: Bridge, pair: tuple[str, str], result: Comparison) -> d
         "nodes_without": result.nodes[1],
         "rounds": result.rounds,
         "whole": result.whole,
+        "wall": _wall(bridge, None if result.whole is None else result.whole["U_plain"], point=chi.value / n),
     }
+
+
+def _wall(bridge: Bridge, plain: float | None, linear: float = 0.0, point: float = 0.0) -> dict[str, float | None] | None:
+    """Return what so many of a bridge per area make of U, W/(m²·K); None where the case names no number."""
+    if bridge.per_area is None:
+        return None
+    added = whole_transmittance(0.0, linear=[(linear, bridge.per_area)], point=[(point, bridge.per_area)])
+    with_bridge = None if plain is None else plain + added
+    return {"per_area": bridge.per_area, "U_plain": plain, "U_added": added, "U_with_bridge": with_bridge}
 
 
 def _bounds(interval: Interval) -> dict[str, float | None]:

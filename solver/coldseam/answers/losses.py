@@ -6,7 +6,7 @@ it by a factor that differs from 1 by less than the flow's error. Per space,
 
 - ``by_boundary``: what its own boundaries give (only boundaries that face it);
 - ``by_body``, ``by_film``, ``by_sheet``, ``by_contact``, ``from_heat_sources``: terms that add up to the flow;
-- ``sensitivities``: d ln Q / d ln k of every material, d ln Q / d ln h of every film, d ln Q / d ln R of every contact.
+- ``sensitivities``: d ln Q / d ln of every material's k, film's h, contact's R, body's source and boundary's given flow.
 
 The interval from stated input uncertainties is of first order: each input's sensitivity times its uncertainty,
 added up for inputs that are all off the worst way at once, and as the root of the sum of squares for independent ones.
@@ -16,7 +16,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -25,6 +25,10 @@ from coldseam.solution.readings import boundary_intervals, space_intervals, spac
 from coldseam.solution.steady import Steady
 from coldseam.volumes.conditions import boundary_film
 
+if TYPE_CHECKING:
+    from coldseam.case.model import Body, Case
+
+KINDS = ("material", "film", "contact", "heat source", "given flow")
 NOTHING = 1e-9
 """A flow below this part of what passes through the model is none: it has no relative sensitivity."""
 
@@ -36,10 +40,10 @@ class Sensitivity:
     Parameters
     ----------
     kind
-        ``"material"`` (its conductivity), ``"film"`` (its coefficient), ``"contact"`` (its resistance) or
-        ``"heat sources"`` (all of them together).
+        ``"material"`` (its conductivity), ``"film"`` (its coefficient), ``"contact"`` (its resistance), ``"heat source"``
+        (of a body) or ``"given flow"`` (of a boundary).
     name
-        Of the material, boundary or contact.
+        Of the material, boundary, contact or body.
     heat_flow
         d Q / d ln(input), W (2D: W/m): a hundredth of it is what 1 % does.
     relative
@@ -66,8 +70,7 @@ def losses(steady: Steady) -> tuple[dict[str, Any], dict[str, Any]]:
         where[name] = _terms(steady, shares, boundaries, flow)
         found = sensitivities(steady, shares, flow)
         reacts[name] = {
-            **{f"{kind}s": {s.name: s for s in found if s.kind == kind} for kind in ("material", "film", "contact")},
-            "heat_sources": next((s for s in found if s.kind == "heat sources"), None),
+            **{f"{kind.replace(' ', '_')}s": {s.name: s for s in found if s.kind == kind} for kind in KINDS},
             "interval": input_interval(found, flow),
             "ranked": ranked(found),
         }
@@ -86,6 +89,7 @@ def scaled(shares: Shares, flow: float, nothing: float) -> Shares:
         sheet=factor * shares.sheet,
         contact=factor * shares.contact,
         released=factor * shares.released,
+        given=factor * shares.given,
     )
 
 
@@ -106,7 +110,7 @@ def _terms(steady: Steady, shares: Shares, boundaries: list[int], flow: float) -
         "by_film": {case.boundary[n].name: entry(shares.film[n]) for n in films},
         "by_sheet": {sheet.name: entry(v) for sheet, v in zip(case.sheet, shares.sheet, strict=True)},
         "by_contact": {contact.name: entry(v) for contact, v in zip(case.contact, shares.contact, strict=True)},
-        "from_heat_sources": entry(shares.released),
+        "from_heat_sources": entry(float(shares.released.sum() + shares.given.sum())),
         "sum": shares.total,
     }
 
@@ -124,8 +128,13 @@ def sensitivities(steady: Steady, shares: Shares, flow: float) -> list[Sensitivi
             found["film", boundary.name] = float(shares.film[number])
     for contact, value in zip(case.contact, shares.contact, strict=True):
         found["contact", contact.name] = -float(value)  # of the resistance, not of the conductance
-    if steady.response.network.has_load:
-        found["heat sources", "all"] = shares.released
+    for body, value in zip(steady.mesh.bodies, shares.released, strict=True):
+        if value:
+            source = case_body(case, body.name).name
+            found["heat source", source] = found.get(("heat source", source), 0.0) + float(value)
+    for boundary, value in zip(case.boundary, shares.given, strict=True):
+        if value:
+            found["given flow", boundary.name] = float(value)
     return [
         Sensitivity(
             kind=kind,
@@ -138,6 +147,11 @@ def sensitivities(steady: Steady, shares: Shares, flow: float) -> list[Sensitivi
     ]
 
 
+def case_body(case: Case, name: str) -> Body:
+    """Return the body of the case that a body of the mesh, or a part of it, comes from."""
+    return next(body for body in case.body if name == body.name or name.startswith(f"{body.name}/"))
+
+
 def _uncertainty(steady: Steady, kind: str, name: str) -> float | None:
     """Return the uncertainty that the case states for an input, a fraction."""
     case = steady.case
@@ -145,11 +159,13 @@ def _uncertainty(steady: Steady, kind: str, name: str) -> float | None:
         return case.materials[name].uncertainty
     if kind == "film":
         boundary = next(b for b in case.boundary if b.name == name)
-        own = boundary.film is not None or boundary.surface_resistance is not None
-        return getattr(boundary if own else case.spaces[boundary.space], "uncertainty", None)
+        own = boundary.uncertainty is not None or boundary.h is not None
+        return (boundary if own else case.spaces[boundary.space]).uncertainty
     if kind == "contact":
-        return getattr(next(c for c in case.contact if c.name == name), "uncertainty", None)
-    return None
+        return next(c for c in case.contact if c.name == name).uncertainty
+    if kind == "heat source":
+        return case_body(case, name).uncertainty
+    return next(b for b in case.boundary if b.name == name).uncertainty
 
 
 def input_interval(found: list[Sensitivity], flow: float) -> dict[str, Any] | None:

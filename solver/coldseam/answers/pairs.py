@@ -244,7 +244,9 @@ def case_without(case: Case, names: Iterable[str], number: int) -> Case:
 
 
 def _reread(case: Case, document: dict[str, Any], number: int) -> Case:
-    kept = {key: value for key, value in document.items() if value != []}
+    faced = {boundary.get("space") for boundary in document.get("boundary", [])}
+    spaces = {name: space for name, space in document.get("spaces", {}).items() if name in faced}
+    kept = {key: value for key, value in (document | {"spaces": spaces}).items() if value not in ([], {})}
     try:
         return loads(to_toml(kept), folder=case.source.folder)
     except CaseError as error:

@@ -25,7 +25,7 @@ from coldseam.mesh.types import Mesh
 from coldseam.solution.steady import Steady
 from coldseam.volumes.conditions import body_mask
 from coldseam.volumes.operator import cell_pairs
-from coldseam.volumes.section import cell_radius, facet_shares
+from coldseam.volumes.section import cell_radius, facet_shares, node_shares_of_cells
 from coldseam.volumes.sheets import sheet_pairs, sheet_weights
 
 if TYPE_CHECKING:
@@ -44,21 +44,23 @@ class Shares:
         Of the film of every boundary, (n_boundaries,).
     sheet, contact
         Of every sheet and contact of the case, (n_sheets,), (n_contacts,).
-    released
-        Heat released inside that ends here, as a heat flow into the solid: negative for a source.
+    released, given
+        Heat released in every body, (n_bodies,), and given on every boundary, (n_boundaries,), that ends here, as a
+        heat flow into the solid: negative for a source.
     """
 
     body: np.ndarray
     film: np.ndarray
     sheet: np.ndarray
     contact: np.ndarray
-    released: float
+    released: np.ndarray
+    given: np.ndarray
 
     @property
     def total(self) -> float:
         """Their sum: the heat flow, W (2D: W/m)."""
-        parts = (self.body, self.film, self.sheet, self.contact)
-        return float(sum(part.sum() for part in parts) + self.released)
+        parts = (self.body, self.film, self.sheet, self.contact, self.released, self.given)
+        return float(sum(part.sum() for part in parts))
 
 
 def shares_of(steady: Steady, terminals: list[int]) -> Shares:
@@ -74,14 +76,27 @@ def shares_of(steady: Steady, terminals: list[int]) -> Shares:
     reading = np.zeros(len(steady.state))
     reading[terminals] = 1.0
     unit, field = steady.response.fields @ reading, steady.temperature - steady.reference
-    mesh, network = steady.mesh, steady.response.network
+    mesh = steady.mesh
     return Shares(
         body=np.bincount(mesh.cell_body, _cells(steady, unit, field), len(mesh.bodies)),
         film=_films(steady, unit, field, reading),
         sheet=_sheets(steady, unit, field),
         contact=_contacts(steady, unit, field),
-        released=-float(network.load @ unit) if network.has_load else 0.0,
+        released=np.array([-float(node_shares_of_cells(mesh, heat) @ unit) for heat in _sources(steady)]),
+        given=_given(steady, unit),
     )
+
+
+def _sources(steady: Steady) -> list[np.ndarray]:
+    """Return the heat per volume of every body's cells, W/m³, (n_cells,) each."""
+    of_body = steady.mesh.cell_body[None] == np.arange(len(steady.mesh.bodies))[:, None]
+    return list(np.where(of_body, steady.given.source, 0.0))
+
+
+def _given(steady: Steady, unit: np.ndarray) -> np.ndarray:
+    mesh = steady.mesh
+    part = (facet_shares(mesh, mesh.facets) * unit[mesh.facets]).sum(axis=1) * steady.given.flux
+    return -np.bincount(steady.facet_boundary, part, len(steady.case.boundary))
 
 
 def _cells(steady: Steady, unit: np.ndarray, field: np.ndarray) -> np.ndarray:

@@ -218,6 +218,7 @@ class Body(Table):
     void: Flag = Field(False, description="true cuts the body out")
     heat_source: HeatFlow | None = Field(None, description="W in the whole body (W/m in a plane cross-section)")
     heat_density: HeatDensity | None = Field(None, description="W/m³")
+    uncertainty: Uncertainty | None = Field(None, description="of the heat source, a fraction")
     box: Box | None = None
     cylinder: Cylinder | None = None
     sphere: Sphere | None = None
@@ -242,6 +243,9 @@ class Body(Table):
             if wrong:
                 troubles.append(((key,), wrong))
                 data = {other: value for other, value in data.items() if other != key}
+        if "uncertainty" in data and not {"heat_source", "heat_density"} & set(data):
+            what = "goes with heat_source or heat_density; that of a conductivity stands with the material"
+            troubles.append((("uncertainty",), what))
         if "materials" in data and "file" not in given:
             troubles.append((("materials",), "goes with file only"))
         if "repeat" in data and "group" in given:

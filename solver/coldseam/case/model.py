@@ -54,6 +54,7 @@ from coldseam.case.values import (
     Some,
     SpaceRef,
     Temperature,
+    Uncertainty,
     checked,
 )
 from coldseam.case.wanted import Bridge, Flanking, Limit, Probe, Quantity
@@ -125,6 +126,7 @@ class Space(Table):
         None, description="m²·K/W; 0: the surface has the space's temperature"
     )
     relative_humidity: Humidity | None = Field(None, description='a fraction, or text such as "60 %"')
+    uncertainty: Uncertainty | None = Field(None, description="of the film coefficient, a fraction")
     _name: str = PrivateAttr("")
 
     @property
@@ -199,6 +201,7 @@ class Boundary(Table):
     adiabatic: Flag | None = None
     film: Film | None = Field(None, description="W/(m²·K), in place of that of the space")
     surface_resistance: ResistanceOrZero | None = Field(None, description="m²·K/W, in place of that of the space")
+    uncertainty: Uncertainty | None = Field(None, description="of its film or given flow, a fraction")
 
     @classmethod
     def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
@@ -208,6 +211,8 @@ class Boundary(Table):
             for key in ("film", "surface_resistance")
             if key in data and "space" not in data
         ]
+        if "uncertainty" in data and not {"space", "heat_flux", "heat_flow"} & set(data):
+            troubles.append((("uncertainty",), "goes with space, heat_flux or heat_flow"))
         if data.get("adiabatic") is False:
             troubles.append((("adiabatic",), "can only be true; leave it out otherwise"))
         return data, troubles
@@ -240,6 +245,7 @@ class Contact(Table):
     name: Name
     between: tuple[BodyRef, BodyRef]
     resistance: Resistance = Field(description="m²·K/W")
+    uncertainty: Uncertainty | None = Field(None, description="of the resistance, a fraction")
 
     def check(self, context: Context) -> Iterator[Trouble]:
         """Yield a fault for a joint of a body with itself."""

@@ -151,6 +151,12 @@ QUANTITIES: Mapping[str, Quantity] = MappingProxyType(
         "point transmittance": _quantity(
             "point transmittance", "W/K", {"W/K": 1.0, "mW/K": 1e-3, "BTU/(h·°F)": BTU / HOUR / FAHRENHEIT}
         ),
+        "per area": _quantity(
+            "number or length per area",
+            "1/m²",
+            {"1/m²": 1.0, "1/ft²": FOOT**-2, "m/m²": 1.0, "ft/ft²": 1.0 / FOOT},
+            {"1/m": "m/m²", "/m²": "1/m²", "/ft²": "1/ft²"},
+        ),
         "density": _quantity(
             "density",
             "kg/m³",

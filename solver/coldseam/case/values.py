@@ -267,6 +267,7 @@ Humidity = Annotated[
     float,
     Amount("ratio", at_least=0.0, at_most=1.0, hint=' (a fraction, 1 = 100 %; write 60 % as "60 %" or 0.6)'),
 ]
+PerArea = Annotated[float, Amount("per area", above=0.0)]
 Uncertainty = Annotated[float, Amount("ratio", at_least=0.0, below=1.0)]
 Vector = Annotated[tuple[float, ...], Numbers(Amount("length"))]
 Pair = Annotated[tuple[float, float], Numbers(Amount("length"), 2)]

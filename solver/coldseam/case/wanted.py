@@ -15,6 +15,7 @@ from coldseam.case.values import (
     BoundaryRef,
     BridgeRef,
     Name,
+    PerArea,
     ProbeRef,
     Size,
     Some,
@@ -54,10 +55,12 @@ class Bridge(Table):
     flanking: Annotated[tuple[Flanking, ...], Some()] | None = None
     without: Annotated[tuple[BodyRef, ...], Some()] | None = None
     count: Annotated[int, Field(strict=True, ge=1)] | None = Field(None, description="pieces, 1 if not given")
+    between: tuple[SpaceRef, SpaceRef] | None = Field(None, description="the two spaces; needed if there are more")
+    per_area: PerArea | None = Field(None, description="in the whole wall: pieces per m², or m of a linear bridge per m²")
 
     def check(self, context: Context) -> Iterator[Trouble]:
         """Yield keys that belong to the other kind, keys missing, and too few spaces."""
-        linear, point = ("basis", "flanking"), ("without", "count")
+        linear, point = ("basis", "flanking"), ("without", "count", "between")
         needed, barred = (linear, point) if self.kind == "linear" else (("without",), linear)
         yield from (((key,), f'is required for kind = "{self.kind}" and missing')
                     for key in needed if getattr(self, key) is None)  # fmt: skip
@@ -66,6 +69,8 @@ class Bridge(Table):
         spaces = context.names.get("space")
         if spaces is not None and len(spaces) < 2:
             yield (), f"a bridge lies between two spaces, and the case has {len(spaces)}"
+        if self.between is not None and self.between[0] == self.between[1]:
+            yield ("between",), "needs two different spaces"
         for position, wall in enumerate(self.flanking or ()):
             if self.basis == "both" and wall.length_external is None:
                 yield ("flanking", position, "length_external"), 'is required for basis = "both" and missing'

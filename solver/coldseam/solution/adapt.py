@@ -49,10 +49,10 @@ def wanted_sizes(mesh: Mesh, gap: np.ndarray, wanted: float) -> tuple[np.ndarray
     return h * factor, float(np.sum(factor**-d))
 
 
-def refine_near(mesh: Mesh, sizes: np.ndarray, points: np.ndarray) -> np.ndarray:
-    """Return sizes, m, (n_cells,), halved around points, m, (n, dim), and growing back with the distance."""
+def refine_near(mesh: Mesh, sizes: np.ndarray, points: np.ndarray, step: float = 0.5) -> np.ndarray:
+    """Return sizes, m, (n_cells,), ``step`` times the present ones around points, m, (n, dim), growing back from there."""
     centres = mesh.points[mesh.cells].mean(axis=1)
-    local = 0.5 * cell_sizes(mesh)[cKDTree(centres).query(points)[1]]
+    local = step * cell_sizes(mesh)[cKDTree(centres).query(points)[1]]
     distance, nearest = cKDTree(points).query(centres)
     reach = local[nearest]
     return np.minimum(sizes, reach + REGROWTH * np.maximum(distance - POINT_REACH * reach, 0.0))

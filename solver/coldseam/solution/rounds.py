@@ -36,13 +36,14 @@ from coldseam.solution.steady import Steady, solve_on
 if TYPE_CHECKING:
     from coldseam.case.model import Case
 
-DEBUG=1
 MOST_ROUNDS = 10
 POINT_LIMIT = 0.005
 """ISO 10211: largest change of a temperature factor on a finer mesh."""
 LARGEST_STEP = 12.0  # the gap is reduced by at most this factor in one round
 MARGIN = 1.3
 SMALLEST_STEP = 2.0  # and at least by this one
+POINT_STEPS = (0.25, 0.5)  # change of size at a point that moved: the more it moved the smaller
+MOST_PEAKS = 24
 MOST_READINGS = 4  # unit states whose gap is looked at in one round, the worst first
 MOST_NODES = {2: 400_000, 3: 300_000}
 CALIBRATION = {2: 0.9, 3: 0.78}
@@ -71,6 +72,14 @@ class Round:
     error: float | None
     moved: float | None
     seconds: float
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class _Restless:
+    """Places, m, (n, dim), where a watched temperature is unsettled, and the change of size wanted there."""
+
+    points: np.ndarray
+    step: float
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -203,14 +212,14 @@ def watched_points(steady: Steady) -> dict[tuple, tuple[np.ndarray, float]]:
     if steady.case.probe:
         at = np.array([probe.at for probe in steady.case.probe], dtype=float)
         cells, weights = locate(steady.mesh, at)
-        values = (steady.temperature[steady.mesh.cells[cells]] * weights).sum(axis=1)
+        values = (steady.bounded[steady.mesh.cells[cells]] * weights).sum(axis=1)
         for probe, place, value in zip(steady.case.probe, at, values, strict=True):
             watched["probe", probe.name] = (place, float(value))
     for number, boundary in enumerate(steady.case.boundary):
         if boundary.space is None:
             continue
         nodes = np.unique(steady.mesh.facets[steady.facet_boundary == number])
-        values = steady.temperature[nodes]
+        values = steady.bounded[nodes]
         for kind, pick in (("min", np.argmin(values)), ("max", np.argmax(values))):
             watched["boundary", boundary.name, kind] = (steady.mesh.points[nodes[pick]], float(values[pick]))
     return watched
@@ -224,34 +233,44 @@ def point_limit(case: Case) -> float:
 def temperature_range(steady: Steady) -> float:
     """Return the spread of the field's and the outside's temperatures, K."""
     outside = steady.state[: len(steady.given.terminals)] + steady.reference
-    low = min(float(outside.min()), float(steady.temperature.min()))
-    return max(float(outside.max()), float(steady.temperature.max())) - low
+    low = min(float(outside.min()), float(steady.bounded.min()))
+    return max(float(outside.max()), float(steady.bounded.max())) - low
 
 
-def _moves(steady: Steady, before, watched) -> tuple[float | None, list[np.ndarray]]:
-    """Return the largest relative move, and the places of points that moved too much."""
+def _moves(steady: Steady, before, watched) -> tuple[float | None, list[_Restless]]:
+    """Return the largest relative move, and the points that moved too much."""
     span = temperature_range(steady)
     if span <= 0.0:
         return 0.0, []
     if before is None:  # another mesh must show whether they move, so let it be finer at each of them
-        return None, [place[None] for place, _ in watched.values()]
+        return None, [_Restless(points=place[None], step=POINT_STEPS[1]) for place, _ in watched.values()]
     moves = {key: abs(value - before[key][1]) / span for key, (_, value) in watched.items() if key in before}
-    if DEBUG: print({k: round(v,4) for k,v in moves.items() if v>.002})
-    restless = [_near_extreme(steady, key, watched[key], move * span) for key, move in moves.items() if move > 0.5 * point_limit(steady.case)]
+    limit = point_limit(steady.case)
+    restless = [
+        _Restless(points=_candidates(steady, key, watched[key], move * span), step=float(np.clip(limit / move, *POINT_STEPS)))
+        for key, move in moves.items()
+        if move > 0.5 * limit
+    ]
     return max(moves.values(), default=0.0), restless
 
 
-def _near_extreme(steady: Steady, key: tuple, point: tuple[np.ndarray, float], move: float) -> np.ndarray:
-    """Return the places, m, (n, dim), that an unsettled extreme might still turn up at."""
+def _candidates(steady: Steady, key: tuple, point: tuple[np.ndarray, float], move: float) -> np.ndarray:
+    """Return the places, m, (n, dim), at which an unsettled extreme may turn up: a surface's peaks as high, but for the move."""
     place, value = point
     if key[0] == "probe":
         return place[None]
     number = [boundary.name for boundary in steady.case.boundary].index(key[1])
-    nodes = np.unique(steady.mesh.facets[steady.facet_boundary == number])
-    return steady.mesh.points[nodes[np.abs(steady.temperature[nodes] - value) <= move]]
+    facets = steady.mesh.facets[steady.facet_boundary == number]
+    height = steady.bounded if key[2] == "max" else -steady.bounded
+    around = np.full(steady.mesh.n_nodes, -np.inf)
+    np.maximum.at(around, facets.ravel(), np.repeat(height[facets].max(axis=1), facets.shape[1]))
+    peaks = np.unique(facets)
+    peaks = peaks[height[peaks] >= around[peaks]]
+    near = peaks[np.abs(steady.bounded[peaks] - value) <= move]
+    return steady.mesh.points[near[np.argsort(-height[near])][:MOST_PEAKS]]
 
 
-def _next_sizes(steady: Steady, flows, error: float | None, restless: list[np.ndarray]) -> np.ndarray:
+def _next_sizes(steady: Steady, flows, error: float | None, restless: list[_Restless]) -> np.ndarray:
     """Return element sizes (m, per cell) for the next mesh."""
     mesh = steady.mesh
     if steady.bounds is None:
@@ -261,7 +280,9 @@ def _next_sizes(steady: Steady, flows, error: float | None, restless: list[np.nd
     late = error is not None and error > 1.0
     factor = np.clip(MARGIN * (error or 0.0), SMALLEST_STEP if late else 1.0, LARGEST_STEP)
     sizes, _ = wanted_sizes(mesh, gap, float(gap.sum()) / factor)
-    return refine_near(mesh, sizes, np.vstack(restless)) if restless else sizes
+    for points in restless:
+        sizes = refine_near(mesh, sizes, points.points, points.step)
+    return sizes
 
 
 def _gap_indicator(steady: Steady, flows) -> np.ndarray:

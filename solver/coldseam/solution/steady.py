@@ -69,6 +69,23 @@ class Steady:
     bounds: Bounds | None = None
 
     @property
+    def possible(self) -> tuple[float, float]:
+        """Lowest and highest temperature that the causes permit, °C: those outside, where no heat is released or drawn."""
+        outside = self.state[: len(self.given.terminals)] + self.reference
+        heat = np.concatenate([self.given.source, self.given.flux])
+        low = -np.inf if np.any(heat < 0) else float(outside.min())
+        return low, np.inf if np.any(heat > 0) else float(outside.max())
+
+    @property
+    def bounded(self) -> np.ndarray:
+        """The temperature as it is read, °C, (n_nodes,): held within what is possible.
+
+        Badly shaped cells can lift a node of a coarse mesh beyond it. The exact field keeps to it (maximum
+        principle), so holding a node there only brings it nearer; heat flows come from ``temperature``.
+        """
+        return np.clip(self.temperature, *self.possible)
+
+    @property
     def closure(self) -> float:
         """Sum of all heat flows, W (2D: W/m); zero but for the solver's tolerance."""
         return float(self.boundary_flow.sum() + self.source_flow)
