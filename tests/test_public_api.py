@@ -23,7 +23,7 @@ UNIT = re.compile(
     r"|°C|W/|J/|kg/|m²|m³|[Uu]nit|[Ff]raction|[Ff]actor|[Ii]nd(ex|ices)|[Nn]umber|[Nn]odes|[Pp]osition|[Mm]ask|[Tt]rue"
 )
 WITHOUT_UNIT = {"cells", "facets", "edges", "links", "cell_body", "facet_cell", "facet_patch", "facet_boundary", "mask"}
-SHAPE = re.compile(r"\([\w .*+-]+(?: \[\+ 1\])?,[\w .,*+-]*\)")
+SHAPE = re.compile(r"\([\w .*+-]+,[\w .,*+-]*\)")
 
 
 def module_names() -> list[str]:
@@ -72,7 +72,7 @@ def docstring_fault(thing: object) -> str | None:
     text = thing.__doc__ or ""
     if not text.strip() or text.startswith(f"{getattr(thing, '__name__', '')}("):
         return "has no docstring"  # dataclasses without one get their signature as docstring
-    if arrays(thing) and not SHAPE.search(text):
+    if arrays(thing) and not SHAPE.search(text.replace(" [+ 1]", "")):
         return "takes arrays and names no shape, such as (n_nodes, dim)"
     if arrays(thing) - WITHOUT_UNIT and not UNIT.search(text):
         return "takes arrays and names no unit"

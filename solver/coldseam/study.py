@@ -11,6 +11,7 @@ import numpy as np
 from coldseam.answers.bridges import BridgeAnswers, require_bridges, solve_bridges
 from coldseam.answers.build import build_answers
 from coldseam.answers.limits import require_answerable
+from coldseam.answers.maps import surface_maps
 from coldseam.answers.superpose import superposed
 from coldseam.answers.types import Answers
 from coldseam.case.model import Case
@@ -92,6 +93,7 @@ class Result:
                 "temperature": steady.bounded,
                 "cell_flux": cell_flux(steady),
                 "answers": self.answers.as_dict(),
+                "maps": surface_maps(steady, self.answers.bridges, self.answers.enclosures),
             }
         )
 

@@ -158,7 +158,7 @@ def accuracy_answer(solution: Solution) -> dict:
 def warnings(solution: Solution) -> tuple[str, ...]:
     """Return everything a user must know beside the numbers."""
     steady = solution.steady
-    found = list(getattr(steady.case, "warnings", ()))
+    found = [*steady.case.warnings, *steady.mesh.quality.get("remarks", ())]
     if steady.given.clashes:
         found.append(CLASH)
     asked = steady.case.model.accuracy

@@ -76,6 +76,9 @@ def _plane_jobs(view: View):
         yield "heat_flow", lambda folder, name: pictures2d.draw_heat_flow(view, section, folder, name)
     for k, space in enumerate(view.spaces):
         yield f"surface_{k + 1}", lambda folder, name, space=space: profiles.draw_surface(view, space, folder, name)
+    for field in view.maps:
+        name = f"{field.key}_{view.spaces.index(field.space) + 1}"
+        yield name, lambda folder, name, m=field: profiles.draw_map(view, m, folder, name)
 
 
 def _section_jobs(view: View):
@@ -114,6 +117,10 @@ def _space_jobs(view: View):
                 f"surface_{k + 1}_close",
                 lambda f, n, s=space: pictures3d.draw_surface(view, f, n, space=s, close=True),
             )
+    for field in view.maps:
+        name = f"{field.key}_{view.spaces.index(field.space) + 1}"
+        yield name, lambda f, n, m=field: pictures3d.draw_map(view, m, f, n)
+        yield f"{name}_close", lambda f, n, m=field: pictures3d.draw_map(view, m, f, n, close=True)
 
 
 # ---------------------------------------------------------------------------------------- parent

@@ -196,8 +196,8 @@ def colour_bar(page: Page, low: float, high: float, levels: np.ndarray, unit: st
     axis.set_xticks([])
     tall = axis.get_position().height * page.figure.get_size_inches()[1]
     every = max(1, int(np.ceil(len(levels) * 0.15 / tall))) if len(levels) else 1
-    ticks = levels[::every] if len(levels) else np.array([low])
-    axis.set_yticks(ticks, [style.degrees(value, places) for value in ticks])
+    ticks = levels[::every] if len(levels) else np.unique([low, high])
+    axis.set_yticks(ticks, [style.amount(value, places, unit) for value in ticks])
     axis.yaxis.tick_right()
     axis.tick_params(length=2.5)
     for level in levels:

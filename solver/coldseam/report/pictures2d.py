@@ -16,6 +16,8 @@ from coldseam.report.labels import Wanted, boxes, set_labels
 from coldseam.report.plane import Section, chain, isolines, outline_edges, thicknesses
 from coldseam.report.view import Picture, Table, View, boundary_areas
 
+EVEN = 0.02
+"""Part of the whole model's temperature range below which a section counts as even."""
 MOST_NAMES = 24
 """Names in a legend; the table beside the picture has all."""
 
@@ -47,10 +49,13 @@ def draw_model(view: View, section: Section, folder: Path, name: str, title: str
 def draw_temperature(view: View, section: Section, folder: Path, name: str, title: str = "Temperature") -> Picture:
     """Draw the temperature of a section with isotherms at round values."""
     low, high = float(section.temperature.min()), float(section.temperature.max())
-    levels = style.round_levels(low, high)
+    coldest, warmest = float(view.temperature.min()), float(view.temperature.max())
+    even = high - low < EVEN * (warmest - coldest)  # isotherms would trace the mesh; the scale is the whole model's
+    levels = np.empty(0) if even else style.round_levels(low, high)
     places = style.decimals(levels) if len(levels) else 2
     read = (f"From {style.degrees(low, max(1, places))} to {style.degrees(high, max(1, places))} in this section"
             f"{'' if len(levels) else '; too even for isotherms'}.",)  # fmt: skip
+    low, high = (coldest, warmest) if even else (low, high)
     with style.applied():
         made = _open(section, view, title, bar=True, notes=read + _thin_note(view, section))
         _shade(made.ax, section, low, high)
@@ -63,8 +68,8 @@ def draw_temperature(view: View, section: Section, folder: Path, name: str, titl
         set_labels(made.ax, wanted, spare_small=True)
         pages.colour_bar(made, low, high, levels)
         file, vector = pages.save(made, folder, name, vector=view.mesh.dim == 2)
-    alt = f"{title}{_where(section)}, {style.degrees(low)} to {style.degrees(high)}, "
-    alt += f"isotherms at {', '.join(style.degrees(v, places) for v in levels) or 'no value'}."
+    alt = f"{title}{_where(section)}. {read[0]} "
+    alt += f"Isotherms at {', '.join(style.degrees(v, places) for v in levels) or 'no value'}."
     return Picture(file=file, vector=vector, title=title + _where(section), alt=alt, table=temperature_table(view))
 
 

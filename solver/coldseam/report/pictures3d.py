@@ -11,6 +11,7 @@ from pathlib import Path
 
 import numpy as np
 
+from coldseam.answers.maps import SurfaceMap
 from coldseam.report import page as pages
 from coldseam.report import scene as scenes
 from coldseam.report import style
@@ -19,6 +20,7 @@ from coldseam.report.pictures2d import _counted, _lines, model_table, temperatur
 from coldseam.report.plane import AXES, Section, cut, isolines
 from coldseam.report.view import Picture, View, boundary_areas
 
+EVEN = 0.02
 CORNER_VIEW = np.array([0.62, -0.70, 0.50])
 
 
@@ -85,50 +87,83 @@ def draw_surface(
 
     With ``close`` only the part where the isotherms crowd is shown, larger; None if they don't crowd.
     """
-    mesh = view.mesh
-    rows = np.arange(len(mesh.facets)) if space is None else np.flatnonzero(view.faces_space(space))
-    facets = mesh.facets[rows]
-    nodes = np.unique(facets)
-    low, high = float(view.temperature[nodes].min()), float(view.temperature[nodes].max())
-    levels = style.round_levels(low, high)
-    places = style.decimals(levels) if len(levels) else 2
-    toward = _direction(behind) if space is None else _from_space(view, rows)
-    window = _crowded(view, facets, toward, levels) if close else None
-    if close and window is None:
-        return None
-    seen = scenes.paint(mesh.points, facets, toward, values=view.temperature, span=(low, max(high, low + 1e-9)),
-                        front_only=space is not None, window=window)  # fmt: skip
     title = "Surface temperature" + (", from the opposite corner" if behind else "")
     if space is not None:
-        title = f"Surface temperature, side of {style.shortened(space)}" + (", close-up" if close else "")
-    read = f"From {style.degrees(low, max(1, places))} to {style.degrees(high, max(1, places))}."
-    coldest = mesh.points[nodes[np.argmin(view.temperature[nodes])]]
-    marked = space is not None and bool(seen.visible(coldest[None], 0.01 * mesh.size)[0])
-    with style.applied():
-        notes = (read + (" The white-edged triangle marks the lowest." if marked else ""), _eye_note(seen))
-        made = _open(view, seen, title, bar=True, notes=notes)
-        _edges(made.ax, view, seen, rows)
-        _isotherms(made.ax, view, seen, facets, (low, high), levels, places)
-        if marked:
-            made.ax.plot(
-                *seen.place(coldest), "v", color=style.INK, markeredgecolor=style.PAPER, markersize=7, zorder=8
-            )
-        pages.colour_bar(made, low, high, levels)
-        file, _ = pages.save(made, folder, name, vector=False)
-    return Picture(file=file, title=title, alt=f"{title}. {read}", table=temperature_table(view))
+        title = f"Surface temperature, side of {style.shortened(space)}"
+    shown = _Shown(values=view.temperature, unit="°C", title=title, mark="lowest" if space is not None else "")
+    rows = np.arange(len(view.mesh.facets)) if space is None else np.flatnonzero(view.faces_space(space))
+    toward = _direction(behind) if space is None else _from_space(view, rows)
+    return _draw_field(view, shown, rows, toward, folder, name, front_only=space is not None, close=close)
+
+
+def draw_map(view: View, field: SurfaceMap, folder: Path, name: str, *, close: bool = False) -> Picture | None:
+    """Draw a field on the side of a space as seen from there; ``close`` as in :func:`draw_surface`."""
+    title = f"{field.title}, side of {style.shortened(field.space)}"
+    shown = _Shown(values=field.values, unit=field.unit, title=title, mark="highest", note=field.note)
+    rows = np.flatnonzero(view.faces_space(field.space))
+    rows = rows[np.isfinite(field.values[view.mesh.facets[rows]]).all(axis=1)]
+    return _draw_field(view, shown, rows, _from_space(view, rows), folder, name, front_only=True, close=close)
 
 
 # ---------------------------------------------------------------------------------------- parts
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class _Shown:
+    """A field at the nodes, its unit, the picture's title, the extreme that is marked ("" for none), a note."""
+
+    values: np.ndarray
+    unit: str
+    title: str
+    mark: str
+    note: str = ""
+
+
+def _draw_field(
+    view: View, shown: _Shown, rows: np.ndarray, toward, folder: Path, name: str, *, front_only: bool, close: bool
+) -> Picture | None:
+    mesh, values = view.mesh, shown.values
+    facets = mesh.facets[rows]
+    nodes = np.unique(facets)
+    low, high = float(values[nodes].min()), float(values[nodes].max())
+    levels = style.round_levels(low, high)
+    levels = levels[levels > low + EVEN * (high - low)]  # a line just above the lowest value wanders over the plain part
+    places = style.decimals(levels) if len(levels) else 2
+    window = _crowded(view, facets, values, toward, levels) if close else None
+    if close and window is None:
+        return None
+    filled = np.where(np.isfinite(values), values, low)
+    seen = scenes.paint(mesh.points, facets, toward, values=filled, span=(low, max(high, low + 1e-9)),
+                        front_only=front_only, window=window)  # fmt: skip
+    ends = [style.amount(value, max(1, places), shown.unit) for value in (low, high)]
+    read = f"From {ends[0]} to {ends[1]}."
+    extreme = mesh.points[nodes[(np.argmax if shown.mark == "highest" else np.argmin)(values[nodes])]]
+    marked = bool(shown.mark) and bool(seen.visible(extreme[None], 0.01 * mesh.size)[0])
+    title = shown.title + (", close-up" if close else "")
+    with style.applied():
+        mark = f" The white-edged triangle marks the {shown.mark}." if marked else ""
+        notes = (read + mark, *([shown.note] if shown.note else []), _eye_note(seen))
+        made = _open(view, seen, title, bar=True, notes=notes)
+        _edges(made.ax, view, seen, rows)
+        _isolines(made.ax, view, seen, facets, filled, (low, high), levels, places, shown.unit)
+        if marked:
+            made.ax.plot(
+                *seen.place(extreme), "v", color=style.INK, markeredgecolor=style.PAPER, markersize=7, zorder=8
+            )
+        pages.colour_bar(made, low, high, levels, shown.unit)
+        file, _ = pages.save(made, folder, name, vector=False)
+    return Picture(file=file, title=title, alt=f"{title}. {read} {shown.note}".strip(), table=temperature_table(view))
+
 
 
 def _direction(behind: bool) -> np.ndarray:
     return -CORNER_VIEW if behind else CORNER_VIEW
 
 
-def _crowded(view: View, facets, toward, levels) -> tuple[np.ndarray, np.ndarray] | None:
+def _crowded(view: View, facets, values, toward, levels) -> tuple[np.ndarray, np.ndarray] | None:
     """Return the part of the picture plane (m) where nine tenths of the isotherms are, if that is small."""
     right, up, _ = scenes.frame(toward)
-    lines = [isolines(view.mesh.points, facets, view.temperature, level)[0] for level in levels]
+    lines = [isolines(view.mesh.points, facets, values, level)[0] for level in levels]
     if not lines or sum(map(len, lines)) == 0:
         return None
     middle = np.concatenate(lines).mean(axis=1)
@@ -136,8 +171,8 @@ def _crowded(view: View, facets, toward, levels) -> tuple[np.ndarray, np.ndarray
     whole = np.stack(
         [view.mesh.points[facets].reshape(-1, 3) @ right, view.mesh.points[facets].reshape(-1, 3) @ up], axis=1
     )
-    coldest = np.unique(facets)[np.argmin(view.temperature[np.unique(facets)])]
-    warmest = np.unique(facets)[np.argmax(view.temperature[np.unique(facets)])]
+    nodes = np.unique(facets)
+    coldest, warmest = nodes[np.argmin(values[nodes])], nodes[np.argmax(values[nodes])]
     ends = view.mesh.points[[coldest, warmest]] @ np.stack([right, up], axis=1)
     # the extreme that stands among the isotherms is the one to look at (a bolt may be the coldest or the warmest)
     near = [np.quantile(np.linalg.norm(flat - end, axis=1), 0.02) for end in ends]
@@ -251,17 +286,17 @@ def _visible_lines(ax, seen, segments: np.ndarray, colour: str, width: float, sl
     return pieces
 
 
-def _isotherms(ax, view: View, seen, facets, span, levels, places: int) -> None:
+def _isolines(ax, view: View, seen, facets, values, span, levels, places: int, unit: str) -> None:
     mesh = view.mesh
     wanted = []
     for level in levels:
-        segments, cell = isolines(mesh.points, facets, view.temperature, level)
+        segments, cell = isolines(mesh.points, facets, values, level)
         corner = mesh.points[facets[cell]]
         normal = np.cross(corner[:, 1] - corner[:, 0], corner[:, 2] - corner[:, 0])
         segments = segments[normal @ seen.toward > 1e-9 * np.linalg.norm(normal, axis=1)]
         colour = style.contrast((level - span[0]) / (span[1] - span[0]))
         pieces = _visible_lines(ax, seen, segments, colour, style.THIN, 0.004 * mesh.size)
-        wanted.append(Wanted(text=style.degrees(level, places), points=seen.place(pieces.mean(axis=1))))
+        wanted.append(Wanted(text=style.amount(level, places, unit), points=seen.place(pieces.mean(axis=1))))
     set_labels(ax, wanted, spare_small=True)
 
 

@@ -165,10 +165,19 @@ def degrees(value: float, places: int = 1) -> str:
     >>> degrees(-12.345), degrees(-0.01), degrees(5, 0)
     ('−12.3 °C', '0.0 °C', '5 °C')
     """
+    return amount(value, places, "°C")
+
+
+def amount(value: float, places: int, unit: str) -> str:
+    """Return a value with so many decimals and its unit.
+
+    >>> amount(-3.456, 1, "W/m²"), amount(99.6, 0, "%")
+    ('−3.5 W/m²', '100 %')
+    """
     text = f"{value:.{places}f}"
     if float(text) == 0:
         text = text.lstrip("-")
-    return text.replace("-", "−") + " °C"
+    return f"{text.replace('-', '−')} {unit}"
 
 
 def number(value: float, digits: int = 3) -> str:

@@ -18,6 +18,11 @@ from coldseam.report.view import View, boundary_areas
 WITHOUT_ERROR = 4
 """Significant digits of a number whose error is not known."""
 
+SMALL_SHARE = 0.001
+"""Share of a heat flow below which a term is left to the tables."""
+MOST_REACTIONS = 5
+_TERMS = {"parts": "part", "by_body": "body", "by_film": "film", "by_sheet": "sheet", "by_contact": "contact"}
+
 Answers = Mapping[str, Any]
 
 
@@ -119,8 +124,10 @@ def summary(answers: Answers, files: Sequence[str] = ()) -> str:
         _coupling(answers),
         _trust(answers),
         _surfaces(answers),
+        _moisture(answers),
         _probes(answers),
         _bridges(answers),
+        _losses(answers),
         _limits(answers),
         _listed("Warnings", answers.get("warnings", ())),
         _listed("Files", files),
@@ -217,6 +224,53 @@ def _surfaces(answers: Answers) -> list[str]:
         for extremes, name in found
     ]
     return ["Coldest place of each surface", *_table(rows, right=(1,))] if rows else []
+
+
+def _moisture(answers: Answers) -> list[str]:
+    """What each surface does with the humidity of its space, at its coldest place."""
+    rows = []
+    for name, entry in answers.get("surfaces", {}).items():
+        found, factor = entry.get("moisture"), (entry.get("f_Rsi") or {}).get("value")
+        if found:
+            rows.append((name, "" if factor is None else f"f_Rsi {factor:.3f}", _verdict(found)))
+    return ["Moisture at the coldest place of each surface", *_table(rows)] if rows else []
+
+
+def _verdict(found: Answers) -> str:
+    """Return in words what the air does at a surface, and how far that is from happening."""
+    margin = found["margin_condensation_kelvin"]
+    over = found["saturation_over"]
+    point = f"{'frost' if over == 'ice' else 'dew'} point {temperature(found['saturation'])}"
+    if margin < 0:
+        does = "frosts" if over == "ice" else "sweats"
+        return f"{does}: {-margin:.1f} K below the {point}, on {100 * found['share_condensation']:.2g} % of the area"
+    dry = f"{100 * found['surface_humidity']:.0f} % humidity, {margin:.1f} K above the {point}"
+    if found["margin_mould"] < 0:
+        return f"{dry}; mould can grow on {100 * found['share_mould']:.2g} % of the area"
+    return dry
+
+
+def _losses(answers: Answers) -> list[str]:
+    """Where the heat of the space that gives most goes, and what 1 % more of each input does to it."""
+    flows = {name: entry["heat_flow"] for name, entry in answers.get("losses", {}).items()}
+    if not flows or not max(flows.values(), key=abs):
+        return []
+    space = max(flows, key=lambda name: flows[name])
+    entry, unit = answers["losses"][space], flow_unit(answers)
+    kinds = ("parts", "by_body", "by_film", "by_sheet", "by_contact")
+    terms = [(kind, name, part) for kind in kinds for name, part in (entry.get(kind) or {}).items()]
+    rows = [
+        (_TERMS[kind], name, f"{number(part['heat_flow'], 3)} {unit}", f"{100 * part['share']:.1f} %")
+        for kind, name, part in sorted(terms, key=lambda term: (kinds.index(term[0]) > 0, -abs(term[2]["heat_flow"])))
+        if part["share"] is not None and abs(part["share"]) >= SMALL_SHARE
+    ]
+    reacts = answers.get("sensitivities", {}).get(space, {}).get("ranked", ())
+    words = [
+        f"{r['input']} {100 * r['relative'] * r['change']:+.2g} %" + (f" (± {100 * r['change']:.2g} %)" if r["change_stated"] else "")
+        for r in reacts[:MOST_REACTIONS] if r["relative"] is not None
+    ]
+    told = [f"What 1 % more does to it (stated uncertainties in full): {', '.join(words)}"] if words else []
+    return [f"Where the heat from space {space} goes", *_table(rows, right=(2, 3)), *told] if rows else []
 
 
 def _probes(answers: Answers) -> list[str]:

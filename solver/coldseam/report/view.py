@@ -10,6 +10,8 @@ from dataclasses import dataclass, field, replace
 
 import numpy as np
 
+from coldseam.answers.maps import SurfaceMap
+from coldseam.mesh.measure import facet_measure
 from coldseam.mesh.types import Mesh
 
 BOUNDARY_KINDS = ("space", "temperature", "heat_flux", "heat_flow", "adiabatic")
@@ -37,6 +39,8 @@ class View:
         Probe name -> position, m, shape (dim,).
     answers
         The content of answers.json.
+    maps
+        Fields on the surfaces beside the temperature.
     """
 
     mesh: Mesh
@@ -49,6 +53,7 @@ class View:
     title: str = ""
     probes: dict[str, np.ndarray] = field(default_factory=dict)
     answers: dict = field(default_factory=dict)
+    maps: tuple[SurfaceMap, ...] = ()
 
     def __post_init__(self):
         if len(self.facet_boundary) != len(self.mesh.facets):
@@ -143,21 +148,9 @@ def boundary_kind(entry) -> str:
 
 def without_fields(view: View) -> View:
     """Return the same view without temperature and flux."""
-    return replace(view, temperature=None, cell_flux=None)
-
-
-def facet_area(mesh: Mesh) -> np.ndarray:
-    """Return the area of every exterior facet, shape (n_facets,).
-
-    m² in 3D, m² per metre of depth in a cross-section, m² of the whole turn if axisymmetric.
-    """
-    corner = mesh.points[mesh.facets]
-    if mesh.dim == 3:
-        return 0.5 * np.linalg.norm(np.cross(corner[:, 1] - corner[:, 0], corner[:, 2] - corner[:, 0]), axis=1)
-    length = np.linalg.norm(corner[:, 1] - corner[:, 0], axis=1)
-    return 2 * np.pi * corner[:, :, 0].mean(axis=1) * length if mesh.axisymmetric else length
+    return replace(view, temperature=None, cell_flux=None, maps=())
 
 
 def boundary_areas(view: View) -> np.ndarray:
-    """Return the area of every boundary, in the unit of :func:`facet_area`, shape (n_boundaries,)."""
-    return np.bincount(view.facet_boundary, weights=facet_area(view.mesh), minlength=len(view.boundary_names))
+    """Return the area of every boundary, m² (m² per metre of depth in a cross-section), shape (n_boundaries,)."""
+    return np.bincount(view.facet_boundary, weights=facet_measure(view.mesh), minlength=len(view.boundary_names))

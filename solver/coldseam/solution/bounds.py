@@ -74,7 +74,9 @@ class Bounds:
         return float(middle - half), float(middle + half)
 
 
-def prove(mesh: Mesh, given: Conditions, weights: np.ndarray, nodes: Response) -> Bounds:
+def prove(
+    mesh: Mesh, given: Conditions, weights: np.ndarray, nodes: Response, tolerance: float = FACET_TOLERANCE
+) -> Bounds:
     """Solve the facet network and return the bounds of the heat flows.
 
     Parameters
@@ -85,6 +87,8 @@ def prove(mesh: Mesh, given: Conditions, weights: np.ndarray, nodes: Response) -
         Plain cell weights, (3 or 6, n_cells).
     nodes
         The node network's solution.
+    tolerance
+        Missing energy of the facet fields as a part of each field's own; the lower bound is lowered by ten times that.
 
     Raises
     ------
@@ -92,8 +96,8 @@ def prove(mesh: Mesh, given: Conditions, weights: np.ndarray, nodes: Response) -
         The facet solve failed, or its flux fails the check of :func:`check_gap`.
     """
     system = facet_system(mesh, given, weights)
-    solver = _facet_solver(system, nodes, mesh.dim)
-    response = respond(system.network, mesh.dim, FACET_TOLERANCE, solver, lambda: system.from_nodes @ nodes.fields)
+    solver = _facet_solver(system, nodes, mesh.dim, given.uneven)
+    response = respond(system.network, mesh.dim, tolerance, solver, lambda: system.from_nodes @ nodes.fields)
     return bounds_of(mesh, given, system, nodes, response)
 
 
@@ -113,7 +117,7 @@ def bounds_of(mesh: Mesh, given: Conditions, system: FacetSystem, nodes: Respons
         high=high + np.diag(margin), low=low - np.diag(margin), middle=middle, facets=system, response=response)
 
 
-def _facet_solver(system: FacetSystem, nodes: Response, dim: int):
+def _facet_solver(system: FacetSystem, nodes: Response, dim: int, uneven: bool):
     free = system.network.free
     matrix = system.network.matrix[free][:, free]
     if matrix.shape[0] <= 2 * DIRECT_LIMIT[dim]:
@@ -121,7 +125,7 @@ def _facet_solver(system: FacetSystem, nodes: Response, dim: int):
     hierarchy = nodes.hierarchy
     free_nodes = nodes.network.free
     if hierarchy is None:
-        hierarchy = node_hierarchy(nodes.network.matrix[free_nodes][:, free_nodes])
+        hierarchy = node_hierarchy(nodes.network.matrix[free_nodes][:, free_nodes], uneven)
     matrix = _regular(matrix)
     return MultigridSolver(matrix, facet_hierarchy(matrix, system.from_nodes[free][:, free_nodes], hierarchy))
 

@@ -168,14 +168,25 @@ class MultigridSolver:
         )
 
 
-def node_hierarchy(matrix: sparse.csr_array):
-    """Return a smoothed-aggregation hierarchy for a node matrix (Vaněk, Mandel, Brezina 1996)."""
+def node_hierarchy(matrix: sparse.csr_array, uneven: bool = False):
+    """Return a smoothed-aggregation hierarchy for a node matrix (Vaněk, Mandel, Brezina 1996).
+
+    Parameters
+    ----------
+    matrix
+        Free nodes, (n, n).
+    uneven
+        Metal beside insulation, or skins: what belongs together is then found by how errors smooth out
+        (Olson, Schroder, Tuminaro 2010, SIAM J. Sci. Comput. 32, 3041), which costs some sweeps of set-up and saves
+        a third to a half of the iterations. Even matrices only drop their weakest couplings.
+    """
     import pyamg
 
+    strength = ("evolution", {"k": 2, "epsilon": 4.0, "proj_type": "l2"}) if uneven else ("symmetric", {"theta": 0.02})
     return pyamg.smoothed_aggregation_solver(
         _narrow(matrix),
-        strength=("symmetric", {"theta": 0.0}),
-        smooth=("jacobi", {"omega": 4.0 / 3.0, "weighting": "local"}),
+        strength=strength,
+        smooth=("jacobi", {"omega": 4.0 / 3.0, "weighting": "local", "filter_entries": True}),
         presmoother=("gauss_seidel", {"sweep": "forward"}),
         postsmoother=("gauss_seidel", {"sweep": "backward"}),
         improve_candidates=None,

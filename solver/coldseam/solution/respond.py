@@ -39,7 +39,12 @@ class Response:
 
 
 def respond(
-    network: Network, dim: int, tolerance: float, solver=None, guess: Callable[[], np.ndarray | None] | None = None
+    network: Network,
+    dim: int,
+    tolerance: float,
+    solver=None,
+    guess: Callable[[], np.ndarray | None] | None = None,
+    uneven: bool = False,
 ) -> Response:
     """Solve a network for its unit fields.
 
@@ -56,6 +61,8 @@ def respond(
         Missing energy as a part of each field's own.
     solver
         An object with ``solve`` for the free sites; None chooses one.
+    uneven
+        Whether conductivities differ widely; see :func:`coldseam.solution.linear.node_hierarchy`.
     guess
         Called for unit fields to start from, (n, n_terminals [+ 1]), when the solver iterates; None for no guess.
     """
@@ -65,7 +72,7 @@ def respond(
     asked = [*range(p - 1), *range(p, drive.shape[1])]
     fields = network.start()
     if solver is None:
-        solver = choose_solver(network.matrix[free][:, free], dim)
+        solver = choose_solver(network.matrix[free][:, free], dim, uneven)
     if asked:
         start = guess() if guess and solver.iterative else None
         if start is not None and start.shape == fields.shape:
@@ -91,8 +98,8 @@ def respond(
     )
 
 
-def choose_solver(matrix: sparse.csr_array, dim: int):
+def choose_solver(matrix: sparse.csr_array, dim: int, uneven: bool = False):
     """Return a direct solver for small systems, else multigrid conjugate gradients."""
     if matrix.shape[0] <= DIRECT_LIMIT[dim]:
         return DirectSolver(matrix)
-    return MultigridSolver(matrix, node_hierarchy(matrix))
+    return MultigridSolver(matrix, node_hierarchy(matrix, uneven))

@@ -48,6 +48,7 @@ MOST_READINGS = 4  # unit states whose gap is looked at in one round, the worst 
 MOST_NODES = {2: 400_000, 3: 300_000}
 CALIBRATION = {2: 0.9, 3: 0.78}
 """Size to ask of the mesher for a wanted mean edge; corrected by what each round's mesh turned out to need."""
+PROOF_TOLERANCE = 1e-5  # of the accuracy: keeps what the proof's own iteration leaves open far below it
 EXACT = 1e-6  # a relative gap below this: the field is linear, a finer mesh changes nothing
 
 
@@ -166,7 +167,9 @@ def _proven(case: Case, mesh: Mesh, before: Steady | None, log) -> Steady:
     if steady.given.clashes:
         return steady
     log("solve", "proving the heat flows")
-    return dataclasses.replace(steady, bounds=prove(steady.mesh, steady.given, steady.weights, steady.response))
+    tolerance = PROOF_TOLERANCE * case.model.accuracy
+    bounds = prove(steady.mesh, steady.given, steady.weights, steady.response, tolerance)
+    return dataclasses.replace(steady, bounds=bounds)
 
 
 def _flows(steady: Steady) -> list[tuple[Interval, np.ndarray]]:
@@ -249,7 +252,7 @@ def _moves(steady: Steady, before, watched) -> tuple[float | None, list[_Restles
     restless = [
         _Restless(points=_candidates(steady, key, watched[key], move * span), step=float(np.clip(limit / move, *POINT_STEPS)))
         for key, move in moves.items()
-        if move > 0.5 * limit
+        if move > limit
     ]
     return max(moves.values(), default=0.0), restless
 

@@ -127,7 +127,8 @@ def solve_on(case: Case, mesh: Mesh, before: Steady | None = None) -> Steady:
     operator, weights = node_operator(mesh, given)
     network = node_network(mesh, given, operator)
     require_temperatures(mesh, network)
-    response = respond(network, mesh.dim, NODE_TOLERANCE, guess=_from(before, mesh) if before else None)
+    guess = _from(before, mesh) if before else None
+    response = respond(network, mesh.dim, NODE_TOLERANCE, guess=guess, uneven=given.uneven)
 
     temperatures = np.array([terminal.temperature for terminal in given.terminals])
     reference = 0.5 * float(temperatures.min() + temperatures.max())

@@ -22,6 +22,10 @@ if TYPE_CHECKING:
     from coldseam.case.model import Case
 
 
+UNEVEN = 30.0
+"""Ratio of conductivities from which they are called uneven."""
+
+
 @dataclass(frozen=True, kw_only=True)
 class Terminal:
     """One outside point of the heat network.
@@ -80,6 +84,11 @@ class Conditions:
     sheet_conductance: np.ndarray
     link_conductance: np.ndarray
     clashes: tuple[tuple[int, int], ...]
+
+    @property
+    def uneven(self) -> bool:
+        """Whether conductivities differ so widely that it matters to an iteration."""
+        return len(self.sheet_facets) > 0 or bool(self.conductivity.max() > UNEVEN * self.conductivity.min())
 
     @property
     def has_sources(self) -> bool:
