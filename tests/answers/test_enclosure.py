@@ -7,6 +7,7 @@ import math
 import pytest
 
 from coldseam.answers.enclosure import enclosures
+from coldseam.answers.limits import limits
 from coldseam.case import read
 from coldseam.geometry.mesher import open_geometry
 from coldseam.solution.steady import solve_on
@@ -90,6 +91,17 @@ def test_areas_and_k(furnace):
     assert entry["within_ATP_limit"] == {"IR": False, "IN": False}
     assert entry["closed_faces"] == ["+x", "+y", "+z"]
     assert "part of a box" in entry["remarks"][0]
+
+
+def test_k_has_limits(furnace):
+    k = furnace.enclosures["walls"]["K"]
+    text = '\n[[limit]]\nname = "K"\nquantity = { body = "walls", K = true }\nat_most = '
+    found = {met: limits(read.loads(f"{FURNACE}{text}{bound * k}"), furnace)["K"] for met, bound in BOUNDS}
+    assert all(entry["met"] == met and entry["unit"] == "W/(m²·K)" for met, entry in found.items())
+    assert found[True]["low"] <= k <= found[True]["high"]
+
+
+BOUNDS = ((True, 1.1), (False, 0.9))
 
 
 def test_edges_and_corners_share(furnace):

@@ -50,7 +50,7 @@ def test_a_limit_inside_the_interval_is_undecided(tee, texts):
     bound = -0.5 * (entry.heat_flow + entry.heat_flow_low)
     found = limited(texts, "tee", tee, 'space = "outside", heat_flow = true', f"at_most = {bound!r}")
     assert (found["met"], found["undecided"]) == (False, True) and found["margin"] > 0
-    assert limit_warnings({"it": found})[0].startswith('limit "it" is undecided')
+    assert limit_warnings(read.loads(texts["tee"]), {"it": found})[0].startswith('limit "it" is undecided')
 
 
 @pytest.mark.parametrize(
@@ -93,6 +93,15 @@ def test_bridges_have_limits(corner, pin, texts):
 def test_limits_that_have_no_answer_are_refused(texts, request, name, quantity, what):
     with pytest.raises(CaseError, match=what):
         limited(texts, name, request.getfixturevalue(name), quantity, "at_most = 0.5")
+
+
+def test_touch_limits_carry_their_caution(texts):
+    text = texts["tee"] + '\n[[limit]]\nname = "hand"\nquantity = { boundary = "facade", temperature = "min" }\nat_least = -5\n'
+    assert limit_warnings(read.loads(text), {}) == []
+    (caution,) = limit_warnings(read.loads(f"{text}touch = true\n"), {})
+    assert "hand" in caution and "ISO 13732" in caution and "local codes" in caution
+    with pytest.raises(CaseError, match="goes with the temperature"):
+        read.loads(f"{text}touch = true\n".replace('boundary = "facade", temperature = "min"', 'space = "left", heat_flow = true'))
 
 
 def test_limits_of_a_run_follow_other_temperatures(texts, tee):

@@ -74,7 +74,7 @@ def build_answers(solution: Solution, bridges: BridgeAnswers | None = None) -> A
     bridges = bridges or BridgeAnswers()
     answers = _plain_answers(solution, bridges)
     verdicts = limits(solution.steady.case, answers)
-    told = (*answers.warnings, *bridges.warnings, *limit_warnings(verdicts))
+    told = (*answers.warnings, *bridges.warnings, *limit_warnings(solution.steady.case, verdicts))
     return dataclasses.replace(answers, limits=verdicts, warnings=told)
 
 

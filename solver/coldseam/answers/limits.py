@@ -25,6 +25,7 @@ FLOW_UNITS = {
     "temperature": "°C",
     "f_Rsi": "",
     "surface_humidity": "",
+    "K": "W/(m²·K)",
 }
 Value = tuple[float, float | None, float | None]
 
@@ -45,6 +46,8 @@ def require_answerable(case: Case) -> None:
             lacking = space_humidity_needed(case, asked.boundary)
         elif asked.f_Rsi and next(b.space for b in case.boundary if b.name == asked.boundary) is None:
             lacking = f'"{asked.boundary}" faces no space'
+        elif asked.K and next(body.enclosure for body in case.body if body.name == asked.body) is None:
+            lacking = f'"{asked.body}" is no enclosure; K is that of a box'
         elif asked.psi or asked.chi:
             kind = next(bridge.kind for bridge in case.bridge if bridge.name == asked.bridge)
             key = "psi" if asked.psi else "chi"
@@ -138,6 +141,8 @@ def _value(number: int, limit: Limit, answers: Answers) -> Value:
         if asked.target == "probe":
             return answers.probes[name].temperature, None, None
         return getattr(answers.boundaries[name].temperature, asked.temperature), None, None
+    if measure == "K":
+        return _of_enclosure(answers.enclosures.get(name, {}), number)
     if measure in ("psi", "chi"):
         return _of_bridge(answers.bridges.get(name, {}), measure, number)
     surface = answers.surfaces[name]
@@ -156,13 +161,28 @@ def _of_bridge(entry: Mapping[str, Any], measure: str, number: int) -> Value:
     return entry[measure], entry.get(f"{measure}_low"), entry.get(f"{measure}_high")
 
 
+def _of_enclosure(entry: Mapping[str, Any], number: int) -> Value:
+    if "K" not in entry:
+        raise _unanswered(number, "; ".join(entry.get("remarks", ())) or entry.get("remark", "there is no K"))
+    return entry["K"], entry["K_low"], entry["K_high"]
+
+
 def _unanswered(number: int, why: str) -> CaseError:
     return CaseError([Fault(path=("limit", number, "quantity"), what=f"can't be answered: {why}")])
 
 
-def limit_warnings(found: Mapping[str, Mapping[str, Any]]) -> list[str]:
-    """Return a sentence for each limit that is undecided."""
-    return [
+TOUCH = (
+    "how long skin stands a hot or a cold surface depends on its material, the time and the person; ISO 13732-1 (hot) and "
+    "ISO 13732-3 (cold) give thresholds, local codes and licensed practice decide, and this computed temperature is of a "
+    "clean surface at the conditions stated"
+)
+
+
+def limit_warnings(case: Case, found: Mapping[str, Mapping[str, Any]]) -> list[str]:
+    """Return a sentence for each limit that is undecided, and the caution where people touch."""
+    touched = [limit.name for limit in case.limit if limit.touch]
+    told = [f"caution, touch limits ({', '.join(touched)}): {TOUCH}"] if touched else []
+    return told + [
         f'limit "{name}" is undecided: it lies inside the interval {entry["low"]:.6g} to {entry["high"]:.6g} '
         f"{entry['unit']}; it counts as not met - ask for a better accuracy"
         for name, entry in found.items()

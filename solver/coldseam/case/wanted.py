@@ -84,12 +84,13 @@ class Bridge(Table):
 
 
 Extreme = Literal["min", "max", "mean"]
-_TARGETS = ("space", "boundary", "probe", "bridge")
+_TARGETS = ("space", "boundary", "probe", "bridge", "body")
 _MEASURES = {
     "space": ("heat_flow",),
     "boundary": ("heat_flow", "temperature", "f_Rsi", "surface_humidity"),
     "probe": ("temperature",),
     "bridge": ("psi", "chi"),
+    "body": ("K",),
 }
 _MEASURE_UNITS = {
     "heat_flow": "heat flow",
@@ -98,6 +99,7 @@ _MEASURE_UNITS = {
     "surface_humidity": "ratio",
     "psi": "linear transmittance",
     "chi": "point transmittance",
+    "K": "film",
 }
 
 
@@ -109,10 +111,12 @@ class Quantity(Table):
     boundary: BoundaryRef | None = None
     probe: ProbeRef | None = None
     bridge: BridgeRef | None = None
+    body: BodyRef | None = None
     heat_flow: Literal[True] | None = None
     temperature: Literal[True, "min", "max", "mean"] | None = None
     psi: Literal[True] | None = None
     chi: Literal[True] | None = None
+    K: Literal[True] | None = Field(None, description="of an enclosure: heat leak over mean area and temperature difference")
     f_Rsi: Literal[True] | None = None
     surface_humidity: Literal[True] | None = None
 
@@ -135,7 +139,7 @@ class Quantity(Table):
 
     @property
     def target(self) -> str:
-        """What it is asked of: ``"space"``, ``"boundary"``, ``"probe"`` or ``"bridge"``."""
+        """What it is asked of: ``"space"``, ``"boundary"``, ``"probe"``, ``"bridge"`` or ``"body"``."""
         return next(key for key in _TARGETS if getattr(self, key) is not None)
 
     @property
@@ -172,6 +176,7 @@ class Limit(Table):
     quantity: Quantity
     at_most: Bound | None = Field(None, description="in the unit of the quantity")
     at_least: Bound | None = Field(None, description="in the unit of the quantity")
+    touch: Literal[True] | None = Field(None, description="a surface that people touch: the usual caution is printed")
 
     @classmethod
     def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
@@ -184,6 +189,9 @@ class Limit(Table):
                 data[key] = Amount(unit).read(data[key], context) if unit else 0.0
             except ValueError as error:
                 troubles.append(((key,), str(error)))
+        asked = data.get("quantity")
+        if "touch" in data and not (isinstance(asked, dict) and "temperature" in asked):
+            troubles.append((("touch",), "goes with the temperature of a boundary or a probe"))
         if len(given) == 2 and not troubles and data["at_least"] > data["at_most"]:
             troubles.append((("at_least",), "must not be more than at_most"))
         return data, troubles
