@@ -96,12 +96,19 @@ def test_limits_that_have_no_answer_are_refused(texts, request, name, quantity, 
 
 
 def test_touch_limits_carry_their_caution(texts):
-    text = texts["tee"] + '\n[[limit]]\nname = "hand"\nquantity = { boundary = "facade", temperature = "min" }\nat_least = -5\n'
+    text = (
+        texts["tee"]
+        + '\n[[limit]]\nname = "hand"\nquantity = { boundary = "facade", temperature = "min" }\nat_least = -5\n'
+    )
     assert limit_warnings(read.loads(text), {}) == []
     (caution,) = limit_warnings(read.loads(f"{text}touch = true\n"), {})
     assert "hand" in caution and "ISO 13732" in caution and "local codes" in caution
     with pytest.raises(CaseError, match="goes with the temperature"):
-        read.loads(f"{text}touch = true\n".replace('boundary = "facade", temperature = "min"', 'space = "left", heat_flow = true'))
+        read.loads(
+            f"{text}touch = true\n".replace(
+                'boundary = "facade", temperature = "min"', 'space = "left", heat_flow = true'
+            )
+        )
 
 
 def test_limits_of_a_run_follow_other_temperatures(texts, tee):

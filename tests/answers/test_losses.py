@@ -115,7 +115,9 @@ def test_heat_sources_are_finite_differences(texts):
     up, down = (flows(read.replace(case, "body[heater].heat_source", 6 * (1 + s)), mesh) for s in (0.1, -0.1))
     for space, entry in reacts.items():
         base = flows(case, mesh)[space]
-        assert entry["heat_sources"]["heater"].relative == pytest.approx((up[space] - down[space]) / 0.2 / base, rel=1e-4)
+        assert entry["heat_sources"]["heater"].relative == pytest.approx(
+            (up[space] - down[space]) / 0.2 / base, rel=1e-4
+        )
 
 
 @pytest.mark.parametrize("name", ["tee", "heated", "corner", "pin"])
@@ -267,7 +269,7 @@ def test_first_order_is_near_the_true_change(texts):
 
 def test_uncertainty_of_any_input_is_stated_where_it_stands(texts):
     """Of a space's film, a boundary's own film, a contact, a body's heat source: each found with its input."""
-    text = texts["heated"].replace('[[contact]]', '[[contact]]\nuncertainty = "30 %"')
+    text = texts["heated"].replace("[[contact]]", '[[contact]]\nuncertainty = "30 %"')
     text = text.replace("[spaces.outside]", '[spaces.outside]\nuncertainty = "5 %"')
     text = text.replace("film = 4\n", 'film = 4\nuncertainty = "15 %"\n')
     text = text.replace("heat_source = 6", 'heat_source = 6\nuncertainty = "8 %"')
@@ -284,7 +286,9 @@ def test_uncertainty_of_any_input_is_stated_where_it_stands(texts):
 
 def test_given_flow_is_a_finite_difference():
     """All of the heat given on one side of a bar leaves on the other: 10 W/m² over 100 mm, one for one."""
-    text = SLAB.replace("[spaces.warm]\ntemperature = 20\nfilm = 8\n", "").replace('space = "warm"', 'heat_flux = 10\nuncertainty = "10 %"')
+    text = SLAB.replace("[spaces.warm]\ntemperature = 20\nfilm = 8\n", "").replace(
+        'space = "warm"', 'heat_flux = 10\nuncertainty = "10 %"'
+    )
     _, reacts = losses(solved(read.loads(text)))
     found = reacts["cold"]["given_flows"]["warm"]
     assert found.heat_flow == pytest.approx(-10 * 0.1, rel=1e-9)  # W/m over 100 mm

@@ -207,7 +207,9 @@ def _point_entry(bridge: Bridge, pair: tuple[str, str], result: Comparison) -> d
     }
 
 
-def _wall(bridge: Bridge, plain: float | None, linear: float = 0.0, point: float = 0.0) -> dict[str, float | None] | None:
+def _wall(
+    bridge: Bridge, plain: float | None, linear: float = 0.0, point: float = 0.0
+) -> dict[str, float | None] | None:
     """Return what so many of a bridge per area make of U, W/(m²·K); None where the case names no number."""
     if bridge.per_area is None:
         return None

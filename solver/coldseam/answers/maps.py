@@ -60,7 +60,9 @@ def surface_maps(steady: Steady, bridges: Mapping[str, Any], enclosures: Mapping
         if np.isfinite(humidity[rows]).any():
             values = np.full(steady.mesh.n_nodes, np.nan)
             values[steady.mesh.facets[rows]] = 100.0 * humidity[rows]
-            note = "Of the air at the surface; from 100 % it drips or frosts, from 80 % (mean of a month) mould can grow."
+            note = (
+                "Of the air at the surface; from 100 % it drips or frosts, from 80 % (mean of a month) mould can grow."
+            )
             found.append(
                 SurfaceMap(
                     key="surface_humidity", space=space, values=values, title="Surface humidity", unit="%", note=note
@@ -96,6 +98,4 @@ def _excess(steady: Steady, space: str, rows: np.ndarray, flux: np.ndarray, plai
     weight = np.bincount(facets.ravel(), np.repeat(area, facets.shape[1]), steady.mesh.n_nodes)
     sums = np.bincount(facets.ravel(), np.repeat(area * (passing - usual), facets.shape[1]), steady.mesh.n_nodes)
     values = np.where(weight > 0, sums / np.where(weight > 0, weight, 1.0), np.nan)
-    return [
-        SurfaceMap(key="excess_flux", space=space, values=values, title="Excess heat flux", unit="W/m²", note=note)
-    ]
+    return [SurfaceMap(key="excess_flux", space=space, values=values, title="Excess heat flux", unit="W/m²", note=note)]

@@ -86,6 +86,7 @@ class Amount:
 
 def checked(check: Check) -> CoreSchema:
     """Return the pydantic schema of a value that ``check(value, context)`` reads or refuses."""
+
     def validate(value: Any, info: ValidationInfo) -> Any:
         return check(value, context_of(info))
 

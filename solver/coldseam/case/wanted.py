@@ -56,7 +56,9 @@ class Bridge(Table):
     without: Annotated[tuple[BodyRef, ...], Some()] | None = None
     count: Annotated[int, Field(strict=True, ge=1)] | None = Field(None, description="pieces, 1 if not given")
     between: tuple[SpaceRef, SpaceRef] | None = Field(None, description="the two spaces; needed if there are more")
-    per_area: PerArea | None = Field(None, description="in the whole wall: pieces per m², or m of a linear bridge per m²")
+    per_area: PerArea | None = Field(
+        None, description="in the whole wall: pieces per m², or m of a linear bridge per m²"
+    )
 
     def check(self, context: Context) -> Iterator[Trouble]:
         """Yield keys that belong to the other kind, keys missing, and too few spaces."""
@@ -116,7 +118,9 @@ class Quantity(Table):
     temperature: Literal[True, "min", "max", "mean"] | None = None
     psi: Literal[True] | None = None
     chi: Literal[True] | None = None
-    K: Literal[True] | None = Field(None, description="of an enclosure: heat leak over mean area and temperature difference")
+    K: Literal[True] | None = Field(
+        None, description="of an enclosure: heat leak over mean area and temperature difference"
+    )
     f_Rsi: Literal[True] | None = None
     surface_humidity: Literal[True] | None = None
 

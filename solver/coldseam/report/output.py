@@ -40,9 +40,7 @@ def write_all(view: View, folder: Path, *, pictures: bool, log: Callable[[str, s
     drawings = draw_all(view, folder, log)
     for picture in drawings.pictures:
         written += [folder / name for name in (picture.file, picture.vector) if name]
-    listed = [
-        {"file": p.file, "vector": p.vector, "title": p.title, "alt": p.alt} for p in drawings.pictures
-    ]
+    listed = [{"file": p.file, "vector": p.vector, "title": p.title, "alt": p.alt} for p in drawings.pictures]
     answers = view.answers | {
         "pictures": listed,
         "warnings": [*view.answers.get("warnings", []), *drawings.warnings],

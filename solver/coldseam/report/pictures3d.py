@@ -127,7 +127,9 @@ def _draw_field(
     nodes = np.unique(facets)
     low, high = float(values[nodes].min()), float(values[nodes].max())
     levels = style.round_levels(low, high)
-    levels = levels[levels > low + EVEN * (high - low)]  # a line just above the lowest value wanders over the plain part
+    levels = levels[
+        levels > low + EVEN * (high - low)
+    ]  # a line just above the lowest value wanders over the plain part
     places = style.decimals(levels) if len(levels) else 2
     window = _crowded(view, facets, values, toward, levels) if close else None
     if close and window is None:
@@ -153,7 +155,6 @@ def _draw_field(
         pages.colour_bar(made, low, high, levels, shown.unit)
         file, _ = pages.save(made, folder, name, vector=False)
     return Picture(file=file, title=title, alt=f"{title}. {read} {shown.note}".strip(), table=temperature_table(view))
-
 
 
 def _direction(behind: bool) -> np.ndarray:

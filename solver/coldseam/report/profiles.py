@@ -79,7 +79,9 @@ def _draw(view: View, space: str, shown: _Shown, folder: Path, name: str) -> Pic
 
 def _position(view: View, node: int) -> str:
     axes = ("r", "z") if view.mesh.axisymmetric else ("x", "y")
-    return ", ".join(f"{axis} = {style.number(1e3 * c, 4)} mm" for axis, c in zip(axes, view.mesh.points[node], strict=True))
+    return ", ".join(
+        f"{axis} = {style.number(1e3 * c, 4)} mm" for axis, c in zip(axes, view.mesh.points[node], strict=True)
+    )
 
 
 def _table(view: View, shown: _Shown, strips: list[dict]) -> Table:

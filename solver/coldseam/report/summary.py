@@ -266,8 +266,10 @@ def _losses(answers: Answers) -> list[str]:
     ]
     reacts = answers.get("sensitivities", {}).get(space, {}).get("ranked", ())
     words = [
-        f"{r['input']} {100 * r['relative'] * r['change']:+.2g} %" + (f" (± {100 * r['change']:.2g} %)" if r["change_stated"] else "")
-        for r in reacts[:MOST_REACTIONS] if r["relative"] is not None
+        f"{r['input']} {100 * r['relative'] * r['change']:+.2g} %"
+        + (f" (± {100 * r['change']:.2g} %)" if r["change_stated"] else "")
+        for r in reacts[:MOST_REACTIONS]
+        if r["relative"] is not None
     ]
     told = [f"What 1 % more does to it (stated uncertainties in full): {', '.join(words)}"] if words else []
     return [f"Where the heat from space {space} goes", *_table(rows, right=(2, 3)), *told] if rows else []

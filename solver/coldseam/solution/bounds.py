@@ -111,10 +111,13 @@ def bounds_of(mesh: Mesh, given: Conditions, system: FacetSystem, nodes: Respons
         low -= heat.T @ (system.sheet_moment[:, None] * heat)
     middle = 0.5 * (high + low)
     low = low - len(low) * np.diag(response.error_energy)
-    scale = np.concatenate([np.asarray(nodes.network.exchange.sum(axis=0)), high.diagonal()[nodes.network.n_terminals :]])
+    scale = np.concatenate(
+        [np.asarray(nodes.network.exchange.sum(axis=0)), high.diagonal()[nodes.network.n_terminals :]]
+    )
     margin = ROUND_OFF * (np.abs(scale) + np.abs(high.diagonal()))
     return Bounds(
-        high=high + np.diag(margin), low=low - np.diag(margin), middle=middle, facets=system, response=response)
+        high=high + np.diag(margin), low=low - np.diag(margin), middle=middle, facets=system, response=response
+    )
 
 
 def _facet_solver(system: FacetSystem, nodes: Response, dim: int, uneven: bool):
@@ -141,7 +144,9 @@ def _regular(matrix):
     return (matrix + sparse.diags_array(np.where(lonely, np.median(diagonal[~lonely]), 0.0))).tocsr()
 
 
-def local_gap(mesh: Mesh, given: Conditions, weights: np.ndarray, nodes: Response, bounds: Bounds, state: np.ndarray) -> np.ndarray:
+def local_gap(
+    mesh: Mesh, given: Conditions, weights: np.ndarray, nodes: Response, bounds: Bounds, state: np.ndarray
+) -> np.ndarray:
     """Return each cell's part of the energy gap of a state, W K, (n_cells,).
 
     By the identity of Prager and Synge the gap between the two energies is the distance of the two

@@ -141,7 +141,9 @@ def _bounded(steady: Steady, reading, state, value: float, involved: list[int]) 
     low, high = min(low, value), max(high, value)
     reason = steady_reason(steady)
     slack = shape_error(steady) * abs(value)
-    return Interval(value=value, low=low - slack, high=high + slack, kind="estimate" if reason else "guaranteed", reason=reason)
+    return Interval(
+        value=value, low=low - slack, high=high + slack, kind="estimate" if reason else "guaranteed", reason=reason
+    )
 
 
 CLASH = (

@@ -250,7 +250,9 @@ def _moves(steady: Steady, before, watched) -> tuple[float | None, list[_Restles
     moves = {key: abs(value - before[key][1]) / span for key, (_, value) in watched.items() if key in before}
     limit = point_limit(steady.case)
     restless = [
-        _Restless(points=_candidates(steady, key, watched[key], move * span), step=float(np.clip(limit / move, *POINT_STEPS)))
+        _Restless(
+            points=_candidates(steady, key, watched[key], move * span), step=float(np.clip(limit / move, *POINT_STEPS))
+        )
         for key, move in moves.items()
         if move > limit
     ]
@@ -325,7 +327,9 @@ def _reason_to_stop(case: Case, mesh: Mesh, rounds: list[Round], target: int) ->
         return f"stopped after {MOST_ROUNDS} rounds of refinement"
     if target / per_node > most:
         limit = "max_nodes" if case.model.max_nodes else "the program's limit"
-        return f"a finer mesh would need some {target / per_node:,.0f} nodes, more than {limit} of {most:,}".replace(",", " ")
+        return f"a finer mesh would need some {target / per_node:,.0f} nodes, more than {limit} of {most:,}".replace(
+            ",", " "
+        )
     if not room_for(target):
         return f"a finer mesh of some {target:,} cells would not fit in this computer's free memory".replace(",", " ")
     return ""

@@ -200,7 +200,9 @@ def require_temperatures(mesh: Mesh, network: Network) -> None:
         )
 
 
-def boundary_flows(mesh, facet_boundary, given: Conditions, network: Network, relative, state, n_boundaries) -> np.ndarray:
+def boundary_flows(
+    mesh, facet_boundary, given: Conditions, network: Network, relative, state, n_boundaries
+) -> np.ndarray:
     """Return the heat flow into the solid of every boundary from nodal balances, W (2D: W/m), (n_boundaries,).
 
     Films: the sum of ``h A_i (T_space - T_i)``. Fixed faces: what the balance of their nodes lacks; a
@@ -223,7 +225,9 @@ def boundary_flows(mesh, facet_boundary, given: Conditions, network: Network, re
     fixed[fixed] &= is_fixed[given.terminal[fixed]]
     if not fixed.any():
         return flow
-    lacking = network.matrix @ relative - network.exchange @ state[: network.n_terminals] - network.load * network.has_load
+    lacking = (
+        network.matrix @ relative - network.exchange @ state[: network.n_terminals] - network.load * network.has_load
+    )
     nodes, owner = mesh.facets[fixed], np.repeat(facet_boundary[fixed], mesh.dim).reshape(-1, mesh.dim)
     area = np.bincount(nodes.ravel(), shares[fixed].ravel(), mesh.n_nodes)
     part = shares[fixed] / np.where(area > 0, area, 1.0)[nodes] * lacking[nodes]

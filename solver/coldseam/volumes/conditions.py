@@ -12,7 +12,6 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-
 from coldseam.errors import CaseError, Fault
 from coldseam.mesh.contacts import interface_facets
 from coldseam.mesh.measure import cell_measure, facet_measure
@@ -116,7 +115,14 @@ def conditions(case: Case, mesh: Mesh, facet_boundary: np.ndarray) -> Conditions
     conductivity, tensors = _conductivities(case, mesh)
     terminals, of_boundary, clashes = _terminals(case, mesh, facet_boundary)
     if not terminals:
-        raise CaseError([Fault(path=("boundary",), what="no boundary sets a temperature; at least one must face a space or have a temperature")])
+        raise CaseError(
+            [
+                Fault(
+                    path=("boundary",),
+                    what="no boundary sets a temperature; at least one must face a space or have a temperature",
+                )
+            ]
+        )
     film = np.array([boundary_film(case, b) for b in case.boundary])
     sheet_facets, sheet_conductance = _sheets(case, mesh)
     resistance = np.array([c.resistance for c in case.contact])
@@ -219,7 +225,11 @@ def _terminals(case: Case, mesh: Mesh, facet_boundary: np.ndarray):
         number = of_boundary[n] = number_of[key]
         old = terminals[number]
         terminals[number] = Terminal(boundaries=(*old.boundaries, n), temperature=temperature, fixed=old.fixed)
-    clashes = {tuple(sorted((int(of_boundary[a]), int(of_boundary[b])))) for a, b in touching if of_boundary[a] != of_boundary[b]}
+    clashes = {
+        tuple(sorted((int(of_boundary[a]), int(of_boundary[b]))))
+        for a, b in touching
+        if of_boundary[a] != of_boundary[b]
+    }
     return tuple(terminals), of_boundary, tuple(sorted(clashes))
 
 
@@ -239,10 +249,19 @@ def _sheets(case: Case, mesh: Mesh) -> tuple[np.ndarray, np.ndarray]:
         else:
             found = mesh.facets[select(sheet.on, mesh)]
         if len(found) == 0:
-            raise CaseError([Fault(path=("sheet", number), what=f'the sheet "{sheet.name}" lies on no face; choose faces that exist')])
+            raise CaseError(
+                [
+                    Fault(
+                        path=("sheet", number),
+                        what=f'the sheet "{sheet.name}" lies on no face; choose faces that exist',
+                    )
+                ]
+            )
         k = case.materials[sheet.material].tensor(mesh.dim)
         if np.ndim(k) > 0:
-            raise CaseError([Fault(path=("sheet", number, "material"), what="a sheet needs a material with one conductivity")])
+            raise CaseError(
+                [Fault(path=("sheet", number, "material"), what="a sheet needs a material with one conductivity")]
+            )
         facets.append(found)
         conductance.append(np.full(len(found), k * sheet.thickness))
     return np.vstack(facets), np.concatenate(conductance)

@@ -167,7 +167,9 @@ def edge_operator(mesh: Mesh, weights: np.ndarray) -> EdgeOperator:
     edges = np.column_stack([low[starts], high[starts]])
 
     indptr = np.append(starts, np.int32(len(low)))
-    gathered = sparse.csr_array((weights.ravel()[order], order % np.int32(n_cells), indptr), shape=(len(edges), n_cells))
+    gathered = sparse.csr_array(
+        (weights.ravel()[order], order % np.int32(n_cells), indptr), shape=(len(edges), n_cells)
+    )
     return EdgeOperator(edges=edges, weights=gathered, **_pattern(edges, n))
 
 
