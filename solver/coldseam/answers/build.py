@@ -28,7 +28,7 @@ from coldseam.solution.readings import (
     shape_error,
     space_intervals,
 )
-from coldseam.solution.rounds import Solution, point_limit
+from coldseam.solution.rounds import EXACT, Solution, point_limit
 from coldseam.solution.steady import Steady
 from coldseam.volumes.conditions import boundary_film
 from coldseam.volumes.section import facet_shares, node_shares_of_cells
@@ -161,6 +161,10 @@ def warnings(solution: Solution) -> tuple[str, ...]:
     found = [*steady.case.warnings, *steady.mesh.quality.get("remarks", ())]
     if steady.given.clashes:
         found.append(CLASH)
+    cells = np.bincount(steady.mesh.cell_body, minlength=len(steady.mesh.bodies))
+    coarse = [f'"{body.name}"' for body, n in zip(steady.mesh.bodies, cells, strict=True) if n == 1]
+    if coarse and not exact_on(solution):
+        found.append(f"the mesh is so coarse that a body has one cell ({', '.join(coarse)}): its temperatures are rough")
     asked = steady.case.model.accuracy
     if not solution.flows_met and solution.rounds[-1].error is not None:
         reached = asked * solution.rounds[-1].error
@@ -174,6 +178,12 @@ def warnings(solution: Solution) -> tuple[str, ...]:
         )
     found += list(solution.remarks)
     return tuple(found)
+
+
+def exact_on(solution: Solution) -> bool:
+    """Return whether the bounds close to rounding: the field is linear in every cell, however few there are."""
+    reached = solution.rounds[-1].error
+    return reached is not None and reached * solution.steady.case.model.accuracy < EXACT
 
 
 def extremes(mesh: Mesh, temperature: np.ndarray, facets: np.ndarray) -> Extremes:
