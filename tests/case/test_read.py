@@ -209,7 +209,7 @@ def test_replace(key, value, read, expected):
         ("title.x.y", 1, "is a single value"),
         ("spaces.bay.temprature", 30, "did you mean"),
         ("materials.foam.conductivity", -1, "must be above 0, not -1"),
-        ("spaces.bay.surface_resistance", None, "needs exactly one of film or surface_resistance"),
+        ("spaces.bay.surface_resistance", None, "needs at least one of film, surface"),
         ("", 1, "the key is empty"),
         ("body[", 1, "can't be read as a key"),
     ],

@@ -104,6 +104,14 @@ VALUES = [
     ("ratio", "60%", 0.6, 1e-12),
     ("ratio", "0.005", 0.005, 1e-15),
     ("length per depth", "2 m2/m", 2.0, 1e-12),
+    ("speed", 4, 4.0, 1e-15),
+    ("speed", "24 km/h", 6.666667, 1e-6),  # 24000 m / 3600 s
+    ("speed", "15 mph", 6.7056, 1e-9),  # [N] 4.4704 E-01 each
+    ("pressure", 1, 1e5, 1e-15),  # bare numbers are bar
+    ("pressure", "1 atm", 101325.0, 1e-12),
+    ("pressure", "14.7 psi", 101353.0, 1e-5),  # [N] 6.894757 E+03 each
+    ("viscosity", "1 cP", 1e-3, 1e-12),  # [N]
+    ("angle", "30 deg", 30.0, 1e-12),
 ]
 
 

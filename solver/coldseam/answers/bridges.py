@@ -117,7 +117,7 @@ def _coupling(steady: Steady, pair: tuple[str, str], number: int) -> Interval:
 
 def _linear(steady: Steady, number: int) -> tuple[dict[str, Any], list[str]]:
     bridge = steady.case.bridge[number]
-    walls = flanking_walls(steady.case, bridge)
+    walls = flanking_walls(steady, bridge)
     require_fitting(steady, number, walls)
     pair = bridge.flanking[0].between
     whole = _coupling(steady, pair, number)

@@ -8,6 +8,7 @@ import numpy as np
 
 from coldseam._version import __version__
 from coldseam.answers.bridges import BridgeAnswers
+from coldseam.answers.cautions import cautions
 from coldseam.answers.enclosure import enclosures
 from coldseam.answers.limits import limit_warnings, limits
 from coldseam.answers.losses import losses
@@ -19,6 +20,7 @@ from coldseam.errors import CaseError, Fault
 from coldseam.mesh.locate import locate
 from coldseam.mesh.measure import cell_measure, facet_measure
 from coldseam.mesh.types import Mesh
+from coldseam.solution.frozen import film_of
 from coldseam.solution.readings import (
     CLASH,
     Interval,
@@ -30,7 +32,6 @@ from coldseam.solution.readings import (
 )
 from coldseam.solution.rounds import EXACT, Solution, point_limit
 from coldseam.solution.steady import Steady
-from coldseam.volumes.conditions import boundary_film
 from coldseam.volumes.section import facet_shares, node_shares_of_cells
 
 UNITS = {
@@ -120,9 +121,22 @@ def _plain_answers(solution: Solution, bridges: BridgeAnswers) -> Answers:
             "iterations": list(steady.response.iterations),
             "bound_method": None if steady.bounds is None else steady.bounds.response.method,
             "bound_iterations": [] if steady.bounds is None else list(steady.bounds.response.iterations),
+            **_frozen(steady),
         },
         warnings=warnings(solution),
     )
+
+
+def _frozen(steady: Steady) -> dict:
+    """Return how temperature-dependent coefficients were settled; nothing for a linear case."""
+    if steady.settled is None:
+        return {}
+    return {
+        "coefficient_steps": steady.settled.iterations,
+        "last_step": steady.settled.history[-1],
+        "linearised": "coupling coefficients, bridges and sensitivities are those of the linear problem with the films "
+        "and conductivities of the answer, and outside temperatures that give its heat flows",
+    }
 
 
 def mesh_answer(solution: Solution) -> dict:
@@ -176,6 +190,9 @@ def warnings(solution: Solution) -> tuple[str, ...]:
             f"surface or probe temperatures still moved by more than {point_limit(steady.case):.2%} of their range on "
             "the last mesh"
         )
+    if steady.settled is not None:
+        found += steady.settled.remarks
+        found += cautions(steady)
     found += list(solution.remarks)
     return tuple(found)
 
@@ -217,7 +234,7 @@ def _boundaries(steady: Steady) -> dict[str, BoundaryAnswer]:
     area = np.bincount(steady.facet_boundary, facet_measure(steady.mesh), len(steady.case.boundary))
     found = {}
     for number, (boundary, interval) in enumerate(zip(steady.case.boundary, boundary_intervals(steady), strict=True)):
-        film = boundary_film(steady.case, boundary)
+        film = film_of(steady, number)
         found[boundary.name] = BoundaryAnswer(
             kind=kind_of(boundary),
             space=boundary.space,
@@ -225,6 +242,7 @@ def _boundaries(steady: Steady) -> dict[str, BoundaryAnswer]:
             heat_flux_mean=interval.value / float(area[number]),
             film=float(film) if boundary.space is not None and np.isfinite(film) else None,
             temperature=extremes(steady.mesh, steady.bounded, steady.facet_boundary == number),
+            film_used=None if steady.settled is None else steady.settled.films.get(boundary.name),
             **_flow(interval),
         )
     return found

@@ -19,9 +19,9 @@ import numpy as np
 
 from coldseam.answers.points import outside_points
 from coldseam.mesh.measure import facet_measure
+from coldseam.solution.frozen import conductivity_of, film_of
 from coldseam.solution.readings import Interval, coupling
 from coldseam.solution.steady import Steady
-from coldseam.volumes.conditions import boundary_film
 
 if TYPE_CHECKING:
     from coldseam.case.shapes import Enclosure
@@ -89,7 +89,7 @@ def walls_of(steady: Steady, enclosure: Enclosure) -> Walls | None:
         layers = enclosure.faces.get(face, enclosure.layers)
         if not layers:
             continue
-        k = [steady.case.materials[layer.material].tensor(3) for layer in layers]
+        k = [conductivity_of(steady, layer.material) for layer in layers]
         if any(np.ndim(value) > 0 for value in k):
             return None
         thickness[face] = math.fsum(layer.thickness for layer in layers)
@@ -144,7 +144,7 @@ def _two_sides(steady: Steady, walls: Walls) -> tuple[str, str, float] | str:
         names = [", ".join(sorted(side)) or "nothing" for side in sides]
         return f"K needs one temperature inside and another outside; inside is {names[0]}, outside {names[1]}"
     area = facet_measure(steady.mesh)
-    film = np.array([boundary_film(steady.case, boundary) for boundary in steady.case.boundary])[steady.facet_boundary]
+    film = np.array([film_of(steady, number) for number in range(len(steady.case.boundary))])[steady.facet_boundary]
     resistance = sum(
         float(area[mask] @ (1.0 / film[mask]) / area[mask].sum()) for mask in (facing & within, facing & ~within)
     )

@@ -37,9 +37,16 @@ def superposed(solution: Solution, temperatures: Mapping[str, float | str]) -> S
     Raises
     ------
     CaseError
-        An unknown space, a temperature that can't be read, or touching fixed surfaces that would no longer be alike.
+        An unknown space, a temperature that can't be read, touching fixed surfaces that would no longer be alike, or
+        a case that depends on temperatures.
     """
     steady = solution.steady
+    if steady.settled is not None:
+        what = (
+            "this case's films or conductivities depend on the temperatures, so its answers can't be superposed; "
+            "change the temperature in the case and run it again"
+        )
+        raise CaseError([Fault(path=("spaces",), what=what)])
     case = at_temperatures(steady.case, temperatures)
     changed = _at(steady, case)
     error = _error(changed)

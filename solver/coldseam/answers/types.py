@@ -27,7 +27,11 @@ class Extremes:
 
 @dataclass(frozen=True, kw_only=True)
 class BoundaryAnswer:
-    """One boundary: its heat flow with interval, area and surface temperatures."""
+    """One boundary: its heat flow with interval, area and surface temperatures.
+
+    ``film`` is its film coefficient, W/(m² K), where it varies the mean; ``film_used`` tells what made it, where laws
+    did: correlation, Ra or Re, Nu, range of validity, the parts of convection, radiation and sun.
+    """
 
     kind: str
     space: str | None
@@ -40,6 +44,7 @@ class BoundaryAnswer:
     heat_flux_mean: float
     film: float | None
     temperature: Extremes
+    film_used: dict[str, Any] | None = None
 
 
 @dataclass(frozen=True, kw_only=True)

@@ -9,10 +9,11 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from coldseam.answers.points import outside_points
+from coldseam.case.films import exchange
 from coldseam.errors import CaseError, Fault
 from coldseam.mesh.measure import facet_measure
+from coldseam.solution.frozen import conductivity_of, film_of_space
 from coldseam.solution.steady import Steady
-from coldseam.volumes.conditions import boundary_film
 
 if TYPE_CHECKING:
     from coldseam.case.model import Bridge, Case, Flanking
@@ -42,14 +43,14 @@ class Wall:
     length_external: float | None
 
 
-def flanking_walls(case: Case, bridge: Bridge) -> list[Wall]:
-    """Return the flanking walls of a linear bridge."""
+def flanking_walls(steady: Steady, bridge: Bridge) -> list[Wall]:
+    """Return the flanking walls of a linear bridge; what depends on the temperatures as it is at the solution."""
     walls = []
     for wall in bridge.flanking or ():
         only_external = bridge.basis == "external"
         walls.append(
             Wall(
-                transmittance=transmittance(case, wall),
+                transmittance=transmittance(steady, wall),
                 thickness=math.fsum(layer.thickness for layer in wall.layers),
                 length=None if only_external else wall.length,
                 length_external=(wall.length_external or wall.length) if only_external else wall.length_external,
@@ -58,11 +59,11 @@ def flanking_walls(case: Case, bridge: Bridge) -> list[Wall]:
     return walls
 
 
-def transmittance(case: Case, wall: Flanking) -> float:
+def transmittance(steady: Steady, wall: Flanking) -> float:
     """Return U of a flanking wall, W/(m²·K): its layers between the films of its two spaces."""
-    films = math.fsum(1.0 / case.spaces[name].h for name in wall.between)
+    films = math.fsum(1.0 / film_of_space(steady, name) for name in wall.between)
     return 1.0 / (
-        films + math.fsum(layer.thickness / layer_conductivity(case, layer.material) for layer in wall.layers)
+        films + math.fsum(layer.thickness / float(conductivity_of(steady, layer.material)) for layer in wall.layers)
     )
 
 
@@ -132,9 +133,7 @@ def wall_warnings(steady: Steady, bridge: Bridge, walls: list[Wall]) -> list[str
     pair = bridge.flanking[0].between
     for name in pair:
         for boundary in case.boundary:
-            if boundary.space == name and not math.isclose(
-                boundary_film(case, boundary), case.spaces[name].h, rel_tol=1e-9
-            ):
+            if boundary.space == name and exchange(case.spaces[name], boundary) != exchange(case.spaces[name]):
                 found.append(
                     f'bridge "{bridge.name}": boundary "{boundary.name}" has a film of its own; the flanking walls are '
                     f'reckoned with that of the space "{name}", and the difference is in psi'

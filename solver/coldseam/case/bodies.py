@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Annotated, Any, ClassVar
 
 from pydantic import Field, PrivateAttr, WithJsonSchema
 
+from coldseam.case.laws import ConductivityLaw
 from coldseam.case.shapes import Box, Cone, Cylinder, Disc, Enclosure, Polygon, Repeat, Ring, Sphere, Tube
 from coldseam.case.tables import Context, Table, Trouble, listing
 from coldseam.case.values import (
@@ -39,10 +40,12 @@ ALONG_UNIT = 1e-3
 
 
 class _Conductivity:
-    """One number, two or three along the axes, or a symmetric matrix."""
+    """One number, two or three along the axes, a symmetric matrix, or a law over temperature."""
 
-    def read(self, value: Any, context: Context) -> float | Row | tuple[Row, ...]:
+    def read(self, value: Any, context: Context) -> float | Row | tuple[Row, ...] | ConductivityLaw:
         """Return the conductivity, W/(m K), in the form it was typed."""
+        if isinstance(value, (dict, ConductivityLaw)):
+            return ConductivityLaw.model_validate(value, context=context)
         if not isinstance(value, (list, tuple)):
             return _VALUE.read(value, context)
         if not value or any(isinstance(row, (list, tuple)) for row in value):
@@ -110,10 +113,13 @@ _CONDUCTIVITY_SCHEMA = {
         *_AMOUNT_SCHEMA["anyOf"],
         {"type": "array", "minItems": 2, "maxItems": 3, "items": _AMOUNT_SCHEMA},
         _ROWS,
+        {"type": "object"},
     ],
-    "description": "W/(m·K): one number, [kx, ky, kz] along the axes, or a symmetric matrix",
+    "description": "W/(m·K): one number, [kx, ky, kz] along the axes, a symmetric matrix, or a law over temperature",
 }
-Conductivity = Annotated[float | Row | tuple[Row, ...], _Conductivity(), WithJsonSchema(_CONDUCTIVITY_SCHEMA)]
+Conductivity = Annotated[
+    float | Row | tuple[Row, ...] | ConductivityLaw, _Conductivity(), WithJsonSchema(_CONDUCTIVITY_SCHEMA)
+]
 MaterialAxes = Annotated[
     tuple[Row, ...],
     _Axes(),
@@ -162,19 +168,26 @@ class Material(Table):
         """Yield a fault when axes don't fit the conductivity."""
         if self.axes is None:
             return
-        if isinstance(self.conductivity, float):
+        if isinstance(self.conductivity, (float, ConductivityLaw)):
             yield ("axes",), "has no meaning with a single conductivity; give [kx, ky, kz]"
         elif len(self.axes) != len(self.conductivity):
             yield ("axes",), f"needs {len(self.conductivity)} rows, as many as conductivity has"
 
+    @property
+    def law(self) -> ConductivityLaw | None:
+        """The law over temperature that the conductivity follows; None where it is constant."""
+        return self.conductivity if isinstance(self.conductivity, ConductivityLaw) else None
+
     def tensor(self, dim: int) -> float | np.ndarray:
-        """Return the conductivity in global axes, W/(m K).
+        """Return the conductivity in global axes, W/(m K); of a law over temperature its typical value.
 
         A number where the material conducts alike in all directions, else a symmetric array of
         shape (dim, dim); in a cross-section the part in its plane.
         """
         import numpy as np
 
+        if self.law is not None:
+            return self.law.typical
         if isinstance(self.conductivity, float):
             return self.conductivity
         own = np.array(self.conductivity, dtype=float)

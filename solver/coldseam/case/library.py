@@ -42,6 +42,8 @@ class Entry:
         What a user has to know before using the values; "" when there is nothing.
     aliases
         Other names that find the entry.
+    law
+        The conductivity over temperature, in the form of a case file's key; None where it is one number.
     """
 
     name: str
@@ -54,6 +56,7 @@ class Entry:
     source: str
     note: str = ""
     aliases: tuple[str, ...] = ()
+    law: dict[str, Any] | None = None
 
 
 class LibraryError(ColdseamError, LookupError):
@@ -114,14 +117,14 @@ def search(text: str) -> list[Entry]:
     return [entry for _, entry in sorted(ranked, key=lambda pair: (pair[0], _key(pair[1].name)))]
 
 
-def as_material_keys(entry: Entry) -> dict[str, float | str | None]:
+def as_material_keys(entry: Entry) -> dict[str, Any]:
     """Return the keys that the entry fills in a case file's ``[materials.<name>]`` table.
 
-    Keys: conductivity W/(m K), density kg/m3, specific_heat J/(kg K), emissivity (None where unknown)
+    Keys: conductivity W/(m K) (a table where it follows a law over temperature), density kg/m3, specific_heat J/(kg K), emissivity (None where unknown)
     and source, in which the entry's name and the temperature it holds for are said too.
     """
     return {
-        "conductivity": entry.conductivity,
+        "conductivity": entry.law or entry.conductivity,
         "density": entry.density,
         "specific_heat": entry.specific_heat,
         "emissivity": entry.emissivity,
@@ -178,5 +181,6 @@ def _entry(row: dict[str, Any], sources: dict[str, str]) -> Entry:
     for key in ("conductivity", "density", "specific_heat"):
         row[key] = float(row[key])
     row.setdefault("emissivity", None)
+    row["law"] = row.pop("conductivity_law", None)
     row["aliases"] = tuple(row.get("aliases", ()))
     return Entry(**row, source=source.format_map(sources))

@@ -15,6 +15,7 @@ from pydantic import Field, PrivateAttr, ValidationInfo, WithJsonSchema, WrapVal
 
 from coldseam.case.bodies import FLAT_SHAPES, SHAPES, SOLID_SHAPES, Body, Material
 from coldseam.case.crosscheck import document_troubles, unused_materials
+from coldseam.case.films import Convection, Fluid, Radiation, Sun, exchange
 from coldseam.case.shapes import (
     AXES,
     FACES,
@@ -60,9 +61,9 @@ from coldseam.case.values import (
 from coldseam.case.wanted import Bridge, Flanking, Limit, Probe, Quantity
 
 __all__ = [
-    "AXES", "FACES", "FLAT_SHAPES", "SHAPES", "SOLID_SHAPES", "Body", "Boundary", "Box", "Bridge", "Case", "Cone",
-    "Contact", "Cylinder", "Disc", "Enclosure", "Extent", "Flanking", "Layer", "Limit", "Material", "ModelTable",
-    "Opening", "Polygon", "Probe", "Quantity", "Repeat", "Ring", "Selector", "Sheet", "Space", "Sphere", "Tube",
+    "AXES", "Convection", "FACES", "FLAT_SHAPES", "SHAPES", "SOLID_SHAPES", "Body", "Boundary", "Box", "Bridge", "Case", "Cone",
+    "Contact", "Cylinder", "Disc", "Enclosure", "Extent", "Flanking", "Fluid", "Layer", "Limit", "Material", "ModelTable",
+    "Opening", "Polygon", "Probe", "Quantity", "Radiation", "Repeat", "Ring", "Selector", "Sheet", "Space", "Sphere", "Sun", "Tube",
     "Within",
 ]  # fmt: skip
 
@@ -118,16 +119,27 @@ class ModelTable(Table):
 class Space(Table):
     """Air, or whatever else is of one temperature, before the surfaces."""
 
-    ONE_OF: ClassVar = (("film", "surface_resistance"),)
+    AT_MOST_ONE: ClassVar = (("film", "surface_resistance", "convection"), ("surface_resistance", "radiation"))
+    ANY_OF: ClassVar = (("film", "surface_resistance", "convection", "radiation"),)
     LATER: ClassVar = {"floating": STEADY_ONLY + "; give the space a temperature"}
     temperature: Temperature = Field(description="°C")
     film: Film | None = Field(None, description="W/(m²·K)")
     surface_resistance: ResistanceOrZero | None = Field(
         None, description="m²·K/W; 0: the surface has the space's temperature"
     )
+    convection: Convection | None = Field(None, description="in place of a film: convection by name")
+    radiation: Radiation | None = Field(None, description="beside film or convection, or alone")
     relative_humidity: Humidity | None = Field(None, description='a fraction, or text such as "60 %"')
     uncertainty: Uncertainty | None = Field(None, description="of the film coefficient, a fraction")
     _name: str = PrivateAttr("")
+
+    @classmethod
+    def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
+        """Refuse a space that does not say how it exchanges heat with its surfaces."""
+        keys = cls.ANY_OF[0]
+        misspelled = cls._misspelled(data)
+        missing = not any(key in data or (key,) in misspelled for key in (*keys, *cls.LATER))
+        return data, [((), f"needs at least one of {listing(keys, last='or')}")] if missing else []
 
     @property
     def name(self) -> str:
@@ -136,10 +148,8 @@ class Space(Table):
 
     @property
     def h(self) -> float:
-        """Film coefficient, W/(m² K); inf when the surface resistance is 0."""
-        h = _film(self.film, self.surface_resistance)
-        assert h is not None
-        return h
+        """Film coefficient, W/(m² K); inf when the surface resistance is 0; where laws make it, one to start from."""
+        return exchange(self).start
 
 
 def _film(film: float | None, resistance: float | None) -> float | None:
@@ -191,7 +201,7 @@ class Boundary(Table):
     """What holds on a part of the exterior."""
 
     ONE_OF: ClassVar = (("space", "temperature", "heat_flux", "heat_flow", "adiabatic"),)
-    AT_MOST_ONE: ClassVar = (("film", "surface_resistance"),)
+    AT_MOST_ONE: ClassVar = (("film", "surface_resistance", "convection"), ("surface_resistance", "radiation"))
     name: Name
     on: Annotated[Selector | Literal["rest"], WrapValidator(_on)] = Field(description='a selector, or "rest"')
     space: SpaceRef | None = None
@@ -202,13 +212,16 @@ class Boundary(Table):
     film: Film | None = Field(None, description="W/(m²·K), in place of that of the space")
     surface_resistance: ResistanceOrZero | None = Field(None, description="m²·K/W, in place of that of the space")
     uncertainty: Uncertainty | None = Field(None, description="of its film or given flow, a fraction")
+    convection: Convection | None = Field(None, description="in place of the film of the space: convection by name")
+    radiation: Radiation | None = Field(None, description="in place of that of the space")
+    sun: Sun | None = None
 
     @classmethod
     def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
         """See that films go with spaces, and that adiabatic is said and not denied."""
         troubles: list[Trouble] = [
             ((key,), "goes with space only")
-            for key in ("film", "surface_resistance")
+            for key in ("film", "surface_resistance", "convection", "radiation", "sun")
             if key in data and "space" not in data
         ]
         if "uncertainty" in data and not {"space", "heat_flux", "heat_flow"} & set(data):
@@ -261,6 +274,7 @@ class Case(Table):
     model: ModelTable
     spaces: dict[Name, Space] = {}
     materials: dict[Name, Material]
+    fluids: dict[Name, Fluid] = {}
     body: Annotated[tuple[Body, ...], Some()]
     boundary: Annotated[tuple[Boundary, ...], Some()]
     sheet: tuple[Sheet, ...] = ()
@@ -276,6 +290,19 @@ class Case(Table):
     def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
         """Look for what only the whole document shows."""
         return data, document_troubles(data)
+
+    def check(self, context: Context) -> Iterator[Trouble]:
+        """Yield radiation beside a surface resistance that has it in it already, and sun on held surfaces."""
+        for number, boundary in enumerate(self.boundary):
+            if boundary.space is None:
+                continue
+            found = exchange(self.spaces[boundary.space], boundary)
+            from_space = boundary.h is None and boundary.convection is None
+            if boundary.radiation and from_space and self.spaces[boundary.space].surface_resistance is not None:
+                what = f'"{boundary.space}" has a surface resistance, which has radiation in it; give this boundary a film'
+                yield ("boundary", number, "radiation"), what + " or a convection"
+            elif found.film == math.inf and boundary.sun is not None:
+                yield ("boundary", number, "sun"), "has no meaning where the surface has the space's temperature"
 
     def model_post_init(self, context: Any) -> None:
         """Tell materials and spaces their names."""

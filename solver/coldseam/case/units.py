@@ -277,6 +277,21 @@ QUANTITIES: Mapping[str, Quantity] = MappingProxyType(
             {"m³/s": 1.0, "m³/h": 1 / HOUR, "m³/min": 1 / 60, "L/s": 1e-3, "L/min": 1e-3 / 60, "cfm": FOOT**3 / 60},
             {"l/s": "L/s", "l/min": "L/min", "ft³/min": "cfm", "CFM": "cfm"},
         ),
+        "speed": _quantity(
+            "speed",
+            "m/s",
+            {"m/s": 1.0, "km/h": 1.0 / 3.6, "cm/s": 0.01, "ft/min": FOOT / 60, "ft/s": FOOT, "mph": 5280 * FOOT / HOUR},
+            {"kmh": "km/h", "fpm": "ft/min"},
+        ),
+        "pressure": _quantity(
+            "pressure",
+            "bar",
+            {"bar": 1e5, "mbar": 100.0, "Pa": 1.0, "hPa": 100.0, "kPa": 1e3, "atm": 101325.0, "psi": 6894.757293168361},
+        ),
+        "viscosity": _quantity(
+            "dynamic viscosity", "Pa·s", {"Pa·s": 1.0, "mPa·s": 1e-3, "µPa·s": 1e-6, "cP": 1e-3}, {"kg/(m·s)": "Pa·s"}
+        ),
+        "angle": _quantity("angle", "°", {"°": 1.0}, {"deg": "°", "degree": "°", "degrees": "°"}),
         "length per depth": _quantity(
             "area per metre of depth", "m²/m", {"m²/m": 1.0, "mm²/mm": 1e-3, "ft²/ft": FOOT, "m": 1.0, "mm": 1e-3}
         ),

@@ -164,6 +164,8 @@ def solve(case: Case, mesher, log: Callable[[str, str], None]) -> Solution:
 
 def _proven(case: Case, mesh: Mesh, before: Steady | None, log) -> Steady:
     steady = solve_on(case, mesh, before)
+    if steady.settled is not None:
+        log("solve", f"coefficients settled after {steady.settled.iterations} steps")
     if steady.given.clashes:
         return steady
     log("solve", "proving the heat flows")

@@ -15,6 +15,8 @@ from coldseam.mesh.locate import interpolate
 from coldseam.mesh.measure import cell_measure
 from coldseam.mesh.types import Mesh
 from coldseam.solution.bounds import Bounds
+from coldseam.solution.coefficients import depends
+from coldseam.solution.nonlinear import Settled, settle
 from coldseam.solution.respond import Response, respond
 from coldseam.volumes.conditions import Conditions, body_mask, conditions
 from coldseam.volumes.network import Network
@@ -53,6 +55,8 @@ class Steady:
         Heat released in the bodies, W (2D: W/m).
     bounds
         Bounds of the heat flows; None where they were not asked for.
+    settled
+        How coefficients that depend on the temperatures were found; None where none do.
     """
 
     case: Case
@@ -67,6 +71,7 @@ class Steady:
     boundary_flow: np.ndarray
     source_flow: float
     bounds: Bounds | None = None
+    settled: Settled | None = None
 
     @property
     def possible(self) -> tuple[float, float]:
@@ -105,6 +110,9 @@ class Steady:
 def solve_on(case: Case, mesh: Mesh, before: Steady | None = None) -> Steady:
     """Solve a steady case on a mesh.
 
+    Where coefficients depend on the temperatures they are iterated first; what is solved and proven then is the
+    linear problem with the coefficients frozen at the solution.
+
     Parameters
     ----------
     case
@@ -127,7 +135,14 @@ def solve_on(case: Case, mesh: Mesh, before: Steady | None = None) -> Steady:
     operator, weights = node_operator(mesh, given)
     network = node_network(mesh, given, operator)
     require_temperatures(mesh, network)
-    guess = _from(before, mesh) if before else None
+    settled = None
+    if depends(case):
+        start = None if before is None else interpolate(before.mesh, before.temperature[:, None], mesh.points)[:, 0]
+        settled = settle(case, mesh, facet_boundary, given, operator, start)
+        given = settled.given
+        network = node_network(mesh, given, operator)
+    alike = before is not None and before.response.network.has_load == network.has_load  # as many unit fields
+    guess = _from(before, mesh) if alike else None
     response = respond(network, mesh.dim, NODE_TOLERANCE, guess=guess, uneven=given.uneven)
 
     temperatures = np.array([terminal.temperature for terminal in given.terminals])
@@ -146,6 +161,7 @@ def solve_on(case: Case, mesh: Mesh, before: Steady | None = None) -> Steady:
         temperature=relative + reference,
         boundary_flow=boundary_flows(mesh, facet_boundary, given, network, relative, state, len(case.boundary)),
         source_flow=float(given.source @ cell_measure(mesh)),
+        settled=settled,
     )
     if result.relative_closure > CLOSURE_LIMIT:
         raise SolveError(

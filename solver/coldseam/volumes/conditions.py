@@ -12,6 +12,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from coldseam.case.films import exchange
 from coldseam.errors import CaseError, Fault
 from coldseam.mesh.contacts import interface_facets
 from coldseam.mesh.measure import cell_measure, facet_measure
@@ -64,8 +65,8 @@ class Conditions:
         Terminal of every exterior facet, -1 where none, shape (n_facets,).
     terminals
         The terminals.
-    sheet_facets, sheet_conductance
-        Facets that carry a sheet, (n, dim), and conductivity times thickness, W/K, (n,).
+    sheet_facets, sheet_conductance, sheet_number
+        Facets that carry a sheet, (n, dim), conductivity times thickness, W/K, (n,), and which ``[[sheet]]``, (n,).
     link_conductance
         Conductance of the contact at every link, W/(m² K), shape (n_links,).
     clashes
@@ -83,6 +84,7 @@ class Conditions:
     sheet_conductance: np.ndarray
     link_conductance: np.ndarray
     clashes: tuple[tuple[int, int], ...]
+    sheet_number: np.ndarray | None = None
 
     @property
     def uneven(self) -> bool:
@@ -124,7 +126,7 @@ def conditions(case: Case, mesh: Mesh, facet_boundary: np.ndarray) -> Conditions
             ]
         )
     film = np.array([boundary_film(case, b) for b in case.boundary])
-    sheet_facets, sheet_conductance = _sheets(case, mesh)
+    sheet_facets, sheet_conductance, sheet_number = _sheets(case, mesh)
     resistance = np.array([c.resistance for c in case.contact])
     return Conditions(
         conductivity=conductivity,
@@ -138,20 +140,20 @@ def conditions(case: Case, mesh: Mesh, facet_boundary: np.ndarray) -> Conditions
         sheet_conductance=sheet_conductance,
         link_conductance=np.empty(0) if mesh.links is None else 1.0 / resistance[mesh.link_contact],
         clashes=clashes,
+        sheet_number=sheet_number,
     )
 
 
 def boundary_film(case: Case, boundary) -> float:
-    """Return a boundary's film coefficient, W/(m² K): inf for a fixed surface, 0 where heat is given."""
+    """Return a boundary's film coefficient, W/(m² K): inf for a fixed surface, 0 where heat is given.
+
+    Where laws make it (convection by name, radiation), the one to start from; the answer's is in the conditions.
+    """
     if boundary.temperature is not None:
         return np.inf
     if boundary.space is None:
         return 0.0
-    if boundary.film is not None:
-        return boundary.film
-    if boundary.surface_resistance is not None:
-        return 1.0 / boundary.surface_resistance if boundary.surface_resistance > 0 else np.inf
-    return case.spaces[boundary.space].h
+    return exchange(case.spaces[boundary.space], boundary).start
 
 
 def boundary_temperature(case: Case, boundary) -> float | None:
@@ -238,7 +240,7 @@ def body_mask(case: Case, mesh: Mesh, name: str) -> np.ndarray:
     return np.array([body.name == name or body.name.startswith(f"{name}/") for body in mesh.bodies])
 
 
-def _sheets(case: Case, mesh: Mesh) -> tuple[np.ndarray, np.ndarray]:
+def _sheets(case: Case, mesh: Mesh) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     from coldseam.mesh.boundaries import select
 
     facets, conductance = [np.empty((0, mesh.dim), dtype=np.int64)], [np.empty(0)]
@@ -264,4 +266,4 @@ def _sheets(case: Case, mesh: Mesh) -> tuple[np.ndarray, np.ndarray]:
             )
         facets.append(found)
         conductance.append(np.full(len(found), k * sheet.thickness))
-    return np.vstack(facets), np.concatenate(conductance)
+    return np.vstack(facets), np.concatenate(conductance), np.repeat(np.arange(len(case.sheet)), [len(f) for f in facets[1:]])

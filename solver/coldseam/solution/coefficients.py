@@ -1,0 +1,314 @@
+"""Conditions of a case at a given temperature field: what depends on the answer, frozen.
+
+The networks (volumes/) are linear: conductivities, films and outside temperatures are numbers. Here they are
+evaluated from a field, so that the linear network has this field's heat flows exactly (the *secant* form):
+
+- a cell's conductivity is the mean of k over its temperatures, each edge's mean weighted by the square of its
+  temperature step: along a straight bar Kirchhoff's transformation, so the flow does not depend on the mesh;
+- convection: one film for a boundary, from its mean surface temperature;
+- radiation: one film for each facet, ``h_r (t_r - t_s) = emissivity sigma (T_r^4 - T_s^4)``;
+- all that a boundary meets (air, surroundings, sky, sun) is one outside temperature t_e, with
+  ``h (t_e - t_s) = h_c (t_air - t_s) + h_r (t_r - t_s) + absorbed sun``. Where it differs from facet to facet, because
+  h_r does, t_e is the mean and a heat flux makes up the rest.
+
+``excess`` is by how much ``-dq/dt_s`` is above the secant film: with it added, the iteration of solution/nonlinear.py
+is Newton's at the boundaries. The mean surface temperature is treated there as if it were each facet's own,
+which couples nothing and so leaves the matrix as sparse and symmetric as it is.
+"""
+
+from __future__ import annotations
+
+import dataclasses
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from coldseam.case.films import ATMOSPHERE, Exchange, exchange
+from coldseam.errors import CaseError, Fault
+from coldseam.mesh.types import Mesh
+from coldseam.physics import convection, fluids, laws, radiation
+from coldseam.volumes.conditions import Conditions, conditions
+from coldseam.volumes.operator import cell_pairs
+from coldseam.volumes.section import facet_shares
+
+if TYPE_CHECKING:
+    from coldseam.case.model import Boundary, Case
+
+LEAST_FILM = 1e-9
+"""W/(m² K): keeps a boundary that exchanges nothing (emissivity 0) in the network."""
+SAME = 1e-9
+"""K: outside temperatures that differ by less are one."""
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class Coefficients:
+    """Conditions at a temperature field.
+
+    Parameters
+    ----------
+    given
+        The conditions, in secant form.
+    excess
+        ``-dq/dt_s`` less the film, of every exterior facet, W/(m² K), (n_facets,).
+    films
+        What was used at each boundary with laws, by its name, for the answers.
+    """
+
+    given: Conditions
+    excess: np.ndarray
+    films: dict[str, dict[str, Any]]
+
+
+def depends(case: Case) -> bool:
+    """Return whether anything in a case depends on the answer's temperatures."""
+    return any(m.law is not None for m in case.materials.values()) or any(found.depends for _, found in exchanges(case))
+
+
+def exchanges(case: Case) -> list[tuple[Boundary, Exchange]]:
+    """Return every boundary that faces a space, with what it exchanges heat by."""
+    return [(b, exchange(case.spaces[b.space], b)) for b in case.boundary if b.space is not None]
+
+
+def frozen_conditions(
+    case: Case,
+    mesh: Mesh,
+    facet_boundary: np.ndarray,
+    temperature: np.ndarray,
+    outside: Mapping[str, float] | None = None,
+) -> Conditions:
+    """Return the conditions of a case at a temperature field, as a linear problem with the same heat flows.
+
+    Parameters
+    ----------
+    case
+        The case.
+    mesh, facet_boundary
+        Its mesh, contacts opened, and the boundary of each exterior facet, (n_facets,).
+    temperature
+        At the nodes, °C, (n_nodes,).
+    outside
+        Temperatures of spaces, °C, by name, in place of those of the case.
+
+    Raises
+    ------
+    CaseError
+        As :func:`coldseam.volumes.conditions.conditions`, and a surface that radiates without an emissivity.
+    """
+    return evaluate(case, mesh, facet_boundary, conditions(case, mesh, facet_boundary), temperature, outside).given
+
+
+def evaluate(
+    case: Case,
+    mesh: Mesh,
+    facet_boundary: np.ndarray,
+    base: Conditions,
+    temperature: np.ndarray,
+    outside: Mapping[str, float] | None = None,
+) -> Coefficients:
+    """Return conditions and slopes at a temperature field; ``base`` is what does not depend on it.
+
+    Parameters and errors as :func:`frozen_conditions`.
+    """
+    air = {name: space.temperature for name, space in case.spaces.items()} | dict(outside or {})
+    film, flux, excess = base.film.copy(), base.flux.copy(), np.zeros(len(base.film))
+    temperatures = [_outside(case, terminal, air) for terminal in base.terminals]
+    films: dict[str, dict[str, Any]] = {}
+    for number, boundary in enumerate(case.boundary):
+        found = None if boundary.space is None else exchange(case.spaces[boundary.space], boundary)
+        facets = np.flatnonzero(facet_boundary == number)
+        if found is None or not found.depends or not len(facets):
+            continue
+        part = _surface(case, mesh, boundary, found, facets, temperature, air[boundary.space])
+        film[facets], excess[facets] = part.film, part.excess
+        flux[facets] = base.flux[facets] + part.film * (part.outside - part.mean_outside)
+        temperatures[base.terminal[facets[0]]] = part.mean_outside
+        films[boundary.name] = part.used
+    terminals = tuple(
+        dataclasses.replace(terminal, temperature=t) for terminal, t in zip(base.terminals, temperatures, strict=True)
+    )
+    given = dataclasses.replace(
+        base,
+        conductivity=_conductivity(case, mesh, base, temperature),
+        film=film,
+        flux=flux,
+        terminals=terminals,
+        sheet_conductance=_sheet_conductance(case, base, temperature),
+    )
+    return Coefficients(given=given, excess=excess, films=films)
+
+
+def _outside(case: Case, terminal, air: Mapping[str, float]) -> float:
+    spaces = {case.boundary[b].space for b in terminal.boundaries} - {None}
+    return air[spaces.pop()] if spaces else terminal.temperature
+
+
+def _conductivity(case: Case, mesh: Mesh, base: Conditions, temperature: np.ndarray) -> np.ndarray:
+    """Return every cell's conductivity, W/(m K), (n_cells,)."""
+    k, pairs = base.conductivity.copy(), cell_pairs(mesh.dim)
+    for number, body in enumerate(mesh.bodies):
+        law = case.materials[body.material].law
+        if law is None:
+            continue
+        cells = np.flatnonzero(mesh.cell_body == number)
+        t = temperature[mesh.cells[cells]]
+        first, second = t[:, pairs[:, 0]], t[:, pairs[:, 1]]
+        weight = (first - second) ** 2
+        weight += 1e-12 * weight.max(initial=0.0) + 1e-30  # cells of one temperature: the plain mean
+        k[cells] = (weight * laws.mean_conductivity(law, first, second)).sum(axis=1) / weight.sum(axis=1)
+    return k
+
+
+def _sheet_conductance(case: Case, base: Conditions, temperature: np.ndarray) -> np.ndarray:
+    """Return conductivity times thickness of every sheet facet, W/K, (n,)."""
+    kt = base.sheet_conductance.copy()
+    for number, sheet in enumerate(case.sheet):
+        law = case.materials[sheet.material].law
+        if law is not None and base.sheet_number is not None:
+            own = base.sheet_number == number
+            t = temperature[base.sheet_facets[own]]
+            kt[own] = sheet.thickness * laws.mean_conductivity(law, t.min(axis=1), t.max(axis=1))
+    return kt
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class _Surface:
+    """A boundary's facets: films, excess, outside temperatures (n,), their mean, and what was used."""
+
+    film: np.ndarray
+    excess: np.ndarray
+    outside: np.ndarray
+    mean_outside: float
+    used: dict[str, Any]
+
+
+def _surface(
+    case: Case, mesh: Mesh, boundary: Boundary, found: Exchange, facets: np.ndarray, temperature: np.ndarray, air: float
+) -> _Surface:
+    shares = facet_shares(mesh, mesh.facets[facets])
+    area = shares.sum(axis=1)
+    surface = (shares * temperature[mesh.facets[facets]]).sum(axis=1) / area
+    mean = float(area @ surface / area.sum())
+    h, excess, used = _convective(case, found, mean, air)
+    driven, total = h * air, np.full(len(facets), h)
+    excess_all = np.full(len(facets), excess)
+    radiant = air
+    if found.radiation is not None:
+        emissivity = _emissivity(case, mesh, boundary, found, facets)
+        radiant = _radiant(found, air)
+        h_r = radiation.secant(emissivity, surface, radiant)
+        total, driven = total + h_r, driven + h_r * radiant
+        excess_all = excess_all + radiation.tangent(emissivity, surface) - h_r
+        used["radiation"] = {
+            "film": float(area @ h_r / area.sum()),
+            "emissivity": float(area @ emissivity / area.sum()),
+            "temperature": radiant,
+            "heat_flow": float(area @ (h_r * (radiant - surface))),
+        }
+    sun = 0.0 if found.sun is None else found.sun.absorptivity * found.sun.irradiance
+    if found.sun is not None:
+        used["sun"] = {"absorbed": sun, "heat_flow": sun * float(area.sum())}
+    used["convection"]["heat_flow"] = float(area @ (h * (air - surface)))
+    total = np.maximum(total, LEAST_FILM)
+    outside = (driven + sun) / total
+    mean_outside = float(area * total @ outside / (area @ total))
+    if abs(radiant - air) < SAME and sun == 0.0:
+        outside, mean_outside = np.full(len(facets), air), air
+    used |= {"film": float(area @ total / area.sum()), "outside_temperature": mean_outside, "surface_temperature": mean}
+    return _Surface(film=total, excess=excess_all, outside=outside, mean_outside=mean_outside, used=used)
+
+
+def _convective(case: Case, found: Exchange, mean: float, air: float) -> tuple[float, float, dict[str, Any]]:
+    """Return a boundary's convective film, its excess (W/(m² K)) and what is told of it."""
+    law = found.convection
+    if law is None:
+        return found.film or 0.0, 0.0, {"convection": {"film": found.film or 0.0, "given": True}}
+    properties = properties_of(case, law)
+    made = convection.film(law, mean, air, properties)
+    steep = convection.slope(law, mean, air, properties)
+    told = {
+        "kind": law.kind,
+        "surface": law.surface,
+        "film": made.h,
+        "correlation": made.correlation,
+        made.number or "number": made.value,
+        "Nu": made.nusselt,
+        "length": made.length,
+        "valid": made.valid,
+        "in_range": made.in_range,
+        "property_temperature": made.temperature,
+        "fluid": law.fluid or "air",
+    }
+    # Beyond h itself the slope only speeds the iteration up; a negative tangent could not be solved with.
+    return made.h, max(-steep * (air - mean), -0.5 * made.h), {"convection": told}
+
+
+def properties_of(case: Case, law):
+    """Return the function from °C to the properties of the fluid that a convection is in."""
+    if law.fluid is None:
+        return lambda t: fluids.air(t, law.pressure or ATMOSPHERE)
+    rows = case.fluids[law.fluid].table
+    return lambda t: fluids.tabulated(rows, t)
+
+
+def fluid_range(case: Case, law) -> tuple[float, float]:
+    """Return the temperatures that the properties of a convection's fluid hold for, °C."""
+    if law.fluid is None:
+        return fluids.AIR_RANGE
+    table = case.fluids[law.fluid].table
+    return table[0][0], table[-1][0]
+
+
+def _radiant(found: Exchange, air: float) -> float:
+    law = found.radiation
+    assert law is not None
+    around = air if law.surroundings is None else law.surroundings
+    if law.sky is None:
+        return around
+    sky = law.sky.temperature if law.sky.temperature is not None else radiation.clear_sky(air)
+    return radiation.radiant_temperature(around, sky, law.sky.share)
+
+
+def _emissivity(case: Case, mesh: Mesh, boundary: Boundary, found: Exchange, facets: np.ndarray) -> np.ndarray:
+    """Return the facets' emissivity, (n,): the boundary's, else that of the material behind."""
+    assert found.radiation is not None
+    if found.radiation.emissivity is not None:
+        return np.full(len(facets), found.radiation.emissivity)
+    of_body = np.array([np.nan if (e := case.materials[b.material].emissivity) is None else e for b in mesh.bodies])
+    found_here = of_body[mesh.cell_body[mesh.facet_cell[facets]]]
+    if np.isnan(found_here).any():
+        lacking = mesh.bodies[mesh.cell_body[mesh.facet_cell[facets[np.isnan(found_here)][0]]]]
+        what = (
+            f'radiates, but neither its radiation nor the material "{lacking.material}" of "{lacking.name}" says with '
+            "what emissivity"
+        )
+        number = next(n for n, b in enumerate(case.boundary) if b.name == boundary.name)
+        raise CaseError([Fault(path=("boundary", number), what=what)])
+    return found_here
+
+
+def range_remarks(case: Case, mesh: Mesh, temperature: np.ndarray, films: dict[str, dict[str, Any]]) -> tuple[str, ...]:
+    """Return a warning for every body and every boundary where a law was used beyond its range."""
+    told = []
+    for number, body in enumerate(mesh.bodies):
+        law = case.materials[body.material].law
+        cells = mesh.cells[mesh.cell_body == number]
+        reached = laws.beyond(law, temperature[cells]) if law is not None and len(cells) else None
+        if law is not None and reached is not None:
+            told.append(
+                f'body "{body.name}": its temperatures of {reached[0]:.1f} to {reached[1]:.1f} °C leave the range of the '
+                f'conductivity of "{body.material}", {law.limits[0]:.1f} to {law.limits[1]:.1f} °C; beyond it the value '
+                "at the end of the range was taken"
+            )
+    for name, used in films.items():
+        found = used["convection"]
+        if not found.get("in_range", True):
+            number = "Ra" if "Ra" in found else "Re"
+            low, high = found["valid"]
+            told.append(
+                f'boundary "{name}": {number} = {found[number]:.3g} or a part of the film is outside the range of '
+                f'"{found["correlation"]}", {low:.3g} to {high:.3g}; the film coefficient of {found["film"]:.3g} W/(m²·K) '
+                "is an extrapolation"
+            )
+    return tuple(told)
