@@ -1,8 +1,8 @@
 """Cautions where a surface can hurt who touches it.
 
-Thresholds from memory: ISO 13732-1 (hot surfaces: 51 °C for one minute's contact with any material, 60 °C and more for
-seconds with bare metal), ISO 13732-3 (cold surfaces: metal below about -20 °C numbs and freezes fast to moist skin within
-seconds). They are told where the case's films or materials depend on temperatures, that is where such surfaces
+Thresholds from memory: ISO 13732-1 (hot surfaces: 51 °C for one minute's contact with any material, 60 °C and more
+for seconds with bare metal), ISO 13732-3 (cold surfaces: metal below about -20 °C numbs and freezes fast to moist skin
+within seconds). They are told where the case's films or materials depend on temperatures, that is where such surfaces
 are what the case is about, and for surfaces that face a space.
 """
 
@@ -34,7 +34,7 @@ def cautions(steady: Steady) -> list[str]:
             )
         if cold <= COLD and boundary.space is not None and steady.case.spaces[boundary.space].temperature > COLD:
             told.append(
-                f'caution: boundary "{boundary.name}" falls to {cold:.1f} °C beside warmer air; bare metal that cold injures '
-                f"skin on contact (ISO 13732-3, from memory). {ASK}"
+                f'caution: boundary "{boundary.name}" falls to {cold:.1f} °C beside warmer air; bare metal that cold '
+                f"injures skin on contact (ISO 13732-3, from memory). {ASK}"
             )
     return told

@@ -299,8 +299,8 @@ class Case(Table):
             found = exchange(self.spaces[boundary.space], boundary)
             from_space = boundary.h is None and boundary.convection is None
             if boundary.radiation and from_space and self.spaces[boundary.space].surface_resistance is not None:
-                what = f'"{boundary.space}" has a surface resistance, which has radiation in it; give this boundary a film'
-                yield ("boundary", number, "radiation"), what + " or a convection"
+                what = f'"{boundary.space}" has a surface resistance, and that has radiation in it; give this boundary'
+                yield ("boundary", number, "radiation"), f"{what} a film or a convection of its own"
             elif found.film == math.inf and boundary.sun is not None:
                 yield ("boundary", number, "sun"), "has no meaning where the surface has the space's temperature"
 

@@ -4,8 +4,8 @@ Tables are interpolated by the monotone cubic of Fritsch and Carlson (scipy's PC
 leaves the range of neighbouring points. Nothing is extrapolated: beyond a law's range the value at its end
 holds, with slope 0, and :func:`beyond` tells how far a field went.
 
-References: NIST cryogenic material properties (log-polynomials: Marquardt, Le, Radebaugh 2000); ISO 10456
-(conversions by ``exp(f_T (T2 - T1))`` and ``exp(f_psi (psi2 - psi1))``); Fritsch, Carlson 1980, SIAM J. Numer. Anal. 17, 238.
+References: NIST cryogenic material properties (log-polynomials: Marquardt, Le, Radebaugh 2000); ISO 10456 (conversions by
+``exp(f_T (T2 - T1))`` and ``exp(f_psi (psi2 - psi1))``); Fritsch, Carlson 1980, SIAM J. Numer. Anal. 17, 238.
 """
 
 from __future__ import annotations
@@ -20,11 +20,11 @@ if TYPE_CHECKING:
 
 KELVIN = 273.15
 _GAUSS = tuple(zip(*np.polynomial.legendre.leggauss(4), strict=True))
-"""Points on [-1, 1] and weights: exact for polynomials of the seventh degree, 1e-7 for the cryogenic fits over 100 K."""
+"""Points on [-1, 1] and weights: exact for polynomials of the seventh degree."""
 
 
 def conductivity(law: ConductivityLaw, temperature: np.ndarray) -> np.ndarray:
-    """Return the conductivity, W/(m K), at temperatures in °C, any shape.
+    """Return the conductivity, W/(m K), at temperatures in °C, shape (n,) or any other.
 
     Examples
     --------
@@ -48,7 +48,7 @@ def conductivity(law: ConductivityLaw, temperature: np.ndarray) -> np.ndarray:
 
 
 def slope(law: ConductivityLaw, temperature: np.ndarray) -> np.ndarray:
-    """Return dk/dT, W/(m K²), at temperatures in °C, any shape; 0 beyond the range."""
+    """Return dk/dT, W/(m K²), at temperatures in °C, shape (n,) or any other; 0 beyond the range."""
     low, high = law.limits
     temperature = np.asarray(temperature, dtype=float)
     t = np.clip(temperature, low, high)
@@ -76,12 +76,12 @@ def mean_conductivity(law: ConductivityLaw, first: np.ndarray, second: np.ndarra
     Parameters
     ----------
     first, second
-        °C, same shape.
+        °C, both of shape (n,) or any other.
 
     Returns
     -------
     conductivity
-        W/(m K), same shape.
+        W/(m K), shape (n,) or what it was.
     """
     middle, half = 0.5 * (first + second), 0.5 * (second - first)
     total = np.zeros_like(middle)
@@ -91,7 +91,7 @@ def mean_conductivity(law: ConductivityLaw, first: np.ndarray, second: np.ndarra
 
 
 def beyond(law: ConductivityLaw, temperature: np.ndarray) -> tuple[float, float] | None:
-    """Return lowest and highest of some temperatures (°C) where they leave the law's range, else None."""
+    """Return lowest and highest of some temperatures (°C, shape (n,) or any) where they leave the law's range, else None."""
     low, high = law.limits
     cold, warm = float(np.min(temperature)), float(np.max(temperature))
     slack = 1e-6 * (high - low)

@@ -1,7 +1,7 @@
 """Radiation of grey surfaces to large surroundings, the sky, and the sun: arrays in, arrays out.
 
-``q = emissivity sigma (T_r^4 - T_s^4)`` into the surface, T in kelvin. T_r is that of a black enclosure; where a part F of
-it is sky, ``T_r^4 = F T_sky^4 + (1 - F) T_surroundings^4``.
+``q = emissivity sigma (T_r^4 - T_s^4)`` into the surface, T in kelvin. T_r is that of a black enclosure; where a
+part F of it is sky, ``T_r^4 = F T_sky^4 + (1 - F) T_surroundings^4``.
 """
 
 from __future__ import annotations
@@ -19,9 +19,9 @@ def secant(emissivity: np.ndarray | float, surface: np.ndarray, radiant: float) 
     Parameters
     ----------
     emissivity
-        Of the surface, 0 to 1.
+        Of the surface, 0 to 1, one number or shape (n,).
     surface
-        °C, (n,).
+        °C, shape (n,).
     radiant
         Temperature of the surroundings, °C.
 
@@ -45,7 +45,7 @@ def radiant_temperature(surroundings: float, sky: float | None = None, share: fl
     Examples
     --------
     >>> round(radiant_temperature(10.0, -10.0, 0.5), 2)
-    0.53
+    0.55
     """
     if sky is None:
         return surroundings

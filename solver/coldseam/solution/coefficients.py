@@ -107,9 +107,19 @@ def evaluate(
     temperature: np.ndarray,
     outside: Mapping[str, float] | None = None,
 ) -> Coefficients:
-    """Return conditions and slopes at a temperature field; ``base`` is what does not depend on it.
+    """Return conditions and slopes at a temperature field.
 
-    Parameters and errors as :func:`frozen_conditions`.
+    Parameters
+    ----------
+    case, mesh, facet_boundary, temperature, outside
+        As for :func:`frozen_conditions`: shapes (n_facets,) and (n_nodes,), °C.
+    base
+        What does not depend on the field, from :func:`coldseam.volumes.conditions.conditions`.
+
+    Raises
+    ------
+    CaseError
+        A surface that radiates without an emissivity.
     """
     air = {name: space.temperature for name, space in case.spaces.items()} | dict(outside or {})
     film, flux, excess = base.film.copy(), base.flux.copy(), np.zeros(len(base.film))
@@ -157,6 +167,17 @@ def _conductivity(case: Case, mesh: Mesh, base: Conditions, temperature: np.ndar
         weight = (first - second) ** 2
         weight += 1e-12 * weight.max(initial=0.0) + 1e-30  # cells of one temperature: the plain mean
         k[cells] = (weight * laws.mean_conductivity(law, first, second)).sum(axis=1) / weight.sum(axis=1)
+    return k
+
+
+def other_average(case: Case, mesh: Mesh, base: Conditions, temperature: np.ndarray) -> np.ndarray:
+    """Return the conductivity at each cell's mean temperature, W/(m K), (n_cells,); the field in °C, (n_nodes,)."""
+    k = base.conductivity.copy()
+    for number, body in enumerate(mesh.bodies):
+        law = case.materials[body.material].law
+        if law is not None:
+            cells = np.flatnonzero(mesh.cell_body == number)
+            k[cells] = laws.conductivity(law, temperature[mesh.cells[cells]].mean(axis=1))
     return k
 
 
@@ -289,7 +310,7 @@ def _emissivity(case: Case, mesh: Mesh, boundary: Boundary, found: Exchange, fac
 
 
 def range_remarks(case: Case, mesh: Mesh, temperature: np.ndarray, films: dict[str, dict[str, Any]]) -> tuple[str, ...]:
-    """Return a warning for every body and every boundary where a law was used beyond its range."""
+    """Return a warning for every body and every boundary where a law was used beyond its range; °C, (n_nodes,)."""
     told = []
     for number, body in enumerate(mesh.bodies):
         law = case.materials[body.material].law
@@ -297,9 +318,9 @@ def range_remarks(case: Case, mesh: Mesh, temperature: np.ndarray, films: dict[s
         reached = laws.beyond(law, temperature[cells]) if law is not None and len(cells) else None
         if law is not None and reached is not None:
             told.append(
-                f'body "{body.name}": its temperatures of {reached[0]:.1f} to {reached[1]:.1f} °C leave the range of the '
-                f'conductivity of "{body.material}", {law.limits[0]:.1f} to {law.limits[1]:.1f} °C; beyond it the value '
-                "at the end of the range was taken"
+                f'body "{body.name}": its temperatures of {reached[0]:.1f} to {reached[1]:.1f} °C leave the range '
+                f'of the conductivity of "{body.material}", {law.limits[0]:.1f} to {law.limits[1]:.1f} °C; beyond it the '
+                "value at the end of the range was taken"
             )
     for name, used in films.items():
         found = used["convection"]
@@ -308,7 +329,7 @@ def range_remarks(case: Case, mesh: Mesh, temperature: np.ndarray, films: dict[s
             low, high = found["valid"]
             told.append(
                 f'boundary "{name}": {number} = {found[number]:.3g} or a part of the film is outside the range of '
-                f'"{found["correlation"]}", {low:.3g} to {high:.3g}; the film coefficient of {found["film"]:.3g} W/(m²·K) '
-                "is an extrapolation"
+                f'"{found["correlation"]}", {low:.3g} to {high:.3g}; the film coefficient of {found["film"]:.3g} '
+                "W/(m²·K) is an extrapolation"
             )
     return tuple(told)

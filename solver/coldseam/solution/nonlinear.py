@@ -6,8 +6,8 @@ Each step freezes the coefficients at the present field T (solution/coefficients
 
 With the excess of the films this is Newton's method at the boundaries. Conductivities and the mean temperatures of
 convective films lag by one step (their exact derivatives would make the matrix unsymmetric, the latter also
-full); Anderson's acceleration (1965, J. ACM 12, 547) of depth ``DEPTH`` makes up for that. The first step solves with the usual films of
-:func:`coldseam.volumes.conditions.boundary_film`, so the start is the field of a linear case.
+full); Anderson's acceleration (1965, J. ACM 12, 547) of depth ``DEPTH`` makes up for that. The first step solves with
+the usual films of :func:`coldseam.volumes.conditions.boundary_film`, so the start is the field of a linear case.
 
 In three dimensions the multigrid hierarchy of the first step stays the preconditioner of all.
 """
@@ -23,7 +23,14 @@ from scipy import sparse
 
 from coldseam.errors import SolveError
 from coldseam.mesh.types import Mesh
-from coldseam.solution.coefficients import Coefficients, evaluate, exchanges, fluid_range, range_remarks
+from coldseam.solution.coefficients import (
+    Coefficients,
+    evaluate,
+    exchanges,
+    fluid_range,
+    other_average,
+    range_remarks,
+)
 from coldseam.solution.linear import DIRECT_LIMIT, DirectSolver, MultigridSolver, node_hierarchy
 from coldseam.volumes.conditions import Conditions
 from coldseam.volumes.network import Network
@@ -43,7 +50,10 @@ DEPTH = 4
 INNER_TOLERANCE = 1e-8
 COLDEST = 1.0
 """K: no step goes below this."""
-REASON = "the case depends on temperatures: holds for the converged, frozen coefficients"
+REASON = (
+    "the case depends on temperatures: holds for the converged, frozen coefficients; the effect of one conductivity a cell "
+    "is estimated and added"
+)
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -60,12 +70,15 @@ class Settled:
         Largest correction of every step, K.
     remarks
         Laws used beyond their ranges.
+    averaging
+        Conductivity at each cell's mean temperature less that used, W/(m K), (n_cells,).
     """
 
     coefficients: Coefficients
     temperature: np.ndarray
     history: tuple[float, ...]
     remarks: tuple[str, ...]
+    averaging: np.ndarray
 
     @property
     def given(self) -> Conditions:
@@ -134,7 +147,14 @@ def settle(
     found = evaluate(case, mesh, facet_boundary, base, field, outside)
     _require_fluids(case, found)
     remarks = range_remarks(case, mesh, field, found.films)
-    return Settled(coefficients=found, temperature=field, history=tuple(history), remarks=remarks)
+    other = other_average(case, mesh, base, field)
+    return Settled(
+        coefficients=found,
+        temperature=field,
+        history=tuple(history),
+        remarks=remarks,
+        averaging=other - found.given.conductivity,
+    )
 
 
 def _span(now: Coefficients, field: np.ndarray) -> float:
@@ -173,9 +193,9 @@ class _Stepper:
 
 
 def residual(network: Network, given: Conditions, field: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """Return what every node's balance lacks (W) at a field (°C), and the temperatures that fixed nodes are held at.
+    """Return what every node's balance lacks at a field, and the temperatures that fixed nodes are held at.
 
-    Both of shape (n_nodes,); in a cross-section W/m.
+    ``field`` in °C, (n_nodes,); returned are W (in a cross-section W/m) and °C, both of shape (n_nodes,).
     """
     known = np.array([terminal.temperature for terminal in given.terminals])
     shift = float(known.mean())  # differences keep the digits
@@ -234,6 +254,6 @@ def _require_fluids(case: Case, found: Coefficients) -> None:
         if not low <= at <= high:
             fluid = "air" if law.fluid is None else f'the fluid "{law.fluid}"'
             raise SolveError(
-                f'boundary "{boundary.name}": its film is at {at:.1f} °C, and the properties of {fluid} hold for {low:g} to '
-                f"{high:g} °C. Give it a film coefficient, or a fluid that covers it (a table in [fluids.NAME])"
+                f'boundary "{boundary.name}": its film is at {at:.1f} °C, and the properties of {fluid} hold for '
+                f"{low:g} to {high:g} °C. Give it a film coefficient, or a fluid that covers it (a table in [fluids.NAME])"
             )

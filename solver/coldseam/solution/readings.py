@@ -14,6 +14,7 @@ from coldseam.solution.steady import Steady
 SMALL_FLOW = 0.05
 """A flow below this part of the throughput is held to the accuracy of this part, not of itself."""
 SHAPE_SAFETY = 1.5
+AVERAGING_SAFETY = 2.0
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -155,7 +156,7 @@ def _bounded(steady: Steady, reading, state, value: float, involved: list[int]) 
     low, high = steady.bounds.interval(reading, state)
     low, high = min(low, value), max(high, value)
     reason = steady_reason(steady)
-    slack = shape_error(steady) * abs(value)
+    slack = (shape_error(steady) + averaging_error(steady)) * abs(value)
     return Interval(
         value=value, low=low - slack, high=high + slack, kind="estimate" if reason else "guaranteed", reason=reason
     )
@@ -214,6 +215,23 @@ def cell_energy(steady: Steady) -> np.ndarray:
     fall = (t[:, pairs[:, 0]] - t[:, pairs[:, 1]]).T
     k = steady.given.conductivity * (1.0 if radius is None else radius)
     return (k * steady.weights * fall**2).sum(axis=0)
+
+
+def averaging_error(steady: Steady) -> float:
+    """Return the estimated relative effect of one conductivity a cell where it depends on the temperature; else 0.
+
+    How much the heat flow would change, to first order in the conductivities, if the other of two second-order
+    averages were taken: k at the cell's mean temperature. Times ``AVERAGING_SAFETY``.
+    """
+    part = averaging_energy(steady)
+    return AVERAGING_SAFETY * abs(float(part.sum())) / max(float(cell_energy(steady).sum()), 1e-300)
+
+
+def averaging_energy(steady: Steady) -> np.ndarray:
+    """Return what the other average of the conductivity adds to each cell's ``k |grad T|²``, W K, (n_cells,)."""
+    if steady.settled is None:
+        return np.zeros(steady.mesh.n_cells)
+    return cell_energy(steady) * steady.settled.averaging / steady.given.conductivity
 
 
 def shape_error(steady: Steady) -> float:

@@ -25,6 +25,9 @@ from coldseam.solution.readings import (
     Interval,
     beyond_proof,
     boundary_intervals,
+    averaging_energy,
+    averaging_error,
+    cell_energy,
     shape_error,
     space_intervals,
     space_terminals,
@@ -300,8 +303,10 @@ def _gap_indicator(steady: Steady, flows) -> np.ndarray:
     if len(steady.given.terminals) > 2 or steady.response.network.has_load:
         states += late[:MOST_READINGS]
     total = np.zeros(steady.mesh.n_cells)
+    averaging = np.abs(averaging_energy(steady))  # in the cells' proportions, of the size of its estimate
+    averaging *= averaging_error(steady) * float(cell_energy(steady).sum()) / max(float(averaging.sum()), 1e-300)
     for state in states:
-        gap = np.maximum(_checked_gap(steady, state), 0.0)
+        gap = np.maximum(_checked_gap(steady, state), 0.0) + (averaging if state is steady.state else 0.0)
         total += gap / max(float(gap.sum()), 1e-300)
     return total
 

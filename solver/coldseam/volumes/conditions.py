@@ -266,4 +266,5 @@ def _sheets(case: Case, mesh: Mesh) -> tuple[np.ndarray, np.ndarray, np.ndarray]
             )
         facets.append(found)
         conductance.append(np.full(len(found), k * sheet.thickness))
-    return np.vstack(facets), np.concatenate(conductance), np.repeat(np.arange(len(case.sheet)), [len(f) for f in facets[1:]])
+    number = np.repeat(np.arange(len(case.sheet)), [len(found) for found in facets[1:]])
+    return np.vstack(facets), np.concatenate(conductance), number
