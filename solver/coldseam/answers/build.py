@@ -260,7 +260,7 @@ def _flow(interval: Interval) -> dict:
 
 def kind_of(boundary) -> str:
     """Return what a boundary of the case sets."""
-    for kind in ("space", "temperature", "heat_flux", "heat_flow"):
+    for kind in ("space", "temperature", "heat_flux", "heat_flow", "cavity"):
         if getattr(boundary, kind) is not None:
             return kind
     return "adiabatic"
@@ -319,5 +319,6 @@ def _bodies(steady: Steady) -> dict[str, BodyAnswer]:
             max_temperature=float(steady.bounded[nodes].max()),
             heat_source=float((steady.given.source[cells] * volume[cells]).sum()),
             loss_share=float(energy[number]) / total if total > 0 else 0.0,
+            air_gap=None if steady.settled is None else steady.settled.coefficients.gaps.get(body.name),
         )
     return found

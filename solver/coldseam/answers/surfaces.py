@@ -136,6 +136,8 @@ def _outside_temperatures(steady: Steady) -> dict[str, float]:
     for terminal in steady.given.terminals:
         for number in terminal.boundaries:
             boundary = steady.case.boundary[number]
+            if boundary.cavity is not None:
+                continue
             own = terminal.temperature if boundary.space is None else steady.case.spaces[boundary.space].temperature
             found[boundary.space or boundary.name] = own
     return found

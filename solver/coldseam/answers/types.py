@@ -72,7 +72,7 @@ class BodyAnswer:
     """One body: volume (m³; m²/m), temperatures (°C), heat released in it (W), and its part of the loss.
 
     ``loss_share`` is the body's part of ``sum k |grad T|²``, which for a linear case without sources is
-    d ln Q / d ln k.
+    d ln Q / d ln k. ``air_gap`` tells how the equivalent conductivity of a body of air was found.
     """
 
     material: str
@@ -82,6 +82,7 @@ class BodyAnswer:
     max_temperature: float
     heat_source: float
     loss_share: float
+    air_gap: dict[str, Any] | None = None
 
 
 @dataclass(frozen=True, kw_only=True)

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Annotated, Any, ClassVar
 
 from pydantic import Field, PrivateAttr, WithJsonSchema
 
+from coldseam.case.gaps import Gap
 from coldseam.case.laws import ConductivityLaw
 from coldseam.case.shapes import Box, Cone, Cylinder, Disc, Enclosure, Polygon, Repeat, Ring, Sphere, Tube
 from coldseam.case.tables import Context, Table, Trouble, listing
@@ -130,7 +131,7 @@ MaterialAxes = Annotated[
 class Material(Table):
     """A material. Values of the named entry of the library hold where the file gives none of its own."""
 
-    LATER: ClassVar = {"air_gap": "air gaps are not supported yet; give an equivalent conductivity"}
+    LATER: ClassVar = {"air_gap": "stands in the [[body]] that the air is in, not in its material"}
     ANY_OF: ClassVar = (("conductivity", "library"),)
     library: str | None = Field(None, description="name of an entry of the built-in library")
     conductivity: Conductivity = Field()
@@ -229,6 +230,7 @@ class Body(Table):
     name: Name
     material: MaterialRef | None = None
     void: Flag = Field(False, description="true cuts the body out")
+    air_gap: Gap | None = Field(None, description="true, or a table: closed air, by its equivalent conductivity")
     heat_source: HeatFlow | None = Field(None, description="W in the whole body (W/m in a plane cross-section)")
     heat_density: HeatDensity | None = Field(None, description="W/m³")
     uncertainty: Uncertainty | None = Field(None, description="of the heat source, a fraction")
@@ -261,6 +263,9 @@ class Body(Table):
             troubles.append((("uncertainty",), what))
         if "materials" in data and "file" not in given:
             troubles.append((("materials",), "goes with file only"))
+        for key in ("void", "repeat", "enclosure", "file", "heat_source", "heat_density"):
+            if "air_gap" in data and key in data:
+                troubles.append((("air_gap",), f"can't go with {key}; make each gap a body with a shape and a material"))
         if "repeat" in data and "group" in given:
             troubles.append((("repeat",), "can't repeat a part of a foreign mesh"))
         return data, troubles

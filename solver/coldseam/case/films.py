@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING, Annotated, Any, ClassVar, Literal
 from pydantic import Field, WithJsonSchema
 
 from coldseam.case.tables import Context, Table, Trouble, fail, listing
-from coldseam.case.values import Amount, Emissivity, Numbers, Ref, Size, Temperature, checked
+from coldseam.case.values import Amount, Emissivity, Film, Numbers, Ref, Size, Temperature, checked
 
 if TYPE_CHECKING:
     from coldseam.case.model import Boundary, Space
@@ -133,6 +133,13 @@ class Sun(Table):
 
     absorptivity: Emissivity = Field(description="of the surface for sunshine")
     irradiance: Irradiance = Field(description="W/m² on the surface, direct, diffuse and reflected")
+
+
+class Cavity(Table):
+    """A hollow whose surfaces exchange radiation with one another: those of all boundaries that name it."""
+
+    film: Film | None = Field(None, description="W/(m²·K), between its surfaces and the air in it; none if not given")
+    surroundings: Temperature | None = Field(None, description="°C, of what is seen through openings; closed if not given")
 
 
 class _Rows:

@@ -15,7 +15,7 @@ from pydantic import Field, PrivateAttr, ValidationInfo, WithJsonSchema, WrapVal
 
 from coldseam.case.bodies import FLAT_SHAPES, SHAPES, SOLID_SHAPES, Body, Material
 from coldseam.case.crosscheck import document_troubles, unused_materials
-from coldseam.case.films import Convection, Fluid, Radiation, Sun, exchange
+from coldseam.case.films import Cavity, Convection, Fluid, Radiation, Sun, exchange
 from coldseam.case.shapes import (
     AXES,
     FACES,
@@ -41,6 +41,7 @@ from coldseam.case.values import (
     Amount,
     Attached,
     BodyRef,
+    Emissivity,
     Film,
     Flag,
     HeatFlow,
@@ -49,6 +50,7 @@ from coldseam.case.values import (
     Length,
     MaterialRef,
     Name,
+    Ref,
     Resistance,
     ResistanceOrZero,
     Size,
@@ -200,7 +202,7 @@ def _on(value: Any, handler: Any, info: ValidationInfo) -> Any:
 class Boundary(Table):
     """What holds on a part of the exterior."""
 
-    ONE_OF: ClassVar = (("space", "temperature", "heat_flux", "heat_flow", "adiabatic"),)
+    ONE_OF: ClassVar = (("space", "temperature", "heat_flux", "heat_flow", "adiabatic", "cavity"),)
     AT_MOST_ONE: ClassVar = (("film", "surface_resistance", "convection"), ("surface_resistance", "radiation"))
     name: Name
     on: Annotated[Selector | Literal["rest"], WrapValidator(_on)] = Field(description='a selector, or "rest"')
@@ -215,6 +217,8 @@ class Boundary(Table):
     convection: Convection | None = Field(None, description="in place of the film of the space: convection by name")
     radiation: Radiation | None = Field(None, description="in place of that of the space")
     sun: Sun | None = None
+    cavity: Annotated[str, Ref("cavity")] | None = Field(None, description="name of the cavity that it is a wall of")
+    emissivity: Emissivity | None = Field(None, description="of a cavity's wall; that of its material if not given")
 
     @classmethod
     def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
@@ -226,6 +230,8 @@ class Boundary(Table):
         ]
         if "uncertainty" in data and not {"space", "heat_flux", "heat_flow"} & set(data):
             troubles.append((("uncertainty",), "goes with space, heat_flux or heat_flow"))
+        if "emissivity" in data and "cavity" not in data:
+            troubles.append((("emissivity",), "goes with cavity; beside a space it stands in radiation"))
         if data.get("adiabatic") is False:
             troubles.append((("adiabatic",), "can only be true; leave it out otherwise"))
         return data, troubles
@@ -275,6 +281,7 @@ class Case(Table):
     spaces: dict[Name, Space] = {}
     materials: dict[Name, Material]
     fluids: dict[Name, Fluid] = {}
+    cavities: dict[Name, Cavity] = {}
     body: Annotated[tuple[Body, ...], Some()]
     boundary: Annotated[tuple[Boundary, ...], Some()]
     sheet: tuple[Sheet, ...] = ()
@@ -293,6 +300,9 @@ class Case(Table):
 
     def check(self, context: Context) -> Iterator[Trouble]:
         """Yield radiation beside a surface resistance that has it in it already, and sun on held surfaces."""
+        for name in self.cavities:
+            if not any(boundary.cavity == name for boundary in self.boundary):
+                yield ("cavities", name), f'no boundary has cavity = "{name}"; give it its walls or take it out'
         for number, boundary in enumerate(self.boundary):
             if boundary.space is None:
                 continue

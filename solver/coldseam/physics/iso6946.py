@@ -25,6 +25,8 @@ OUTSIDE_RESISTANCE = 0.04
 """Outside surface resistance, m²·K/W."""
 VOID_LEVELS = (0.0, 0.01, 0.04)
 """Correction by level of workmanship 0, 1, 2, W/(m²·K) (from memory)."""
+SLIGHTLY_VENTILATED = 0.5
+"""Part of the resistance that a slightly ventilated layer keeps (the text before 2017, from memory)."""
 
 Direction = Literal["up", "horizontal", "down"]
 

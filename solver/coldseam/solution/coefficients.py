@@ -29,6 +29,8 @@ from coldseam.case.films import ATMOSPHERE, Exchange, exchange
 from coldseam.errors import CaseError, Fault
 from coldseam.mesh.types import Mesh
 from coldseam.physics import convection, fluids, laws, radiation
+from coldseam.solution.enclosed import CavityModel, cavity_models
+from coldseam.solution.gaps import Gaps, air_gaps
 from coldseam.volumes.conditions import Conditions, conditions
 from coldseam.volumes.operator import cell_pairs
 from coldseam.volumes.section import facet_shares
@@ -52,18 +54,27 @@ class Coefficients:
         The conditions, in secant form.
     excess
         ``-dq/dt_s`` less the film, of every exterior facet, W/(m² K), (n_facets,).
-    films
-        What was used at each boundary with laws, by its name, for the answers.
+    films, gaps
+        What was used at each boundary with laws and in each air gap, by name, for the answers.
+    coupled
+        The cavities, each with how its patches act on one another, W/K.
     """
 
     given: Conditions
     excess: np.ndarray
     films: dict[str, dict[str, Any]]
+    gaps: dict[str, dict[str, Any]] = dataclasses.field(default_factory=dict)
+    coupled: tuple[tuple[CavityModel, np.ndarray], ...] = ()
 
 
 def depends(case: Case) -> bool:
     """Return whether anything in a case depends on the answer's temperatures."""
-    return any(m.law is not None for m in case.materials.values()) or any(found.depends for _, found in exchanges(case))
+    return (
+        any(m.law is not None for m in case.materials.values())
+        or bool(case.cavities)
+        or any(body.air_gap is not None for body in case.body)
+        or any(found.depends for _, found in exchanges(case))
+    )
 
 
 def exchanges(case: Case) -> list[tuple[Boundary, Exchange]]:
@@ -77,6 +88,7 @@ def frozen_conditions(
     facet_boundary: np.ndarray,
     temperature: np.ndarray,
     outside: Mapping[str, float] | None = None,
+    cavities: tuple[CavityModel, ...] | None = None,
 ) -> Conditions:
     """Return the conditions of a case at a temperature field, as a linear problem with the same heat flows.
 
@@ -90,13 +102,17 @@ def frozen_conditions(
         At the nodes, °C, (n_nodes,).
     outside
         Temperatures of spaces, °C, by name, in place of those of the case.
+    cavities
+        From :func:`coldseam.solution.enclosed.cavity_models`, found anew (which costs time) if not given.
 
     Raises
     ------
     CaseError
         As :func:`coldseam.volumes.conditions.conditions`, and a surface that radiates without an emissivity.
     """
-    return evaluate(case, mesh, facet_boundary, conditions(case, mesh, facet_boundary), temperature, outside).given
+    base = conditions(case, mesh, facet_boundary)
+    models = cavity_models(case, mesh, facet_boundary) if cavities is None else cavities
+    return evaluate(case, mesh, facet_boundary, base, temperature, outside, models).given
 
 
 def evaluate(
@@ -106,12 +122,13 @@ def evaluate(
     base: Conditions,
     temperature: np.ndarray,
     outside: Mapping[str, float] | None = None,
+    cavities: tuple[CavityModel, ...] = (),
 ) -> Coefficients:
     """Return conditions and slopes at a temperature field.
 
     Parameters
     ----------
-    case, mesh, facet_boundary, temperature, outside
+    case, mesh, facet_boundary, temperature, outside, cavities
         As for :func:`frozen_conditions`: shapes (n_facets,) and (n_nodes,), °C.
     base
         What does not depend on the field, from :func:`coldseam.volumes.conditions.conditions`.
@@ -135,18 +152,53 @@ def evaluate(
         flux[facets] = base.flux[facets] + part.film * (part.outside - part.mean_outside)
         temperatures[base.terminal[facets[0]]] = part.mean_outside
         films[boundary.name] = part.used
+    for model in cavities:
+        _enclosed(case, mesh, facet_boundary, model, temperature, (film, flux, temperatures, films), base)
     terminals = tuple(
         dataclasses.replace(terminal, temperature=t) for terminal, t in zip(base.terminals, temperatures, strict=True)
     )
+    gaps = air_gaps(case, mesh, temperature)
     given = dataclasses.replace(
         base,
-        conductivity=_conductivity(case, mesh, base, temperature),
+        conductivity=_conductivity(case, mesh, base, temperature, gaps),
         film=film,
         flux=flux,
         terminals=terminals,
         sheet_conductance=_sheet_conductance(case, base, temperature),
     )
-    return Coefficients(given=given, excess=excess, films=films)
+    told = {mesh.bodies[number].name: told for number, (_, told) in gaps.items()}
+    coupled = tuple((model, model.coupling(temperature)) for model in cavities)
+    return Coefficients(given=given, excess=excess, films=films, gaps=told, coupled=coupled)
+
+
+def _enclosed(case: Case, mesh: Mesh, facet_boundary: np.ndarray, model: CavityModel, temperature, into, base) -> None:
+    """Write films, fluxes, outside temperatures and what is told of a cavity's boundaries into their places."""
+    film, flux, temperatures, films = into
+    radiative, convective, own = model.flux(temperature)
+    shares = facet_shares(mesh, mesh.facets)
+    for number in np.unique(facet_boundary[model.facets]):
+        here = facet_boundary[model.facets] == number
+        facets, patch = model.facets[here], model.patch[here]
+        area = shares[facets].sum(axis=1)
+        surface = (shares[facets] * temperature[mesh.facets[facets]]).sum(axis=1) / area
+        h = np.maximum(own[patch], LEAST_FILM)
+        outside = surface + (radiative + convective)[patch] / h
+        mean_outside = float(area * h @ outside / (area @ h))
+        film[facets], flux[facets] = h, h * (outside - mean_outside)
+        temperatures[base.terminal[facets[0]]] = mean_outside
+        films[case.boundary[number].name] = {
+            "cavity": model.name,
+            "convection": {"film": model.film, "given": True, "heat_flow": float(area @ convective[patch])},
+            "radiation": {
+                "emissivity": float(area @ model.emissivity[patch] / area.sum()),
+                "heat_flow": float(area @ radiative[patch]),
+                "patches": len(model.area),
+                "closure_defect": model.defect,
+            },
+            "film": float(area @ h / area.sum()),
+            "outside_temperature": mean_outside,
+            "surface_temperature": float(area @ surface / area.sum()),
+        }
 
 
 def _outside(case: Case, terminal, air: Mapping[str, float]) -> float:
@@ -154,12 +206,14 @@ def _outside(case: Case, terminal, air: Mapping[str, float]) -> float:
     return air[spaces.pop()] if spaces else terminal.temperature
 
 
-def _conductivity(case: Case, mesh: Mesh, base: Conditions, temperature: np.ndarray) -> np.ndarray:
+def _conductivity(case: Case, mesh: Mesh, base: Conditions, temperature: np.ndarray, gaps: Gaps) -> np.ndarray:
     """Return every cell's conductivity, W/(m K), (n_cells,)."""
     k, pairs = base.conductivity.copy(), cell_pairs(mesh.dim)
+    for number, (value, _) in gaps.items():
+        k[mesh.cell_body == number] = value
     for number, body in enumerate(mesh.bodies):
         law = case.materials[body.material].law
-        if law is None:
+        if law is None or number in gaps:
             continue
         cells = np.flatnonzero(mesh.cell_body == number)
         t = temperature[mesh.cells[cells]]
@@ -170,12 +224,12 @@ def _conductivity(case: Case, mesh: Mesh, base: Conditions, temperature: np.ndar
     return k
 
 
-def other_average(case: Case, mesh: Mesh, base: Conditions, temperature: np.ndarray) -> np.ndarray:
+def other_average(case: Case, mesh: Mesh, given: Conditions, temperature: np.ndarray) -> np.ndarray:
     """Return the conductivity at each cell's mean temperature, W/(m K), (n_cells,); the field in °C, (n_nodes,)."""
-    k = base.conductivity.copy()
+    k = given.conductivity.copy()
     for number, body in enumerate(mesh.bodies):
         law = case.materials[body.material].law
-        if law is not None:
+        if law is not None and case.body[body.source].air_gap is None:
             cells = np.flatnonzero(mesh.cell_body == number)
             k[cells] = laws.conductivity(law, temperature[mesh.cells[cells]].mean(axis=1))
     return k

@@ -20,6 +20,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from scipy import sparse
+from scipy.sparse.linalg import LinearOperator, gmres
 
 from coldseam.errors import SolveError
 from coldseam.mesh.types import Mesh
@@ -31,6 +32,7 @@ from coldseam.solution.coefficients import (
     other_average,
     range_remarks,
 )
+from coldseam.solution.enclosed import cavity_models
 from coldseam.solution.linear import DIRECT_LIMIT, DirectSolver, MultigridSolver, node_hierarchy
 from coldseam.volumes.conditions import Conditions
 from coldseam.volumes.network import Network
@@ -48,6 +50,7 @@ LEAST_RANGE = 1.0
 MOST_STEPS = 40
 DEPTH = 4
 INNER_TOLERANCE = 1e-8
+INNER_RESTARTS = 6
 COLDEST = 1.0
 """K: no step goes below this."""
 REASON = (
@@ -126,6 +129,7 @@ def settle(
         No convergence, naming what still moves; air or another fluid beyond the range of its properties.
     """
     stepper = _Stepper(mesh, operator)
+    models = cavity_models(case, mesh, facet_boundary)
     field, history = start, []
     if field is None:
         known = np.array([terminal.temperature for terminal in base.terminals])
@@ -135,7 +139,7 @@ def settle(
         history.append(float(np.ptp(field)))
     mixer = _Anderson(DEPTH)
     while True:
-        now = evaluate(case, mesh, facet_boundary, base, field, outside)
+        now = evaluate(case, mesh, facet_boundary, base, field, outside, models)
         step = stepper.correction(now, field)
         history.append(float(np.abs(step).max()))
         if history[-1] <= TOLERANCE * max(_span(now, field + step), LEAST_RANGE):
@@ -144,10 +148,10 @@ def settle(
         if len(history) >= MOST_STEPS or not np.isfinite(history[-1]):
             raise SolveError(_stalled(case, mesh, facet_boundary, field, step, history))
         field = np.maximum(mixer.next(field, step), COLDEST - 273.15)
-    found = evaluate(case, mesh, facet_boundary, base, field, outside)
+    found = evaluate(case, mesh, facet_boundary, base, field, outside, models)
     _require_fluids(case, found)
     remarks = range_remarks(case, mesh, field, found.films)
-    other = other_average(case, mesh, base, field)
+    other = other_average(case, mesh, found.given, field)
     return Settled(
         coefficients=found,
         temperature=field,
@@ -179,17 +183,49 @@ class _Stepper:
         free = network.free
         step = np.where(free, 0.0, held - field)
         right = (lacking - matrix @ step)[free]
-        step[free] = self._solve(matrix[free][:, free], right)
+        solve = self._solver(matrix[free][:, free])
+        step[free] = self._coupled(now, matrix, free, right, solve) if now.coupled else solve(right)
         return step
 
-    def _solve(self, matrix: sparse.csr_array, right: np.ndarray) -> np.ndarray:
+    def _coupled(self, now: Coefficients, matrix, free, right, solve) -> np.ndarray:
+        """Solve with all patches of the cavities acting on one another (Newton's matrix, not symmetric): GMRES, ``solve`` preconditions.
+
+        The mean of each facet does not meet its film, which the matrix has, but the other patches; that is put right here.
+        The product with the dense part costs the square of the number of patches.
+        """
+        parts = [
+            (m.spread[free], among, m.spread_facets[free], now.given.film[m.facets] * self.shares[m.facets].sum(axis=1))
+            for m, among in now.coupled
+        ]
+        plain = matrix[free][:, free]
+
+        def product(x: np.ndarray) -> np.ndarray:
+            total = plain @ x
+            for spread, among, means, film in parts:
+                total += spread @ (among @ (spread.T @ x)) - means @ (film * (means.T @ x))
+            return total
+
+        shape = plain.shape
+        found, left = gmres(
+            LinearOperator(shape, matvec=product, dtype=float), right, rtol=1e-8, restart=50, maxiter=INNER_RESTARTS,
+            M=LinearOperator(shape, matvec=solve, dtype=float),
+        )  # fmt: skip
+        if left:
+            raise SolveError(
+                "the radiation between the surfaces of a cavity can't be solved for: some part of the model is joined to "
+                "nothing but a cavity without a known temperature"
+            )
+        return found
+
+    def _solver(self, matrix: sparse.csr_array):
+        """Return the function that solves with a matrix of the free nodes."""
         if matrix.shape[0] <= DIRECT_LIMIT[self.mesh.dim]:
             solver = DirectSolver(matrix)
         else:
             if self.hierarchy is None:
                 self.hierarchy = node_hierarchy(matrix)
             solver = MultigridSolver(matrix, self.hierarchy)
-        return solver.solve(right[:, None], np.zeros(1), INNER_TOLERANCE).values[:, 0]
+        return lambda right: solver.solve(right[:, None], np.zeros(1), INNER_TOLERANCE).values[:, 0]
 
 
 def residual(network: Network, given: Conditions, field: np.ndarray) -> tuple[np.ndarray, np.ndarray]:

@@ -12,7 +12,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from coldseam.case.films import exchange
+from coldseam.case.films import TYPICAL_RADIATION, exchange
 from coldseam.errors import CaseError, Fault
 from coldseam.mesh.contacts import interface_facets
 from coldseam.mesh.measure import cell_measure, facet_measure
@@ -151,6 +151,8 @@ def boundary_film(case: Case, boundary) -> float:
     """
     if boundary.temperature is not None:
         return np.inf
+    if boundary.cavity is not None:
+        return TYPICAL_RADIATION
     if boundary.space is None:
         return 0.0
     return exchange(case.spaces[boundary.space], boundary).start
@@ -160,6 +162,10 @@ def boundary_temperature(case: Case, boundary) -> float | None:
     """Return the temperature (°C) a boundary exchanges with, None where heat is given instead."""
     if boundary.temperature is not None:
         return boundary.temperature
+    if boundary.cavity is not None:  # to start from: the mean of what is known
+        known = [b.temperature for b in case.boundary if b.temperature is not None]
+        known += [case.spaces[b.space].temperature for b in case.boundary if b.space is not None]
+        return sum(known) / len(known)
     return None if boundary.space is None else case.spaces[boundary.space].temperature
 
 
