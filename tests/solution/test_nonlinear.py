@@ -4,6 +4,7 @@ from functools import cache
 
 import numpy as np
 import pytest
+from meshed import MOST_STEPS, on_mesh
 from scipy.optimize import brentq
 
 from coldseam.answers.build import build_answers
@@ -21,8 +22,6 @@ from coldseam.solution.steady import solve_on
 from coldseam.study import Result
 
 SIGMA = 5.670374419e-8
-MOST_STEPS = 12
-"""Issue 5: the whole test set converges within so many steps."""
 
 BAR = """
 title = "bar"
@@ -113,11 +112,6 @@ CASES = {
 def steady(name):
     """Solve a case on a mesh of a few cells along the bar."""
     return on_mesh(CASES[name]())
-
-
-def on_mesh(case, cells=None):
-    with open_geometry(case) as mesher:
-        return solve_on(case, mesher.mesh(None, cells))
 
 
 def flux(found, name):

@@ -12,7 +12,7 @@ from typing import Annotated, Any, ClassVar, Literal
 
 from pydantic import Field, WithJsonSchema
 
-from coldseam.case.tables import Context, Table, Trouble, fail
+from coldseam.case.tables import Context, Table, Trouble, fail, listing, nearest
 from coldseam.case.units import ZERO_CELSIUS
 from coldseam.case.values import Amount, Numbers, Temperature, checked
 
@@ -22,6 +22,10 @@ _FACTOR = Amount("ratio")
 ISO_10456_RANGE = (0.0, 30.0)
 """Mean temperatures that the conversions of ISO 10456 are meant for, °C."""
 SAMPLES = 200
+TYPICAL_FOAM = 0.025
+"""W/(m K)."""
+FOAM_RANGE = (-100.0, 80.0)
+"""°C, where a foam has no range of its own."""
 
 
 class _Points:
@@ -91,6 +95,38 @@ class Moisture(Table):
 
     factor: Annotated[float, Amount("ratio", at_least=0.0)] = Field(description="f_psi or f_u of ISO 10456")
     change: Annotated[float, Amount("ratio")] = Field(description="psi2 - psi1 (m³/m³) or u2 - u1 (kg/kg)")
+
+
+GASES = (
+    "air", "argon", "carbon dioxide", "cyclopentane", "helium", "krypton", "methane", "neon", "nitrogen", "oxygen", "xenon",
+)  # fmt: skip
+"""What a foam's cells can hold."""
+
+
+class FoamLaw(Table):
+    """A closed-cell foam by its make-up, from which its conductivity over temperature and ageing follows."""
+
+    density: Annotated[float, Amount("density", above=0.0)] = Field(description="of the foam, kg/m³")
+    cell_size: Annotated[float, Amount("length", above=0.0)] = Field(description="diameter of the cells, mm")
+    gas: dict[str, Annotated[float, Amount("pressure", at_least=0.0)]] = Field(
+        description=f"partial pressures at 20 °C, bar, by name: {listing(GASES)}"
+    )
+    solid_density: Annotated[float, Amount("density", above=0.0)] = Field(1240.0, description="of the polymer, kg/m³")
+    solid_conductivity: Annotated[float, Amount("conductivity", above=0.0)] = Field(0.26, description="W/(m·K)")
+    strut_fraction: Annotated[float, Amount("ratio", at_least=0.0, at_most=1.0)] = Field(
+        0.8, description="part of the polymer in the struts, the rest in the walls"
+    )
+    wall_extinction: Annotated[float, Amount("ratio", above=0.0)] = Field(6e4, description="of the polymer, 1/m")
+
+    def check(self, context: Context) -> Iterator[Trouble]:
+        """Yield gases that are not known, and a foam heavier than its polymer."""
+        for name in self.gas:
+            if name not in GASES:
+                yield ("gas", name), f"is not a gas here{nearest(name, GASES) or f'; there are {listing(GASES)}'}"
+        if not sum(self.gas.values()) > 0.0:
+            yield ("gas",), "needs at least one gas with a pressure above 0"
+        if self.density >= self.solid_density:
+            yield ("density",), "must be less than that of the polymer"
 
 
 class Law(Table):
@@ -181,14 +217,23 @@ class Law(Table):
 class ConductivityLaw(Law):
     """A conductivity over temperature, W/(m K)."""
 
+    @property
+    def limits(self) -> tuple[float, float]:
+        """Lowest and highest temperature that the law holds for, °C."""
+        return FOAM_RANGE if self.foam is not None and self.range is None else super().limits
+
     table: Annotated[Points, _Points("conductivity"), WithJsonSchema(_POINTS_SCHEMA)] | None = Field(
         None, description="pairs of °C and W/(m·K)"
     )
     value: Annotated[float, Amount("conductivity", above=0.0)] | None = Field(None, description="W/(m·K)")
     moisture: Moisture | None = None
+    foam: FoamLaw | None = Field(None, description="a closed-cell foam by its make-up")
+    ONE_OF: ClassVar = (("table", "polynomial", "log_polynomial", "value", "foam"),)
 
     def scalar(self, celsius: float) -> float:
-        """Return the conductivity at one temperature (°C), W/(m K)."""
+        """Return the conductivity at one temperature (°C), W/(m K); of a foam no more than a value to start from."""
+        if self.foam is not None:
+            return TYPICAL_FOAM
         return super().scalar(celsius) * self.wet
 
     @property

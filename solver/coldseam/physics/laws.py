@@ -15,10 +15,14 @@ from typing import TYPE_CHECKING
 import numpy as np
 from scipy.interpolate import PchipInterpolator
 
+from coldseam.physics import foam
+
 if TYPE_CHECKING:
     from coldseam.case.laws import ConductivityLaw
 
 KELVIN = 273.15
+STEP = 1e-3
+"""K, for the slope of a foam's conductivity."""
 _GAUSS = tuple(zip(*np.polynomial.legendre.leggauss(4), strict=True))
 """Points on [-1, 1] and weights: exact for polynomials of the seventh degree."""
 
@@ -35,7 +39,9 @@ def conductivity(law: ConductivityLaw, temperature: np.ndarray) -> np.ndarray:
     """
     low, high = law.limits
     t = np.clip(np.asarray(temperature, dtype=float), low, high)
-    if law.table is not None:
+    if law.foam is not None:
+        k = foam.conductivity(law.foam, t)
+    elif law.table is not None:
         points = np.array(law.table)
         k = PchipInterpolator(points[:, 0], points[:, 1])(t)
     elif law.polynomial is not None:
@@ -52,7 +58,9 @@ def slope(law: ConductivityLaw, temperature: np.ndarray) -> np.ndarray:
     low, high = law.limits
     temperature = np.asarray(temperature, dtype=float)
     t = np.clip(temperature, low, high)
-    if law.table is not None:
+    if law.foam is not None:
+        found = (conductivity(law, t + STEP) - conductivity(law, t - STEP)) / (2.0 * STEP)
+    elif law.table is not None:
         points = np.array(law.table)
         found = law.wet * PchipInterpolator(points[:, 0], points[:, 1]).derivative()(t)
     elif law.polynomial is not None:

@@ -1,0 +1,6 @@
+"""Makes meshed.py importable under pytest's importlib mode."""
+
+import sys
+from pathlib import Path
+
+sys.path.insert(0, str(Path(__file__).parent))
