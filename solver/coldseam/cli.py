@@ -233,7 +233,7 @@ def material_card(entry: Entry) -> str:
     rows = [
         ("", entry.name),
         ("kind", entry.category),
-        ("conductivity", f"{entry.conductivity:g} W/(m·K)"),
+        ("conductivity", f"{entry.conductivity:g} W/(m·K)" + (" at 20 °C; follows a law" if entry.law else "")),
         ("density", f"{entry.density:g} kg/m³"),
         ("specific heat", f"{entry.specific_heat:g} J/(kg·K)"),
         ("emissivity", "not known" if entry.emissivity is None else f"{entry.emissivity:g}"),

@@ -42,7 +42,7 @@ FAULTS = [
     (PANEL, "temperature = -20\nfilm = 8", "floating = { start = 2 }", "floating", "spaces.freezer.floating", "steady"),
     (PANEL, "= -20", "= { sine = 1 }", "sine", "spaces.freezer.temperature", "not supported yet"),
     (PANEL, "film = 8", "film = { vertical = 1 }", "vertical", "spaces.freezer.film", "not supported yet"),
-    (PANEL, FOAM, FOAM + "\nair_gap = true", "air_gap", "materials.foam.air_gap", "not supported yet"),
+    (PANEL, FOAM, FOAM + "\nair_gap = true", "air_gap", "materials.foam.air_gap", "stands in the [[body]]"),
     # spaces
     (PANEL, "film = 8", "", "[spaces.freezer]", "spaces.freezer", "needs at least one of film, surface"),
     (PANEL, "film = 8", "film = 8\nsurface_resistance = 1", "surface_resistance = 1\n", "spaces.freezer.surf",
@@ -205,7 +205,7 @@ FAULTS = [
     (BOX, 'body = "shell/lid"', 'body = "shel/lid"', "shel/lid", "boundary[2].on.body", "no body is called"),
     # boundaries
     (PANEL, 'space = "bay"', "", "[[boundary]]", "boundary[1]",
-     "exactly one of space, temperature, heat_flux, heat_flow or adiabatic"),
+     "exactly one of space, temperature, heat_flux, heat_flow, adiabatic or cavity"),
     (PANEL, 'space = "bay"', 'space = "bay"\nheat_flux = 1', "heat_flux", "boundary[1].heat_flux", "exactly one of"),
     (PANEL, 'space = "bay"', 'space = "bey"', '"bey"', "boundary[1].space",
      'no space is called "bey"; did you mean "bay"?'),

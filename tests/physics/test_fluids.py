@@ -1,4 +1,4 @@
-"""Air against CoolProp's values (published-checks section 7), where it is installed over the whole range; user's tables."""
+"""Air against CoolProp's values (published-checks section 7; where installed over the whole range); user's tables."""
 
 import numpy as np
 import pytest
@@ -44,7 +44,7 @@ def test_air_ends_where_its_range_does():
 
 
 def test_tabulated_water():
-    """Incropera table A.6, saturated water at 280, 290 and 300 K; the expansion coefficient there is 174e-6 at 290 K."""
+    """Incropera table A.6, saturated water at 280, 290 and 300 K; its expansion coefficient is 174e-6 at 290 K."""
     rows = (
         (280 - 273.15, 1000.0, 0.582, 1422e-6, 4198.0),
         (290 - 273.15, 999.0, 0.598, 1080e-6, 4184.0),

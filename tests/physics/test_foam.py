@@ -38,7 +38,9 @@ def test_condensing_gas_makes_a_minimum():
     assert -10 < lowest < 25
     # it lies where cyclopentane's partial pressure meets its saturation
     partial = 0.4e5 * (lowest + 273.15) / 293.15
-    assert float(gases.vapour_pressure(gases.GASES["cyclopentane"], lowest)) == pytest.approx(partial, rel=0.1)  # steps of .5 K
+    assert float(gases.vapour_pressure(gases.GASES["cyclopentane"], lowest)) == pytest.approx(
+        partial, rel=0.1
+    )  # steps of .5 K
     assert values[0] > values.min() * 1.05
 
 

@@ -6,7 +6,7 @@ import pytest
 from coldseam.physics import gases
 from coldseam.physics.gases import GASES
 
-# W/(m K) at 300 K, 1 bar or less: CRC Handbook, thermal conductivity of gases (from memory); cyclopentane: CoolProp 8.0.
+# W/(m K) at 300 K, 1 bar or less: CRC Handbook, conductivity of gases (from memory); cyclopentane: CoolProp 8.0.
 HANDBOOK = {
     "helium": (0.1567, 0.02),
     "neon": (0.0498, 0.03),

@@ -71,12 +71,13 @@ def test_tables_never_overshoot(values):
     for n in range(len(values) - 1):
         part = k[10 * n : 10 * n + 11]
         lowest, highest = sorted(values[n : n + 2])
-        assert lowest * (1 - 1e-12) <= part.min() and part.max() <= highest * (1 + 1e-12)
-    assert k[::10] == pytest.approx(values, rel=1e-12)
+        slack = 1e-12 * max(values)
+        assert lowest - slack <= part.min() and part.max() <= highest + slack
+    assert k[::10] == pytest.approx(values, rel=1e-9)
 
 
 def test_iso_10456_conversions():
-    """ISO 10456: lambda2 = lambda1 exp(f_T (T2 - T1)) exp(f_psi (psi2 - psi1)); f_T of EPS .0035, f_psi 4 (from memory)."""
+    """ISO 10456: times exp(f_T (T2 - T1)) exp(f_psi (psi2 - psi1)); f_T of EPS .0035, f_psi 4 (from memory)."""
     dry = law(value=0.035, at=10, per_kelvin=0.0035)
     wet = law(value=0.035, at=10, per_kelvin=0.0035, moisture={"factor": 4.0, "change": 0.02})
     assert laws.conductivity(dry, np.array(23.0)) == pytest.approx(0.035 * np.exp(0.0035 * 13), rel=1e-12)

@@ -25,8 +25,8 @@ def circle(radius, n, clockwise):
 
 
 def test_parallel_and_perpendicular_plates_in_a_section():
-    """Hottel: opposite plates of width w at distance h: sqrt(1 + (h/w)²) - h/w; perpendicular ones (1 + h/w - sqrt(1 + (h/w)²)) / 2
-    (Incropera table 13.1)."""
+    """Opposite plates of width w at distance h: sqrt(1 + (h/w)²) - h/w; perpendicular ones
+    (1 + h/w - sqrt(1 + (h/w)²)) / 2 (Incropera table 13.1)."""
     w, h = 2.0, 1.0
     start, end = loop([(0, 0), (0, h), (w, h), (w, 0)], 5)
     area = np.linalg.norm(end - start, axis=1)
@@ -70,7 +70,7 @@ def mean_factor(first, second):
 
 
 def test_squares_in_space():
-    """Unit cube: opposite faces .199825, adjacent .200044 (exact double-area integrals, Howell's catalogue C-11, C-14)."""
+    """Unit cube: opposite faces .199825, adjacent .200044 (exact integrals, Howell's catalogue C-11, C-14)."""
     floor = square(8, np.eye(3), (0, 0, 0))
     ceiling = square(8, [[1, 0, 0], [0, -1, 0], [0, 0, -1]], (0, 1, 1))
     wall = square(8, [[0, 0, 1], [1, 0, 0], [0, 1, 0]], (0, 0, 0))

@@ -1,8 +1,8 @@
 """Air gaps and cavities in solved cases: against layer formulas, and the two ways against one another."""
 
 import pytest
-from scipy.optimize import brentq
 from meshed import MOST_STEPS, on_mesh
+from scipy.optimize import brentq
 
 from coldseam.case.read import loads, replace
 from coldseam.errors import CaseError
@@ -97,7 +97,7 @@ def test_low_emissivity_lessens_the_heat_flow():
 
 
 def test_true_radiation_agrees_with_the_layer_formula():
-    """Two plates: with the layer's convection on both walls (film 2 h_a) the two ways agree but for the ends of the gap."""
+    """Two plates: with the layer's convection on both walls (film 2 h_a) the two ways agree but for the gap's ends."""
     equivalent = on_mesh(loads(GAP), 3000)
     told = equivalent.settled.coefficients.gaps["gap"]
     h_a = cavities.convective(0.02, 0.6, told["difference"])
@@ -114,7 +114,9 @@ def test_radiation_between_plates_exact():
     """Nothing but radiation between the plates: q = sigma (T1^4 - T2^4) / (2/e - 1), and the ends let little past."""
     found = on_mesh(loads(HOLLOW), 3000)
     radiating = series(
-        lambda mean, fall: fall / (SIGMA * ((mean + fall / 2 + 273.15) ** 4 - (mean - fall / 2 + 273.15) ** 4) / (2 / 0.9 - 1))
+        lambda mean, fall: (
+            fall / (SIGMA * ((mean + fall / 2 + 273.15) ** 4 - (mean - fall / 2 + 273.15) ** 4) / (2 / 0.9 - 1))
+        )
     )
     assert flux(found) == pytest.approx(radiating, rel=0.015)
 
@@ -124,9 +126,12 @@ def test_a_shield_halves_the_radiation():
     text = HOLLOW.replace('[[boundary]]\nname = "warm"', '[[body]]\nname = "shield"\nmaterial = "plastic"\n'
                           'box = { from = [12.5, 1], to = [13.5, 601] }\n[[boundary]]\nname = "warm"', 1)  # fmt: skip
     text = text.replace("[cavities.hollow]\n", "[cavities.hollow]\n[cavities.second]\n")
-    text = text.replace('on = { shell = "cavity" }\ncavity = "hollow"', 'on = { shell = "cavity", within = { from = [3, 1], '
-                        'to = [12.5, 601] } }\ncavity = "hollow"\n[[boundary]]\nname = "others"\n'
-                        'on = { shell = "cavity", within = { from = [13.5, 1], to = [23, 601] } }\ncavity = "second"')  # fmt: skip
+    left, right = (
+        f"on = {{ shell = 'cavity', within = {{ from = [{a}, 1], to = [{b}, 601] }} }}"
+        for a, b in ((3, 12.5), (13.5, 23))
+    )
+    both = f'{left}\ncavity = "hollow"\n[[boundary]]\nname = "others"\n{right}\ncavity = "second"'
+    text = text.replace('on = { shell = "cavity" }\ncavity = "hollow"', both)
     found = on_mesh(loads(text), 2500)
     e = 1 / (2 / 0.9 - 1)
 
@@ -183,11 +188,18 @@ adiabatic = true
     used = found.settled.films["walls"]["radiation"]
     assert used["closure_defect"] < 0.1 and abs(used["heat_flow"]) < 1e-6 * found.throughput
     assert found.settled.iterations <= MOST_STEPS
-    solid = text.replace("void = true", 'material = "foam"').replace(
-        '[[boundary]]\nname = "walls"\non = { shell = "cavity" }\ncavity = "inside"\n', "").replace("[cavities.inside]\n", "")
+    solid = (
+        text.replace("void = true", 'material = "foam"')
+        .replace('[[boundary]]\nname = "walls"\non = { shell = "cavity" }\ncavity = "inside"\n', "")
+        .replace("[cavities.inside]\n", "")
+    )
     # radiation across 100 mm (about 4 W/(m² K)) carries more than 100 mm of foam (0.3)
     assert found.boundary_flow[0] > on_mesh(loads(solid)).boundary_flow[0] * 1.05
-    beam = text.replace("[[boundary]]", '[[body]]\nname = "beam"\nmaterial = "foam"\nbox = { from = [50, 50, 50], to = [90, 150, 90] }\n[[boundary]]', 1)
+    beam = text.replace(
+        "[[boundary]]",
+        '[[body]]\nname = "beam"\nmaterial = "foam"\nbox = { from = [50, 50, 50], to = [90, 150, 90] }\n[[boundary]]',
+        1,
+    )
     with pytest.raises(CaseError, match="parts of its surface hide others"):
         on_mesh(loads(beam))
 
@@ -230,5 +242,3 @@ def test_bad_cavities():
         loads(HOLLOW.replace('cavity = "hollow"', 'cavity = "hole"'))
     with pytest.raises(CaseError, match="says with what emissivity"):
         on_mesh(loads(HOLLOW.replace("emissivity = 0.9\n", "")))
-
-

@@ -95,7 +95,8 @@ CASES = {
         bar(20, "adiabatic = true", 'space = "freezer"', FREEZER), "body[bar].heat_density", 40000
     ),
     "level": lambda: bar(
-        0.022, 'space = "room"', 'space = "freezer"\nconvection = { kind = "free", surface = "facing down", length = 500 }',
+        0.022, 'space = "room"',
+        'space = "freezer"\nconvection = { kind = "free", surface = "facing down", length = 500 }',
         FREEZER + space("room", "temperature = 20",
                         'convection = { kind = "free", surface = "facing up", length = 500 }'),
     ),
@@ -174,10 +175,10 @@ def test_bars_have_the_integral_of_their_conductivity(name):
 
 
 def test_two_cryogenic_materials_in_series():
-    text = BAR.format(
-        k=STEEL_304, left='temperature = "300 K"', right='temperature = "77 K"', more="", length=100
-    ).replace("[[boundary]]", '[materials.g]\nlibrary = "G-10, along warp, 12 to 300 K"\n'
-              '[[body]]\nname = "g"\nmaterial = "g"\nbox = { from = [50, 0], to = [100, 20] }\n[[boundary]]', 1)  # fmt: skip
+    laminate = '[materials.g]\nlibrary = "G-10, along warp, 12 to 300 K"\n'
+    laminate += '[[body]]\nname = "g"\nmaterial = "g"\nbox = { from = [50, 0], to = [100, 20] }\n'
+    text = BAR.format(k=STEEL_304, left='temperature = "300 K"', right='temperature = "77 K"', more="", length=100)
+    text = text.replace("[[boundary]]", f"{laminate}[[boundary]]", 1)
     case = loads(text)
     found = on_mesh(case)
 
@@ -298,8 +299,8 @@ def test_beyond_the_range_of_a_material():
 
 
 def test_beyond_the_range_of_a_correlation():
-    case = bar(0.022, 'space = "room"', "temperature = -20",
-               space("room", "temperature = 20", 'convection = { kind = "free", surface = "facing up", length = 5 }'))  # fmt: skip
+    level = 'convection = { kind = "free", surface = "facing up", length = 5 }'
+    case = bar(0.022, 'space = "room"', "temperature = -20", space("room", "temperature = 20", level))
     (remark,) = on_mesh(case).settled.remarks
     assert 'boundary "left": Ra = ' in remark and "McAdams" in remark and "extrapolation" in remark
 
@@ -317,7 +318,8 @@ def test_a_fluid_of_the_user():
     tank = space(
         "tank", "temperature = 17", 'convection = { kind = "free", surface = "vertical", length = 500, fluid = "w" }'
     )
-    water = "[fluids.w]\ntable = [[7, 1000, 0.582, 1422e-6, 4198], [17, 999, 0.598, 1080e-6, 4184], [27, 997, 0.613, 855e-6, 4179]]\n"
+    rows = "[7, 1000, 0.582, 1422e-6, 4198], [17, 999, 0.598, 1080e-6, 4184], [27, 997, 0.613, 855e-6, 4179]"
+    water = f"[fluids.w]\ntable = [{rows}]\n"
     found = on_mesh(bar(20, right='space = "tank"', more=tank + water))
     used = found.settled.films["right"]["convection"]
     assert used["fluid"] == "w" and 100 < used["film"] < 1500 and used["in_range"]

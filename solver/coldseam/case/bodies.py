@@ -265,7 +265,9 @@ class Body(Table):
             troubles.append((("materials",), "goes with file only"))
         for key in ("void", "repeat", "enclosure", "file", "heat_source", "heat_density"):
             if "air_gap" in data and key in data:
-                troubles.append((("air_gap",), f"can't go with {key}; make each gap a body with a shape and a material"))
+                troubles.append(
+                    (("air_gap",), f"can't go with {key}; make each gap a body with a shape and a material")
+                )
         if "repeat" in data and "group" in given:
             troubles.append((("repeat",), "can't repeat a part of a foreign mesh"))
         return data, troubles

@@ -41,7 +41,11 @@ def context_from(document: Mapping[str, Any], folder: Path | None) -> Context:
     model = document.get("model")
     model = model if isinstance(model, dict) else {}
     dim = model.get("dimensions")
-    known = {"material": _keys(document, "materials"), "space": _keys(document, "spaces"), "fluid": _keys(document, "fluids")}
+    known = {
+        "material": _keys(document, "materials"),
+        "space": _keys(document, "spaces"),
+        "fluid": _keys(document, "fluids"),
+    }
     known["cavity"] = _keys(document, "cavities")
     known |= {key: names(document, key) for key in ("body", "boundary", "probe", "bridge")}
     composite = (entry.get("name") for _, entry in entries(document, "body") if "enclosure" in entry or "file" in entry)

@@ -139,7 +139,9 @@ class Cavity(Table):
     """A hollow whose surfaces exchange radiation with one another: those of all boundaries that name it."""
 
     film: Film | None = Field(None, description="W/(m²·K), between its surfaces and the air in it; none if not given")
-    surroundings: Temperature | None = Field(None, description="°C, of what is seen through openings; closed if not given")
+    surroundings: Temperature | None = Field(
+        None, description="°C, of what is seen through openings; closed if not given"
+    )
 
 
 class _Rows:

@@ -15,7 +15,8 @@ class AirGap(Table):
     """How the air in a body passes heat on: by an equivalent conductivity that follows from the answer."""
 
     method: Literal["cavity", "layer"] | None = Field(
-        None, description="cavity: ISO 10077-2, in a cross-section; layer: ISO 6946; cavity in two dimensions if not given"
+        None,
+        description="cavity: ISO 10077-2, in a cross-section; layer: ISO 6946; cavity in two dimensions if not given",
     )
     emissivities: Annotated[tuple[float, float], Numbers(Amount("ratio", above=0.0, at_most=1.0), 2)] = Field(
         (0.9, 0.9), description="of the two faces that the heat flows between"
@@ -26,7 +27,10 @@ class AirGap(Table):
     def check(self, context: Context) -> Iterator[Trouble]:
         """Yield what a method needs or has no use for."""
         if self.method == "cavity" and context.dim == 3:
-            yield ("method",), 'the cavities of ISO 10077-2 are cross-sections; in three dimensions use method = "layer"'
+            yield (
+                ("method",),
+                'the cavities of ISO 10077-2 are cross-sections; in three dimensions use method = "layer"',
+            )
         layer = self.method == "layer" or (self.method is None and context.dim == 3)
         if layer and self.heat_flow is None:
             yield ("heat_flow",), 'is required for a layer: "up", "horizontal" or "down"'

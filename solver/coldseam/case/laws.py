@@ -98,7 +98,8 @@ class Moisture(Table):
 
 
 GASES = (
-    "air", "argon", "carbon dioxide", "cyclopentane", "helium", "krypton", "methane", "neon", "nitrogen", "oxygen", "xenon",
+    "air", "argon", "carbon dioxide", "cyclopentane", "helium", "krypton", "methane", "neon", "nitrogen", "oxygen",
+    "xenon",
 )  # fmt: skip
 """What a foam's cells can hold."""
 

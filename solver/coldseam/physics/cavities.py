@@ -1,7 +1,7 @@
 """Equivalent conductivity of air in cavities: ISO 10077-2 (rectangular) and the small voids of ISO 6946.
 
-``lambda_eq = d / R``, ``R = 1 / (h_a + h_r)``, d along the heat flow and b across it. Constants C1, C3, C4 from a public
-article on the standard, the rest from memory; scalars in SI, temperatures in °C.
+``lambda_eq = d / R``, ``R = 1 / (h_a + h_r)``, d along the heat flow and b across it. Constants C1, C3, C4 from a
+public article on the standard, the rest from memory; scalars in SI, temperatures in °C.
 """
 
 from __future__ import annotations

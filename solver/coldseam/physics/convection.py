@@ -113,7 +113,7 @@ def film(law: Convection, surface: float, outside: float, properties: Callable[[
 
 
 def slope(law: Convection, surface: float, outside: float, properties: Callable[[float], Properties]) -> float:
-    """Return the change of the film coefficient with the surface temperature, W/(m² K²); arguments as of :func:`film`."""
+    """Return the change of the film with the surface temperature, W/(m² K²); arguments as of :func:`film`."""
     if law.kind == "standard":
         return 0.0
     step = 0.02 * max(abs(surface - outside), 0.1)

@@ -4,10 +4,10 @@
     K = 4.10 sqrt(f s) / d + (1 - f) s K_w
 
 f is the part of the solid in the struts, d the cells' diameter, K_w the extinction of the solid of the walls
-(Glicksman 1994, in Hilyard and Cunningham, Low Density Cellular Plastics, chapter 5; from memory). The gas is a mixture by kinetic
-theory (:mod:`coldseam.physics.gases`) whose amounts are given as partial pressures at 20 °C: they change as air comes in and the
-blowing gas leaves, which is ageing. In the cold a vapour condenses: no partial pressure is above saturation, so that the
-conductivity rises again below some temperature.
+(Glicksman 1994, in Hilyard and Cunningham, Low Density Cellular Plastics, chapter 5; from memory). The gas is a
+mixture by kinetic theory (:mod:`coldseam.physics.gases`) whose amounts are given as partial pressures at 20 °C: they
+change as air comes in and the blowing gas leaves, which is ageing. In the cold a vapour condenses: no partial pressure
+is above saturation, so that the conductivity rises again below some temperature.
 """
 
 from __future__ import annotations

@@ -4,12 +4,12 @@ Viscosity by Chapman and Enskog with the collision integral of Neufeld, Janzen, 
 
     mu = 2.6693e-6 sqrt(M T) / (sigma² Omega)      (Pa s; M in g/mol, T in K, sigma in Å)
 
-conductivity ``15/4 R/M mu`` of monatomic gases. For others Eucken's correction ``(c_p + 5/4 R/M) mu`` is low by some 5 %
-(20 % for large molecules) and its modified form is as much too high; taken is that of Stiel and Thodos (1964, AIChE
-Journal 10, 26), ``(1.15 c_v + 2.03 R/M) mu``, between the two. Mixtures by Wassiljewa with the factors of Mason and Saxena
-(Wilke's for the viscosities). Bird, Stewart, Lightfoot, Transport Phenomena, sections 1.4 and 9.3; molecular
-parameters of their table E.1 from memory, those of cyclopentane ``epsilon/k = 0.77 T_c`` and a diameter that gives CoolProp's viscosity
-at 300 K. Heat capacities at 300 K and their slope are CoolProp's.
+conductivity ``15/4 R/M mu`` of monatomic gases. For others Eucken's correction ``(c_p + 5/4 R/M) mu`` is low by 5 %,
+for large molecules 20 %, and its modified form is as much too high; taken is that of Stiel and Thodos (1964, AIChE
+Journal 10, 26), ``(1.15 c_v + 2.03 R/M) mu``, between the two. Mixtures by Wassiljewa with the factors of Mason and
+Saxena (Wilke's for the viscosities). Bird, Stewart, Lightfoot, Transport Phenomena, sections 1.4 and 9.3; molecular
+parameters of their table E.1 from memory, those of cyclopentane ``epsilon/k = 0.77 T_c`` and a diameter that gives
+CoolProp's viscosity at 300 K. Heat capacities at 300 K and their slope are CoolProp's.
 """
 
 from __future__ import annotations
@@ -73,7 +73,7 @@ GASES: Mapping[str, Gas] = {
 
 
 def collision_integral(reduced: np.ndarray) -> np.ndarray:
-    """Return Omega of viscosity at reduced temperatures ``k T / epsilon``, dimensionless, shape (n,) or any."""
+    """Return Omega of viscosity at reduced temperatures ``k T / epsilon``, shape (n,) or any; all of unit 1."""
     return 1.16145 * reduced**-0.14874 + 0.52487 * np.exp(-0.77320 * reduced) + 2.16178 * np.exp(-2.43787 * reduced)
 
 
@@ -89,7 +89,7 @@ def conductivity(gas: Gas, temperature: np.ndarray) -> np.ndarray:
     Examples
     --------
     >>> round(float(conductivity(GASES["argon"], 26.85)), 4)
-    0.0177
+    0.0176
     """
     t = np.asarray(temperature, dtype=float) + KELVIN
     if gas.monatomic:

@@ -4,8 +4,8 @@ Tables are interpolated by the monotone cubic of Fritsch and Carlson (scipy's PC
 leaves the range of neighbouring points. Nothing is extrapolated: beyond a law's range the value at its end
 holds, with slope 0, and :func:`beyond` tells how far a field went.
 
-References: NIST cryogenic material properties (log-polynomials: Marquardt, Le, Radebaugh 2000); ISO 10456 (conversions by
-``exp(f_T (T2 - T1))`` and ``exp(f_psi (psi2 - psi1))``); Fritsch, Carlson 1980, SIAM J. Numer. Anal. 17, 238.
+References: NIST cryogenic material properties (log-polynomials: Marquardt, Le, Radebaugh 2000); ISO 10456 (conversions
+by ``exp(f_T (T2 - T1))`` and ``exp(f_psi (psi2 - psi1))``); Fritsch, Carlson 1980, SIAM J. Numer. Anal. 17, 238.
 """
 
 from __future__ import annotations
@@ -99,7 +99,7 @@ def mean_conductivity(law: ConductivityLaw, first: np.ndarray, second: np.ndarra
 
 
 def beyond(law: ConductivityLaw, temperature: np.ndarray) -> tuple[float, float] | None:
-    """Return lowest and highest of some temperatures (°C, shape (n,) or any) where they leave the law's range, else None."""
+    """Return lowest and highest of some temperatures (°C, shape (n,)) where they leave the law's range, else None."""
     low, high = law.limits
     cold, warm = float(np.min(temperature)), float(np.max(temperature))
     slack = 1e-6 * (high - low)

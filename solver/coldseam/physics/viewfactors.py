@@ -4,9 +4,9 @@ In a cross-section by Hottel's crossed strings: two segments a-b and c-d that ru
 
     A_1 F_12 = (|ac| + |bd| - |bc| - |da|) / 2
 
-exactly, if nothing stands between them; where a cavity is not convex, the part of each pair that sees the other is found
-by rays between pieces of them. In three dimensions the factor from a point to a triangle is exact (Lambert's sum over
-its edges, Hottel and Sarofim 1967) and averaged over points of a patch; cavities must be convex there.
+exactly, if nothing stands between them; where a cavity is not convex, the part of each pair that sees the other is
+found by rays between pieces of them. In three dimensions the factor from a point to a triangle is exact (Lambert's sum
+over its edges, Hottel and Sarofim 1967) and averaged over points of a patch; cavities must be convex there.
 
 Reciprocity ``A_i F_ij = A_j F_ji`` and closure ``sum_j F_ij = 1`` are enforced by scaling the symmetric matrix A F
 to its row sums (Sinkhorn 1964); how much that changed is told.
@@ -130,7 +130,12 @@ def is_convex(points: np.ndarray, normals: np.ndarray, corners: np.ndarray) -> b
     slack = 1e-6 * float(np.ptp(corners, axis=0).max())
     rows = max(1, CHUNK // len(corners))
     return all(
-        bool((normals[i : i + rows] @ corners.T - (normals[i : i + rows] * points[i : i + rows]).sum(axis=1)[:, None] >= -slack).all())
+        bool(
+            (
+                normals[i : i + rows] @ corners.T - (normals[i : i + rows] * points[i : i + rows]).sum(axis=1)[:, None]
+                >= -slack
+            ).all()
+        )
         for i in range(0, len(points), rows)
     )
 
@@ -140,7 +145,7 @@ def closed(exchange: np.ndarray, area: np.ndarray) -> Factors:
 
     Examples
     --------
-    >>> made = closed(np.array([[0.0, 0.98], [1.0, 0.02]]), np.array([1.0, 1.0]))
+    >>> made = closed(np.array([[0.1, 0.88], [0.9, 0.12]]), np.array([1.0, 1.0]))
     >>> made.factors.sum(axis=1).round(9).tolist()
     [1.0, 1.0]
     """

@@ -373,8 +373,8 @@ def range_remarks(case: Case, mesh: Mesh, temperature: np.ndarray, films: dict[s
         if law is not None and reached is not None:
             told.append(
                 f'body "{body.name}": its temperatures of {reached[0]:.1f} to {reached[1]:.1f} °C leave the range '
-                f'of the conductivity of "{body.material}", {law.limits[0]:.1f} to {law.limits[1]:.1f} °C; beyond it the '
-                "value at the end of the range was taken"
+                f'of the conductivity of "{body.material}", {law.limits[0]:.1f} to {law.limits[1]:.1f} °C; beyond it '
+                "the value at the end of the range was taken"
             )
     for name, used in films.items():
         found = used["convection"]

@@ -2,8 +2,8 @@
 
 A cavity's faces are gathered into patches (at most ``MOST_PATCHES``; few faces are each their own), of which the view
 factors are found once a mesh. At a temperature field every patch has a net flux q; for the linear problem a face
-meets an outside temperature ``t_e = t_s + q / h`` through ``h = R_ii 4 sigma T³ + h_air``, so that its heat flow is q. The
-iteration of solution/nonlinear.py knows how all patches act on one another (``coupling``).
+meets an outside temperature ``t_e = t_s + q / h`` through ``h = R_ii 4 sigma T³ + h_air``, so that its heat flow is q.
+The iteration of solution/nonlinear.py knows how all patches act on one another (``coupling``).
 """
 
 from __future__ import annotations
@@ -70,7 +70,7 @@ class CavityModel:
     spread_facets: sparse.csr_array
 
     def flux(self, temperature: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-        """Return radiative and convective flux into each patch, W/m², and its film, W/(m² K), from node °C, (n_nodes,)."""
+        """Return radiative and convective flux into patches, W/m², and their film, W/(m² K); nodes in °C, (n,)."""
         t = self.spread.T @ temperature
         fourth = (t + KELVIN) ** 4 - (0.0 if self.surroundings is None else (self.surroundings + KELVIN) ** 4)
         radiative = -STEFAN_BOLTZMANN * (self.exchange @ fourth)
@@ -101,7 +101,9 @@ def cavity_models(case: Case, mesh: Mesh, facet_boundary: np.ndarray) -> tuple[C
 def _model(case: Case, mesh: Mesh, facet_boundary: np.ndarray, name: str) -> CavityModel:
     law = case.cavities[name]
     if mesh.axisymmetric:
-        _refuse(name, "exchange between surfaces in an axisymmetric section is not computed; use a section in a plane or 3D")
+        _refuse(
+            name, "exchange between surfaces in an axisymmetric section is not computed; use a section in a plane or 3D"
+        )
     members = [n for n, boundary in enumerate(case.boundary) if boundary.cavity == name]
     facets = np.flatnonzero(np.isin(facet_boundary, members))
     patch = _patches(mesh, facets, MOST_PATCHES[mesh.dim])
@@ -115,8 +117,9 @@ def _model(case: Case, mesh: Mesh, facet_boundary: np.ndarray, name: str) -> Cav
         if defect > OPEN:
             _refuse(
                 name,
-                f"the surfaces of its boundaries do not close it: some see {1 - defect:.0%} of what surrounds them; take in "
-                "all faces of the cavity, or say what is seen through the opening (surroundings = a temperature)",
+                f"the surfaces of its boundaries do not close it: some see {1 - defect:.0%} of what is around "
+                "them; take in all faces of the cavity, or say what is seen through the opening (surroundings = a "
+                "temperature)",
             )
         factors = viewfactors.closed(seen, area).factors
     else:
@@ -219,15 +222,17 @@ def _solids(mesh: Mesh, facets, patch, count, area, name) -> np.ndarray:
     if not viewfactors.is_convex(centres, normal, mesh.points[np.unique(mesh.facets[facets])]):
         _refuse(
             name,
-            "parts of its surface hide others, which is not computed in three dimensions; use a body with air_gap = true, or "
-            "a cross-section",
+            "parts of its surface hide others, which is not computed in three dimensions; use a body with "
+            "air_gap = true, or a cross-section",
         )
     measure = facet_measure(mesh)[facets]
     turned = np.einsum("nk,nk->n", np.cross(corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0]), normal) < 0
     corners[turned] = corners[turned][:, ::-1]
     chosen, weight = _samples(patch, measure, count)
     seen = np.zeros((count, count))
-    gather = sparse.coo_array((np.ones(len(facets)), (np.arange(len(facets)), patch)), shape=(len(facets), count)).tocsr()
+    gather = sparse.coo_array(
+        (np.ones(len(facets)), (np.arange(len(facets)), patch)), shape=(len(facets), count)
+    ).tocsr()
     rows = max(1, 200_000 // len(facets))
     for i in range(0, len(chosen), rows):  # chunks of points
         part = chosen[i : i + rows]

@@ -2,8 +2,8 @@
 
 The heat flow's direction is that of the body's mean temperature gradient. The cavities of ISO 10077-2 have one
 conductivity along each axis; between the axes they are weighted by the squares of the direction's cosines, so
-that the answer does not jump where the flow turns. Size along and across the flow are those of the rectangle of the same
-area and shape as the bounding one.
+that the answer does not jump where the flow turns. Size along and across the flow are those of the rectangle of the
+same area and shape as the bounding one.
 """
 
 from __future__ import annotations

@@ -54,8 +54,8 @@ INNER_RESTARTS = 6
 COLDEST = 1.0
 """K: no step goes below this."""
 REASON = (
-    "the case depends on temperatures: holds for the converged, frozen coefficients; the effect of one conductivity a cell "
-    "is estimated and added"
+    "the case depends on temperatures: holds for the converged, frozen coefficients; the effect of one conductivity a "
+    "cell is estimated and added"
 )
 
 
@@ -173,6 +173,7 @@ class _Stepper:
         self.mesh, self.operator = mesh, operator
         self.shares = facet_shares(mesh, mesh.facets)
         self.hierarchy: object | None = None
+        self.uneven = False
 
     def correction(self, now: Coefficients, field: np.ndarray) -> np.ndarray:
         """Return the correction of a field, K, both (n_nodes,)."""
@@ -183,15 +184,16 @@ class _Stepper:
         free = network.free
         step = np.where(free, 0.0, held - field)
         right = (lacking - matrix @ step)[free]
+        self.uneven = now.given.uneven
         solve = self._solver(matrix[free][:, free])
         step[free] = self._coupled(now, matrix, free, right, solve) if now.coupled else solve(right)
         return step
 
     def _coupled(self, now: Coefficients, matrix, free, right, solve) -> np.ndarray:
-        """Solve with all patches of the cavities acting on one another (Newton's matrix, not symmetric): GMRES, ``solve`` preconditions.
+        """Solve with all patches of the cavities acting on one another: GMRES on Newton's matrix after ``solve``.
 
-        The mean of each facet does not meet its film, which the matrix has, but the other patches; that is put right here.
-        The product with the dense part costs the square of the number of patches.
+        The mean of each facet does not meet its film, which the matrix has, but the other patches; that is put right
+        here. The product with the dense part costs the square of the number of patches.
         """
         parts = [
             (m.spread[free], among, m.spread_facets[free], now.given.film[m.facets] * self.shares[m.facets].sum(axis=1))
@@ -212,8 +214,8 @@ class _Stepper:
         )  # fmt: skip
         if left:
             raise SolveError(
-                "the radiation between the surfaces of a cavity can't be solved for: some part of the model is joined to "
-                "nothing but a cavity without a known temperature"
+                "the radiation between the surfaces of a cavity can't be solved for: some part of the model is joined "
+                "to nothing but a cavity without a known temperature"
             )
         return found
 
@@ -223,7 +225,7 @@ class _Stepper:
             solver = DirectSolver(matrix)
         else:
             if self.hierarchy is None:
-                self.hierarchy = node_hierarchy(matrix)
+                self.hierarchy = node_hierarchy(matrix, self.uneven)
             solver = MultigridSolver(matrix, self.hierarchy)
         return lambda right: solver.solve(right[:, None], np.zeros(1), INNER_TOLERANCE).values[:, 0]
 
@@ -274,8 +276,8 @@ def _stalled(case: Case, mesh: Mesh, facet_boundary, field, step, history) -> st
     body = mesh.bodies[mesh.cell_body[np.flatnonzero((mesh.cells == node).any(axis=1))[0]]].name
     where = f"boundary {' and '.join(sorted(repr(n) for n in names))}" if names else f"body {body!r}"
     return (
-        f"the temperatures do not settle: after {len(history)} steps those of {where} still move by {history[-1]:.3g} K "
-        f"(at {field[node]:.1f} °C). Look there at the films, the emissivity and the conductivity over temperature"
+        f"the temperatures do not settle: after {len(history)} steps those of {where} still move by {history[-1]:.3g} "
+        f"K (at {field[node]:.1f} °C). Look there at the films, the emissivity and the conductivity over temperature"
     ).replace("'", '"')
 
 
@@ -291,5 +293,6 @@ def _require_fluids(case: Case, found: Coefficients) -> None:
             fluid = "air" if law.fluid is None else f'the fluid "{law.fluid}"'
             raise SolveError(
                 f'boundary "{boundary.name}": its film is at {at:.1f} °C, and the properties of {fluid} hold for '
-                f"{low:g} to {high:g} °C. Give it a film coefficient, or a fluid that covers it (a table in [fluids.NAME])"
+                f"{low:g} to {high:g} °C. Give it a film coefficient, or a fluid that covers it (a table in "
+                "[fluids.NAME])"
             )

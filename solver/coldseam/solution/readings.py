@@ -96,7 +96,11 @@ def nodes_of_a_space(steady: Steady) -> dict[str, list[int]]:
     """Return the terminals of each outside point that has a name: spaces, then fixed-temperature boundaries."""
     named = {name: terminals for name, (terminals, _) in space_terminals(steady).items()}
     for number, terminal in enumerate(steady.given.terminals):
-        names = [steady.case.boundary[b].name for b in terminal.boundaries if steady.case.boundary[b].space is None and steady.case.boundary[b].cavity is None]
+        names = [
+            steady.case.boundary[b].name
+            for b in terminal.boundaries
+            if steady.case.boundary[b].space is None and steady.case.boundary[b].cavity is None
+        ]
         if names and len(names) == len(terminal.boundaries):
             named[" + ".join(names)] = [number]
     return named

@@ -23,10 +23,10 @@ from coldseam.solution.bounds import cell_sizes, check_gap, local_gap, prove
 from coldseam.solution.memory import require_room, room_for
 from coldseam.solution.readings import (
     Interval,
-    beyond_proof,
-    boundary_intervals,
     averaging_energy,
     averaging_error,
+    beyond_proof,
+    boundary_intervals,
     cell_energy,
     shape_error,
     space_intervals,
