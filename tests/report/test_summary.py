@@ -57,6 +57,21 @@ def test_what_is_no_number_is_not_printed_as_one():
     assert number(math.nan) == "not known"
 
 
+def test_films_that_followed_from_the_answer():
+    used = {
+        "film": 7.06,
+        "convection": {"film": 2.07, "correlation": "Churchill, Chu 1975, vertical plate, all Ra", "Ra": 1.83e10},
+        "radiation": {"film": 4.99, "temperature": -20.0},
+        "sun": {"absorbed": 200.0},
+    }
+    made = answers()
+    assert "as the answer made them" not in summary(made)
+    made["boundaries"]["warm face"]["film_used"] = used
+    row = next(line for line in summary(made).splitlines() if "convection" in line)
+    assert "warm face" in row and "7.06 W/(m²·K)" in row and "convection 2.07 (Churchill, Ra 1.8e+10)" in row
+    assert "radiation to -20.0 °C 4.99" in row and "sun 200 W/m²" in row
+
+
 def answers(**changes):
     """Return the answers of a two-space panel, made up by hand."""
     kind = {"interval": "estimate", "interval_reason": "meshes were compared"}

@@ -19,7 +19,7 @@ from coldseam.solution.coefficients import frozen_conditions
 from coldseam.solution.readings import boundary_intervals, coupling
 from coldseam.solution.rounds import Solution, solve
 from coldseam.solution.steady import solve_on
-from coldseam.study import Result
+from coldseam.study import Result, run
 
 SIGMA = 5.670374419e-8
 
@@ -352,6 +352,17 @@ def test_answers_tell_what_was_used():
     assert answers["boundaries"]["sides"]["film_used"] is None
     assert answers["solver"]["coefficient_steps"] <= MOST_STEPS and "linear problem" in answers["solver"]["linearised"]
     assert answers["boundaries"]["right"]["interval"] == "estimate"
+
+
+def test_a_wall_without_a_bridge_has_no_psi():
+    """The plain wall beside a bridge is reckoned with the answer's films and conductivities: what is left is 0."""
+    flanking = "[[bridge]]\nname = 'none'\nkind = 'linear'\nbasis = 'internal'\nflanking = [ { layers = [['m', 100]], "
+    flanking += "length = 20, between = ['outside', 'freezer'] } ]\n"
+    case = bar("{ polynomial = [0.022, 8.8e-5], range = [-60, 60] }", f'space = "outside"\n{SUN}', 'space = "freezer"',
+               FREEZER + OUTSIDE + flanking)  # fmt: skip
+    bridge = run(case).answers.bridges["none"]
+    assert bridge["psi"] == pytest.approx(0.0, abs=2e-3 * bridge["coupling"])
+    assert bridge["interval"] == "estimate"
 
 
 def test_cautions():

@@ -13,6 +13,7 @@ from typing import Any
 import numpy as np
 
 from coldseam.mesh.measure import cell_measure
+from coldseam.report.laws import film_rows
 from coldseam.report.view import View, boundary_areas
 
 WITHOUT_ERROR = 4
@@ -125,6 +126,7 @@ def summary(answers: Answers, files: Sequence[str] = ()) -> str:
         _trust(answers),
         _surfaces(answers),
         _moisture(answers),
+        _films(answers),
         _probes(answers),
         _bridges(answers),
         _losses(answers),
@@ -234,6 +236,12 @@ def _moisture(answers: Answers) -> list[str]:
         if found:
             rows.append((name, "" if factor is None else f"f_Rsi {factor:.3f}", _verdict(found)))
     return ["Moisture at the coldest place of each surface", *_table(rows)] if rows else []
+
+
+def _films(answers: Answers) -> list[str]:
+    """What films and air gaps that depend on the answer came to."""
+    rows = film_rows(answers)
+    return ["Films and air gaps as the answer made them", *_table(rows)] if rows else []
 
 
 def _verdict(found: Answers) -> str:

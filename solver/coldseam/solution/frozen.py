@@ -28,7 +28,10 @@ def film_of_space(steady: Steady, name: str) -> float:
 
 
 def conductivity_of(steady: Steady, material: str) -> float | np.ndarray:
-    """Return a material's conductivity, W/(m K): the case's, or of a law the mean over all bodies made of it."""
+    """Return a material's conductivity, W/(m K): the case's, or of a law the harmonic mean over its bodies.
+
+    The harmonic mean is that of slices through which heat flows in series, as it does through the layers of a wall.
+    """
     given = steady.case.materials[material]
     if given.law is None:
         return given.tensor(steady.mesh.dim)
@@ -36,4 +39,4 @@ def conductivity_of(steady: Steady, material: str) -> float | np.ndarray:
     if not made.any():
         return given.tensor(steady.mesh.dim)
     volume = cell_measure(steady.mesh)[made]
-    return float(volume @ steady.given.conductivity[made] / volume.sum())
+    return float(volume.sum() / (volume @ (1.0 / steady.given.conductivity[made])))
