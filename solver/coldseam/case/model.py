@@ -34,8 +34,11 @@ from coldseam.case.shapes import (
     Tube,
     Within,
 )
+from coldseam.case.overtime import time_troubles
+from coldseam.case.schedules import Schedule
 from coldseam.case.source import Source
 from coldseam.case.tables import Context, Table, Trouble, listing
+from coldseam.case.timing import Event, Floating, ScheduledTemperature, TimeTable
 from coldseam.case.values import (
     Amount,
     Attached,
@@ -53,19 +56,17 @@ from coldseam.case.values import (
     Size,
     Some,
     SpaceRef,
-    Temperature,
     checked,
 )
 from coldseam.case.wanted import Bridge, Flanking, Limit, Probe, Quantity
 
 __all__ = [
     "AXES", "FACES", "FLAT_SHAPES", "SHAPES", "SOLID_SHAPES", "Body", "Boundary", "Box", "Bridge", "Case", "Cone",
-    "Contact", "Cylinder", "Disc", "Enclosure", "Extent", "Flanking", "Layer", "Limit", "Material", "ModelTable",
-    "Opening", "Polygon", "Probe", "Quantity", "Repeat", "Ring", "Selector", "Sheet", "Space", "Sphere", "Tube",
-    "Within",
+    "Contact", "Cylinder", "Disc", "Enclosure", "Event", "Extent", "Flanking", "Floating", "Layer", "Limit", "Material",
+    "ModelTable", "Opening", "Polygon", "Probe", "Quantity", "Repeat", "Ring", "Schedule", "Selector", "Sheet", "Space",
+    "Sphere", "TimeTable", "Tube", "Within",
 ]  # fmt: skip
 
-STEADY_ONLY = "not supported yet: this version computes steady cases only"
 FINEST_ACCURACY = 1e-6
 
 
@@ -117,14 +118,14 @@ class ModelTable(Table):
 class Space(Table):
     """Air, or whatever else is of one temperature, before the surfaces."""
 
-    ONE_OF: ClassVar = (("film", "surface_resistance"),)
-    LATER: ClassVar = {"floating": STEADY_ONLY + "; give the space a temperature"}
-    temperature: Temperature = Field(description="°C")
+    ONE_OF: ClassVar = (("film", "surface_resistance"), ("temperature", "floating"))
+    temperature: ScheduledTemperature | None = Field(None, description="°C, or a schedule over time")
     film: Film | None = Field(None, description="W/(m²·K)")
     surface_resistance: ResistanceOrZero | None = Field(
         None, description="m²·K/W; 0: the surface has the space's temperature"
     )
     relative_humidity: Humidity | None = Field(None, description='a fraction, or text such as "60 %"')
+    floating: Floating | None = Field(None, description="its temperature follows from its heat balance")
     _name: str = PrivateAttr("")
 
     @property
@@ -193,7 +194,7 @@ class Boundary(Table):
     name: Name
     on: Annotated[Selector | Literal["rest"], WrapValidator(_on)] = Field(description='a selector, or "rest"')
     space: SpaceRef | None = None
-    temperature: Temperature | None = Field(None, description="°C")
+    temperature: ScheduledTemperature | None = Field(None, description="°C, or a schedule over time")
     heat_flux: HeatFlux | None = Field(None, description="W/m² into the solid")
     heat_flow: HeatFlow | None = Field(None, description="W into the solid, spread evenly (W/m in a cross-section)")
     adiabatic: Flag | None = None
@@ -250,9 +251,9 @@ class Contact(Table):
 class Case(Table):
     """A whole case, validated. ``source``, ``raw`` and ``warnings`` are set when it is read."""
 
-    LATER: ClassVar = {"time": STEADY_ONLY, "event": STEADY_ONLY}
     title: Name
     model: ModelTable
+    time: TimeTable | None = Field(None, description="a run over time; steady without it")
     spaces: dict[Name, Space] = {}
     materials: dict[Name, Material]
     body: Annotated[tuple[Body, ...], Some()]
@@ -262,6 +263,7 @@ class Case(Table):
     probe: tuple[Probe, ...] = ()
     bridge: tuple[Bridge, ...] = ()
     limit: tuple[Limit, ...] = ()
+    event: tuple[Event, ...] = ()
     _source: Source | None = PrivateAttr(None)
     _raw: dict[str, Any] = PrivateAttr(default_factory=dict)
     _warnings: tuple[str, ...] = PrivateAttr(())
@@ -270,6 +272,10 @@ class Case(Table):
     def prepare(cls, data: dict[str, Any], context: Context) -> tuple[dict[str, Any], list[Trouble]]:
         """Look for what only the whole document shows."""
         return data, document_troubles(data)
+
+    def check(self, context: Context) -> Iterator[Trouble]:
+        """Yield what does not fit together over time."""
+        yield from time_troubles(self)
 
     def model_post_init(self, context: Any) -> None:
         """Tell materials and spaces their names."""

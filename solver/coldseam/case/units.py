@@ -271,6 +271,11 @@ QUANTITIES: Mapping[str, Quantity] = MappingProxyType(
             {"m³/s": 1.0, "m³/h": 1 / HOUR, "m³/min": 1 / 60, "L/s": 1e-3, "L/min": 1e-3 / 60, "cfm": FOOT**3 / 60},
             {"l/s": "L/s", "l/min": "L/min", "ft³/min": "cfm", "CFM": "cfm"},
         ),
+        "mass": _quantity("mass", "kg", {"kg": 1.0, "g": 1e-3, "t": 1e3, "lb": POUND}),
+        "area": _quantity("area", "m²", {"m²": 1.0, "cm²": 1e-4, "mm²": 1e-6, "ft²": FOOT**2}, {"sq ft": "ft²"}),
+        "latent heat": _quantity(
+            "latent heat", "J/kg", {"J/kg": 1.0, "kJ/kg": 1e3, "MJ/kg": 1e6, "J/g": 1e3, "BTU/lb": BTU / POUND}
+        ),
         "length per depth": _quantity(
             "area per metre of depth", "m²/m", {"m²/m": 1.0, "mm²/mm": 1e-3, "ft²/ft": FOOT, "m": 1.0, "mm": 1e-3}
         ),
