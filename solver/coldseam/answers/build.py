@@ -172,7 +172,7 @@ def warnings(solution: Solution) -> tuple[str, ...]:
             f"surface or probe temperatures still moved by more than {point_limit(steady.case):.2%} of their range on "
             "the last mesh"
         )
-    found += list(solution.remarks)
+    found += [*solution.remarks, *steady.remarks]
     return tuple(found)
 
 

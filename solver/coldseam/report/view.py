@@ -7,10 +7,14 @@ only a model (``coldseam check``) makes one without fields through :func:`model_
 from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from coldseam.mesh.types import Mesh
+
+if TYPE_CHECKING:
+    from coldseam.report.history import HistoryView
 
 BOUNDARY_KINDS = ("space", "temperature", "heat_flux", "heat_flow", "adiabatic")
 
@@ -37,6 +41,8 @@ class View:
         Probe name -> position, m, shape (dim,).
     answers
         The content of answers.json.
+    history
+        The recorded rows of a run over time.
     """
 
     mesh: Mesh
@@ -49,6 +55,7 @@ class View:
     title: str = ""
     probes: dict[str, np.ndarray] = field(default_factory=dict)
     answers: dict = field(default_factory=dict)
+    history: HistoryView | None = None
 
     def __post_init__(self):
         if len(self.facet_boundary) != len(self.mesh.facets):

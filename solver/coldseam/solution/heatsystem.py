@@ -80,10 +80,8 @@ class HeatSystem:
         return np.array([0.0 if c is None else value_at(c, time, before=before) for c in self.terminal_course])
 
     def with_fixed(self, temperature: np.ndarray, terminals: np.ndarray) -> np.ndarray:
-        """Return node temperatures with the fixed ones set, °C, (n_nodes,)."""
+        """Return a copy of node temperatures with the fixed ones set, °C, (n_nodes,)."""
         fixed = ~self.free
-        if not fixed.any():
-            return temperature
         result = temperature.copy()
         result[fixed] = terminals[self.network.fixed[fixed]]
         return result

@@ -76,7 +76,9 @@ class Spaces:
         """Return the temperature (°C) of any space."""
         return float(y[self.names.index(name)]) if name in self.names else self.outside(name, time, before=before)
 
-    def flows(self, y: np.ndarray, running: np.ndarray, time: float, *, before: bool = False) -> tuple[np.ndarray, np.ndarray]:
+    def flows(
+        self, y: np.ndarray, running: np.ndarray, time: float, *, before: bool = False, machines: bool = True
+    ) -> tuple[np.ndarray, np.ndarray]:
         """Return the heat flows into every space by channel, and the Jacobian of each unknown's sum.
 
         Parameters
@@ -87,6 +89,8 @@ class Spaces:
             Stages that run, (n_spaces,).
         time, before
             s; whether the moment before a jump is meant.
+        machines
+            False leaves them out.
 
         Returns
         -------
@@ -99,7 +103,7 @@ class Spaces:
         for s in range(len(self.names)):
             floating = self.floating(s)
             flows[s, 0] = value_at(floating.gain, time, before=before)
-            if self.machines[s] is not None:
+            if machines and self.machines[s] is not None:
                 heat, slope_s, _ = self.machine_heat(s, y, running, time, before=before)
                 flows[s, 1] = -heat
                 slope[s, s] -= slope_s

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -13,6 +13,7 @@ from coldseam.mesh.boundaries import claim_facets
 from coldseam.mesh.contacts import open_contacts
 from coldseam.mesh.measure import cell_measure
 from coldseam.mesh.types import Mesh
+from coldseam.solution.balance import at_balance, floating_names, held_at_guess
 from coldseam.solution.bounds import Bounds
 from coldseam.solution.respond import Response, respond
 from coldseam.volumes.conditions import Conditions, body_mask, conditions
@@ -52,6 +53,8 @@ class Steady:
         Heat released in the bodies, W (2D: W/m).
     bounds
         Bounds of the heat flows; None where they were not asked for.
+    remarks
+        What is to be said of the machines of floating spaces.
     """
 
     case: Case
@@ -66,6 +69,7 @@ class Steady:
     boundary_flow: np.ndarray
     source_flow: float
     bounds: Bounds | None = None
+    remarks: tuple[str, ...] = ()
 
     @property
     def closure(self) -> float:
@@ -103,13 +107,18 @@ def solve_on(case: Case, mesh: Mesh) -> Steady:
     """
     facet_boundary = claim_facets(case, mesh)
     mesh = with_contacts(case, mesh)
-    given = conditions(case, mesh, facet_boundary)
+    floats, remarks = floating_names(case), ()
+    given = conditions(held_at_guess(case) if floats else case, mesh, facet_boundary)
     operator, weights = node_operator(mesh, given)
     network = node_network(mesh, given, operator)
     require_temperatures(mesh, network)
     response = respond(network, mesh.dim, NODE_TOLERANCE)
 
     temperatures = np.array([terminal.temperature for terminal in given.terminals])
+    if floats:
+        case, temperatures, remarks = at_balance(case, given, response)
+        moved = zip(given.terminals, temperatures.tolist(), strict=True)
+        given = replace(given, terminals=tuple(replace(terminal, temperature=t) for terminal, t in moved))
     reference = 0.5 * float(temperatures.min() + temperatures.max())
     state = np.append(temperatures - reference, [1.0] * network.has_load)
     relative = response.fields @ state
@@ -125,6 +134,7 @@ def solve_on(case: Case, mesh: Mesh) -> Steady:
         temperature=relative + reference,
         boundary_flow=boundary_flows(mesh, facet_boundary, given, network, relative, state, len(case.boundary)),
         source_flow=float(given.source @ cell_measure(mesh)),
+        remarks=remarks,
     )
     if result.relative_closure > CLOSURE_LIMIT:
         raise SolveError(
