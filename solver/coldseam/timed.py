@@ -63,7 +63,9 @@ class TimedResult:
     def view(self) -> View:
         """Return what pictures and files are made from; its fields are those at the end."""
         plain = _model(self.history.system)
-        return replace(plain, temperature=self.temperature, answers=self.answers.as_dict(), history=history_view(self.history))
+        return replace(
+            plain, temperature=self.temperature, answers=self.answers.as_dict(), history=history_view(self.history)
+        )
 
     def write(self, folder: str | Path, *, pictures: bool = True, log: Log | None = None) -> list[Path]:
         """Write answers.json, history.csv, tables, the final field and pictures into a folder; return the paths.
@@ -104,7 +106,11 @@ def run_over_time(case: Case, log: Log, *, folder: Path | None = None, resume: b
     with open_geometry(case, log=log) as mesher:
         mesh, solution, remarks = mesh_over_time(case, mesher, log)
     system = heat_system(case, mesh)
-    fields = None if folder is None or not (case.time.fields or case.time.fields_every) else FieldSeries(folder, _model(system))
+    fields = (
+        None
+        if folder is None or not (case.time.fields or case.time.fields_every)
+        else FieldSeries(folder, _model(system))
+    )
     transient = Transient(system, starting_state(system), on_field=fields)
     _go(transient, log)
     history = transient.result()
@@ -145,7 +151,11 @@ def history_view(history: History) -> HistoryView:
     bounds = []
     for limit in case.limit:
         marks = levels if limit.quantity.measure == "temperature" else bounds
-        marks += [(f"{limit.name} {word}", value) for word, value in (("at most", limit.at_most), ("at least", limit.at_least)) if value is not None]
+        marks += [
+            (f"{limit.name} {word}", value)
+            for word, value in (("at most", limit.at_most), ("at least", limit.at_least))
+            if value is not None
+        ]
     return HistoryView(
         columns=tuple((c.kind, c.name, c.unit) for c in history.columns),
         headings=tuple(headings(history)),
@@ -155,4 +165,3 @@ def history_view(history: History) -> HistoryView:
         moments=tuple((h.name, h.time) for h in history.events if h.time is not None),
         given=tuple(name for name, space in case.spaces.items() if space.temperature is not None),
     )
-

@@ -105,7 +105,10 @@ def first_state(system: HeatSystem, start=None) -> State:
     value = system.case.time.start if start is None else start
     spaces = system.spaces
     y = [value if spaces.floating(s).start is None else spaces.floating(s).start for s in range(len(spaces.names))]
-    y += [y[s] if spaces.floating(s).goods[g].start is None else spaces.floating(s).goods[g].start for s, g in spaces.goods]
+    y += [
+        y[s] if spaces.floating(s).goods[g].start is None else spaces.floating(s).goods[g].start
+        for s, g in spaces.goods
+    ]
     return State(
         time=0.0,
         temperature=np.full(system.mesh.n_nodes, value, dtype=float) if np.ndim(value) == 0 else value,

@@ -15,13 +15,14 @@ from coldseam.errors import CaseError, Fault
 from coldseam.mesh.measure import cell_measure, facet_measure
 from coldseam.mesh.types import Mesh
 from coldseam.solution.rounds import Solution
+from coldseam.solution.spaces import CHANNELS
+from coldseam.solution.stepper import channels
 from coldseam.solution.transient import History
 from coldseam.volumes.conditions import boundary_film
 from coldseam.volumes.section import node_shares_of_cells
 
 HISTORY_FILE = "history.csv"
 NO_INTERVAL = "the proof of the heat flows holds for steady states; over time the error is not proven"
-KEYS = {"gain": "gain", "cooling": "cooling", "air_exchange": "air_exchange", "latent": "latent", "goods": "goods"}
 
 
 def timed_answers(history: History, solution: Solution, remarks: tuple[str, ...], extra: dict[str, Any]) -> Answers:
@@ -77,8 +78,6 @@ def timed_answers(history: History, solution: Solution, remarks: tuple[str, ...]
 def history_answer(history: History) -> dict[str, Any]:
     """Return what answers.json says under ``history``: s, J and W; in a cross-section per metre of depth."""
     system, totals = history.system, history.totals
-    from coldseam.solution.stepper import channels
-
     named = channels(system)
     heat = dict(zip(named, totals.heat.tolist(), strict=True))
     peak = dict(zip(named, totals.peak.tolist(), strict=True))
@@ -101,7 +100,7 @@ def history_answer(history: History) -> dict[str, Any]:
         },
         "energies": {
             "boundaries": {b.name: heat["boundary", b.name] for b in system.case.boundary},
-            "spaces": {name: {key: heat[kind, name] for kind, key in KEYS.items()} for name in system.spaces.names},
+            "spaces": {name: {kind: heat[kind, name] for kind in CHANNELS} for name in system.spaces.names},
             "heat_sources": system.source_flow * duration,
             "in": history.heat_in,
             "stored": history.heat_stored,
@@ -128,7 +127,11 @@ def watched(case: Case, name: str) -> str:
     """Return in words what an event waits for."""
     when = next(event.when for event in case.event if event.name == name)
     what = (
-        f"space {when.space}" if when.space else f"probe {when.probe}" if when.probe else f"{when.temperature} of {when.boundary}"
+        f"space {when.space}"
+        if when.space
+        else f"probe {when.probe}"
+        if when.probe
+        else f"{when.temperature} of {when.boundary}"
     )
     return f"{what} {'falls below' if when.direction < 0 else 'rises above'} {when.level:g} °C"
 
@@ -170,7 +173,10 @@ def require_timed_limits(case: Case) -> None:
         for n, limit in enumerate(case.limit)
         if limit.quantity.measure not in ("heat_flow", "temperature")
     ]
-    faults += [Fault(path=("bridge", n), what="a bridge is of a steady case; take it out or the [time] table") for n in range(len(case.bridge))]
+    faults += [
+        Fault(path=("bridge", n), what="a bridge is of a steady case; take it out or the [time] table")
+        for n in range(len(case.bridge))
+    ]
     if faults:
         raise CaseError(faults)
 
@@ -272,7 +278,10 @@ def headings(history: History) -> list[str]:
     --------
     ``time_s``, ``space cold_room degC``, ``boundary walls W``
     """
-    return ["time_s" if c.kind == "time" else f"{_WORDS.get(c.kind, c.kind)} {c.name} {_UNIT[c.unit]}".replace("  ", " ") for c in history.columns]
+    return [
+        "time_s" if c.kind == "time" else f"{_WORDS.get(c.kind, c.kind)} {c.name} {_UNIT[c.unit]}".replace("  ", " ")
+        for c in history.columns
+    ]
 
 
 _UNIT = {"degC": "degC", "W": "W", "W/m": "W_per_m", "1": "1", "s": "s"}

@@ -52,8 +52,11 @@ def time_troubles(case: Case) -> Iterator[Trouble]:
         return
     for place, schedule in schedules(case):
         if schedule.end < case.time.duration * (1 - 1e-12):
-            yield place, (
-                f"ends at {schedule.end:g} s, before the run does at {case.time.duration:g} s; give it a last row there, or repeat = true"
+            yield (
+                place,
+                (
+                    f"ends at {schedule.end:g} s, before the run does at {case.time.duration:g} s; give it a last row there, or repeat = true"
+                ),
             )
     yield from _capacities(case)
 
@@ -116,7 +119,8 @@ def held(case: Case, spaces: Mapping[str, float], boundaries: Mapping[int, float
         °C by position, for boundaries with a scheduled temperature.
     """
     fixed = {
-        name: space.model_copy(update={"temperature": spaces[name], "floating": None}) for name, space in case.spaces.items()
+        name: space.model_copy(update={"temperature": spaces[name], "floating": None})
+        for name, space in case.spaces.items()
     }
     for name, space in fixed.items():
         space._name = name

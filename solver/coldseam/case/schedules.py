@@ -171,7 +171,11 @@ class Changing:
 
     def _rows(self, value: Any, context: Context) -> list[tuple[float, float]]:
         if not isinstance(value, list) or not value:
-            raise fail("table", [(("table",), 'expected rows of a time and a value, such as [["0 h", 20], ["1 h", 30]]')], value)
+            raise fail(
+                "table",
+                [(("table",), 'expected rows of a time and a value, such as [["0 h", 20], ["1 h", 30]]')],
+                value,
+            )
         rows, troubles = [], []
         for number, row in enumerate(value):
             if not isinstance(row, (list, tuple)) or len(row) != 2:
@@ -194,7 +198,9 @@ class Changing:
         try:
             scale = parse("time", f"1 {unit}")
         except ValueError as error:
-            raise fail("csv", [(("time_unit",), f'"{unit}" is not a unit of time such as "s", "min", "h"')], value) from error
+            raise fail(
+                "csv", [(("time_unit",), f'"{unit}" is not a unit of time such as "s", "min", "h"')], value
+            ) from error
         try:
             return self._lines(path, value.get("column", 2), scale, context)
         except ValueError as error:
@@ -204,7 +210,9 @@ class Changing:
         """Return the rows of a CSV file: time first, the value in the column of that number or heading."""
         try:
             with path.open(newline="", encoding="utf-8-sig") as file:
-                lines = [(n, line) for n, line in enumerate(csv.reader(file), 1) if line and any(s.strip() for s in line)]
+                lines = [
+                    (n, line) for n, line in enumerate(csv.reader(file), 1) if line and any(s.strip() for s in line)
+                ]
         except (OSError, UnicodeDecodeError, csv.Error) as error:
             raise ValueError(f'"{path.name}" can\'t be read as CSV ({error})') from error
         if not lines:
@@ -243,12 +251,17 @@ class Changing:
             {"type": "object", "properties": table, "required": [next(iter(table))], "additionalProperties": False}
             for table in tables
         ]
-        return {"anyOf": [*constant["anyOf"], *kinds], "description": constant["description"] + "; or a schedule over time"}
+        return {
+            "anyOf": [*constant["anyOf"], *kinds],
+            "description": constant["description"] + "; or a schedule over time",
+        }
 
 
 def _within(amount: Amount, value: float, place: tuple[str, ...]) -> None:
     """Raise a fault for a bound of the amount that a sine breaks."""
-    if (amount.at_least is not None and value < amount.at_least) or (amount.above is not None and value <= amount.above):
+    if (amount.at_least is not None and value < amount.at_least) or (
+        amount.above is not None and value <= amount.above
+    ):
         raise fail("sine", [(place, f"the sine falls to {value:g}, below what is possible here")], value)
 
 
@@ -273,7 +286,9 @@ def _column(headings: Sequence[str], column: Any, name: str) -> int:
     found = [text.strip() for text in headings]
     if isinstance(column, str) and column in found:
         return found.index(column)
-    raise ValueError(f'"{name}" has no column {column!r}; give a number from 2 or one of {listing(found[1:], last="or")}')
+    raise ValueError(
+        f'"{name}" has no column {column!r}; give a number from 2 or one of {listing(found[1:], last="or")}'
+    )
 
 
 def _is_number(text: str) -> bool:

@@ -31,7 +31,12 @@ class _Pairs:
             try:
                 if not isinstance(row, list) or len(row) != 2:
                     raise ValueError("expected a temperature of the space and a heat flow, such as [-20, 900]")
-                rows.append((Amount("temperature").read(row[0], context), Amount("heat flow", at_least=0.0).read(row[1], context)))
+                rows.append(
+                    (
+                        Amount("temperature").read(row[0], context),
+                        Amount("heat flow", at_least=0.0).read(row[1], context),
+                    )
+                )
             except ValueError as error:
                 troubles.append(((number,), str(error)))
         if not value:
@@ -193,7 +198,11 @@ class _Start:
                 troubles.append(((name,), f"is no body of the case; accepted are {listing(accepted)}"))
         if "rest" not in found:
             missing = [name for name in names if name not in found]
-            troubles += [((), f'no temperature for {listing(missing)}; add it, or rest = the others\' temperature')] if missing else []
+            troubles += (
+                [((), f"no temperature for {listing(missing)}; add it, or rest = the others' temperature")]
+                if missing
+                else []
+            )
         if troubles:
             raise fail("start", troubles, value)
         return found
@@ -211,7 +220,9 @@ def _folder(value: Any, context: Context) -> Path:
     return path
 
 
-Start = Annotated[float | str | dict[str, float] | Path, _Start(), WithJsonSchema({"type": ["number", "string", "object"]})]
+Start = Annotated[
+    float | str | dict[str, float] | Path, _Start(), WithJsonSchema({"type": ["number", "string", "object"]})
+]
 
 
 def _times(value: Any, handler: Any, info: ValidationInfo) -> Any:
@@ -222,8 +233,12 @@ class TimeTable(Table):
     """A run over time."""
 
     duration: Duration = Field(description="s")
-    start: Start = Field(description='°C, "steady", temperatures by body { panel = 20, rest = 5 }, or { run = "folder" }')
-    record_every: Duration | None = Field(None, description="s between rows of the history; 1/200 of the run if not given")
+    start: Start = Field(
+        description='°C, "steady", temperatures by body { panel = 20, rest = 5 }, or { run = "folder" }'
+    )
+    record_every: Duration | None = Field(
+        None, description="s between rows of the history; 1/200 of the run if not given"
+    )
     tolerance: Annotated[float, Amount("temperature difference", above=0.0)] | None = Field(
         None, description="K that one step may be off; from accuracy if not given"
     )

@@ -65,25 +65,38 @@ def draw_temperatures(view: View, folder: Path, name: str) -> Picture:
     """Draw spaces, goods, probes and the extremes of surfaces against time."""
     history = view.history
     kinds = ["space", "goods", "probe"]
-    if not any(kind in ("goods", "probe") for kind, _, _ in history.columns):
+    if not any(kind in ("goods", "probe") and unit == "degC" for kind, _, unit in history.columns):
         kinds += ["min", "max"]
-    chosen = [n for n, (kind, _, _) in enumerate(history.columns) if kind in kinds][:MOST_LINES]
-    lines = [(_label(history, n), n, history.columns[n][1] in history.given and history.columns[n][0] == "space") for n in chosen]
+    chosen = [n for n, (kind, _, unit) in enumerate(history.columns) if kind in kinds and unit == "degC"][:MOST_LINES]
+    lines = [
+        (_label(history, n), n, history.columns[n][1] in history.given and history.columns[n][0] == "space")
+        for n in chosen
+    ]
     return _chart(view, folder, name, "Temperatures over time", "temperature, °C", lines, history.levels)
 
 
 def draw_flows(view: View, folder: Path, name: str) -> Picture | None:
     """Draw heat flows of boundaries and machines against time; None where all of them are 0."""
     history = view.history
-    kinds = ("boundary", "gain", "cooling", "air_exchange", "latent", "goods", "power")
+    kinds = ("boundary", "gain", "cooling", "air_exchange", "latent", "from_goods", "power")
     chosen = [
-        n for n, (kind, _, unit) in enumerate(history.columns) if kind in kinds and unit in ("W", "W/m") and np.any(history.rows[:, n])
+        n
+        for n, (kind, _, unit) in enumerate(history.columns)
+        if kind in kinds and unit in ("W", "W/m") and np.any(history.rows[:, n])
     ]
     if not chosen:
         return None
     unit = history.columns[chosen[0]][2]
     lines = [(_label(history, n), n, False) for n in chosen[:MOST_LINES]]
-    return _chart(view, folder, name, "Heat flows over time", f"heat flow, {unit} (into the solid, or into the space)", lines, history.bounds)
+    return _chart(
+        view,
+        folder,
+        name,
+        "Heat flows over time",
+        f"heat flow, {unit} (into the solid, or into the space)",
+        lines,
+        history.bounds,
+    )
 
 
 def _label(history: HistoryView, n: int) -> str:
@@ -108,11 +121,25 @@ def _chart(view: View, folder: Path, name: str, title: str, label: str, lines, l
         for order, (text, n, given) in enumerate(lines):
             colour = style.LINES[order % len(style.LINES)]
             dash = (0, (1, 1)) if given else style.DASHES[(order // len(style.LINES)) % 4]
-            ax.plot(time, history.rows[:, n], color=colour, linestyle=dash, linewidth=1.5, label=style.shortened(text + (" (given)" if given else ""), 40))
+            ax.plot(
+                time,
+                history.rows[:, n],
+                color=colour,
+                linestyle=dash,
+                linewidth=1.5,
+                label=style.shortened(text + (" (given)" if given else ""), 40),
+            )
             ends.append(float(history.rows[-1, n]))
         for text, value in levels:
             ax.axhline(value, color=style.SOFT, linestyle=(0, (6, 3)), linewidth=style.THIN)
-            ax.annotate(style.shortened(text, 40), (time[-1], value), ha="right", va="bottom", fontsize=style.SMALL, color=style.SOFT)
+            ax.annotate(
+                style.shortened(text, 40),
+                (time[-1], value),
+                ha="right",
+                va="bottom",
+                fontsize=style.SMALL,
+                color=style.SOFT,
+            )
         for text, moment in history.moments:
             ax.axvline(moment / seconds, color=style.INK, linestyle=(0, (1, 2)), linewidth=style.THIN)
             ax.annotate(
@@ -133,4 +160,6 @@ def _chart(view: View, folder: Path, name: str, title: str, label: str, lines, l
         rows=tuple((float(time[k]), *(float(history.rows[k, n]) for _, n, _ in lines)) for k in pick),
     )
     told = "; ".join(f"{text} ends at {value:.4g}" for (text, _, _), value in zip(lines, ends, strict=True))
-    return Picture(file=f"{name}.png", vector=f"{name}.svg", title=title, alt=f"{title} of {view.title}: {told}", table=table)
+    return Picture(
+        file=f"{name}.png", vector=f"{name}.svg", title=title, alt=f"{title} of {view.title}: {told}", table=table
+    )

@@ -84,7 +84,9 @@ def balance(spaces: Spaces, form: np.ndarray, behind: np.ndarray, outside: np.nd
             modes[s] = new
         if not changed:
             return Balance(y=y, mode=tuple(modes), cooling=cooling, full=full)
-    raise SolveError("the steady balance of the floating spaces was not found: their machines have no common steady state")
+    raise SolveError(
+        "the steady balance of the floating spaces was not found: their machines have no common steady state"
+    )
 
 
 def _full(spaces: Spaces, s: int, y: np.ndarray, time: float) -> tuple[float, float]:
@@ -127,7 +129,9 @@ def _settle(spaces: Spaces, form, behind, outside, time: float, modes) -> tuple[
             if np.max(np.abs(y)) > 1e5:
                 break
             return y, cooling
-    raise SolveError("a floating space has no steady temperature within reason; look at its gain and its machine's capacity")
+    raise SolveError(
+        "a floating space has no steady temperature within reason; look at its gain and its machine's capacity"
+    )
 
 
 def floating_names(case: Case) -> tuple[str, ...]:

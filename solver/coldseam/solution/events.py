@@ -98,7 +98,9 @@ class Watch:
         if self.direction * (self.closest - self.level) >= 0.0:
             self._found(state.time, None)
 
-    def look(self, state_at: Callable[[float], object], start: float, h: float, end: float, tolerance: float) -> float | None:
+    def look(
+        self, state_at: Callable[[float], object], start: float, h: float, end: float, tolerance: float
+    ) -> float | None:
         """Look into a step up to its fraction ``end``; return the time (s) of the event if it happens there."""
         if self.happened is not None:
             return None

@@ -47,6 +47,8 @@ class HeatSystem:
         The unknowns outside the mesh.
     coupling
         G: film conductance between nodes and the unknowns outside, W/K, (n_nodes, n).
+    gather, films
+        Its transpose, and its sum over the nodes, W/K, (n,).
     drive
         B: that between nodes and the terminals with a given temperature, W/K, (n_nodes, n_terminals).
     terminal_course
@@ -65,6 +67,8 @@ class HeatSystem:
     capacity: np.ndarray
     spaces: Spaces
     coupling: sparse.csr_array
+    gather: sparse.csr_array
+    films: np.ndarray
     drive: sparse.csr_array
     terminal_course: tuple[float | Schedule | None, ...]
     readers: FlowReaders
@@ -93,10 +97,12 @@ class HeatSystem:
             heat += self.coupling @ y
         return heat + self.network.load if self.network.has_load else heat
 
-    def space_heat(self, temperature: np.ndarray, y: np.ndarray, flows: np.ndarray, time: float, *, before: bool) -> np.ndarray:
+    def space_heat(
+        self, temperature: np.ndarray, y: np.ndarray, flows: np.ndarray, time: float, *, before: bool
+    ) -> np.ndarray:
         """Return the heat that flows into every unknown outside the mesh, W, (n,)."""
         own = self.spaces.heat(flows, y, time, before=before)
-        return own + self.coupling.T @ temperature - np.asarray(self.coupling.sum(axis=0)).ravel() * y
+        return own + self.gather @ temperature - self.films * y
 
     def corners(self, start: float, end: float) -> list[float]:
         """Return the times (s) between start and end at which a step must end."""
@@ -107,7 +113,9 @@ class HeatSystem:
             found += schedule.corners(start, end)
         return sorted(set(found))
 
-    def boundary_flows(self, temperature: np.ndarray, y: np.ndarray, terminals: np.ndarray, node_heat: np.ndarray) -> np.ndarray:
+    def boundary_flows(
+        self, temperature: np.ndarray, y: np.ndarray, terminals: np.ndarray, node_heat: np.ndarray
+    ) -> np.ndarray:
         """Return the heat flow into the solid of every boundary, W, (n_boundaries,), storage of fixed nodes left out."""
         r = self.readers
         outside = np.where(r.unknown >= 0, y[r.unknown] if self.spaces.n else 0.0, terminals[r.terminal])
@@ -175,6 +183,8 @@ def heat_system(case: Case, mesh: Mesh) -> HeatSystem:
         capacity=node_capacities(case, mesh),
         spaces=spaces,
         coupling=coupling,
+        gather=sparse.csr_array(coupling.T),
+        films=np.asarray(coupling.sum(axis=0)).ravel(),
         drive=drive,
         terminal_course=courses,
         readers=_readers(case, mesh, facet_boundary, given, behind),

@@ -54,7 +54,9 @@ class Gauges:
         count = len(case.boundary)
         rows = np.repeat(system.facet_boundary, mesh.dim)
         nodes = mesh.facets.ravel()
-        shares = sparse.coo_array((facet_shares(mesh, mesh.facets).ravel(), (rows, nodes)), shape=(count, mesh.n_nodes)).tocsr()
+        shares = sparse.coo_array(
+            (facet_shares(mesh, mesh.facets).ravel(), (rows, nodes)), shape=(count, mesh.n_nodes)
+        ).tocsr()
         area = np.asarray(shares.sum(axis=1)).ravel()
         self.mean = sparse.diags_array(1.0 / area) @ shares
         touched = sparse.coo_array((np.ones(len(nodes)), (rows, nodes)), shape=shares.shape).tocsr()
@@ -123,7 +125,9 @@ def _probe_weights(system: HeatSystem) -> sparse.csr_array:
     if faults:
         raise CaseError(faults)
     rows = np.repeat(np.arange(len(cells)), mesh.dim + 1)
-    return sparse.coo_array((weights.ravel(), (rows, mesh.cells[cells].ravel())), shape=(len(cells), mesh.n_nodes)).tocsr()
+    return sparse.coo_array(
+        (weights.ravel(), (rows, mesh.cells[cells].ravel())), shape=(len(cells), mesh.n_nodes)
+    ).tocsr()
 
 
 def flows_at(step: Step, s: float, extra: np.ndarray) -> np.ndarray:

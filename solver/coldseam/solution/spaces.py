@@ -26,7 +26,7 @@ AIR_DENSITY = 1.2  # kg/m³, at which flows of air are counted; dry air at 20 °
 AIR_HEAT = 1006.0  # J/(kg K)
 PRESSURE = 101_325.0  # Pa
 EVAPORATION, SUBLIMATION = 2.501e6, 2.834e6  # J/kg at 0 °C; ASHRAE Fundamentals ch. 1 (from memory)
-CHANNELS = ("gain", "cooling", "air_exchange", "latent", "goods")
+CHANNELS = ("gain", "cooling", "air_exchange", "latent", "from_goods")
 """Heat flows into a space besides those through its surfaces, W."""
 
 
@@ -102,7 +102,7 @@ class Spaces:
         flows, slope = np.zeros((len(self.names), len(CHANNELS))), np.zeros((self.n, self.n))
         for s in range(len(self.names)):
             floating = self.floating(s)
-            flows[s, 0] = value_at(floating.gain, time, before=before)
+            flows[s, 0] = value_at(floating.gain, time, before=before) + self._defrost_heat(s, time, before)
             if machines and self.machines[s] is not None:
                 heat, slope_s, _ = self.machine_heat(s, y, running, time, before=before)
                 flows[s, 1] = -heat
@@ -149,7 +149,9 @@ class Spaces:
                     inside += self._conductance(exchange, time, before) * (y[p] - y[s])
         return float(flows[:, :4].sum()) - inside + self.goods_heat(time, before=before)
 
-    def machine_heat(self, s: int, y: np.ndarray, running, time: float, *, before: bool = False) -> tuple[float, float, float]:
+    def machine_heat(
+        self, s: int, y: np.ndarray, running, time: float, *, before: bool = False
+    ) -> tuple[float, float, float]:
         """Return the heat that a space's machine takes (W), its slope (W/K) and the share of its output."""
         machine = self.machines[s]
         full, full_slope = machine.full(float(y[s]), self.ambient(s, y, time, before=before), time, before=before)
@@ -165,10 +167,16 @@ class Spaces:
         """Return the times (s) at which a defrost begins or ends."""
         return [time for machine in self.machines if machine is not None for time in machine.corners(start, end)]
 
+    def _defrost_heat(self, s: int, time: float, before: bool) -> float:
+        machine = self.machines[s]
+        return machine.cooling.defrost.heat if machine is not None and machine.defrosting(time, before=before) else 0.0
+
     def _conductance(self, exchange, time: float, before: bool) -> float:
         return AIR_DENSITY * AIR_HEAT * value_at(exchange.flow, time, before=before)
 
-    def _exchange(self, s: int, exchange, y: np.ndarray, time: float, before: bool, flows: np.ndarray, slope: np.ndarray) -> None:
+    def _exchange(
+        self, s: int, exchange, y: np.ndarray, time: float, before: bool, flows: np.ndarray, slope: np.ndarray
+    ) -> None:
         conductance = self._conductance(exchange, time, before)
         other = self.temperature_of(exchange.partner, y, time, before=before)
         flows[s, 2] += conductance * (other - y[s])
@@ -182,7 +190,10 @@ class Spaces:
 
     def _latent(self, s: int, exchange, other: float, own: float, mass_flow: float) -> float:
         """Return the heat of water vapour that stays in the space (W): condensed, below 0 °C frozen."""
-        outside, inside = self.case.spaces[exchange.partner].relative_humidity, self.case.spaces[self.names[s]].relative_humidity
+        outside, inside = (
+            self.case.spaces[exchange.partner].relative_humidity,
+            self.case.spaces[self.names[s]].relative_humidity,
+        )
         if outside is None or inside is None or mass_flow == 0.0:
             return 0.0
         gained = humidity_ratio(other, outside) - humidity_ratio(own, inside)
@@ -207,7 +218,9 @@ def floating_spaces(case: Case) -> Spaces:
     for s, g in goods:
         lump = case.spaces[names[s]].floating.goods[g]
         capacity.append(lump.mass * lump.specific_heat)
-    return Spaces(case=case, names=names, goods=tuple(goods), capacity=np.array(capacity, dtype=float), machines=tuple(machines))
+    return Spaces(
+        case=case, names=names, goods=tuple(goods), capacity=np.array(capacity, dtype=float), machines=tuple(machines)
+    )
 
 
 def outside_range(case: Case) -> tuple[float, float]:

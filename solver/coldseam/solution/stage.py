@@ -68,6 +68,7 @@ class StageSolver:
         self.matrix = sparse.csr_array(matrix[self.free][:, self.free])
         self.capacity = system.capacity[self.free]
         self.coupling = sparse.csr_array(system.coupling[self.free])
+        self.gather = sparse.csr_array(self.coupling.T)
         self.floor = (1e-5 * scale) ** 2 * float(self.capacity.sum())
         self.kept: OrderedDict[float, Factor] = OrderedDict()
         self.factorisations = 0
@@ -82,13 +83,17 @@ class StageSolver:
             return self.kept[a]
         matrix = sparse.csr_array(a * self.matrix + sparse.diags_array(self.capacity))
         dim = self.system.mesh.dim
-        solver = DirectSolver(matrix) if len(self.free) <= DIRECT_LIMIT[dim] else MultigridSolver(matrix, node_hierarchy(matrix))
+        solver = (
+            DirectSolver(matrix)
+            if len(self.free) <= DIRECT_LIMIT[dim]
+            else MultigridSolver(matrix, node_hierarchy(matrix))
+        )
         self.method = solver.method
         self.factorisations += 1
         right = self.coupling.toarray()
         columns = [self._solve(solver, right[:, k], None) for k in range(right.shape[1])]
         response = np.column_stack(columns) if columns else np.empty((len(self.free), 0))
-        made = Factor(a=a, solver=solver, response=response, schur=self.coupling.T @ response)
+        made = Factor(a=a, solver=solver, response=response, schur=self.gather @ response)
         self.kept[a] = made
         while len(self.kept) > KEPT[dim]:
             self.kept.popitem(last=False)
@@ -128,7 +133,7 @@ class StageSolver:
             First guess, K.
         """
         spaces, a = self.system.spaces, factor.a
-        linear = np.diag(spaces.capacity + a * np.asarray(self.system.coupling.sum(axis=0)).ravel()) - a * a * factor.schur
+        linear = np.diag(spaces.capacity + a * self.system.films) - a * a * factor.schur
         e = start.copy()
         for _ in range(MOST_NEWTON):
             own, slope = heat(e)
@@ -137,4 +142,6 @@ class StageSolver:
             e = e + step
             if np.max(np.abs(step)) <= 1e-10 * (1.0 + np.max(np.abs(e))):
                 return e
-        raise SolveError("the heat balance of the floating spaces did not converge; look for a capacity that jumps over temperature")
+        raise SolveError(
+            "the heat balance of the floating spaces did not converge; look for a capacity that jumps over temperature"
+        )

@@ -127,7 +127,14 @@ def _interpolated(points: np.ndarray, temperature: np.ndarray, mesh: Mesh) -> np
         return temperature.copy()
     far, near = cKDTree(points).query(mesh.points, k=mesh.dim + 1)
     if float(far[:, 0].max()) > 0.2 * mesh.size:
-        raise CaseError([Fault(path=("time", "start"), what="the earlier run is of another geometry: parts of this one lie far from it")])
+        raise CaseError(
+            [
+                Fault(
+                    path=("time", "start"),
+                    what="the earlier run is of another geometry: parts of this one lie far from it",
+                )
+            ]
+        )
     weight = 1.0 / np.maximum(far, 1e-9 * mesh.size)
     return (temperature[near] * weight).sum(axis=1) / weight.sum(axis=1)
 
@@ -135,6 +142,9 @@ def _interpolated(points: np.ndarray, temperature: np.ndarray, mesh: Mesh) -> np
 def held_at_start(case: Case) -> Case:
     """Return a steady case at the conditions of time 0, floating spaces at a guess."""
     middle = 0.5 * sum(outside_range(case))
-    spaces = {n: guess(case, n, middle) if s.temperature is None else value_at(s.temperature, 0.0) for n, s in case.spaces.items()}
+    spaces = {
+        n: guess(case, n, middle) if s.temperature is None else value_at(s.temperature, 0.0)
+        for n, s in case.spaces.items()
+    }
     surfaces = {n: value_at(b.temperature, 0.0) for n, b in enumerate(case.boundary) if b.temperature is not None}
     return held(case, spaces, surfaces)

@@ -21,6 +21,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from coldseam.solution.heatsystem import HeatSystem
+from coldseam.solution.spaces import CHANNELS
 from coldseam.solution.stage import Factor, StageSolver
 
 GAMMA = 2.0 - np.sqrt(2.0)
@@ -99,8 +100,6 @@ class Step:
 
 def channels(system: HeatSystem) -> list[tuple[str, str]]:
     """Return kind and name of every recorded flow: boundaries, then what goes into spaces, machines' power and share."""
-    from coldseam.solution.spaces import CHANNELS
-
     found = [("boundary", boundary.name) for boundary in system.case.boundary]
     for name in system.spaces.names:
         found += [(kind, name) for kind in CHANNELS]
@@ -154,7 +153,12 @@ class Stepper:
         error = self._error(state, factor, h * (ERROR_WEIGHTS @ node_heat), h * (ERROR_WEIGHTS @ space_heat), y3, end)
         self._remember(d2, d3, h)
         return Step(
-            start=state, h=h, node_heat=node_heat, space_heat=space_heat, flows=np.stack([first[2], flows2, flows3]), error=error
+            start=state,
+            h=h,
+            node_heat=node_heat,
+            space_heat=space_heat,
+            flows=np.stack([first[2], flows2, flows3]),
+            error=error,
         )
 
     def at(self, step: Step, s: float) -> State:
@@ -185,7 +189,11 @@ class Stepper:
         node_heat = system.node_heat(temperature, y, terminals)
         own, _ = system.spaces.flows(y, state.running, time, before=before)
         space_heat = system.space_heat(temperature, y, own, time, before=before)
-        return np.where(system.free, node_heat, 0.0), space_heat, self._channel_row(state, temperature, y, terminals, node_heat, own, time, before)
+        return (
+            np.where(system.free, node_heat, 0.0),
+            space_heat,
+            self._channel_row(state, temperature, y, terminals, node_heat, own, time, before),
+        )
 
     def _flows(self, state: State, temperature, y, time: float, *, before: bool) -> np.ndarray:
         return self._evaluate(state, temperature, y, time, before=before)[2]
@@ -239,20 +247,21 @@ class Stepper:
             flows, slope = system.spaces.flows(y, state.running, time, before=before)
             return system.spaces.heat(flows, y, time, before=before), slope
 
-        films = system.coupling.T @ moved - np.asarray(system.coupling.sum(axis=0)).ravel() * state.y
+        films = system.gather @ moved - system.films * state.y
         e = solver.newton(factor, known_spaces + a * films, own_heat, np.zeros(system.spaces.n))
         return x + a * (factor.response @ e), e
 
-    def _error(self, state: State, factor: Factor, nodes: np.ndarray, spaces: np.ndarray, y: np.ndarray, time: float) -> float:
+    def _error(
+        self, state: State, factor: Factor, nodes: np.ndarray, spaces: np.ndarray, y: np.ndarray, time: float
+    ) -> float:
         """Return the filtered error estimate's largest entry, K."""
         solver, a = self.solver, factor.a
         x = solver.solve(factor, nodes[solver.free], None)
         if not self.system.spaces.n:
             return float(np.max(np.abs(x)))
         _, slope = self.system.spaces.flows(y, state.running, time, before=True)
-        sums = np.asarray(self.system.coupling.sum(axis=0)).ravel()
-        matrix = np.diag(self._space_capacity() + a * sums) - a * a * factor.schur - a * slope
-        e = np.linalg.solve(matrix, spaces + a * (solver.coupling.T @ x))
+        matrix = np.diag(self._space_capacity() + a * self.system.films) - a * a * factor.schur - a * slope
+        e = np.linalg.solve(matrix, spaces + a * (solver.gather @ x))
         return float(max(np.max(np.abs(x + a * (factor.response @ e)), initial=0.0), np.max(np.abs(e))))
 
     def _guess(self, number: int, h: float) -> np.ndarray | None:

@@ -38,7 +38,7 @@ def time_constants(system: HeatSystem, count: int = HOW_MANY) -> list[float]:
         coupling = sparse.csr_array(system.coupling[free])
         y = np.full(spaces.n, 0.0)
         _, slope = spaces.flows(y, np.zeros(len(spaces.names), dtype=np.int64), 0.0, machines=False)
-        corner = sparse.csr_array(np.diag(np.asarray(system.coupling.sum(axis=0)).ravel()) - slope)
+        corner = sparse.csr_array(np.diag(system.films) - slope)
         matrix = sparse.block_array([[matrix, -coupling], [-coupling.T, corner]])
         capacity = np.concatenate([capacity, spaces.capacity])
     root = np.sqrt(capacity)

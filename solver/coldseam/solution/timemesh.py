@@ -48,7 +48,9 @@ def held_at_extremes(case: Case) -> Case:
     def far(span: tuple[float, float]) -> float:
         return max(span, key=lambda value: abs(value - middle))
 
-    return held(case, {name: far(span) for name, span in ranges.items()}, {n: far(span) for n, span in surfaces.items()})
+    return held(
+        case, {name: far(span) for name, span in ranges.items()}, {n: far(span) for n, span in surfaces.items()}
+    )
 
 
 def _range(case: Case, name: str) -> tuple[float, float]:

@@ -160,7 +160,9 @@ class Transient:
         self.rows: list[np.ndarray] = []
         self.recorded = 0
         self.fields = field_times(time)
-        self.watches = [Watch(e.name, e.when.level, e.when.direction, self.gauges.reading(e.when)) for e in system.case.event]
+        self.watches = [
+            Watch(e.name, e.when.level, e.when.direction, self.gauges.reading(e.when)) for e in system.case.event
+        ]
         self.stops = [e.stop for e in system.case.event]
         for watch in self.watches:
             watch.begin(self.state)
@@ -192,7 +194,9 @@ class Transient:
             self.work.rejected += 1
             self.rung += 1 if step.error < 8.0 * self.tolerance else 2
             if self.longest * 0.5**self.rung < SMALLEST * self.duration:
-                raise SolveError(f"the time step became too small at {self.time:.6g} s; the error stays at {step.error:.3g} K")
+                raise SolveError(
+                    f"the time step became too small at {self.time:.6g} s; the error stays at {step.error:.3g} K"
+                )
         self._accept(step, end)
         if step.error < GROW[0] * self.tolerance:
             self.rung = max(self.rung - (2 if step.error < GROW[1] * self.tolerance else 1), 0)
@@ -208,7 +212,8 @@ class Transient:
         """
         heat_in, stored = self._heat_in(), self._stored()
         outside = self._outside_channels()
-        through = 0.5 * float(self.totals.magnitude[outside].sum() + abs(self.system.source_flow) * self.time) + 0.5 * abs(stored)
+        crossed = float(self.totals.magnitude[outside].sum()) + abs(self.system.source_flow) * self.time
+        through = 0.5 * (crossed + self._rearranged())
         history = History(
             system=self.system,
             columns=tuple(self.gauges.columns()),
@@ -246,7 +251,12 @@ class Transient:
             ],
             dtype=np.int64,
         )
-        return State(time=state.time, temperature=self.system.with_fixed(state.temperature, terminals), y=state.y, running=running)
+        return State(
+            time=state.time,
+            temperature=self.system.with_fixed(state.temperature, terminals),
+            y=state.y,
+            running=running,
+        )
 
     def _refresh(self) -> None:
         changed = None if self.refresh is None else self.refresh(self.state)
@@ -336,7 +346,11 @@ class Transient:
     def _record(self, step: Step, s: float) -> None:
         """Write the rows and fields whose times lie in a step."""
         every, last = self.system.case.time.record, step.start.time + s * step.h
-        extra = self._fixed_storage(step, self.stepper.at(step, s)) / (s * step.h) if self.system.readers.fixed_nodes.nnz else 0.0
+        extra = (
+            self._fixed_storage(step, self.stepper.at(step, s)) / (s * step.h)
+            if self.system.readers.fixed_nodes.nnz
+            else 0.0
+        )
         while self.recorded * every <= last * (1 + 1e-14) and self.recorded * every <= self.duration * (1 + 1e-12):
             part = min(max((self.recorded * every - step.start.time) / step.h, 0.0), 1.0)
             if part >= s and last < self.duration * (1 - 1e-12) and part > 0.0:
@@ -361,12 +375,25 @@ class Transient:
     def _heat_in(self) -> float:
         return float(self.totals.heat[self._outside_channels()].sum()) + self.system.source_flow * self.time
 
+    def _rearranged(self) -> float:
+        """Return the sum of all nodes' absolute changes of heat content, J: heat that moved, inside or from outside."""
+        if self.phase is None:
+            moved = self.system.capacity * (self.state.temperature - self.initial.temperature)
+        else:
+            moved = self.phase.heat(self.state.temperature) - self.phase.heat(self.initial.temperature)
+        spaces = self.system.spaces.capacity * (self.state.y - self.initial.y) if self.system.spaces.n else np.zeros(0)
+        return float(np.abs(moved).sum() + np.abs(spaces).sum())
+
     def _stored(self) -> float:
         if self.phase is None:
             stored = float(self.system.capacity @ (self.state.temperature - self.initial.temperature))
         else:
             stored = float((self.phase.heat(self.state.temperature) - self.phase.heat(self.initial.temperature)).sum())
-        return stored + float(self.system.spaces.capacity @ (self.state.y - self.initial.y)) if self.system.spaces.n else stored
+        return (
+            stored + float(self.system.spaces.capacity @ (self.state.y - self.initial.y))
+            if self.system.spaces.n
+            else stored
+        )
 
 
 def field_times(time) -> list[float]:

@@ -24,7 +24,9 @@ if TYPE_CHECKING:
 
 def volumetric_capacity(case: Case, mesh: Mesh) -> np.ndarray:
     """Return density times specific heat of every cell, J/(m³ K), shape (n_cells,)."""
-    values = [case.materials[body.material].density * case.materials[body.material].specific_heat for body in mesh.bodies]
+    values = [
+        case.materials[body.material].density * case.materials[body.material].specific_heat for body in mesh.bodies
+    ]
     return np.array(values)[mesh.cell_body]
 
 
