@@ -15,6 +15,7 @@ from coldseam.case.model import Case
 from coldseam.case.schedules import Schedule
 from coldseam.geometry.mesher import open_geometry
 from coldseam.mesh.types import Mesh
+from coldseam.physics.melting import heat_content
 from coldseam.report.history import HistoryView, scale_of
 from coldseam.report.series import FieldSeries
 from coldseam.report.view import View, model_view
@@ -111,7 +112,7 @@ def run_over_time(case: Case, log: Log, *, folder: Path | None = None, resume: b
         if folder is None or not (case.time.fields or case.time.fields_every)
         else FieldSeries(folder, _model(system))
     )
-    transient = Transient(system, starting_state(system), on_field=fields)
+    transient = Transient(system, starting_state(system), phase=heat_content(case, system.mesh), on_field=fields)
     _go(transient, log)
     history = transient.result()
     constants = time_constants(system)

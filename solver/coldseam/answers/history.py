@@ -118,6 +118,11 @@ def history_answer(history: History) -> dict[str, Any]:
             for s, name in enumerate(system.spaces.names)
             if system.spaces.machines[s] is not None
         },
+        "melted": {
+            c.name: {"at_start": float(history.rows[0, n]), "at_end": float(history.rows[-1, n])}
+            for n, c in enumerate(history.columns)
+            if c.kind == "melted"
+        },
         "switches": history.work.switched,
         "tolerance": history.tolerance,
     }

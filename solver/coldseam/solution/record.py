@@ -45,10 +45,12 @@ class Gauges:
     ----------
     system
         The equations; its case names probes and boundaries.
+    phase
+        Heat content where bodies melt, or None.
     """
 
-    def __init__(self, system: HeatSystem):
-        self.system = system
+    def __init__(self, system: HeatSystem, phase=None):
+        self.system, self.phase = system, phase
         case, mesh = system.case, system.mesh
         self.probes = _probe_weights(system)
         count = len(case.boundary)
@@ -71,6 +73,8 @@ class Gauges:
         found += [Column(kind="probe", name=probe.name, unit="degC") for probe in case.probe]
         for kind in ("min", "mean", "max"):
             found += [Column(kind=kind, name=boundary.name, unit="degC") for boundary in case.boundary]
+        if self.phase is not None:
+            found += [Column(kind="melted", name=name, unit="1") for name in self.phase.names]
         section = self.system.mesh.dim == 2 and not self.system.mesh.axisymmetric
         heat = "W/m" if section else "W"
         return found + [Column(kind=k, name=n, unit="1" if k == "share" else heat) for k, n in channels(self.system)]
@@ -89,6 +93,7 @@ class Gauges:
                 np.minimum.reduceat(surface, self.starts),
                 self.mean @ t,
                 np.maximum.reduceat(surface, self.starts),
+                [] if self.phase is None else self.phase.melted(t),
             ]
         )
 

@@ -81,7 +81,15 @@ class StageSolver:
         if a in self.kept:
             self.kept.move_to_end(a)
             return self.kept[a]
-        matrix = sparse.csr_array(a * self.matrix + sparse.diags_array(self.capacity))
+        made = self.made(a, self.capacity)
+        self.kept[a] = made
+        while len(self.kept) > KEPT[self.system.mesh.dim]:
+            self.kept.popitem(last=False)
+        return made
+
+    def made(self, a: float, capacity: np.ndarray) -> Factor:
+        """Return a new factor for a step and given heat capacities of the free nodes, J/K, (n_free,)."""
+        matrix = sparse.csr_array(a * self.matrix + sparse.diags_array(capacity))
         dim = self.system.mesh.dim
         solver = (
             DirectSolver(matrix)
@@ -93,11 +101,7 @@ class StageSolver:
         right = self.coupling.toarray()
         columns = [self._solve(solver, right[:, k], None) for k in range(right.shape[1])]
         response = np.column_stack(columns) if columns else np.empty((len(self.free), 0))
-        made = Factor(a=a, solver=solver, response=response, schur=self.gather @ response)
-        self.kept[a] = made
-        while len(self.kept) > KEPT[dim]:
-            self.kept.popitem(last=False)
-        return made
+        return Factor(a=a, solver=solver, response=response, schur=self.gather @ response)
 
     def forget(self) -> None:
         """Drop all factors: the coefficients have changed."""

@@ -28,6 +28,8 @@ GAMMA = 2.0 - np.sqrt(2.0)
 D = GAMMA / 2.0
 W = np.sqrt(2.0) / 4.0
 WEIGHTS = np.array([W, W, D])
+MOST_MELTING = 60
+MELTING_TOLERANCE = 1e-9  # K
 ERROR_WEIGHTS = WEIGHTS - np.array([(1.0 - W) / 3.0, (3.0 * W + 1.0) / 3.0, D / 3.0])
 
 
@@ -68,6 +70,21 @@ class State:
     temperature: np.ndarray
     y: np.ndarray
     running: np.ndarray
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class Stage:
+    """One solved stage: node temperatures (°C), heat stored since the step began (J), increments (K) and the factor."""
+
+    temperature: np.ndarray
+    stored: np.ndarray
+    e: np.ndarray
+    d: np.ndarray
+    factor: Factor
+
+
+class NoConvergence(Exception):
+    """The iteration on melting nodes did not converge; the step is tried again, shorter."""
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -136,22 +153,20 @@ class Stepper:
         h
             s.
         """
-        factor = self.solver.factor(D * h)
-        middle, end = state.time + GAMMA * h, state.time + h
+        a, middle, end = D * h, state.time + GAMMA * h, state.time + h
+        capacity = self._space_capacity()
         first = self._evaluate(state, state.temperature, state.y, state.time, before=False)
-        d2, e2 = self._stage(state, factor, D * h * first[0], D * h * first[1], middle, 2, h)
-        r2 = self._heats(state, d2, D * h, first[0])
-        s2 = e2 * self._space_capacity() / (D * h) - first[1]
-        t2, y2 = self._moved(state, d2, middle), state.y + e2
-        flows2 = self._flows(state, t2, y2, middle, before=False)
-        d3, e3 = self._stage(state, factor, h * W * (first[0] + r2), h * W * (first[1] + s2), end, 3, h)
-        r3 = (self._stored(state, d3) - h * W * (first[0] + r2)) / (D * h)
-        s3 = (e3 * self._space_capacity() - h * W * (first[1] + s2)) / (D * h)
-        t3, y3 = self._moved(state, d3, end), state.y + e3
-        flows3 = self._flows(state, t3, y3, end, before=True)
+        two = self._stage(state, a, a * first[0], a * first[1], middle, 2, h)
+        r2, s2 = two.stored / a - first[0], two.e * capacity / a - first[1]
+        flows2 = self._flows(state, two.temperature, state.y + two.e, middle, before=False)
+        known, known_spaces = h * W * (first[0] + r2), h * W * (first[1] + s2)
+        three = self._stage(state, a, known, known_spaces, end, 3, h)
+        r3, s3 = (three.stored - known) / a, (three.e * capacity - known_spaces) / a
+        y3 = state.y + three.e
+        flows3 = self._flows(state, three.temperature, y3, end, before=True)
         node_heat, space_heat = np.stack([first[0], r2, r3]), np.stack([first[1], s2, s3])
-        error = self._error(state, factor, h * (ERROR_WEIGHTS @ node_heat), h * (ERROR_WEIGHTS @ space_heat), y3, end)
-        self._remember(d2, d3, h)
+        error = self._error(state, three.factor, h * (ERROR_WEIGHTS @ node_heat), h * (ERROR_WEIGHTS @ space_heat), y3, end)
+        self._remember(two.d, three.d, h)
         return Step(
             start=state,
             h=h,
@@ -209,45 +224,61 @@ class Stepper:
             row += [*own[s], power, share]
         return np.array([*row, spaces.outside_heat(own, y, time, before=before)])
 
-    def _moved(self, state: State, d: np.ndarray, time: float) -> np.ndarray:
-        temperature = state.temperature.copy()
-        temperature[self.solver.free] += d
-        return self.system.with_fixed(temperature, self.system.terminals(time, before=True))
+    def _stage(self, state: State, a: float, known_nodes, known_spaces, time: float, number: int, h: float) -> Stage:
+        """Solve one stage: linear at once, with melting nodes by iteration on their heat content."""
+        terminals, before = self.system.terminals(time, before=number == 3), number == 3
+        moved = self.system.with_fixed(state.temperature, terminals)
+        if self.phase is not None:
+            return self._melting(state, a, moved, known_nodes, known_spaces, terminals, time, before)
+        factor, free = self.solver.factor(a), self.solver.free
+        guess = self._guess(number, h)
+        d, e = self._linear(factor, state, moved, known_nodes[free], known_spaces, terminals, time, before, guess)
+        stored = np.zeros(len(moved))
+        stored[free] = self.solver.capacity * d
+        moved[free] += d
+        return Stage(temperature=moved, stored=stored, e=e, d=d, factor=factor)
 
-    def _stored(self, state: State, d: np.ndarray) -> np.ndarray:
-        """Return the heat stored since the step's beginning in every free node, J, (n_nodes,)."""
-        stored = np.zeros(len(state.temperature))
-        free = self.solver.free
-        if self.phase is None:
-            stored[free] = self.solver.capacity * d
-        else:
-            moved = state.temperature.copy()
-            moved[free] += d
-            stored[free] = (self.phase.heat(moved) - self.phase.heat(state.temperature))[free]
-        return stored
+    def _melting(self, state: State, a: float, moved, known_nodes, known_spaces, terminals, time: float, before) -> Stage:
+        """Iterate e <- e + (de/dT) d, T <- T(e) (Swaminathan, Voller 1992, Metall. Trans. B 23, 651).
 
-    def _heats(self, state: State, d: np.ndarray, a: float, first: np.ndarray) -> np.ndarray:
-        return self._stored(state, d) / a - first
+        The heat content, not the temperature, is carried on, so that no step can jump over latent heat.
+        """
+        free, phase = self.solver.free, self.phase
+        begun = phase.heat(state.temperature)
+        content = begun.copy()
+        for _ in range(MOST_MELTING):
+            slope = phase.slope(moved)[free]
+            factor = self.solver.made(a, slope)
+            right = known_nodes[free] - (content - begun)[free]
+            d, e = self._linear(factor, state, moved, right, known_spaces, terminals, time, before, None)
+            content[free] += slope * d
+            wanted = moved.copy()
+            wanted[free] += d
+            moved = self.system.with_fixed(phase.temperature(content), terminals)
+            if np.max(np.abs(moved - wanted)) <= MELTING_TOLERANCE:
+                stored = np.zeros(len(moved))
+                stored[free] = (content - begun)[free]
+                return Stage(
+                    temperature=moved, stored=stored, e=e, d=moved[free] - state.temperature[free], factor=factor
+                )
+        raise NoConvergence
 
-    def _stage(self, state: State, factor: Factor, known_nodes, known_spaces, time: float, number: int, h: float):
-        """Return the increments of free nodes and of spaces for one stage."""
+    def _linear(self, factor: Factor, state: State, moved, right, known_spaces, terminals, time: float, before, guess):
+        """Return increments of the free nodes from ``moved``, and of spaces from the state, for a linear stage."""
         system, solver, a = self.system, self.solver, factor.a
-        before = number == 3
-        terminals = system.terminals(time, before=before)
-        moved = system.with_fixed(state.temperature, terminals)
         heat = system.node_heat(moved, state.y, terminals)
-        right = known_nodes[solver.free] + a * heat[solver.free]
-        x = solver.solve(factor, right, self._guess(number, h))
+        x = solver.solve(factor, right + a * heat[solver.free], guess)
         if not system.spaces.n:
             return x, np.zeros(0)
-        moved[solver.free] += x
+        reached = moved.copy()
+        reached[solver.free] += x
 
         def own_heat(e: np.ndarray):
             y = state.y + e
             flows, slope = system.spaces.flows(y, state.running, time, before=before)
             return system.spaces.heat(flows, y, time, before=before), slope
 
-        films = system.gather @ moved - system.films * state.y
+        films = system.gather @ reached - system.films * state.y
         e = solver.newton(factor, known_spaces + a * films, own_heat, np.zeros(system.spaces.n))
         return x + a * (factor.response @ e), e
 

@@ -18,13 +18,14 @@ from coldseam.solution.heatsystem import HeatSystem
 from coldseam.solution.record import Column, Gauges, flows_at
 from coldseam.solution.spaces import outside_range
 from coldseam.solution.stage import StageSolver
-from coldseam.solution.stepper import State, Step, Stepper, channels, rates_at, weights_at
+from coldseam.solution.stepper import NoConvergence, State, Step, Stepper, channels, rates_at, weights_at
 
 TOLERANCE = 0.1
 """Error allowed to a step over accuracy times the temperatures' range, where the case does not say."""
 BALANCE_LIMIT = 1e-5
 LONGEST = 50.0  # the run over its longest step, at least
 SMALLEST = 1e-12  # of the run
+PATIENCE = 3  # steps after a rejected one before the step may grow again
 GROW = (1.0 / 12.0, 1.0 / 700.0)
 """Errors over the tolerance below which the step grows by one and by two rungs (2³ = 8, 4³ = 64, with a margin)."""
 
@@ -147,15 +148,17 @@ class Transient:
         self.tolerance = tolerance_of(system)
         self.solver = StageSolver(system, self.tolerance)
         self.stepper = Stepper(system, self.solver, phase)
-        self.gauges = Gauges(system)
+        self.gauges = Gauges(system, phase)
         time = system.case.time
         self.duration = time.duration
-        self.state = self.initial = self._settled(initial)
+        self.totals = Totals(*(np.zeros(len(channels(system))) for _ in range(3)))
+        self.initial = initial
+        self.state = self._settled(initial)
         self.ends = [*system.corners(0.0, self.duration), self.duration]
         self.longest = min(time.longest_step or np.inf, self.duration / LONGEST)
         self.rung = self._first_rung()
-        self.totals = Totals(*(np.zeros(len(channels(system))) for _ in range(3)))
         self.work = Work()
+        self.patience = 0
         self.status = "running"
         self.rows: list[np.ndarray] = []
         self.recorded = 0
@@ -188,17 +191,23 @@ class Transient:
         end = next(e for e in self.ends if e > self.time * (1 + 1e-14) + 1e-12)
         while True:
             h = self._length(end)
-            step = self.stepper.attempt(self.state, h)
-            if np.isfinite(step.error) and step.error <= self.tolerance:
+            try:
+                step = self.stepper.attempt(self.state, h)
+                error = step.error
+            except NoConvergence:
+                error = 4.0 * self.tolerance
+            if np.isfinite(error) and error <= self.tolerance:
                 break
             self.work.rejected += 1
-            self.rung += 1 if step.error < 8.0 * self.tolerance else 2
+            self.patience = PATIENCE
+            self.rung += 1 if error < 8.0 * self.tolerance else 2
             if self.longest * 0.5**self.rung < SMALLEST * self.duration:
                 raise SolveError(
-                    f"the time step became too small at {self.time:.6g} s; the error stays at {step.error:.3g} K"
+                    f"the time step became too small at {self.time:.6g} s; the error stays at {error:.3g} K"
                 )
         self._accept(step, end)
-        if step.error < GROW[0] * self.tolerance:
+        self.patience = max(self.patience - 1, 0)
+        if step.error < GROW[0] * self.tolerance and not self.patience:
             self.rung = max(self.rung - (2 if step.error < GROW[1] * self.tolerance else 1), 0)
         return step
 
@@ -242,8 +251,14 @@ class Transient:
         return history
 
     def _settled(self, state: State) -> State:
-        """Return a state with fixed nodes at their temperature and machines switched as their thermostats say."""
-        terminals = self.system.terminals(state.time)
+        """Return a state with fixed nodes at their temperature and machines switched as their thermostats say.
+
+        Where a surface's temperature jumps, the heat that its nodes take up at once came through its boundary.
+        """
+        temperature = self.system.with_fixed(state.temperature, self.system.terminals(state.time))
+        heat = self._into_fixed(temperature, state.temperature)
+        self.totals.heat = self.totals.heat + heat
+        self.totals.magnitude = self.totals.magnitude + np.abs(heat)
         running = np.array(
             [
                 0 if m is None else m.settle(float(state.y[s]), int(state.running[s]), state.time)
@@ -253,7 +268,7 @@ class Transient:
         )
         return State(
             time=state.time,
-            temperature=self.system.with_fixed(state.temperature, terminals),
+            temperature=temperature,
             y=state.y,
             running=running,
         )
@@ -275,7 +290,8 @@ class Transient:
     def _first_rung(self) -> int:
         """Return the rung whose step moves no temperature by much more than the tolerance."""
         first = self.stepper._evaluate(self.state, self.state.temperature, self.state.y, self.state.time, before=False)
-        slope = np.max(np.abs(first[0]) / self.system.capacity, initial=0.0)
+        capacity = self.system.capacity if self.phase is None else self.phase.slope(self.state.temperature)
+        slope = np.max(np.abs(first[0]) / capacity, initial=0.0)
         if self.system.spaces.n:
             slope = max(slope, float(np.max(np.abs(first[1]) / self.system.spaces.capacity)))
         wanted = 4.0 * self.tolerance / slope if slope > 0.0 else self.longest
@@ -325,17 +341,16 @@ class Transient:
                     first, switch = found, (number, threshold.stages)
         return first, switch
 
-    def _fixed_storage(self, step: Step, state: State) -> np.ndarray:
-        """Return the heat stored in nodes with a fixed temperature, by channel, J."""
+    def _into_fixed(self, now: np.ndarray, then: np.ndarray) -> np.ndarray:
+        """Return the heat that nodes with a fixed temperature took up between two temperatures, by channel, J."""
         stored = np.zeros(len(self.totals.heat))
         readers = self.system.readers
         if readers.fixed_nodes.nnz:
-            moved = self.system.capacity * (state.temperature - step.start.temperature)
-            stored[: len(readers.film)] = readers.fixed_nodes @ moved
+            stored[: len(readers.film)] = readers.fixed_nodes @ self._content(now, then)
         return stored
 
     def _integrate(self, step: Step, s: float, state: State) -> None:
-        extra = self._fixed_storage(step, state)
+        extra = self._into_fixed(state.temperature, step.start.temperature)
         heat = step.h * (weights_at(s) @ step.flows) + extra
         self.totals.heat = self.totals.heat + heat
         self.totals.magnitude = self.totals.magnitude + np.abs(heat)
@@ -346,11 +361,9 @@ class Transient:
     def _record(self, step: Step, s: float) -> None:
         """Write the rows and fields whose times lie in a step."""
         every, last = self.system.case.time.record, step.start.time + s * step.h
-        extra = (
-            self._fixed_storage(step, self.stepper.at(step, s)) / (s * step.h)
-            if self.system.readers.fixed_nodes.nnz
-            else 0.0
-        )
+        extra: float | np.ndarray = 0.0
+        if self.system.readers.fixed_nodes.nnz:
+            extra = self._into_fixed(self.stepper.at(step, s).temperature, step.start.temperature) / (s * step.h)
         while self.recorded * every <= last * (1 + 1e-14) and self.recorded * every <= self.duration * (1 + 1e-12):
             part = min(max((self.recorded * every - step.start.time) / step.h, 0.0), 1.0)
             if part >= s and last < self.duration * (1 - 1e-12) and part > 0.0:
@@ -364,7 +377,7 @@ class Transient:
 
     def _last_row(self, step: Step, s: float) -> None:
         if not self.rows or self.rows[-1][0] < self.time * (1 - 1e-12):
-            extra = self._fixed_storage(step, self.state) / (s * step.h)
+            extra = self._into_fixed(self.state.temperature, step.start.temperature) / (s * step.h)
             self.rows.append(self.gauges.row(self.state, flows_at(step, s, extra)))
 
     def _outside_channels(self) -> list[int]:
@@ -375,20 +388,20 @@ class Transient:
     def _heat_in(self) -> float:
         return float(self.totals.heat[self._outside_channels()].sum()) + self.system.source_flow * self.time
 
+    def _content(self, now: np.ndarray, then: np.ndarray) -> np.ndarray:
+        """Return what nodes hold more at one temperature than at another, J, (n_nodes,)."""
+        if self.phase is None:
+            return self.system.capacity * (now - then)
+        return self.phase.heat(now) - self.phase.heat(then)
+
     def _rearranged(self) -> float:
         """Return the sum of all nodes' absolute changes of heat content, J: heat that moved, inside or from outside."""
-        if self.phase is None:
-            moved = self.system.capacity * (self.state.temperature - self.initial.temperature)
-        else:
-            moved = self.phase.heat(self.state.temperature) - self.phase.heat(self.initial.temperature)
+        moved = self._content(self.state.temperature, self.initial.temperature)
         spaces = self.system.spaces.capacity * (self.state.y - self.initial.y) if self.system.spaces.n else np.zeros(0)
         return float(np.abs(moved).sum() + np.abs(spaces).sum())
 
     def _stored(self) -> float:
-        if self.phase is None:
-            stored = float(self.system.capacity @ (self.state.temperature - self.initial.temperature))
-        else:
-            stored = float((self.phase.heat(self.state.temperature) - self.phase.heat(self.initial.temperature)).sum())
+        stored = float(self._content(self.state.temperature, self.initial.temperature).sum())
         return (
             stored + float(self.system.spaces.capacity @ (self.state.y - self.initial.y))
             if self.system.spaces.n
