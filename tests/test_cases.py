@@ -59,7 +59,8 @@ if not the settling of its temperatures, or it is a part of the whole. The slow 
 SLOW = {*QUICK, "floor-wall-corner"}
 """Cases that take more than half a minute as they are shipped."""
 
-FILES = sorted(path.stem for path in runs.SHIPPED.glob("*.toml"))
+FILES = sorted(p.stem for p in runs.SHIPPED.glob("*.toml") if "\n[time]\n" not in p.read_text(encoding="utf-8"))
+"""The steady ones; tests/test_timed_cases.py has those over time."""
 
 
 def everyday(stem: str) -> dict:

@@ -26,6 +26,7 @@ LAYERS = (
     ("solution",),
     ("answers",),
     ("report",),
+    ("timed",),
     ("study",),
     ("progress",),
     ("cli",),

@@ -149,7 +149,7 @@ def _run(options: argparse.Namespace) -> int:
         from coldseam.report.summary import summary
         from coldseam.study import run
 
-        result = run(case, log)
+        result = run(case, log, folder=folder)
         written = result.write(folder, pictures=not options.no_pictures, log=log)
     # As written: drawing adds to the warnings what could not be drawn.
     answers = json.loads((folder / "answers.json").read_text(encoding="utf-8"))

@@ -23,6 +23,7 @@ from coldseam.mesh.types import Mesh
 from coldseam.report.view import View, model_view
 from coldseam.solution.flux import cell_flux
 from coldseam.solution.rounds import Solution, solve
+from coldseam.timed import TimedResult, run_over_time
 
 Log = Callable[[str, str], None]
 
@@ -116,8 +117,8 @@ class Result:
         return write_all(self.view(), Path(folder), pictures=pictures, log=log or _quiet)
 
 
-def run(case: Case, log: Log | None = None) -> Result:
-    """Solve a case to its asked accuracy.
+def run(case: Case, log: Log | None = None, *, folder: Path | None = None, resume: bool = False) -> Result | TimedResult:
+    """Solve a case to its asked accuracy; one with a ``[time]`` table over time.
 
     Parameters
     ----------
@@ -125,6 +126,10 @@ def run(case: Case, log: Log | None = None) -> Result:
         From :func:`coldseam.case.read.load`.
     log
         Called with a stage ("geometry", "mesh", "solve", ...) and a message; None for silence.
+    folder
+        Where a run over time leaves its fields and checkpoints while it goes on; None keeps neither.
+    resume
+        Whether a run over time goes on from the folder's checkpoint.
 
     Raises
     ------
@@ -133,6 +138,8 @@ def run(case: Case, log: Log | None = None) -> Result:
     """
     log = log or _quiet
     try:
+        if case.time is not None:
+            return run_over_time(case, log, folder=folder, resume=resume)
         require_bridges(case)
         require_answerable(case)
         with open_geometry(case, log=log) as mesher:

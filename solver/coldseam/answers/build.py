@@ -193,7 +193,7 @@ def warnings(solution: Solution) -> tuple[str, ...]:
     if steady.settled is not None:
         found += steady.settled.remarks
         found += cautions(steady)
-    found += list(solution.remarks)
+    found += [*solution.remarks, *steady.remarks]
     return tuple(found)
 
 

@@ -112,6 +112,7 @@ class Answers:
     enclosures: dict[str, Any] = field(default_factory=dict)
     limits: dict[str, Any] = field(default_factory=dict)
     solver: dict[str, Any] = field(default_factory=dict)
+    history: dict[str, Any] = field(default_factory=dict)
     warnings: tuple[str, ...] = ()
 
     def as_dict(self) -> dict[str, Any]:

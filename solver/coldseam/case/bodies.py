@@ -21,10 +21,12 @@ from coldseam.case.values import (
     Flag,
     HeatDensity,
     HeatFlow,
+    LatentHeat,
     MaterialRef,
     Name,
     Numbers,
     SpecificHeat,
+    Temperature,
     Uncertainty,
     checked,
 )
@@ -128,6 +130,26 @@ MaterialAxes = Annotated[
 ]
 
 
+class Melting(Table):
+    """How a material melts and freezes; its specific heat is that of the solid."""
+
+    ONE_OF: ClassVar = (("at", "between"),)
+    at: Temperature | None = Field(None, description="°C, a single melting point")
+    between: tuple[Temperature, Temperature] | None = Field(None, description="°C, the range from frozen to liquid")
+    latent_heat: LatentHeat = Field(description="J/kg")
+    specific_heat_liquid: SpecificHeat | None = Field(None, description="J/(kg·K), that of the solid if not given")
+
+    def check(self, context: Context) -> Iterator[Trouble]:
+        """Yield a range that is none."""
+        if self.between is not None and self.between[1] <= self.between[0]:
+            yield ("between",), "needs the lower temperature first"
+
+    @property
+    def range(self) -> tuple[float, float]:
+        """Beginning and end of melting, °C."""
+        return self.between if self.between is not None else (self.at, self.at)  # type: ignore[return-value]
+
+
 class Material(Table):
     """A material. Values of the named entry of the library hold where the file gives none of its own."""
 
@@ -138,6 +160,7 @@ class Material(Table):
     axes: MaterialAxes | None = None
     density: Density | None = Field(None, description="kg/m³")
     specific_heat: SpecificHeat | None = Field(None, description="J/(kg·K)")
+    melting: Melting | None = Field(None, description="latent heat, over time")
     emissivity: Emissivity | None = None
     uncertainty: Uncertainty | None = Field(None, description="of the conductivity, a fraction")
     source: str = Field("", description="where the values come from")

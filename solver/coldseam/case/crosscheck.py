@@ -15,7 +15,7 @@ from coldseam.case.tables import Context, Trouble, nearest_of
 if TYPE_CHECKING:
     from coldseam.case.model import Case
 
-ARRAYS = ("body", "boundary", "sheet", "contact", "probe", "bridge", "limit")
+ARRAYS = ("body", "boundary", "sheet", "contact", "probe", "bridge", "limit", "event")
 
 
 def entries(document: Mapping[str, Any], key: str) -> Iterator[tuple[int, dict[str, Any]]]:
@@ -82,9 +82,25 @@ def _untouched(document: Mapping[str, Any]) -> Iterator[Trouble]:
         if isinstance(space, str):
             # A misspelled reference is a fault of its own, and the space it means is touched.
             touched.add(space if space in spaces else nearest_of(space, spaces))
+    touched |= set(_exchanged(document))
     for name in spaces:
         if name not in touched:
             yield ("spaces", name), f'no boundary has space = "{name}"; give it one or take the space out'
+
+
+def _exchanged(document: Mapping[str, Any]) -> Iterator[str]:
+    """Yield the spaces that floating ones exchange air with, or whose air their machines use."""
+    spaces = document.get("spaces")
+    for space in (spaces if isinstance(spaces, dict) else {}).values():
+        floating = space.get("floating") if isinstance(space, dict) else None
+        if not isinstance(floating, dict):
+            continue
+        exchange, cooling = floating.get("air_exchange"), floating.get("cooling")
+        for entry in exchange if isinstance(exchange, list) else [exchange]:
+            if isinstance(entry, dict) and isinstance(entry.get("with"), str):
+                yield entry["with"]
+        if isinstance(cooling, dict) and isinstance(cooling.get("ambient"), str):
+            yield cooling["ambient"]
 
 
 def _rests(document: Mapping[str, Any]) -> Iterator[Trouble]:

@@ -16,6 +16,8 @@ from pydantic import Field, PrivateAttr, ValidationInfo, WithJsonSchema, WrapVal
 from coldseam.case.bodies import FLAT_SHAPES, SHAPES, SOLID_SHAPES, Body, Material
 from coldseam.case.crosscheck import document_troubles, unused_materials
 from coldseam.case.films import Cavity, Convection, Fluid, Radiation, Sun, exchange
+from coldseam.case.overtime import time_troubles
+from coldseam.case.schedules import Schedule
 from coldseam.case.shapes import (
     AXES,
     FACES,
@@ -37,6 +39,7 @@ from coldseam.case.shapes import (
 )
 from coldseam.case.source import Source
 from coldseam.case.tables import Context, Table, Trouble, listing
+from coldseam.case.timing import Event, Floating, ScheduledTemperature, TimeTable
 from coldseam.case.values import (
     Amount,
     Attached,
@@ -56,20 +59,18 @@ from coldseam.case.values import (
     Size,
     Some,
     SpaceRef,
-    Temperature,
     Uncertainty,
     checked,
 )
 from coldseam.case.wanted import Bridge, Flanking, Limit, Probe, Quantity
 
 __all__ = [
-    "AXES", "Convection", "FACES", "FLAT_SHAPES", "SHAPES", "SOLID_SHAPES", "Body", "Boundary", "Box", "Bridge", "Case", "Cone",
-    "Contact", "Cylinder", "Disc", "Enclosure", "Extent", "Flanking", "Fluid", "Layer", "Limit", "Material", "ModelTable",
-    "Opening", "Polygon", "Probe", "Quantity", "Radiation", "Repeat", "Ring", "Selector", "Sheet", "Space", "Sphere", "Sun", "Tube",
-    "Within",
+    "AXES", "FACES", "FLAT_SHAPES", "SHAPES", "SOLID_SHAPES", "Body", "Boundary", "Box", "Bridge", "Case", "Cone",
+    "Contact", "Convection", "Cylinder", "Disc", "Enclosure", "Event", "Extent", "Flanking", "Floating", "Fluid", "Layer",
+    "Limit", "Material", "ModelTable", "Opening", "Polygon", "Probe", "Quantity", "Radiation", "Repeat", "Ring",
+    "Schedule", "Selector", "Sheet", "Space", "Sphere", "Sun", "TimeTable", "Tube", "Within",
 ]  # fmt: skip
 
-STEADY_ONLY = "not supported yet: this version computes steady cases only"
 FINEST_ACCURACY = 1e-6
 
 
@@ -121,10 +122,10 @@ class ModelTable(Table):
 class Space(Table):
     """Air, or whatever else is of one temperature, before the surfaces."""
 
+    ONE_OF: ClassVar = (("temperature", "floating"),)
     AT_MOST_ONE: ClassVar = (("film", "surface_resistance", "convection"), ("surface_resistance", "radiation"))
     ANY_OF: ClassVar = (("film", "surface_resistance", "convection", "radiation"),)
-    LATER: ClassVar = {"floating": STEADY_ONLY + "; give the space a temperature"}
-    temperature: Temperature = Field(description="°C")
+    temperature: ScheduledTemperature | None = Field(None, description="°C, or a schedule over time")
     film: Film | None = Field(None, description="W/(m²·K)")
     surface_resistance: ResistanceOrZero | None = Field(
         None, description="m²·K/W; 0: the surface has the space's temperature"
@@ -133,6 +134,7 @@ class Space(Table):
     radiation: Radiation | None = Field(None, description="beside film or convection, or alone")
     relative_humidity: Humidity | None = Field(None, description='a fraction, or text such as "60 %"')
     uncertainty: Uncertainty | None = Field(None, description="of the film coefficient, a fraction")
+    floating: Floating | None = Field(None, description="its temperature follows from its heat balance")
     _name: str = PrivateAttr("")
 
     @classmethod
@@ -207,7 +209,7 @@ class Boundary(Table):
     name: Name
     on: Annotated[Selector | Literal["rest"], WrapValidator(_on)] = Field(description='a selector, or "rest"')
     space: SpaceRef | None = None
-    temperature: Temperature | None = Field(None, description="°C")
+    temperature: ScheduledTemperature | None = Field(None, description="°C, or a schedule over time")
     heat_flux: HeatFlux | None = Field(None, description="W/m² into the solid")
     heat_flow: HeatFlow | None = Field(None, description="W into the solid, spread evenly (W/m in a cross-section)")
     adiabatic: Flag | None = None
@@ -275,9 +277,9 @@ class Contact(Table):
 class Case(Table):
     """A whole case, validated. ``source``, ``raw`` and ``warnings`` are set when it is read."""
 
-    LATER: ClassVar = {"time": STEADY_ONLY, "event": STEADY_ONLY}
     title: Name
     model: ModelTable
+    time: TimeTable | None = Field(None, description="a run over time; steady without it")
     spaces: dict[Name, Space] = {}
     materials: dict[Name, Material]
     fluids: dict[Name, Fluid] = {}
@@ -289,6 +291,7 @@ class Case(Table):
     probe: tuple[Probe, ...] = ()
     bridge: tuple[Bridge, ...] = ()
     limit: tuple[Limit, ...] = ()
+    event: tuple[Event, ...] = ()
     _source: Source | None = PrivateAttr(None)
     _raw: dict[str, Any] = PrivateAttr(default_factory=dict)
     _warnings: tuple[str, ...] = PrivateAttr(())
@@ -299,7 +302,7 @@ class Case(Table):
         return data, document_troubles(data)
 
     def check(self, context: Context) -> Iterator[Trouble]:
-        """Yield radiation beside a surface resistance that has it in it already, and sun on held surfaces."""
+        """Yield walls, radiation and sun that do not fit their space, and what does not fit together over time."""
         for name in self.cavities:
             if not any(boundary.cavity == name for boundary in self.boundary):
                 yield ("cavities", name), f'no boundary has cavity = "{name}"; give it its walls or take it out'
@@ -313,6 +316,7 @@ class Case(Table):
                 yield ("boundary", number, "radiation"), f"{what} a film or a convection of its own"
             elif found.film == math.inf and boundary.sun is not None:
                 yield ("boundary", number, "sun"), "has no meaning where the surface has the space's temperature"
+        yield from time_troubles(self)
 
     def model_post_init(self, context: Any) -> None:
         """Tell materials and spaces their names."""

@@ -292,6 +292,11 @@ QUANTITIES: Mapping[str, Quantity] = MappingProxyType(
             "dynamic viscosity", "Pa·s", {"Pa·s": 1.0, "mPa·s": 1e-3, "µPa·s": 1e-6, "cP": 1e-3}, {"kg/(m·s)": "Pa·s"}
         ),
         "angle": _quantity("angle", "°", {"°": 1.0}, {"deg": "°", "degree": "°", "degrees": "°"}),
+        "mass": _quantity("mass", "kg", {"kg": 1.0, "g": 1e-3, "t": 1e3, "lb": POUND}),
+        "area": _quantity("area", "m²", {"m²": 1.0, "cm²": 1e-4, "mm²": 1e-6, "ft²": FOOT**2}, {"sq ft": "ft²"}),
+        "latent heat": _quantity(
+            "latent heat", "J/kg", {"J/kg": 1.0, "kJ/kg": 1e3, "MJ/kg": 1e6, "J/g": 1e3, "BTU/lb": BTU / POUND}
+        ),
         "length per depth": _quantity(
             "area per metre of depth", "m²/m", {"m²/m": 1.0, "mm²/mm": 1e-3, "ft²/ft": FOOT, "m": 1.0, "mm": 1e-3}
         ),

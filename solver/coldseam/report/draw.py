@@ -57,10 +57,13 @@ def jobs(view: View, group: str) -> Iterator[tuple[str, Callable[[Path, str], Pi
     """Yield name and drawing function of every picture of a group: "flat" (no VTK) or "space"."""
     if group == "space":
         yield from _space_jobs(view)
-    elif view.mesh.dim == 2:
-        yield from _plane_jobs(view)
     else:
-        yield from _section_jobs(view)
+        yield from _plane_jobs(view) if view.mesh.dim == 2 else _section_jobs(view)
+        if view.history is not None:
+            from coldseam.report import history
+
+            yield "history_temperature", lambda folder, name: history.draw_temperatures(view, folder, name)
+            yield "history_heat_flow", lambda folder, name: history.draw_flows(view, folder, name)
 
 
 def _plane_jobs(view: View):

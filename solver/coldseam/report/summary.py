@@ -14,6 +14,7 @@ import numpy as np
 
 from coldseam.mesh.measure import cell_measure
 from coldseam.report.laws import film_rows
+from coldseam.report.timed import event_lines, run_lines
 from coldseam.report.view import View, boundary_areas
 
 WITHOUT_ERROR = 4
@@ -119,8 +120,10 @@ def summary(answers: Answers, files: Sequence[str] = ()) -> str:
     files
         Paths of what was written, as the user should read them.
     """
+    over_time = bool(answers.get("history"))
     sections = [
-        [str(answers.get("title") or "Untitled case")],
+        [*event_lines(answers), str(answers.get("title") or "Untitled case")],
+        run_lines(answers) if over_time else [],
         _flows(answers),
         _coupling(answers),
         _trust(answers),
@@ -161,7 +164,8 @@ def _flows(answers: Answers) -> list[str]:
         for name, entry in answers.get("boundaries", {}).items()
         if entry.get("kind") != "adiabatic"
     ]
-    return ["Heat flow (positive: into the solid)", *_table(spaces + boundaries, right=(1,))]
+    when = " at the end of the run" if answers.get("history") else ""
+    return [f"Heat flow{when} (positive: into the solid)", *_table(spaces + boundaries, right=(1,))]
 
 
 def _flow(entry: Answers, unit: str) -> str:
@@ -187,7 +191,7 @@ def _trust(answers: Answers) -> list[str]:
     if accuracy:
         lines.append(_accuracy(accuracy, [*answers["spaces"].values(), *answers["boundaries"].values()]))
     balance = answers.get("balance")
-    if balance:
+    if balance and not answers.get("history"):
         closure = f"{balance['closure']:.1e} {flow_unit(answers)}"
         lines.append(f"Balance: the heat flows add up to {closure}, {balance['relative']:.1e} of what flows through")
     mesh = answers.get("mesh")

@@ -5,6 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 
 from coldseam.report.files import answers_text, csv_text, write_files
+from coldseam.report.history import history_csv
 from coldseam.report.view import View
 
 _BODY_UNITS = {
@@ -34,7 +35,8 @@ def tables(view: View) -> dict[str, str]:
     """Return file name -> CSV text of every table that the answers hold."""
     flat = view.mesh.dim == 2 and not view.mesh.axisymmetric
     axes = ("r", "z") if view.mesh.axisymmetric else "xyz"[: view.mesh.dim]
-    return {
+    over_time = {} if view.history is None else {"history.csv": history_csv(view.history)}
+    return over_time | {
         "boundaries.csv": _boundaries(view, axes, flat),
         "spaces.csv": _spaces(view.answers, flat),
         "coupling.csv": _coupling(view.answers, flat),

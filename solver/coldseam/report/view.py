@@ -7,12 +7,16 @@ only a model (``coldseam check``) makes one without fields through :func:`model_
 from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from coldseam.answers.maps import SurfaceMap
 from coldseam.mesh.measure import facet_measure
 from coldseam.mesh.types import Mesh
+
+if TYPE_CHECKING:
+    from coldseam.report.history import HistoryView
 
 BOUNDARY_KINDS = ("space", "temperature", "heat_flux", "heat_flow", "adiabatic")
 
@@ -41,6 +45,8 @@ class View:
         The content of answers.json.
     maps
         Fields on the surfaces beside the temperature.
+    history
+        The recorded rows of a run over time.
     """
 
     mesh: Mesh
@@ -54,6 +60,7 @@ class View:
     probes: dict[str, np.ndarray] = field(default_factory=dict)
     answers: dict = field(default_factory=dict)
     maps: tuple[SurfaceMap, ...] = ()
+    history: HistoryView | None = None
 
     def __post_init__(self):
         if len(self.facet_boundary) != len(self.mesh.facets):

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -14,6 +14,7 @@ from coldseam.mesh.contacts import open_contacts
 from coldseam.mesh.locate import interpolate
 from coldseam.mesh.measure import cell_measure
 from coldseam.mesh.types import Mesh
+from coldseam.solution.balance import at_balance, floating_names, held_at_guess
 from coldseam.solution.bounds import Bounds
 from coldseam.solution.coefficients import depends
 from coldseam.solution.nonlinear import Settled, settle
@@ -57,6 +58,8 @@ class Steady:
         Bounds of the heat flows; None where they were not asked for.
     settled
         How coefficients that depend on the temperatures were found; None where none do.
+    remarks
+        What is to be said of the machines of floating spaces.
     """
 
     case: Case
@@ -89,6 +92,7 @@ class Steady:
         principle), so holding a node there only brings it nearer; heat flows come from ``temperature``.
         """
         return np.clip(self.temperature, *self.possible)
+    remarks: tuple[str, ...] = ()
 
     @property
     def closure(self) -> float:
@@ -131,7 +135,8 @@ def solve_on(case: Case, mesh: Mesh, before: Steady | None = None) -> Steady:
     """
     facet_boundary = claim_facets(case, mesh)
     mesh = with_contacts(case, mesh)
-    given = conditions(case, mesh, facet_boundary)
+    floats, remarks = floating_names(case), ()
+    given = conditions(held_at_guess(case) if floats else case, mesh, facet_boundary)
     operator, weights = node_operator(mesh, given)
     network = node_network(mesh, given, operator)
     require_temperatures(mesh, network)
@@ -146,6 +151,10 @@ def solve_on(case: Case, mesh: Mesh, before: Steady | None = None) -> Steady:
     response = respond(network, mesh.dim, NODE_TOLERANCE, guess=guess, uneven=given.uneven)
 
     temperatures = np.array([terminal.temperature for terminal in given.terminals])
+    if floats:
+        case, temperatures, remarks = at_balance(case, given, response)
+        moved = zip(given.terminals, temperatures.tolist(), strict=True)
+        given = replace(given, terminals=tuple(replace(terminal, temperature=t) for terminal, t in moved))
     reference = 0.5 * float(temperatures.min() + temperatures.max())
     state = np.append(temperatures - reference, [1.0] * network.has_load)
     relative = response.fields @ state
@@ -162,6 +171,7 @@ def solve_on(case: Case, mesh: Mesh, before: Steady | None = None) -> Steady:
         boundary_flow=boundary_flows(mesh, facet_boundary, given, network, relative, state, len(case.boundary)),
         source_flow=float(given.source @ cell_measure(mesh)),
         settled=settled,
+        remarks=remarks,
     )
     if result.relative_closure > CLOSURE_LIMIT:
         raise SolveError(

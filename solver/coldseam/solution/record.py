@@ -1,0 +1,140 @@
+"""What is written down of a run over time: one row at every asked time, and the quantities that events watch."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+from scipy import sparse
+
+from coldseam.errors import CaseError, Fault
+from coldseam.mesh.locate import locate
+from coldseam.solution.heatsystem import HeatSystem
+from coldseam.solution.stepper import State, Step, channels, rates_at
+from coldseam.volumes.section import facet_shares
+
+if TYPE_CHECKING:
+    from coldseam.case.timing import When
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class Column:
+    """One column of the history.
+
+    Parameters
+    ----------
+    kind
+        ``"time"``, ``"space"``, ``"goods"``, ``"probe"``, ``"min"``, ``"mean"`` or ``"max"`` of a boundary, or a kind
+        of flow of :func:`coldseam.solution.stepper.channels`.
+    name
+        Of what.
+    unit
+        Of its values.
+    """
+
+    kind: str
+    name: str
+    unit: str
+
+
+class Gauges:
+    """Reads temperatures at probes and surfaces from node temperatures.
+
+    Parameters
+    ----------
+    system
+        The equations; its case names probes and boundaries.
+    phase
+        Heat content where bodies melt, or None.
+    """
+
+    def __init__(self, system: HeatSystem, phase=None):
+        self.system, self.phase = system, phase
+        case, mesh = system.case, system.mesh
+        self.probes = _probe_weights(system)
+        count = len(case.boundary)
+        rows = np.repeat(system.facet_boundary, mesh.dim)
+        nodes = mesh.facets.ravel()
+        shares = sparse.coo_array(
+            (facet_shares(mesh, mesh.facets).ravel(), (rows, nodes)), shape=(count, mesh.n_nodes)
+        ).tocsr()
+        area = np.asarray(shares.sum(axis=1)).ravel()
+        self.mean = sparse.diags_array(1.0 / area) @ shares
+        touched = sparse.coo_array((np.ones(len(nodes)), (rows, nodes)), shape=shares.shape).tocsr()
+        self.nodes, self.starts = touched.indices, touched.indptr[:-1]
+
+    def columns(self) -> list[Column]:
+        """Return the columns that :meth:`row` fills."""
+        case, spaces = self.system.case, self.system.spaces
+        found = [Column(kind="time", name="", unit="s")]
+        found += [Column(kind="space", name=name, unit="degC") for name in case.spaces]
+        found += [Column(kind="goods", name=name, unit="degC") for name in spaces.labels()[len(spaces.names) :]]
+        found += [Column(kind="probe", name=probe.name, unit="degC") for probe in case.probe]
+        for kind in ("min", "mean", "max"):
+            found += [Column(kind=kind, name=boundary.name, unit="degC") for boundary in case.boundary]
+        if self.phase is not None:
+            found += [Column(kind="melted", name=name, unit="1") for name in self.phase.names]
+        section = self.system.mesh.dim == 2 and not self.system.mesh.axisymmetric
+        heat = "W/m" if section else "W"
+        return found + [Column(kind=k, name=n, unit="1" if k == "share" else heat) for k, n in channels(self.system)]
+
+    def temperatures(self, state: State) -> np.ndarray:
+        """Return the row's temperatures, °C."""
+        spaces, case = self.system.spaces, self.system.case
+        room = [spaces.temperature_of(name, state.y, state.time, before=True) for name in case.spaces]
+        t = state.temperature
+        surface = t[self.nodes]
+        return np.concatenate(
+            [
+                room,
+                state.y[len(spaces.names) :],
+                self.probes @ t,
+                np.minimum.reduceat(surface, self.starts),
+                self.mean @ t,
+                np.maximum.reduceat(surface, self.starts),
+                [] if self.phase is None else self.phase.melted(t),
+            ]
+        )
+
+    def row(self, state: State, flows: np.ndarray) -> np.ndarray:
+        """Return one row: time, temperatures, flows."""
+        return np.concatenate([[state.time], self.temperatures(state), flows])
+
+    def reading(self, when: When):
+        """Return a function of a state: the temperature (°C) that an event watches."""
+        case, spaces = self.system.case, self.system.spaces
+        if when.space is not None:
+            return lambda state: spaces.temperature_of(when.space, state.y, state.time, before=True)
+        if when.probe is not None:
+            weights = self.probes[[[probe.name for probe in case.probe].index(when.probe)]]
+            return lambda state: float((weights @ state.temperature)[0])
+        number = [boundary.name for boundary in case.boundary].index(when.boundary)
+        if when.temperature == "mean":
+            weights = self.mean[[number]]
+            return lambda state: float((weights @ state.temperature)[0])
+        end = self.starts[number + 1] if number + 1 < len(self.starts) else len(self.nodes)
+        nodes, pick = self.nodes[self.starts[number] : end], np.min if when.temperature == "min" else np.max
+        return lambda state: float(pick(state.temperature[nodes]))
+
+
+def _probe_weights(system: HeatSystem) -> sparse.csr_array:
+    case, mesh = system.case, system.mesh
+    if not case.probe:
+        return sparse.csr_array((0, mesh.n_nodes))
+    cells, weights = locate(mesh, np.array([probe.at for probe in case.probe], dtype=float))
+    faults = [
+        Fault(path=("probe", int(n), "at"), what=f'the probe "{case.probe[n].name}" lies outside the model')
+        for n in np.flatnonzero(cells < 0)
+    ]
+    if faults:
+        raise CaseError(faults)
+    rows = np.repeat(np.arange(len(cells)), mesh.dim + 1)
+    return sparse.coo_array(
+        (weights.ravel(), (rows, mesh.cells[cells].ravel())), shape=(len(cells), mesh.n_nodes)
+    ).tocsr()
+
+
+def flows_at(step: Step, s: float, extra: np.ndarray) -> np.ndarray:
+    """Return the flows at a fraction of a step, W; ``extra`` is what fixed nodes store, (n_channels,)."""
+    return rates_at(s) @ step.flows + extra

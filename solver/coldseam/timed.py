@@ -1,0 +1,168 @@
+"""A run over time from case to files: mesh, start, steps with progress and checkpoints, answers."""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Callable
+from dataclasses import dataclass, replace
+from pathlib import Path
+
+import numpy as np
+
+from coldseam.answers.history import headings, require_timed_limits, timed_answers
+from coldseam.answers.types import Answers
+from coldseam.case.model import Case
+from coldseam.case.schedules import Schedule
+from coldseam.geometry.mesher import open_geometry
+from coldseam.mesh.types import Mesh
+from coldseam.physics.melting import heat_content
+from coldseam.report.history import HistoryView, scale_of
+from coldseam.report.series import FieldSeries
+from coldseam.report.view import View, model_view
+from coldseam.solution.heatsystem import HeatSystem, heat_system
+from coldseam.solution.rounds import Solution
+from coldseam.solution.starting import FINAL, save_final, starting_state
+from coldseam.solution.timeconstants import time_constants
+from coldseam.solution.timemesh import mesh_over_time
+from coldseam.solution.transient import History, Transient
+
+Log = Callable[[str, str], None]
+SAY_EVERY = 1.0  # s between progress lines
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class TimedResult:
+    """A solved case over time.
+
+    Parameters
+    ----------
+    case
+        The case.
+    answers
+        What is written to answers.json, as dataclasses.
+    history
+        The recorded run, as arrays.
+    solution
+        The steady solution that made the mesh.
+    """
+
+    case: Case
+    answers: Answers
+    history: History
+    solution: Solution
+
+    @property
+    def mesh(self) -> Mesh:
+        """The mesh, m."""
+        return self.history.system.mesh
+
+    @property
+    def temperature(self) -> np.ndarray:
+        """Temperature at the mesh's nodes at the end, °C, shape (n_nodes,)."""
+        return self.history.final.temperature
+
+    def view(self) -> View:
+        """Return what pictures and files are made from; its fields are those at the end."""
+        plain = _model(self.history.system)
+        return replace(
+            plain, temperature=self.temperature, answers=self.answers.as_dict(), history=history_view(self.history)
+        )
+
+    def write(self, folder: str | Path, *, pictures: bool = True, log: Log | None = None) -> list[Path]:
+        """Write answers.json, history.csv, tables, the final field and pictures into a folder; return the paths.
+
+        Raises
+        ------
+        OutputError
+            The folder can't be written.
+        """
+        from coldseam.report.output import write_all
+
+        written = write_all(self.view(), Path(folder), pictures=pictures, log=log or (lambda stage, message: None))
+        save_final(Path(folder) / FINAL, self.history.system, self.history.final)
+        fields = [path for path in (Path(folder) / "fields.pvd",) if path.is_file()]
+        return [*written, Path(folder) / FINAL, *fields]
+
+
+def run_over_time(case: Case, log: Log, *, folder: Path | None = None, resume: bool = False) -> TimedResult:
+    """Solve a case with a ``[time]`` table.
+
+    Parameters
+    ----------
+    case
+        The case.
+    log
+        Called with a stage and a message.
+    folder
+        Where fields and checkpoints go while the run goes on; None keeps neither.
+    resume
+        Go on from the folder's checkpoint.
+
+    Raises
+    ------
+    ColdseamError
+        As :func:`coldseam.study.run`.
+    """
+    require_timed_limits(case)
+    with open_geometry(case, log=log) as mesher:
+        mesh, solution, remarks = mesh_over_time(case, mesher, log)
+    system = heat_system(case, mesh)
+    fields = (
+        None
+        if folder is None or not (case.time.fields or case.time.fields_every)
+        else FieldSeries(folder, _model(system))
+    )
+    transient = Transient(system, starting_state(system), phase=heat_content(case, system.mesh), on_field=fields)
+    _go(transient, log)
+    history = transient.result()
+    constants = time_constants(system)
+    answers = timed_answers(history, solution, remarks, {"time_constants": constants})
+    return TimedResult(case=case, answers=answers, history=history, solution=solution)
+
+
+def _go(transient: Transient, log: Log) -> None:
+    begun = said = time.perf_counter()
+    first = transient.time
+    unit, seconds = scale_of(transient.duration)
+    while transient.status == "running":
+        step = transient.step()
+        now = time.perf_counter()
+        if now - said > SAY_EVERY:
+            said = now
+            left = (now - begun) * (transient.duration - transient.time) / max(transient.time - first, 1e-300)
+            log(
+                "run",
+                f"{transient.time / seconds:.4g} of {transient.duration / seconds:.4g} {unit}, step {step.h:.3g} s, some {left:.0f} s to go",
+            )
+
+
+def _model(system: HeatSystem) -> View:
+    return model_view(system.case, system.mesh, system.facet_boundary)
+
+
+def history_view(history: History) -> HistoryView:
+    """Return the recorded run as the report sees it, with levels and limits to draw in."""
+    case = history.system.case
+    levels = [(f"{event.name}: {event.when.level:g} °C", event.when.level) for event in case.event]
+    for name, space in case.spaces.items():
+        if space.floating is not None and space.floating.cooling is not None:
+            setpoint = space.floating.cooling.setpoint
+            if not isinstance(setpoint, Schedule):
+                levels.append((f"setpoint of {name}", setpoint))
+    bounds = []
+    for limit in case.limit:
+        marks = levels if limit.quantity.measure == "temperature" else bounds
+        marks += [
+            (f"{limit.name} {word}", value)
+            for word, value in (("at most", limit.at_most), ("at least", limit.at_least))
+            if value is not None
+        ]
+    return HistoryView(
+        columns=tuple((c.kind, c.name, c.unit) for c in history.columns),
+        headings=tuple(headings(history)),
+        rows=history.rows,
+        levels=tuple(levels),
+        bounds=tuple(bounds),
+        moments=tuple((h.name, h.time) for h in history.events if h.time is not None),
+        given=tuple(name for name, space in case.spaces.items() if space.temperature is not None),
+    )
