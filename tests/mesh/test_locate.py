@@ -33,9 +33,8 @@ def test_weights_give_the_point_back(dim):
 def test_nodes_and_facet_centres_belong_to_a_cell_that_has_them(dim):
     mesh = make(dim)
     cells, weights = locate(mesh, mesh.points)
-    assert np.array_equal(
-        np.take_along_axis(mesh.cells[cells], weights.argmax(axis=1)[:, None], axis=1)[:, 0], np.arange(mesh.n_nodes)
-    )
+    nearest = np.take_along_axis(mesh.cells[cells], weights.argmax(axis=1)[:, None], axis=1)[:, 0]
+    assert np.array_equal(nearest, np.arange(mesh.n_nodes))
     assert np.allclose(weights.max(axis=1), 1.0, rtol=0, atol=1e-12)
     centres = mesh.points[mesh.facets].mean(axis=1)
     assert np.all(locate(mesh, centres)[0] >= 0)

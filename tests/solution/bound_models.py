@@ -51,6 +51,12 @@ def _outer_inner(x):
     return np.where(outer, 0, np.where(inner, 1, -1))
 
 
+def _tee(x):
+    """A wall with a partition: 0 its long side, 1 and 2 the two rooms on the other."""
+    room = np.where(x[0] < 1.5, 1, 2)
+    return np.where(x[1] < 1e-9, 0, np.where((x[1] > 1.0 - 1e-9) & (x[1] < 2.0 - 1e-9), room, -1))
+
+
 def _beyond_wall(x):
     return np.all(x > 1.0, axis=0)
 
@@ -159,9 +165,7 @@ MODELS: dict[str, Known] = {
             size=(3, 2),
             hole=lambda x: (x[1] > 1.0) & ((x[0] < 1.0) | (x[0] > 2.0)),
             conductivity=(0.5,),
-            terminal=lambda x: np.where(
-                x[1] < 1e-9, 0, np.where((x[1] < 2.0 - 1e-9) & (x[1] > 1.0 - 1e-9), np.where(x[0] < 1.5, 1, 2), -1)
-            ),
+            terminal=_tee,
             films=(8.0, 3.0, 3.0),
             temperatures=(-10.0, 20.0, 5.0),
         ),
