@@ -96,7 +96,7 @@ def prove(
         The facet solve failed, or its flux fails the check of :func:`check_gap`.
     """
     system = facet_system(mesh, given, weights)
-    solver = _facet_solver(system, nodes, mesh.dim, given.uneven)
+    solver = facet_solver(system, nodes, mesh.dim, given.uneven)
     response = respond(system.network, mesh.dim, tolerance, solver, lambda: system.from_nodes @ nodes.fields)
     return bounds_of(mesh, given, system, nodes, response)
 
@@ -120,7 +120,7 @@ def bounds_of(mesh: Mesh, given: Conditions, system: FacetSystem, nodes: Respons
     )
 
 
-def _facet_solver(system: FacetSystem, nodes: Response, dim: int, uneven: bool):
+def facet_solver(system: FacetSystem, nodes: Response, dim: int, uneven: bool):
     free = system.network.free
     matrix = system.network.matrix[free][:, free]
     if matrix.shape[0] <= 2 * DIRECT_LIMIT[dim]:
