@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import numpy as np
 import skfem
+from benchmarks.common import Table, brick_grid, in_turn, mesh_of, verdict
 from skfem.helpers import dot, grad
 
-from benchmarks.common import Table, brick_grid, in_turn, mesh_of, verdict
 from coldseam.volumes.operator import cell_weights, edge_operator
 
 PER_SIDE = 55  # 6 tetrahedra a brick: 998 250

@@ -89,7 +89,9 @@ def brick_grid(dim: int, per_side: int, corner: bool = False):
     inside = np.all(np.abs(2 * points - np.round(2 * points)) > 1e-9, axis=0)
     points[:, inside] += np.random.default_rng(0).uniform(-0.15, 0.15, (dim, inside.sum())) / per_side
     grid = kind(points, grid.t)
-    return grid.remove_elements(np.flatnonzero(np.all(grid.p[:, grid.t].mean(axis=1) > 0.5, axis=0))) if corner else grid
+    return (
+        grid.remove_elements(np.flatnonzero(np.all(grid.p[:, grid.t].mean(axis=1) > 0.5, axis=0))) if corner else grid
+    )
 
 
 def mesh_of(grid) -> Mesh:

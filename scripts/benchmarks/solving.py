@@ -3,8 +3,6 @@
 from __future__ import annotations
 
 import numpy as np
-
-
 from benchmarks.common import Table, brick_grid, in_turn, mesh_of, verdict, walls
 
 from coldseam.solution.bounds import FACET_TOLERANCE, facet_solver
@@ -63,7 +61,12 @@ def bare_library() -> Table:
         head=("", "s", "iterations", "energy error, of the whole"),
         rows=[
             ("coldseam", f"{times['ours']:.2f}", str(solved.iterations[0]), f"{reached / offset[0]:.0e}"),
-            ("pyamg and its conjugate gradients", f"{times['library']:.2f}", str(count), f"{off(library(count)) / offset[0]:.0e}"),
+            (
+                "pyamg and its conjugate gradients",
+                f"{times['library']:.2f}",
+                str(count),
+                f"{off(library(count)) / offset[0]:.0e}",
+            ),
             ("ratio", f"{ratio:.2f}", "", f"goal {verdict(ratio, 1.2, at_least=False)}"),
         ],
         remarks=(
@@ -81,7 +84,9 @@ def crossing(dim: int) -> Table:
         times = in_turn(
             {
                 "direct": lambda: DirectSolver(matrix).solve(right, offset, NODE_TOLERANCE),
-                "multigrid": lambda: MultigridSolver(matrix, node_hierarchy(matrix)).solve(right, offset, NODE_TOLERANCE),
+                "multigrid": lambda: MultigridSolver(matrix, node_hierarchy(matrix)).solve(
+                    right, offset, NODE_TOLERANCE
+                ),
             },
             3,
         )
@@ -129,7 +134,16 @@ def facets() -> Table:
     return Table(
         name="facets",
         title="What the proof costs: the facet network against the nodes', 3D",
-        head=("nodes", "facets", "assemble nodes, s", "solve nodes, s", "assemble facets, s", "solve facets, s", "ratio of solves", "goal"),
+        head=(
+            "nodes",
+            "facets",
+            "assemble nodes, s",
+            "solve nodes, s",
+            "assemble facets, s",
+            "solve facets, s",
+            "ratio of solves",
+            "goal",
+        ),
         rows=rows,
         remarks=("The nodes' solve includes building the hierarchy, the facets' uses it again.",),
     )
