@@ -122,13 +122,13 @@ def bounds_of(mesh: Mesh, given: Conditions, system: FacetSystem, nodes: Respons
 
 def facet_solver(system: FacetSystem, nodes: Response, dim: int, uneven: bool):
     free = system.network.free
-    matrix = system.network.matrix[free][:, free]
+    matrix = system.network.free_matrix
     if matrix.shape[0] <= 2 * DIRECT_LIMIT[dim]:
         return DirectSolver(_regular(matrix))
     hierarchy = nodes.hierarchy
     free_nodes = nodes.network.free
     if hierarchy is None:
-        hierarchy = node_hierarchy(nodes.network.matrix[free_nodes][:, free_nodes], uneven)
+        hierarchy = node_hierarchy(nodes.network.free_matrix, uneven)
     matrix = _regular(matrix)
     return MultigridSolver(matrix, facet_hierarchy(matrix, system.from_nodes[free][:, free_nodes], hierarchy))
 
