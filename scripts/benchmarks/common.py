@@ -80,18 +80,14 @@ def peak() -> tuple[float, float]:
     return own, child
 
 
-def brick_grid(dim: int, per_side: int, corner: bool = False):
-    """Return a scikit-fem mesh of the unit square or cube, inner nodes moved; ``corner`` cuts out an eighth (quarter)."""
-    axis = np.linspace(0.0, 1.0, per_side + 1)
+def brick_grid(dim: int, per_side: int):
+    """Return a scikit-fem mesh of the unit square or cube with moved inner nodes."""
     kind = skfem.MeshTri if dim == 2 else skfem.MeshTet
-    grid = kind.init_tensor(*[axis] * dim)
+    grid = kind.init_tensor(*[np.linspace(0.0, 1.0, per_side + 1)] * dim)
     points = grid.p.copy()
     inside = np.all(np.abs(2 * points - np.round(2 * points)) > 1e-9, axis=0)
     points[:, inside] += np.random.default_rng(0).uniform(-0.15, 0.15, (dim, inside.sum())) / per_side
-    grid = kind(points, grid.t)
-    return (
-        grid.remove_elements(np.flatnonzero(np.all(grid.p[:, grid.t].mean(axis=1) > 0.5, axis=0))) if corner else grid
-    )
+    return kind(points, grid.t)
 
 
 def mesh_of(grid) -> Mesh:

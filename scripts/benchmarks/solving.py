@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from functools import partial
+
 import numpy as np
 from benchmarks.common import Table, brick_grid, in_turn, mesh_of, verdict, walls
 
@@ -69,9 +71,7 @@ def bare_library() -> Table:
             ),
             ("ratio", f"{ratio:.2f}", "", f"goal {verdict(ratio, 1.2, at_least=False)}"),
         ],
-        remarks=(
-            "The library gets the fewest iterations that reach our error, which it could not know; ours ends by its own rule.",
-        ),
+        remarks=("The library gets the fewest iterations that reach our error, which it could not know by itself.",),
     )
 
 
@@ -81,15 +81,12 @@ def crossing(dim: int) -> Table:
     for per_side in CROSSING[dim]:
         _, _, _, network = network_of(dim, per_side)
         matrix, (right, offset) = network.matrix, right_of(network)
-        times = in_turn(
-            {
-                "direct": lambda: DirectSolver(matrix).solve(right, offset, NODE_TOLERANCE),
-                "multigrid": lambda: MultigridSolver(matrix, node_hierarchy(matrix)).solve(
-                    right, offset, NODE_TOLERANCE
-                ),
-            },
-            3,
-        )
+        given = right, offset, NODE_TOLERANCE
+        runs = {
+            "direct": partial(lambda a, g: DirectSolver(a).solve(*g), matrix, given),
+            "multigrid": partial(lambda a, g: MultigridSolver(a, node_hierarchy(a)).solve(*g), matrix, given),
+        }
+        times = in_turn(runs, 3)
         sizes.append(matrix.shape[0])
         ratios.append(times["direct"] / times["multigrid"])
         rows.append((f"{sizes[-1]:,}", f"{times['direct']:.3f}", f"{times['multigrid']:.3f}", f"{ratios[-1]:.2f}"))
@@ -103,34 +100,32 @@ def crossing(dim: int) -> Table:
     )
 
 
+def facet_times(per_side: int) -> tuple[int, int, dict[str, float]]:
+    """Return numbers of nodes and facets and the times of their systems and solves."""
+    mesh, given, weights, network = network_of(3, per_side)
+
+    def solve_nodes():
+        return respond(network, 3, NODE_TOLERANCE, MultigridSolver(network.matrix, node_hierarchy(network.matrix)))
+
+    nodes, system = solve_nodes(), facet_system(mesh, given, weights)
+    guess = system.from_nodes @ nodes.fields
+    runs = {
+        "nodes": solve_nodes,
+        "facets": lambda: respond(system.network, 3, FACET_TOLERANCE, facet_solver(system, nodes, 3), guess),
+        "facet system": lambda: facet_system(mesh, given, weights),
+        "node system": lambda: node_network(mesh, given, node_operator(mesh, given)[0]),
+    }
+    return mesh.n_nodes, len(system.facets), in_turn(runs, 3)
+
+
 def facets() -> Table:
     """The facet network's solve against the node network's."""
     rows = []
     for per_side in (22, 40):
-        mesh, given, weights, network = network_of(3, per_side)
-        nodes = respond(network, 3, NODE_TOLERANCE, MultigridSolver(network.matrix, node_hierarchy(network.matrix)))
-        system = facet_system(mesh, given, weights)
-        times = in_turn(
-            {
-                "nodes": lambda: respond(
-                    network, 3, NODE_TOLERANCE, MultigridSolver(network.matrix, node_hierarchy(network.matrix))
-                ),
-                "facets": lambda: respond(system.network, 3, FACET_TOLERANCE, facet_solver(system, nodes, 3)),
-                "facet system": lambda: facet_system(mesh, given, weights),
-                "node system": lambda: node_network(mesh, given, node_operator(mesh, given)[0]),
-            },
-            3,
-        )
+        n_nodes, n_facets, times = facet_times(per_side)
         ratio = times["facets"] / times["nodes"]
-        rows.append(
-            (
-                f"{mesh.n_nodes:,}",
-                f"{len(system.facets):,}",
-                *(f"{times[name]:.2f}" for name in ("node system", "nodes", "facet system", "facets")),
-                f"{ratio:.1f}",
-                verdict(ratio, 4.0, at_least=False),
-            )
-        )
+        seconds = (f"{times[name]:.2f}" for name in ("node system", "nodes", "facet system", "facets"))
+        rows.append((f"{n_nodes:,}", f"{n_facets:,}", *seconds, f"{ratio:.1f}", verdict(ratio, 4.0, at_least=False)))
     return Table(
         name="facets",
         title="What the proof costs: the facet network against the nodes', 3D",
@@ -152,16 +147,16 @@ def facets() -> Table:
 def unit_solutions() -> Table:
     """n unit solutions against one."""
     networks = {n: network_of(3, HUGE, terminals=n + 1)[3] for n in (1, 2, 3, 5)}
-    runs = {str(n): lambda network=network: respond(network, 3, NODE_TOLERANCE) for n, network in networks.items()}
+    runs = {str(n): partial(respond, network, 3, NODE_TOLERANCE) for n, network in networks.items()}
     times = in_turn(runs, 2)
     rows = []
-    for n, network in networks.items():
+    for n in networks:
         ratio = times[str(n)] / times["1"]
         goal = 1.5 + 0.5 * (n - 1)
         rows.append((str(n), f"{times[str(n)]:.1f}", f"{ratio:.2f}", verdict(ratio, goal, at_least=False)))
     return Table(
         name="units",
-        title=f"n unit solutions, {len(network.fixed):,} nodes",
+        title=f"n unit solutions, {len(networks[1].fixed):,} nodes",
         head=("n", "s", "single solves", "goal"),
         rows=rows,
         remarks=("Set-up included; n spaces need n - 1 unit solutions.",),
