@@ -140,7 +140,8 @@ def measure() -> list[Table]:
             remarks=(
                 "Processor seconds, the gmsh child's included; meshing is what that child used for faces and volumes. "
                 f"Both peaks together grow by {slope:,.0f} bytes a tetrahedron "
-                f"(`BYTES_PER_CELL[3]` is {BYTES_PER_CELL[3]:,}): 10 million would need {ten:.1f} GiB; goal {verdict(ten, 16.0, at_least=False)}.",
+                f"(`BYTES_PER_CELL[3]` is {BYTES_PER_CELL[3]:,}): 10 million "
+                f"would need {ten:.1f} GiB; goal {verdict(ten, 16.0, at_least=False)}.",
             ),
         )
     ]

@@ -20,7 +20,7 @@ ASKED = 0.005
 CASES = {
     # case file, sizes in mm of the uniform meshes, coarsest first, goal
     "2D corner (edge of two walls)": (ROOT / "tests/published/edge.toml", (40.0, 20.0, 10.0, 5.0), 1 / 20),
-    "2D corner of a panel with steel skins (shipped case)": (
+    "2D corner with a timber post (shipped)": (
         ROOT / "cases/panel-corner.toml",
         (20.0, 10.0, 5.0),
         1 / 20,
@@ -93,8 +93,8 @@ def measure() -> list[Table]:
         "goal",
     )
     remark = (
-        "± is half the width of an interval over its flow: the first boundary's on uniform meshes, the worst one's in the "
-        "rounds. Nodes for ± 0.5 % are read between or beyond the two nearest meshes by the power law."
+        "± is half the width of an interval over its flow: the first boundary's on uniform meshes, the worst one's in "
+        "the rounds. Nodes for ± 0.5 % are read between or beyond the two nearest meshes by the power law."
     )
     title = "Nodes for an interval of ± 0.5 %, one size everywhere against refinement"
     return [Table(name="widths", title=title, head=head, rows=rows, remarks=(remark,))]
