@@ -38,16 +38,16 @@ def bare_library() -> Table:
     b = right[:, 0]
 
     def ours():
-        return MultigridSolver(matrix, node_hierarchy(matrix)).solve(right, offset, NODE_TOLERANCE)
+        return MultigridSolver(matrix, node_hierarchy(matrix, True)).solve(right, offset, NODE_TOLERANCE)
 
     def library(iterations: int):
         import warnings
 
         with warnings.catch_warnings():
             warnings.simplefilter("ignore")  # it stops where it is told to, not at its own tolerance
-            return node_hierarchy(matrix).solve(b, tol=1e-99, maxiter=iterations, accel="cg")
+            return node_hierarchy(matrix, True).solve(b, tol=1e-99, maxiter=iterations, accel="cg")
 
-    exact = MultigridSolver(matrix, node_hierarchy(matrix)).solve(right, offset, 1e-20).values[:, 0]
+    exact = MultigridSolver(matrix, node_hierarchy(matrix, True)).solve(right, offset, 1e-20).values[:, 0]
 
     def off(x):
         return float((x - exact) @ (matrix @ (x - exact)))
@@ -84,7 +84,7 @@ def crossing(dim: int) -> Table:
         given = right, offset, NODE_TOLERANCE
         runs = {
             "direct": partial(lambda a, g: DirectSolver(a).solve(*g), matrix, given),
-            "multigrid": partial(lambda a, g: MultigridSolver(a, node_hierarchy(a)).solve(*g), matrix, given),
+            "multigrid": partial(lambda a, g: MultigridSolver(a, node_hierarchy(a, True)).solve(*g), matrix, given),
         }
         times = in_turn(runs, 3)
         sizes.append(matrix.shape[0])
@@ -105,13 +105,17 @@ def facet_times(per_side: int) -> tuple[int, int, dict[str, float]]:
     mesh, given, weights, network = network_of(3, per_side)
 
     def solve_nodes():
-        return respond(network, 3, NODE_TOLERANCE, MultigridSolver(network.matrix, node_hierarchy(network.matrix)))
+        return respond(
+            network, 3, NODE_TOLERANCE, MultigridSolver(network.matrix, node_hierarchy(network.matrix, True))
+        )
 
     nodes, system = solve_nodes(), facet_system(mesh, given, weights)
     guess = system.from_nodes @ nodes.fields
     runs = {
         "nodes": solve_nodes,
-        "facets": lambda: respond(system.network, 3, FACET_TOLERANCE, facet_solver(system, nodes, 3), guess),
+        "facets": lambda: respond(
+            system.network, 3, FACET_TOLERANCE, facet_solver(system, nodes, 3, True), lambda: guess
+        ),
         "facet system": lambda: facet_system(mesh, given, weights),
         "node system": lambda: node_network(mesh, given, node_operator(mesh, given)[0]),
     }
@@ -147,7 +151,7 @@ def facets() -> Table:
 def unit_solutions() -> Table:
     """n unit solutions against one."""
     networks = {n: network_of(3, HUGE, terminals=n + 1)[3] for n in (1, 2, 3, 5)}
-    runs = {str(n): partial(respond, network, 3, NODE_TOLERANCE) for n, network in networks.items()}
+    runs = {str(n): partial(respond, network, 3, NODE_TOLERANCE, uneven=True) for n, network in networks.items()}
     times = in_turn(runs, 2)
     rows = []
     for n in networks:

@@ -142,7 +142,9 @@ def test_proof_builds_one_hierarchy_and_no_second(monkeypatch):
     built, factored = [], []
     honest, split = linear.node_hierarchy, linear.splu
     for module in (linear, bounds_module, __import__("coldseam.solution.respond", fromlist=["respond"])):
-        monkeypatch.setattr(module, "node_hierarchy", lambda m: built.append(m.shape[0]) or honest(m), raising=False)
+        monkeypatch.setattr(
+            module, "node_hierarchy", lambda m, *u: built.append(m.shape[0]) or honest(m, *u), raising=False
+        )
     monkeypatch.setattr(linear, "splu", lambda *a, **k: factored.append(a[0].shape[0]) or split(*a, **k))
     for module in (linear, bounds_module, __import__("coldseam.solution.respond", fromlist=["respond"])):
         monkeypatch.setattr(module, "DIRECT_LIMIT", {2: 100, 3: 100}, raising=False)
