@@ -19,7 +19,7 @@ from coldseam.volumes.conditions import Conditions, Terminal
 
 @dataclass(frozen=True, kw_only=True)
 class Table:
-    """A measured table: its name on the command line, a heading, rows of cells, and remarks."""
+    """A measured table: its name in the markers of DEVELOPERS.md, a heading, rows of cells, and remarks."""
 
     name: str
     title: str
@@ -27,11 +27,11 @@ class Table:
     rows: list[tuple[str, ...]]
     remarks: tuple[str, ...] = ()
 
-    def markdown(self) -> str:
-        """Return the table with the command, the machine and the date."""
+    def markdown(self, section: str) -> str:
+        """Return the table with the command (by its section), the machine and the date."""
         lines = [f"### {self.title}", "", *_table(self.head, self.rows), ""]
-        lines += [f"{remark}" for remark in self.remarks]
-        lines.append(f"`scripts/benchmark {self.name}`, {machine()}, {date.today()}.")
+        lines += list(self.remarks)
+        lines.append(f"`scripts/benchmark {section}`, {machine()}, {date.today()}.")
         return "\n".join(lines)
 
 
