@@ -1,4 +1,4 @@
-"""Makes meshed.py importable under pytest's importlib mode."""
+"""Makes this folder's helpers (meshed.py, bound_models.py) importable under pytest's importlib mode."""
 
 import sys
 from pathlib import Path

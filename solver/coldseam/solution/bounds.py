@@ -96,7 +96,7 @@ def prove(
         The facet solve failed, or its flux fails the check of :func:`check_gap`.
     """
     system = facet_system(mesh, given, weights)
-    solver = _facet_solver(system, nodes, mesh.dim, given.uneven)
+    solver = facet_solver(system, nodes, mesh.dim, given.uneven)
     response = respond(system.network, mesh.dim, tolerance, solver, lambda: system.from_nodes @ nodes.fields)
     return bounds_of(mesh, given, system, nodes, response)
 
@@ -120,15 +120,15 @@ def bounds_of(mesh: Mesh, given: Conditions, system: FacetSystem, nodes: Respons
     )
 
 
-def _facet_solver(system: FacetSystem, nodes: Response, dim: int, uneven: bool):
+def facet_solver(system: FacetSystem, nodes: Response, dim: int, uneven: bool):
     free = system.network.free
-    matrix = system.network.matrix[free][:, free]
+    matrix = system.network.free_matrix
     if matrix.shape[0] <= 2 * DIRECT_LIMIT[dim]:
         return DirectSolver(_regular(matrix))
     hierarchy = nodes.hierarchy
     free_nodes = nodes.network.free
     if hierarchy is None:
-        hierarchy = node_hierarchy(nodes.network.matrix[free_nodes][:, free_nodes], uneven)
+        hierarchy = node_hierarchy(nodes.network.free_matrix, uneven)
     matrix = _regular(matrix)
     return MultigridSolver(matrix, facet_hierarchy(matrix, system.from_nodes[free][:, free_nodes], hierarchy))
 

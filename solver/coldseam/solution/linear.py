@@ -15,8 +15,10 @@ from scipy.sparse.linalg import splu
 
 from coldseam.errors import SolveError
 
-DIRECT_LIMIT = {2: 60_000, 3: 6_000}
-"""Unknowns up to which the sparse factorisation is the faster one; measured by scripts/benchmark."""
+DIRECT_LIMIT = {2: 20_000, 3: 1_500}
+"""Unknowns up to which a network is factorised. ``scripts/benchmark solving`` finds both ways equal at some 11 000
+in 2D and 1 000 in 3D where multigrid has it easy; factorising does not depend on that (thin skins) and costs at
+20 000 in 2D not half as much again."""
 TAIL = 3  # energy drops summed as the estimate of the remaining error
 MOST_ITERATIONS = 400
 SAFETY = 10.0  # times the estimate, where a bound has to hold

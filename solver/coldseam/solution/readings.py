@@ -6,7 +6,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from coldseam.mesh.measure import cell_measure, facet_measure
+from coldseam.mesh.build import signed_measure
+from coldseam.mesh.measure import facet_measure
 from coldseam.mesh.types import Mesh
 from coldseam.solution.nonlinear import REASON
 from coldseam.solution.steady import Steady
@@ -257,12 +258,11 @@ def volume_deficit(mesh: Mesh) -> np.ndarray:
     exact = mesh.quality.get("cad_volume")
     if not exact:
         return np.zeros(len(mesh.bodies))
-    plain = cell_measure(mesh) if not mesh.axisymmetric else None
-    if plain is None:
-        from coldseam.mesh.build import signed_measure
-
-        plain = signed_measure(mesh.points, mesh.cells)
-    meshed = np.bincount(mesh.cell_body, plain, len(mesh.bodies))
+    present = mesh.quality.get("mesh_volume")  # known since the mesh was made
+    if present:
+        meshed = np.array([present.get(body.name, np.nan) for body in mesh.bodies])
+    else:
+        meshed = np.bincount(mesh.cell_body, signed_measure(mesh.points, mesh.cells), len(mesh.bodies))
     known = np.array([exact.get(body.name, np.nan) for body in mesh.bodies])
     with np.errstate(invalid="ignore", divide="ignore"):
         return np.nan_to_num(np.abs(meshed / known - 1.0))

@@ -72,7 +72,7 @@ def respond(
     asked = [*range(p - 1), *range(p, drive.shape[1])]
     fields = network.start()
     if solver is None:
-        solver = choose_solver(network.matrix[free][:, free], dim, uneven)
+        solver = choose_solver(network.free_matrix, dim, uneven)
     if asked:
         start = guess() if guess and solver.iterative else None
         if start is not None and start.shape == fields.shape:

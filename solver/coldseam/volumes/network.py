@@ -59,6 +59,12 @@ class Network:
         """Mask of the sites whose temperature is an unknown, (n,)."""
         return self.fixed < 0
 
+    @property
+    def free_matrix(self) -> sparse.csr_array:
+        """The matrix of the free sites; the whole matrix itself, not a copy, where all are free."""
+        free = self.free
+        return self.matrix if free.all() else self.matrix[free][:, free]
+
     def start(self) -> np.ndarray:
         """Return unit fields with the fixed sites set and 0 elsewhere, (n, n_terminals [+ 1])."""
         fields = np.zeros((len(self.fixed), self.n_terminals + self.has_load))

@@ -1,0 +1,100 @@
+"""Nodes that a proven 0.5 % needs: one size for the whole mesh against the refinement rounds."""
+
+from __future__ import annotations
+
+import dataclasses
+from pathlib import Path
+
+import numpy as np
+from benchmarks.common import Table
+
+from coldseam.case import read
+from coldseam.geometry.mesher import open_geometry
+from coldseam.mesh.types import SizeField
+from coldseam.solution.bounds import prove
+from coldseam.solution.rounds import solve
+from coldseam.solution.steady import solve_on
+
+ROOT = Path(__file__).resolve().parents[2]
+ASKED = 0.005
+CASES = {
+    # case file, sizes in mm of the uniform meshes, coarsest first, goal
+    "2D corner (edge of two walls)": (ROOT / "tests/published/edge.toml", (40.0, 20.0, 10.0, 5.0), 1 / 20),
+    "2D corner with a timber post (shipped)": (
+        ROOT / "cases/panel-corner.toml",
+        (20.0, 10.0, 5.0),
+        1 / 20,
+    ),
+    "3D corner of three walls": (ROOT / "tests/published/corner.toml", (250.0, 150.0, 100.0, 70.0), 1 / 8),
+    "3D bolt in a panel": (ROOT / "scripts/benchmarks/bolt.toml", (20.0, 12.0, 8.0, 5.0), 1 / 40),
+}
+
+
+def half_width(steady) -> float:
+    """Return half the width of the interval of the first terminal's heat flow over the flow."""
+    reading = np.zeros(len(steady.state))
+    reading[0] = 1.0
+    low, high = steady.bounds.interval(reading, steady.state)
+    return 0.5 * (high - low) / abs(0.5 * (high + low))
+
+
+def uniform(case, mesher, size: float) -> tuple[int, float]:
+    """Return nodes and half width of a mesh of one size."""
+    first = mesher.mesh()
+    mesh = mesher.mesh(SizeField(mesh=first, size=np.full(first.n_nodes, 1e-3 * size)))
+    steady = solve_on(case, mesh)
+    bounds = prove(steady.mesh, steady.given, steady.weights, steady.response)
+    return steady.mesh.n_nodes, half_width(dataclasses.replace(steady, bounds=bounds))
+
+
+def nodes_for(points: list[tuple[int, float]], asked: float) -> tuple[float, float]:
+    """Return the nodes for an asked half width by the power law of the two finest points, and its exponent."""
+    (a, wide), (b, narrow) = sorted(points)[-2:]
+    power = np.log(wide / narrow) / np.log(b / a)
+    return b * (narrow / asked) ** (1.0 / power), power
+
+
+def adaptive_nodes(rounds) -> float:
+    """Return the nodes at which the rounds' worst error meets what is allowed, between rounds by the power law."""
+    nodes, errors = (np.array([getattr(entry, name) for entry in rounds]) for name in ("nodes", "error"))
+    return float(np.exp(np.interp(0.0, -np.log(errors), np.log(nodes))))
+
+
+def measure() -> list[Table]:
+    """Return the table."""
+    rows = []
+    for name, (path, sizes, goal) in CASES.items():
+        case = read.replace(read.load(path), "model.accuracy", ASKED)
+        with open_geometry(case) as mesher:
+            plain = [uniform(case, mesher, size) for size in sizes]
+            solution = solve(case, mesher, lambda stage, message: None)
+        needed, power = nodes_for(plain, ASKED)
+        reached = adaptive_nodes(solution.rounds)
+        rows.append(
+            (
+                name,
+                ", ".join(f"{nodes:,} ({width:.2%})" for nodes, width in plain),
+                f"{power:.2f}",
+                f"{needed:,.0f}",
+                ", ".join(f"{entry.nodes:,} ({entry.error * ASKED:.2%})" for entry in solution.rounds),
+                f"{reached:,.0f}",
+                f"1/{needed / reached:.0f}",
+                f"≤ 1/{1 / goal:.0f}: {'met' if reached / needed <= goal else '**missed**'}",
+            )
+        )
+    head = (
+        "case",
+        "uniform: nodes (±)",
+        "± falls as nodes to the -",
+        "uniform: nodes for ± 0.5 %",
+        "adaptive rounds: nodes (±)",
+        "adaptive: nodes for ± 0.5 %",
+        "adaptive over uniform",
+        "goal",
+    )
+    remark = (
+        "± is half the width of an interval over its flow: the first boundary's on uniform meshes, the worst one's in "
+        "the rounds. Nodes for ± 0.5 % are read between or beyond the two nearest meshes by the power law."
+    )
+    title = "Nodes for an interval of ± 0.5 %, one size everywhere against refinement"
+    return [Table(name="widths", title=title, head=head, rows=rows, remarks=(remark,))]
