@@ -113,7 +113,7 @@ class Result:
         """
         from coldseam.report.output import write_all
 
-        return write_all(self.view(), Path(folder), pictures=pictures, log=log or _quiet)
+        return write_all(self.view(), self.case, Path(folder), pictures=pictures, log=log or _quiet)
 
 
 def run(case: Case, log: Log | None = None) -> Result:

@@ -183,7 +183,7 @@ def _trust(answers: Answers) -> list[str]:
     lines = []
     accuracy = answers.get("accuracy")
     if accuracy:
-        lines.append(_accuracy(accuracy, [*answers["spaces"].values(), *answers["boundaries"].values()]))
+        lines.append(accuracy_sentence(accuracy, [*answers["spaces"].values(), *answers["boundaries"].values()]))
     balance = answers.get("balance")
     if balance:
         closure = f"{balance['closure']:.1e} {flow_unit(answers)}"
@@ -194,7 +194,7 @@ def _trust(answers: Answers) -> list[str]:
     return lines
 
 
-def _accuracy(accuracy: Answers, entries: Sequence[Answers]) -> str:
+def accuracy_sentence(accuracy: Answers, entries: Sequence[Answers]) -> str:
     """Return the accuracy reached and asked, and what kind of statement it is."""
     asked = f"{100 * accuracy['asked']:.3g} % asked"
     if accuracy["reached"] is None:
