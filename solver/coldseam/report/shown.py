@@ -131,6 +131,10 @@ class Shown:
         """Return a difference of temperatures (K) to the tenth."""
         return f"{round(self.value('difference', kelvin), 1) + 0.0:.1f} {self.unit('difference')}"
 
+    def difference_fine(self, kelvin: float) -> str:
+        """Return a difference of temperatures (K) with two significant digits."""
+        return f"{self.value('difference', kelvin):.2g} {self.unit('difference')}"
+
     def place(self, at: Sequence[float] | None) -> str:
         """Return a position (mm).
 
