@@ -27,6 +27,7 @@ LAYERS = (
     ("answers",),
     ("report",),
     ("study",),
+    ("variants",),
     ("progress",),
     ("cli",),
     ("__main__",),

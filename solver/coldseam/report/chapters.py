@@ -12,7 +12,13 @@ from coldseam.report.summary import accuracy_sentence, number
 Answers = Mapping[str, Any]
 LEAST_SHARE = 5e-4
 """Share of a loss below which a part gets no line of its own."""
-TERMS = {"parts": "part of the model", "by_body": "body", "by_film": "film", "by_sheet": "sheet", "by_contact": "contact"}
+TERMS = {
+    "parts": "part of the model",
+    "by_body": "body",
+    "by_film": "film",
+    "by_sheet": "sheet",
+    "by_contact": "contact",
+}
 MOST_INPUTS = 8
 
 
@@ -60,14 +66,14 @@ def limits_table(answers: Answers, shown: Shown) -> Markup:
     rows = []
     for key, entry in (answers.get("limits") or {}).items():
         bounds = [
-            f"{words} {_in_unit(entry[bound], entry.get('unit'), shown)}"
+            f"{words} {in_unit(entry[bound], entry.get('unit'), shown)}"
             for bound, words in (("at_least", "at least"), ("at_most", "at most"))
             if entry.get(bound) is not None
         ]
         verdict = "met" if entry["met"] else "not met"
         if entry.get("undecided"):
             verdict += " (its error reaches across the bound)"
-        value = _in_unit(entry["value"], entry.get("unit"), shown, entry.get("low"), entry.get("high"))
+        value = in_unit(entry["value"], entry.get("unit"), shown, entry.get("low"), entry.get("high"))
         rows.append((name(key), tag("strong" if not entry["met"] else "span", verdict), value, ", ".join(bounds)))
     return table("Limits of the case", ("limit", "verdict", "value", "asked"), rows, (2,))
 
@@ -76,7 +82,7 @@ _UNITS = {"W": "flow", "W/m": "flow_per_m", "°C": "temperature", "K": "differen
           "W/(m·K)": "psi", "W/(m²·K)": "film", "W/m²": "flux"}  # fmt: skip
 
 
-def _in_unit(value: float, unit: str | None, shown: Shown, low: float | None = None, high: float | None = None) -> str:
+def in_unit(value: float, unit: str | None, shown: Shown, low: float | None = None, high: float | None = None) -> str:
     """Return a limit's value; a unit that has no inch counterpart stays."""
     quantity = _UNITS.get(unit or "")
     if quantity is None:
@@ -143,8 +149,22 @@ def _trust(answers: Answers, shown: Shown) -> Markup:
 
 def losses(answers: Answers, shown: Shown) -> Markup:
     """Return where every space's heat goes, the bridges, the enclosures, and what the flows react to."""
-    parts = [_loss(key, entry, answers, shown) for key, entry in (answers.get("losses") or {}).items()]
-    return joined([*parts, _bridges(answers, shown), _enclosures(answers, shown)])
+    found = answers.get("losses") or {}
+    kept = _told(found)
+    mirrored = joined([name(key) for key in found if key not in kept], ", ")
+    parts = [_loss(key, entry, answers, shown) for key, entry in kept.items()]
+    same = tag("p", ["For space ", mirrored, " the same parts hold, with the opposite sign."]) if mirrored else ""
+    return joined([*parts, same, _bridges(answers, shown), _enclosures(answers, shown)])
+
+
+def _told(found: Mapping[str, Answers]) -> dict[str, Answers]:
+    """Return the spaces whose losses are told: of two that give and take the same, the one that gives."""
+    if len(found) == 2:
+        (one, gives), (other, takes) = sorted(found.items(), key=lambda pair: -(pair[1].get("heat_flow") or 0.0))
+        total = (gives.get("heat_flow") or 0.0) + (takes.get("heat_flow") or 0.0)
+        if gives.get("heat_flow") and abs(total) <= 1e-6 * abs(gives["heat_flow"]):
+            return {one: gives}
+    return dict(found)
 
 
 def _loss(space: str, entry: Answers, answers: Answers, shown: Shown) -> Markup:
@@ -159,7 +179,9 @@ def _loss(space: str, entry: Answers, answers: Answers, shown: Shown) -> Markup:
     ]
     sources = entry.get("from_heat_sources") or {}
     if sources.get("share") and abs(sources["share"]) >= LEAST_SHARE:
-        rows.append(("heat sources", "", shown.amount("flow", sources["heat_flow"], 3), f"{100 * sources['share']:.1f} %"))
+        rows.append(
+            ("heat sources", "", shown.amount("flow", sources["heat_flow"], 3), f"{100 * sources['share']:.1f} %")
+        )
     caption = joined(["Where the heat of space ", name(space), " goes"])
     return joined([
         table(caption, ("what", "kind", "heat flow", "share"), rows, (2, 3)),
@@ -179,7 +201,9 @@ def _reactions(space: str, entry: Answers, shown: Shown) -> Markup:
     interval = entry.get("interval") or {}
     told = Markup("")
     if interval.get("stated") and interval.get("heat_flow_low") is not None:
-        span = f"{shown.amount('flow', interval['heat_flow_low'])} to {shown.amount('flow', interval['heat_flow_high'])}"
+        span = (
+            f"{shown.amount('flow', interval['heat_flow_low'])} to {shown.amount('flow', interval['heat_flow_high'])}"
+        )
         told = tag("p", f"With every stated uncertainty off the worst way at once the flow lies within {span}.")
     return joined([table(caption, ("input", "1 % more of it makes", "its uncertainty"), rows, (1, 2)), told])
 
@@ -187,7 +211,11 @@ def _reactions(space: str, entry: Answers, shown: Shown) -> Markup:
 def _bridges(answers: Answers, shown: Shown) -> Markup:
     rows = []
     for key, entry in (answers.get("bridges") or {}).items():
-        for symbol, quantity, kind in (("psi", "psi", "linear"), ("psi_external", "psi", "linear"), ("chi", "coupling", "point")):
+        for symbol, quantity, kind in (
+            ("psi", "psi", "linear"),
+            ("psi_external", "psi", "linear"),
+            ("chi", "coupling", "point"),
+        ):
             if isinstance(entry.get(symbol), int | float):
                 point = Shown(system=shown.system)  # chi is per piece, in any kind of model
                 value = point.bounded(quantity, entry[symbol], entry.get(f"{symbol}_low"), entry.get(f"{symbol}_high"))

@@ -88,7 +88,14 @@ def document(view: View, case: Case, drawings: Drawings, folder: Path, shown: Sh
     return page(title, summary, [part for part in parts if part[2]], scripts=viewer)
 
 
-def page(title: str, summary: Markup, parts: Sequence[tuple[str, str, Markup]], *, scripts: bool) -> str:
+def page(
+    title: str,
+    summary: Markup,
+    parts: Sequence[tuple[str, str, Markup]],
+    *,
+    scripts: bool,
+    kind: str = "Heat flow report",
+) -> str:
     """Return a page of chapters.
 
     Parameters
@@ -101,6 +108,8 @@ def page(title: str, summary: Markup, parts: Sequence[tuple[str, str, Markup]], 
         Identifier, heading and content of each chapter.
     scripts
         Whether the viewer's script is embedded.
+    kind
+        What kind of page it is, above its title.
     """
     style, script = resource("report.css"), resource("viewer.js") if scripts else ""
     policy = f"default-src 'none'; img-src data:; style-src '{digest(style)}'"
@@ -122,8 +131,13 @@ def page(title: str, summary: Markup, parts: Sequence[tuple[str, str, Markup]], 
         tag("title", short),
         Markup(f"<style>{style}</style>"),
     ]
-    header = tag("header", [tag("p", "Heat flow report", {"class": "kind"}), tag("h1", name(short)), summary])
-    body = [header, contents, tag("main", joined(sections, "\n")), Markup(f"<script>{script}</script>" if script else "")]
+    header = tag("header", [tag("p", kind, {"class": "kind"}), tag("h1", name(short)), summary])
+    body = [
+        header,
+        contents,
+        tag("main", joined(sections, "\n")),
+        Markup(f"<script>{script}</script>" if script else ""),
+    ]
     return f'<!DOCTYPE html>\n<html lang="en">\n{tag("head", joined(head, chr(10)))}\n{tag("body", joined(body, chr(10)))}\n</html>\n'
 
 

@@ -42,18 +42,8 @@ def bodies(case: Case, answers: Answers, shown: Shown) -> Markup:
 
 
 def _typed(entry: Mapping[str, Any]) -> Markup:
-    return tag("code", to_toml(_inline(entry)).strip())
-
-
-def _inline(entry: Mapping[str, Any]) -> dict[str, Any]:
-    """Return a table that :func:`to_toml` writes without headers: nested tables as dotted keys."""
-    flat: dict[str, Any] = {}
-    for key, value in entry.items():
-        if isinstance(value, dict) and value:
-            flat.update({f"{key}.{inner}": deeper for inner, deeper in _inline(value).items()})
-        else:
-            flat[key] = value
-    return flat
+    header, _, keys = to_toml({"as-typed": [dict(entry)]}).partition("\n")  # one entry of an array: a key a line
+    return tag("code", keys.strip())
 
 
 def materials(case: Case, shown: Shown) -> Markup:
@@ -64,10 +54,14 @@ def materials(case: Case, shown: Shown) -> Markup:
         value = shown.amount("conductivity", k) if isinstance(k, float) else _several(k, shown)
         if material.uncertainty is not None:
             value += f" ± {100 * material.uncertainty:.3g} %"
-        others = [shown.amount(quantity, getattr(material, quantity, None)) for quantity in ("density", "specific_heat")]
+        others = [
+            shown.amount(quantity, getattr(material, quantity, None)) for quantity in ("density", "specific_heat")
+        ]
         emissivity = f"emissivity {material.emissivity:g}" if material.emissivity is not None else ""
         source = joined([f"library: {material.library}. " if material.library else "", material.source])
-        rows.append((name(key), value, ", ".join(filter(None, (*others, emissivity))), tag("bdi", source or "none given")))
+        rows.append(
+            (name(key), value, ", ".join(filter(None, (*others, emissivity))), tag("bdi", source or "none given"))
+        )
     return table("Materials", ("material", "conductivity", "other values", "source"), rows)
 
 
@@ -125,7 +119,9 @@ def computed(case: Case, answers: Answers, mesh: Mesh, shown: Shown) -> Markup:
                                   + ("error not known" if reached is None else f"{100 * reached:.2g} % reached")))  # fmt: skip
     if solver:
         iterations = solver.get("iterations") or ()
-        facts.append(("equations", f"{solver.get('method', '')}; iterations {', '.join(map(str, iterations)) or 'none'}"))
+        facts.append(
+            ("equations", f"{solver.get('method', '')}; iterations {', '.join(map(str, iterations)) or 'none'}")
+        )
     facts.append(("units", "metric" if shown.system == "metric" else "inch, °F, Btu; the case file as typed"))
     digest = answers.get("case_sha256", "")
     facts.append(("SHA-256 of the case file", tag("code", digest)))

@@ -84,7 +84,9 @@ def table(
     """
     if not rows:
         return Markup("")
-    head = tag("tr", [tag("th", column, {"scope": "col", "class": _side(k, numbers)}) for k, column in enumerate(columns)])
+    head = tag(
+        "tr", [tag("th", column, {"scope": "col", "class": _side(k, numbers)}) for k, column in enumerate(columns)]
+    )
     body = [tag("tr", [_cell(k, cell, columns, numbers) for k, cell in enumerate(row)]) for row in rows]
     inner = [tag("caption", caption), tag("thead", head), tag("tbody", joined(body, "\n"))]
     return tag("table", inner)

@@ -17,7 +17,7 @@ from coldseam.report.vtu import write_field
 
 
 def write_all(
-    view: View, case: Case, folder: Path, *, pictures: bool, log: Callable[[str, str], None], shown: Shown | None = None
+    view: View, case: Case, folder: Path, shown: Shown, *, pictures: bool, log: Callable[[str, str], None]
 ) -> list[Path]:
     """Write answers.json, tables, fields, pictures and report.html and return their paths.
 
@@ -29,12 +29,12 @@ def write_all(
         The case it came from.
     folder
         Made if need be.
+    shown
+        Units of the report.
     pictures
         Whether to draw.
     log
         Called with a stage and a message.
-    shown
-        Units of the report; metric ones where none are given.
 
     Raises
     ------
@@ -44,7 +44,6 @@ def write_all(
     folder = prepare_folder(folder)
     log("write", str(folder))
     written = [*write_answers(folder, view), *write_field(folder, view)]
-    shown = shown or Shown(flat=view.mesh.dim == 2 and not view.mesh.axisymmetric)
     if not pictures:
         return [*written, write_report(view, case, Drawings(pictures=()), folder, shown, viewer=False)]
     drawings = draw_all(view, folder, log)

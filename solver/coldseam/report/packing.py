@@ -128,7 +128,9 @@ def _flux_steps(flux: np.ndarray, ends: tuple[float, float]) -> np.ndarray:
     return np.rint(np.log(np.clip(flux, low, high) / low) / span * FLUX_STEPS).astype(np.int64)
 
 
-def _node_fields(view: View, thin: Thinned, order: np.ndarray, shown: Shown) -> list[tuple[str, np.ndarray, dict[str, Any]]]:
+def _node_fields(
+    view: View, thin: Thinned, order: np.ndarray, shown: Shown
+) -> list[tuple[str, np.ndarray, dict[str, Any]]]:
     """Return key, 16-bit steps and description of every field at the nodes; 0 is no value except for temperature."""
     kept = thin.node[order]
     temperature = np.asarray(view.temperature, dtype=float)[kept]
@@ -188,6 +190,6 @@ def _header(view, thin: Thinned, shown: Shown, low, size: float, entries, fields
         "flux": {"title": "Heat flux", "unit": shown.unit("flux"), "steps": FLUX_STEPS,
                  "low": shown.value("flux", flux_range[0]), "high": shown.value("flux", flux_range[1])},
         "colours": ramp.ravel().tolist(),
-        "tints": [[int(tint[k : k + 2], 16) for k in (1, 3, 5)] for tint in style.TINTS],
+        "tints": [[int(tint[k : k + 2], 16) for k in (1, 3, 5)] for tint in style.FACES],
         "cells": {"whole": thin.whole, "shown": len(thin.cells), "error": thin.error},
     }  # fmt: skip

@@ -144,5 +144,7 @@ class Shown:
         if not at:
             return ""
         digits = 1 if self.system == "metric" else 2
-        shown = ", ".join(f"{round(self.value('length', x), digits) + 0.0:.{digits}f}".rstrip("0").rstrip(".") for x in at)
+        shown = ", ".join(
+            f"{round(self.value('length', x), digits) + 0.0:.{digits}f}".rstrip("0").rstrip(".") for x in at
+        )
         return f"({shown}) {self.unit('length')}"

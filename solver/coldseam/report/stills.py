@@ -18,6 +18,10 @@ from coldseam.report.view import Drawings, Picture, View
 LARGEST_VECTOR = 330_000
 """Bytes of an SVG up to which it is embedded; beyond, its raster twin takes less."""
 MOST_ROWS = 40
+METRIC_STILLS = (
+    "The still pictures and their numbers are in °C, mm and W, as the case is solved; the interactive view and all other tables "
+    "are in inch units."
+)
 UNDER_THE_VIEW = ("surface", "temperature")
 """Pictures (of a solid, of a plane model) that the interactive view is laid over."""
 KEYS = (
@@ -46,7 +50,8 @@ def stills(view: View, drawings: Drawings, folder: Path, shown: Shown, *, viewer
     viewer = viewer and under is not None and view.temperature is not None and view.cell_flux is not None
     figures = [interactive(view, under, folder, shown)] if viewer and under else []
     figures += [figure(picture, folder) for picture in drawings.pictures if not (viewer and picture is under)]
-    return joined(figures, "\n") if figures else Markup("")
+    metric = "" if shown.system == "metric" else tag("p", METRIC_STILLS)
+    return joined([metric, *figures], "\n") if figures else Markup("")
 
 
 def interactive(view: View, still: Picture, folder: Path, shown: Shown) -> Markup:
@@ -135,7 +140,7 @@ def raster(file: Path) -> str:
     if not features.check("webp"):
         return _url("image/png", content)
     stream = io.BytesIO()
-    Image.open(io.BytesIO(content)).convert("RGB").save(stream, "WEBP", quality=82, method=4)
+    Image.open(io.BytesIO(content)).convert("RGB").save(stream, "WEBP", quality=82, method=2)
     return _url("image/webp", stream.getvalue())
 
 

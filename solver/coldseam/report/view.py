@@ -41,6 +41,8 @@ class View:
         The content of answers.json.
     maps
         Fields on the surfaces beside the temperature.
+    scale
+        Temperatures (°C) that the colours of pictures begin and end with; None for each picture's own.
     """
 
     mesh: Mesh
@@ -54,6 +56,7 @@ class View:
     probes: dict[str, np.ndarray] = field(default_factory=dict)
     answers: dict = field(default_factory=dict)
     maps: tuple[SurfaceMap, ...] = ()
+    scale: tuple[float, float] | None = None
 
     def __post_init__(self):
         if len(self.facet_boundary) != len(self.mesh.facets):

@@ -218,6 +218,8 @@ function section(model, axis, level) {
 
 // --------------------------------------------------------------------------------------------- viewer
 
+const NO_VALUE = 3e38;
+
 class Viewer {
   constructor(figure, canvas, gl, model) {
     Object.assign(this, { figure, canvas, gl, model });
@@ -254,10 +256,10 @@ class Viewer {
   /* Values of the chosen field at every corner of the surface and of the section. */
   values() {
     const { model, field } = this, surface = new Float32Array(model.triangles.length);
-    for (let i = 0; i < surface.length; i++) {
-      const value = field.at === "node" ? field.values[model.triangles[i]] : field.values[model.owner[(i / 3) | 0]];
-      surface[i] = Number.isNaN(value) ? 3e38 : value;
-    }
+    for (let i = 0; i < surface.length; i++)
+      surface[i] = field.at === "node" ? field.values[model.triangles[i]] : field.values[model.owner[(i / 3) | 0]];
+    for (let i = 0; i < surface.length; i += 3) // a facet has a value where all of its corners have one
+      if (Number.isNaN(surface[i] + surface[i + 1] + surface[i + 2])) surface.fill(NO_VALUE, i, i + 3);
     this.surface.fill(1, surface);
     if (this.section) this.cap.fill(1, this.capValues(field));
     this.legend();
@@ -270,7 +272,7 @@ class Viewer {
       const value = field.at === "node"
         ? field.values[nodes[2 * i]] + parts[i] * (field.values[nodes[2 * i + 1]] - field.values[nodes[2 * i]])
         : field.values[owner[(i / 3) | 0]];
-      found[i] = field.key !== "temperature" && field.at === "node" ? 3e38 : value; // surface maps have no value inside
+      found[i] = field.key !== "temperature" && field.at === "node" ? NO_VALUE : value; // surface maps have no value inside
     }
     return found;
   }
@@ -290,6 +292,11 @@ class Viewer {
   turn() {
     const [cy, sy, cp, sp] = [Math.cos(this.yaw), Math.sin(this.yaw), Math.cos(this.pitch), Math.sin(this.pitch)];
     return [[cy, sy, 0], [-sp * sy, sp * cy, cp], [cp * sy, -cp * cy, sp]];
+  }
+
+  /* The side of the cut that is taken away: the one towards the eye. */
+  side() {
+    return this.axis >= 0 && this.turn()[2][this.axis] < 0 ? -1 : 1;
   }
 
   /* Pixels a unit of length takes at zoom 1, so that the model fits however it is turned. */
@@ -347,8 +354,9 @@ class Viewer {
     gl.clear(gl.COLOR_BUFFER_BIT | gl.DEPTH_BUFFER_BIT);
     gl.enable(gl.DEPTH_TEST);
     gl.uniformMatrix4fv(at.camera, false, this.matrix());
-    gl.uniform3f(at.cut, ...[0, 1, 2].map((axis) => Number(axis === this.axis)));
-    gl.uniform1f(at.cutAt, this.level);
+    const side = this.side();
+    gl.uniform3f(at.cut, ...[0, 1, 2].map((axis) => (axis === this.axis ? side : 0)));
+    gl.uniform1f(at.cutAt, side * this.level);
     gl.uniform2f(at.ends, field.low, field.high);
     gl.uniform1f(at.lineStep, this.lines && field.line && field.at === "node" ? field.line : 0);
     gl.uniform1i(at.kind, field.key === "bodies" ? 2 : field.logarithmic ? 1 : 0);
@@ -368,6 +376,7 @@ class Viewer {
   /* Return what lies under a pixel, nearest to the eye: { weights, corner, piece }, or null. */
   pick(px, py) {
     if (!this.flat) this.flat = [this.surface, this.cap].map((piece) => this.flattened(piece));
+    const side = this.side();
     let best = null;
     [this.surface, this.cap].forEach((piece, which) => {
       const flat = this.flat[which];
@@ -378,7 +387,7 @@ class Viewer {
         const b = u / whole, c = w / whole, depth = (1 - b - c) * flat[i + 2] + b * flat[i + 5] + c * flat[i + 8];
         if (best && depth <= best.depth) continue;
         const weights = [1 - b - c, b, c], corner = i / 3;
-        if (which === 0 && this.axis >= 0 && this.along(piece, corner, weights, this.axis) > this.level) continue;
+        if (which === 0 && this.axis >= 0 && side * (this.along(piece, corner, weights, this.axis) - this.level) > 0) continue;
         best = { depth, weights, corner, which };
       }
     });
@@ -445,7 +454,10 @@ class Viewer {
     this.moveCut = (by) => { slider.value = String(Number(slider.value) + by); again(); };
     for (const [name, act] of [["nearer", () => this.enlarge(1.25)], ["farther", () => this.enlarge(0.8)], ["home", () => { this.home(); this.draw(); }]])
       find(name).addEventListener("click", act);
-    if (model.dim === 2) for (const part of figure.querySelectorAll(".solid-only")) part.hidden = true;
+    if (model.dim === 3) return;
+    for (const part of figure.querySelectorAll(".solid-only")) part.hidden = true;
+    const share = Math.min(0.9, Math.max(0.22, (1.1 * model.reach[1]) / model.reach[0]));
+    this.canvas.style.height = `min(72vh, ${Math.round(100 * share)}vw, 40rem)`;
   }
 
   /* The scale of colours, or the tints of the bodies. */
