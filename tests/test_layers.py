@@ -28,6 +28,7 @@ LAYERS = (
     ("report",),
     ("timed",),
     ("study",),
+    ("variants",),
     ("progress",),
     ("cli",),
     ("__main__",),

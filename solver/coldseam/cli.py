@@ -53,7 +53,15 @@ def parser() -> argparse.ArgumentParser:
     run.add_argument("--out", metavar="DIR", required=True, help="folder for the answers; made if need be")
     run.add_argument("--verbose", action="store_true", help="keep every step of the run as a line, rounds included")
     run.add_argument("--no-pictures", action="store_true", help="write the answers without drawing")
+    _add_units(run)
     run.set_defaults(do=_run)
+
+    compare = commands.add_parser("compare", help="set variants side by side: answers, differences, limits, pictures")
+    compare.add_argument("variants", metavar="CASE", nargs="+", help="case files, or folders that 'run' wrote")
+    compare.add_argument("--out", metavar="DIR", required=True, help="folder for the comparison; made if need be")
+    compare.add_argument("--verbose", action="store_true", help="keep every step of the runs as a line")
+    _add_units(compare)
+    compare.set_defaults(do=_compare)
 
     at = commands.add_parser(
         "at", help="solve a case once and give its answers at other temperatures of its spaces, superposed"
@@ -62,6 +70,7 @@ def parser() -> argparse.ArgumentParser:
     at.add_argument("temperatures", metavar="SPACE=TEMP", nargs="+", help='such as hall=30 or "hall=86 degF"')
     at.add_argument("--out", metavar="DIR", help="folder for the answers; made if need be")
     at.add_argument("--verbose", action="store_true", help="keep every step of the run as a line, rounds included")
+    _add_units(at)
     at.set_defaults(do=_at)
 
     check = commands.add_parser("check", help="read a case and build its geometry, but solve nothing")
@@ -82,6 +91,11 @@ def parser() -> argparse.ArgumentParser:
     schema = commands.add_parser("schema", help="print the JSON Schema of case files, for editors")
     schema.set_defaults(do=_schema)
     return top
+
+
+def _add_units(command: argparse.ArgumentParser) -> None:
+    words = "of report.html (inch: in, °F, Btu); files for machines stay metric"
+    command.add_argument("--units", choices=("metric", "inch"), default="metric", help=words)
 
 
 def main(arguments: Sequence[str] | None = None) -> int:
@@ -150,7 +164,7 @@ def _run(options: argparse.Namespace) -> int:
         from coldseam.study import run
 
         result = run(case, log, folder=folder)
-        written = result.write(folder, pictures=not options.no_pictures, log=log)
+        written = result.write(folder, pictures=not options.no_pictures, log=log, units=options.units)
     # As written: drawing adds to the warnings what could not be drawn.
     answers = json.loads((folder / "answers.json").read_text(encoding="utf-8"))
     _say(summary(answers, [str(path) for path in written]))
@@ -178,10 +192,24 @@ def _at(options: argparse.Namespace) -> int:
         from coldseam.study import run
 
         result = run(case, log).at(temperatures)
-        written = [] if folder is None else result.write(folder, pictures=False, log=log)
+        written = [] if folder is None else result.write(folder, pictures=False, log=log, units=options.units)
     answers = result.answers.as_dict()
     _say(summary(answers, [str(path) for path in written]))
     return 0 if all(limit["met"] for limit in answers["limits"].values()) else LIMIT_NOT_MET
+
+
+def _compare(options: argparse.Namespace) -> int:
+    from coldseam.report.files import prepare_folder
+
+    folder = prepare_folder(options.out)  # before the work, not after it
+    with _log(options) as log:
+        log("starting", "loading the numerics")
+        from coldseam.variants import compare
+
+        compared = compare(options.variants, folder, units=options.units, log=log)
+    _say("\n".join(str(path) for path in compared.files[-2:]))
+    met = all(limit["met"] for v in compared.variants for limit in (v.answers.get("limits") or {}).values())
+    return 0 if met else LIMIT_NOT_MET
 
 
 def _number(text: str) -> float | str:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 import numpy as np
@@ -20,6 +20,7 @@ from coldseam.geometry.mesher import open_geometry
 from coldseam.mesh.boundaries import claim_facets
 from coldseam.mesh.locate import locate
 from coldseam.mesh.types import Mesh
+from coldseam.report.shown import Shown
 from coldseam.report.view import View, model_view
 from coldseam.solution.flux import cell_flux
 from coldseam.solution.rounds import Solution, solve
@@ -104,8 +105,29 @@ class Result:
 
         return grid(self.view())
 
-    def write(self, folder: str | Path, *, pictures: bool = True, log: Log | None = None) -> list[Path]:
-        """Write answers.json, tables, fields and pictures into a folder and return the paths.
+    def write(
+        self,
+        folder: str | Path,
+        *,
+        pictures: bool = True,
+        log: Log | None = None,
+        units: str = "metric",
+        scale: tuple[float, float] | None = None,
+    ) -> list[Path]:
+        """Write answers.json, tables, fields, pictures and report.html into a folder and return the paths.
+
+        Parameters
+        ----------
+        folder
+            Made if need be.
+        pictures
+            Whether to draw.
+        log
+            Called with a stage and a message.
+        units
+            Of the report, "metric" or "inch"; files for machines are always metric.
+        scale
+            Temperatures (°C) that the pictures' colours begin and end with; None for each picture's own.
 
         Raises
         ------
@@ -114,7 +136,9 @@ class Result:
         """
         from coldseam.report.output import write_all
 
-        return write_all(self.view(), Path(folder), pictures=pictures, log=log or _quiet)
+        view = replace(self.view(), scale=scale)
+        shown = Shown(system=units, flat=view.mesh.dim == 2 and not view.mesh.axisymmetric)
+        return write_all(view, self.case, Path(folder), shown, pictures=pictures, log=log or _quiet)
 
 
 def run(case: Case, log: Log | None = None, *, folder: Path | None = None, resume: bool = False) -> Result | TimedResult:

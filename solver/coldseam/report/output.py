@@ -6,22 +6,31 @@ from collections.abc import Callable
 from dataclasses import replace
 from pathlib import Path
 
+from coldseam.case.model import Case
+from coldseam.report.document import write_report
 from coldseam.report.draw import draw_all
 from coldseam.report.files import prepare_folder
+from coldseam.report.shown import Shown
 from coldseam.report.tables import write_answers
-from coldseam.report.view import View
+from coldseam.report.view import Drawings, View
 from coldseam.report.vtu import write_field
 
 
-def write_all(view: View, folder: Path, *, pictures: bool, log: Callable[[str, str], None]) -> list[Path]:
-    """Write answers.json, tables, fields and pictures and return their paths.
+def write_all(
+    view: View, case: Case, folder: Path, shown: Shown, *, pictures: bool, log: Callable[[str, str], None]
+) -> list[Path]:
+    """Write answers.json, tables, fields, pictures and report.html and return their paths.
 
     Parameters
     ----------
     view
         The result; its ``answers`` are written.
+    case
+        The case it came from.
     folder
         Made if need be.
+    shown
+        Units of the report.
     pictures
         Whether to draw.
     log
@@ -36,7 +45,7 @@ def write_all(view: View, folder: Path, *, pictures: bool, log: Callable[[str, s
     log("write", str(folder))
     written = [*write_answers(folder, view), *write_field(folder, view)]
     if not pictures:
-        return written
+        return [*written, write_report(view, case, Drawings(pictures=()), folder, shown, viewer=False)]
     drawings = draw_all(view, folder, log)
     for picture in drawings.pictures:
         written += [folder / name for name in (picture.file, picture.vector) if name]
@@ -45,5 +54,7 @@ def write_all(view: View, folder: Path, *, pictures: bool, log: Callable[[str, s
         "pictures": listed,
         "warnings": [*view.answers.get("warnings", []), *drawings.warnings],
     }
-    write_answers(folder, replace(view, answers=answers))
-    return written
+    view = replace(view, answers=answers)
+    write_answers(folder, view)
+    log("report", "writing report.html")
+    return [*written, write_report(view, case, drawings, folder, shown)]

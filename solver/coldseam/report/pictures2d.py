@@ -51,11 +51,11 @@ def draw_temperature(view: View, section: Section, folder: Path, name: str, titl
     low, high = float(section.temperature.min()), float(section.temperature.max())
     coldest, warmest = float(view.temperature.min()), float(view.temperature.max())
     even = high - low < EVEN * (warmest - coldest)  # isotherms would trace the mesh; the scale is the whole model's
-    levels = np.empty(0) if even else style.round_levels(low, high)
+    levels = np.empty(0) if even else style.round_levels(*(view.scale or (low, high)))
     places = style.decimals(levels) if len(levels) else 2
     read = (f"From {style.degrees(low, max(1, places))} to {style.degrees(high, max(1, places))} in this section"
             f"{'' if len(levels) else '; too even for isotherms'}.",)  # fmt: skip
-    low, high = (coldest, warmest) if even else (low, high)
+    low, high = view.scale or ((coldest, warmest) if even else (low, high))
     with style.applied():
         made = _open(section, view, title, bar=True, notes=read + _thin_note(view, section))
         _shade(made.ax, section, low, high)

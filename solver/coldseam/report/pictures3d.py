@@ -126,6 +126,9 @@ def _draw_field(
     facets = mesh.facets[rows]
     nodes = np.unique(facets)
     low, high = float(values[nodes].min()), float(values[nodes].max())
+    ends = (low, high)
+    if view.scale and shown.unit == "°C":
+        low, high = view.scale
     levels = style.round_levels(low, high)
     levels = levels[
         levels > low + EVEN * (high - low)
@@ -137,8 +140,8 @@ def _draw_field(
     filled = np.where(np.isfinite(values), values, low)
     seen = scenes.paint(mesh.points, facets, toward, values=filled, span=(low, max(high, low + 1e-9)),
                         front_only=front_only, window=window)  # fmt: skip
-    ends = [style.amount(value, max(1, places), shown.unit) for value in (low, high)]
-    read = f"From {ends[0]} to {ends[1]}."
+    words = [style.amount(value, max(1, places), shown.unit) for value in ends]
+    read = f"From {words[0]} to {words[1]}."
     extreme = mesh.points[nodes[(np.argmax if shown.mark == "highest" else np.argmin)(values[nodes])]]
     marked = bool(shown.mark) and bool(seen.visible(extreme[None], 0.01 * mesh.size)[0])
     title = shown.title + (", close-up" if close else "")

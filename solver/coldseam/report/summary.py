@@ -189,7 +189,7 @@ def _trust(answers: Answers) -> list[str]:
     lines = []
     accuracy = answers.get("accuracy")
     if accuracy:
-        lines.append(_accuracy(accuracy, [*answers["spaces"].values(), *answers["boundaries"].values()]))
+        lines.append(accuracy_sentence(accuracy, [*answers["spaces"].values(), *answers["boundaries"].values()]))
     balance = answers.get("balance")
     if balance and not answers.get("history"):
         closure = f"{balance['closure']:.1e} {flow_unit(answers)}"
@@ -200,7 +200,7 @@ def _trust(answers: Answers) -> list[str]:
     return lines
 
 
-def _accuracy(accuracy: Answers, entries: Sequence[Answers]) -> str:
+def accuracy_sentence(accuracy: Answers, entries: Sequence[Answers]) -> str:
     """Return the accuracy reached and asked, and what kind of statement it is."""
     asked = f"{100 * accuracy['asked']:.3g} % asked"
     if accuracy["reached"] is None:

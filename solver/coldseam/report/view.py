@@ -47,6 +47,8 @@ class View:
         Fields on the surfaces beside the temperature.
     history
         The recorded rows of a run over time.
+    scale
+        Temperatures (°C) that the colours of pictures begin and end with; None for each picture's own.
     """
 
     mesh: Mesh
@@ -61,6 +63,7 @@ class View:
     answers: dict = field(default_factory=dict)
     maps: tuple[SurfaceMap, ...] = ()
     history: HistoryView | None = None
+    scale: tuple[float, float] | None = None
 
     def __post_init__(self):
         if len(self.facet_boundary) != len(self.mesh.facets):
