@@ -18,8 +18,10 @@ from coldseam.mesh.types import Mesh
 from coldseam.physics.melting import heat_content
 from coldseam.report.history import HistoryView, scale_of
 from coldseam.report.series import FieldSeries
+from coldseam.report.shown import Shown
 from coldseam.report.view import View, model_view
 from coldseam.solution.heatsystem import HeatSystem, heat_system
+from coldseam.solution.refresh import refresher
 from coldseam.solution.rounds import Solution
 from coldseam.solution.starting import FINAL, save_final, starting_state
 from coldseam.solution.timeconstants import time_constants
@@ -68,8 +70,21 @@ class TimedResult:
             plain, temperature=self.temperature, answers=self.answers.as_dict(), history=history_view(self.history)
         )
 
-    def write(self, folder: str | Path, *, pictures: bool = True, log: Log | None = None) -> list[Path]:
-        """Write answers.json, history.csv, tables, the final field and pictures into a folder; return the paths.
+    def write(
+        self,
+        folder: str | Path,
+        *,
+        pictures: bool = True,
+        log: Log | None = None,
+        units: str = "metric",
+        scale: tuple[float, float] | None = None,
+    ) -> list[Path]:
+        """Write answers.json, history.csv, tables, the final field, pictures and report.html; return the paths.
+
+        Parameters
+        ----------
+        folder, pictures, log, units, scale
+            As in :meth:`coldseam.study.Result.write`.
 
         Raises
         ------
@@ -78,7 +93,9 @@ class TimedResult:
         """
         from coldseam.report.output import write_all
 
-        written = write_all(self.view(), Path(folder), pictures=pictures, log=log or (lambda stage, message: None))
+        view, log = replace(self.view(), scale=scale), log or (lambda stage, message: None)
+        shown = Shown(system=units, flat=view.mesh.dim == 2 and not view.mesh.axisymmetric)
+        written = write_all(view, self.case, Path(folder), shown, pictures=pictures, log=log)
         save_final(Path(folder) / FINAL, self.history.system, self.history.final)
         fields = [path for path in (Path(folder) / "fields.pvd",) if path.is_file()]
         return [*written, Path(folder) / FINAL, *fields]
@@ -112,7 +129,7 @@ def run_over_time(case: Case, log: Log, *, folder: Path | None = None, resume: b
         if folder is None or not (case.time.fields or case.time.fields_every)
         else FieldSeries(folder, _model(system))
     )
-    transient = Transient(system, starting_state(system), phase=heat_content(case, system.mesh), on_field=fields)
+    transient = Transient(system, starting_state(system), phase=heat_content(case, system.mesh), refresh=refresher(system), on_field=fields)
     _go(transient, log)
     history = transient.result()
     constants = time_constants(system)

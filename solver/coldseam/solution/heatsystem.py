@@ -9,7 +9,7 @@ terminals that a floating space stands behind, B keeps the others. Heat flows ar
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -27,6 +27,7 @@ from coldseam.volumes.capacity import node_capacities
 from coldseam.volumes.conditions import Conditions, conditions
 from coldseam.volumes.network import Network
 from coldseam.volumes.nodes import node_network, node_operator
+from coldseam.volumes.operator import EdgeOperator
 from coldseam.volumes.section import facet_shares
 
 if TYPE_CHECKING:
@@ -189,6 +190,33 @@ def heat_system(case: Case, mesh: Mesh) -> HeatSystem:
         terminal_course=courses,
         readers=_readers(case, mesh, facet_boundary, given, behind),
         source_flow=float(given.source @ cell_measure(mesh)),
+    )
+
+
+def with_conditions(system: HeatSystem, given: Conditions, operator: EdgeOperator) -> HeatSystem:
+    """Return the equations with other coefficients on the same mesh.
+
+    Parameters
+    ----------
+    system
+        The equations.
+    given
+        Conditions with the same terminals.
+    operator
+        From :func:`coldseam.volumes.nodes.node_operator`, for the mesh.
+    """
+    network = node_network(system.mesh, given, operator)
+    behind = _behind(system.case, given, system.spaces)
+    coupling, drive = _split(network.exchange, behind, system.spaces.n)
+    return replace(
+        system,
+        given=given,
+        network=network,
+        coupling=coupling,
+        gather=sparse.csr_array(coupling.T),
+        films=np.asarray(coupling.sum(axis=0)).ravel(),
+        drive=drive,
+        readers=_readers(system.case, system.mesh, system.facet_boundary, given, behind),
     )
 
 
