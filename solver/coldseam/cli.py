@@ -53,6 +53,9 @@ def parser() -> argparse.ArgumentParser:
     run.add_argument("--out", metavar="DIR", required=True, help="folder for the answers; made if need be")
     run.add_argument("--verbose", action="store_true", help="keep every step of the run as a line, rounds included")
     run.add_argument("--no-pictures", action="store_true", help="write the answers without drawing")
+    run.add_argument(
+        "--resume", action="store_true", help="go on with a run over time that was stopped, from its checkpoint in DIR"
+    )
     run.set_defaults(do=_run)
 
     at = commands.add_parser(
@@ -149,7 +152,7 @@ def _run(options: argparse.Namespace) -> int:
         from coldseam.report.summary import summary
         from coldseam.study import run
 
-        result = run(case, log, folder=folder)
+        result = run(case, log, folder=folder, resume=options.resume)
         written = result.write(folder, pictures=not options.no_pictures, log=log)
     # As written: drawing adds to the warnings what could not be drawn.
     answers = json.loads((folder / "answers.json").read_text(encoding="utf-8"))

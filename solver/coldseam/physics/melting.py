@@ -72,7 +72,9 @@ class HeatContent:
         for layer in range(len(self.start)):
             a, b = self.start[layer], self.end[layer]
             between = 0.5 * (self.below[layer] + self.above[layer]) + self.latent[layer] / (b - a)
-            total += np.where(temperature <= a, self.below[layer], np.where(temperature < b, between, self.above[layer]))
+            total += np.where(
+                temperature <= a, self.below[layer], np.where(temperature < b, between, self.above[layer])
+            )
         return total
 
     def temperature(self, heat: np.ndarray) -> np.ndarray:

@@ -132,7 +132,7 @@ class Transient:
     refresh
         Called with the state before every step; returns a new system when coefficients have changed, else None.
     on_field
-        Called with time (s) and node temperatures (°C) at every time a field is asked for.
+        Called with time (s) and node temperatures (°C) at every time after 0 that a field is asked for.
     """
 
     def __init__(
@@ -169,8 +169,6 @@ class Transient:
         self.stops = [e.stop for e in system.case.event]
         for watch in self.watches:
             watch.begin(self.state)
-        if self.on_field is not None:
-            self.on_field(0.0, self.state.temperature)
 
     @property
     def time(self) -> float:
