@@ -152,8 +152,8 @@ def _late_share(history: History, name: str) -> float:
 
 def _event_warnings(history: History) -> list[str]:
     return [
-        f'event "{h.name}" did not happen within {history.final.time:g} s: {watched(history.system.case, h.name)} was not '
-        f"reached; closest {h.closest:.2f} °C at {h.closest_at:.0f} s"
+        f'event "{h.name}" did not happen within {history.final.time:g} s: '
+        f"{watched(history.system.case, h.name)} was not reached; closest {h.closest:.2f} °C at {h.closest_at:.0f} s"
         for h in history.events
         if h.time is None
     ]

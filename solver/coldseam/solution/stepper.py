@@ -74,7 +74,19 @@ class State:
 
 @dataclass(frozen=True, kw_only=True, eq=False)
 class Stage:
-    """One solved stage: node temperatures (°C), heat stored since the step began (J), increments (K) and the factor."""
+    """One solved stage.
+
+    Parameters
+    ----------
+    temperature
+        °C, (n_nodes,).
+    stored
+        Heat stored since the step began, J, (n_nodes,).
+    e, d
+        Increments of spaces (n,) and of free nodes (n_free,), K.
+    factor
+        That the stage was solved with.
+    """
 
     temperature: np.ndarray
     stored: np.ndarray
@@ -116,7 +128,7 @@ class Step:
 
 
 def channels(system: HeatSystem) -> list[tuple[str, str]]:
-    """Return kind and name of every recorded flow: boundaries, then what goes into spaces, machines' power and share."""
+    """Return kind and name of every recorded flow: boundaries, what goes into spaces, power and share of machines."""
     found = [("boundary", boundary.name) for boundary in system.case.boundary]
     for name in system.spaces.names:
         found += [(kind, name) for kind in CHANNELS]

@@ -275,7 +275,9 @@ class Transient:
         changed = None if self.refresh is None else self.refresh(self.state)
         if changed is not None:
             self.system = changed
-            self.solver = StageSolver(changed, self.tolerance)
+            before, self.solver = self.solver, StageSolver(changed, self.tolerance)
+            self.solver.factorisations, self.solver.solves = before.factorisations, before.solves
+            self.solver.iterations = before.iterations
             self.stepper = Stepper(changed, self.solver, self.phase)
 
     def _length(self, end: float) -> float:
