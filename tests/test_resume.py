@@ -55,6 +55,18 @@ def test_every_moment_can_be_resumed(tmp_path):
     assert one.work.switched >= 5 and other.work == one.work
 
 
+def test_a_run_killed_while_its_answers_are_written_only_writes_them(tmp_path):
+    mesh = grid(np.linspace(0, 0.1, 5), np.array([0.0, 0.1]))
+    run = stepping(mesh, machine_text())
+    while run.status == "running":
+        run.step()
+    checkpoint.save(tmp_path, run, {})
+    again = stepping(mesh, machine_text())
+    checkpoint.restore(tmp_path, again)
+    assert again.status == "finished"
+    assert np.array_equal(again.result().rows, run.result().rows)
+
+
 def test_a_changed_case_is_refused(tmp_path):
     mesh = grid(np.linspace(0, 0.1, 5), np.array([0.0, 0.1]))
     run = stepping(mesh, machine_text())

@@ -96,6 +96,7 @@ def save(folder: Path, transient: Transient, extra: dict[str, Any]) -> None:
     told = {
         "version": __version__,
         "sha256": transient.system.case.source.sha256,
+        "status": transient.status,
         "time": transient.state.time,
         "rung": transient.rung,
         "patience": transient.patience,
@@ -171,6 +172,7 @@ def restore(folder: Path, transient: Transient) -> dict[str, Any]:
         time=0.0, temperature=stored["initial_temperature"], y=stored["initial_y"], running=stored["initial_running"]
     )
     transient.totals = Totals(heat=stored["heat"], magnitude=stored["magnitude"], peak=stored["peak"])
+    transient.status = told["status"]  # a run may be killed after its last step, while its answers are written
     transient.rows = list(stored["rows"])
     transient.rung, transient.patience = told["rung"], told["patience"]
     transient.recorded, transient.fields = told["recorded"], told["fields"]
