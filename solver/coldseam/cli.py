@@ -54,6 +54,9 @@ def parser() -> argparse.ArgumentParser:
     run.add_argument("--verbose", action="store_true", help="keep every step of the run as a line, rounds included")
     run.add_argument("--no-pictures", action="store_true", help="write the answers without drawing")
     _add_units(run)
+    run.add_argument(
+        "--resume", action="store_true", help="go on with a run over time that was stopped, from its checkpoint in DIR"
+    )
     run.set_defaults(do=_run)
 
     compare = commands.add_parser("compare", help="set variants side by side: answers, differences, limits, pictures")
@@ -163,7 +166,7 @@ def _run(options: argparse.Namespace) -> int:
         from coldseam.report.summary import summary
         from coldseam.study import run
 
-        result = run(case, log, folder=folder)
+        result = run(case, log, folder=folder, resume=options.resume)
         written = result.write(folder, pictures=not options.no_pictures, log=log, units=options.units)
     # As written: drawing adds to the warnings what could not be drawn.
     answers = json.loads((folder / "answers.json").read_text(encoding="utf-8"))

@@ -15,7 +15,7 @@ from coldseam.answers.maps import surface_maps
 from coldseam.answers.superpose import superposed
 from coldseam.answers.types import Answers
 from coldseam.case.model import Case
-from coldseam.errors import CaseError
+from coldseam.errors import CaseError, Fault
 from coldseam.geometry.mesher import open_geometry
 from coldseam.mesh.boundaries import claim_facets
 from coldseam.mesh.locate import locate
@@ -164,6 +164,8 @@ def run(case: Case, log: Log | None = None, *, folder: Path | None = None, resum
     try:
         if case.time is not None:
             return run_over_time(case, log, folder=folder, resume=resume)
+        if resume:
+            raise CaseError([Fault(path=(), what="only a run over time can be resumed, and this case has no [time] table")])
         require_bridges(case)
         require_answerable(case)
         with open_geometry(case, log=log) as mesher:

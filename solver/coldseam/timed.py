@@ -9,8 +9,9 @@ from pathlib import Path
 
 import numpy as np
 
+from coldseam.answers.build import mesh_answer
 from coldseam.answers.history import headings, require_timed_limits, timed_answers
-from coldseam.answers.types import Answers
+from coldseam.answers.types import Answers, plain
 from coldseam.case.model import Case
 from coldseam.case.schedules import Schedule
 from coldseam.geometry.mesher import open_geometry
@@ -20,9 +21,9 @@ from coldseam.report.history import HistoryView, scale_of
 from coldseam.report.series import FieldSeries
 from coldseam.report.shown import Shown
 from coldseam.report.view import View, model_view
+from coldseam.solution import checkpoint
 from coldseam.solution.heatsystem import HeatSystem, heat_system
 from coldseam.solution.refresh import refresher
-from coldseam.solution.rounds import Solution
 from coldseam.solution.starting import FINAL, save_final, starting_state
 from coldseam.solution.timeconstants import time_constants
 from coldseam.solution.timemesh import mesh_over_time
@@ -30,6 +31,7 @@ from coldseam.solution.transient import History, Transient
 
 Log = Callable[[str, str], None]
 SAY_EVERY = 1.0  # s between progress lines
+CHECKPOINT_EVERY = 1.0  # s between checkpoints, or longer where they cost much
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -44,14 +46,11 @@ class TimedResult:
         What is written to answers.json, as dataclasses.
     history
         The recorded run, as arrays.
-    solution
-        The steady solution that made the mesh.
     """
 
     case: Case
     answers: Answers
     history: History
-    solution: Solution
 
     @property
     def mesh(self) -> Mesh:
@@ -97,6 +96,7 @@ class TimedResult:
         shown = Shown(system=units, flat=view.mesh.dim == 2 and not view.mesh.axisymmetric)
         written = write_all(view, self.case, Path(folder), shown, pictures=pictures, log=log)
         save_final(Path(folder) / FINAL, self.history.system, self.history.final)
+        checkpoint.remove(Path(folder))
         fields = [path for path in (Path(folder) / "fields.pvd",) if path.is_file()]
         return [*written, Path(folder) / FINAL, *fields]
 
@@ -121,25 +121,46 @@ def run_over_time(case: Case, log: Log, *, folder: Path | None = None, resume: b
         As :func:`coldseam.study.run`.
     """
     require_timed_limits(case)
+    go_on = resume and folder is not None and checkpoint.has_checkpoint(folder)
+    if resume and not go_on:
+        log("run", "no checkpoint to go on from: the run begins anew")
+    if go_on and folder:
+        checkpoint.require_same(folder, case)
+    mesh, facts = checkpoint.load_mesh(folder) if go_on and folder else _mesh(case, log, folder)
+    system = heat_system(case, mesh)
+    wanted = folder is not None and (case.time.fields is not None or case.time.fields_every is not None)
+    fields = FieldSeries(folder, _model(system)) if wanted and folder else None
+    phase, refresh = heat_content(case, system.mesh), refresher(system)
+    transient = Transient(system, starting_state(system), phase=phase, refresh=refresh, on_field=fields)
+    if go_on and folder:
+        entries = checkpoint.restore(folder, transient)["fields"]
+        if fields is not None:
+            fields.entries = [(float(moment), str(name)) for moment, name in entries]
+        log("run", f"goes on at {transient.time:.6g} s")
+    elif fields is not None:
+        fields(0.0, transient.state.temperature)
+    _go(transient, log, folder, fields)
+    history = transient.result()
+    answers = timed_answers(history, facts["mesh"], facts["remarks"], {"time_constants": time_constants(system)})
+    return TimedResult(case=case, answers=answers, history=history)
+
+
+def _mesh(case: Case, log: Log, folder: Path | None) -> tuple[Mesh, dict]:
+    """Return the mesh of the run and what is known of it; in ``folder`` it is kept for resuming."""
     with open_geometry(case, log=log) as mesher:
         mesh, solution, remarks = mesh_over_time(case, mesher, log)
-    system = heat_system(case, mesh)
-    fields = (
-        None
-        if folder is None or not (case.time.fields or case.time.fields_every)
-        else FieldSeries(folder, _model(system))
-    )
-    transient = Transient(system, starting_state(system), phase=heat_content(case, system.mesh), refresh=refresher(system), on_field=fields)
-    _go(transient, log)
-    history = transient.result()
-    constants = time_constants(system)
-    answers = timed_answers(history, solution, remarks, {"time_constants": constants})
-    return TimedResult(case=case, answers=answers, history=history, solution=solution)
+    facts = {"mesh": plain(mesh_answer(solution)), "remarks": list(remarks)}
+    if folder is not None:
+        checkpoint.remove(folder)
+        checkpoint.save_mesh(folder, mesh, facts)
+    return mesh, facts
 
 
-def _go(transient: Transient, log: Log) -> None:
+def _go(transient: Transient, log: Log, folder: Path | None, fields: FieldSeries | None) -> None:
+    """Step to the end, telling how far it is, and keeping checkpoints that cost at most a twentieth of the time."""
     begun = said = time.perf_counter()
-    first = transient.time
+    kept = -np.inf  # the first checkpoint comes with the first step: the mesh need not be made again
+    pause, first = CHECKPOINT_EVERY, transient.time
     unit, seconds = scale_of(transient.duration)
     while transient.status == "running":
         step = transient.step()
@@ -147,10 +168,12 @@ def _go(transient: Transient, log: Log) -> None:
         if now - said > SAY_EVERY:
             said = now
             left = (now - begun) * (transient.duration - transient.time) / max(transient.time - first, 1e-300)
-            log(
-                "run",
-                f"{transient.time / seconds:.4g} of {transient.duration / seconds:.4g} {unit}, step {step.h:.3g} s, some {left:.0f} s to go",
-            )
+            so_far = f"{transient.time / seconds:.4g} of {transient.duration / seconds:.4g} {unit}"
+            log("run", f"{so_far}, step {step.h:.3g} s, some {left:.0f} s to go")
+        if folder is not None and now - kept > pause:
+            checkpoint.save(folder, transient, {"fields": [] if fields is None else fields.entries})
+            kept = time.perf_counter()
+            pause = max(CHECKPOINT_EVERY, 20.0 * (kept - now))
 
 
 def _model(system: HeatSystem) -> View:

@@ -95,10 +95,20 @@ def _run(mesh, text):
 
 
 def test_heat_content_inverts_itself():
-    mesh = grid(np.linspace(0, 0.02, 9), np.array([0.0, 0.01]), bodies=("a", "b"), material=("stuff", "wax"), body_of=lambda c: (c[:, 0] > 0.01).astype(int))
+    mesh = grid(
+        np.linspace(0, 0.02, 9),
+        np.array([0.0, 0.01]),
+        bodies=("a", "b"),
+        material=("stuff", "wax"),
+        body_of=lambda c: (c[:, 0] > 0.01).astype(int),
+    )
     text = WATER.format(dim=2, zero=[0, 0], size=[20, 10])
-    text += '[materials.wax]\nconductivity = 0.2\ndensity = 800\nspecific_heat = 2000\nmelting = { between = [-4, 3], latent_heat = 2e5, specific_heat_liquid = 2500 }\n'
-    text = text.replace('name = "slab"', 'name = "a"').replace("[[boundary]]", '[[body]]\nname = "b"\nmaterial = "wax"\nbox = { from = [10, 0], to = [20, 10] }\n[[boundary]]', 1)
+    text += "[materials.wax]\nconductivity = 0.2\ndensity = 800\nspecific_heat = 2000\nmelting = { between = [-4, 3], latent_heat = 2e5, specific_heat_liquid = 2500 }\n"
+    text = text.replace('name = "slab"', 'name = "a"').replace(
+        "[[boundary]]",
+        '[[body]]\nname = "b"\nmaterial = "wax"\nbox = { from = [10, 0], to = [20, 10] }\n[[boundary]]',
+        1,
+    )
     case = loads(text)
     phase = heat_content(case, mesh)
     for value in (-30.0, -4.0, -1.0, 0.0, 0.01, 2.9, 3.0, 40.0):

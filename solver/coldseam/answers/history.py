@@ -2,19 +2,19 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import Any
 
 import numpy as np
 
 from coldseam._version import __version__
-from coldseam.answers.build import SECTION_UNITS, UNITS, extremes, kind_of, mesh_answer
+from coldseam.answers.build import SECTION_UNITS, UNITS, extremes, kind_of
 from coldseam.answers.limits import FLOW_UNITS, judge
 from coldseam.answers.types import Answers, BodyAnswer, BoundaryAnswer, ProbeAnswer, SpaceAnswer, place
 from coldseam.case.model import Case
 from coldseam.errors import CaseError, Fault
 from coldseam.mesh.measure import cell_measure, facet_measure
 from coldseam.mesh.types import Mesh
-from coldseam.solution.rounds import Solution
 from coldseam.solution.spaces import CHANNELS
 from coldseam.solution.stepper import channels
 from coldseam.solution.transient import History
@@ -25,15 +25,17 @@ HISTORY_FILE = "history.csv"
 NO_INTERVAL = "the proof of the heat flows holds for steady states; over time the error is not proven"
 
 
-def timed_answers(history: History, solution: Solution, remarks: tuple[str, ...], extra: dict[str, Any]) -> Answers:
+def timed_answers(
+    history: History, mesh_facts: dict[str, Any], remarks: Sequence[str], extra: dict[str, Any]
+) -> Answers:
     """Return the answers of a run over time; flows and temperatures outside ``history`` are those at its end.
 
     Parameters
     ----------
     history
         The finished run.
-    solution
-        The steady solution that made the mesh.
+    mesh_facts
+        How the mesh was made, from :func:`coldseam.answers.build.mesh_answer`.
     remarks
         Warnings of the run.
     extra
@@ -51,7 +53,7 @@ def timed_answers(history: History, solution: Solution, remarks: tuple[str, ...]
         coldseam=__version__,
         case_sha256=case.source.sha256,
         units=units,
-        mesh=mesh_answer(solution) | {"nodes": mesh.n_nodes, "cells": mesh.n_cells},
+        mesh=mesh_facts | {"nodes": mesh.n_nodes, "cells": mesh.n_cells},
         accuracy={},
         balance={
             "closure": (history.heat_in - history.heat_stored) / history.final.time,
@@ -150,8 +152,8 @@ def _late_share(history: History, name: str) -> float:
 
 def _event_warnings(history: History) -> list[str]:
     return [
-        f'event "{h.name}" did not happen within {history.final.time:g} s: {watched(history.system.case, h.name)} was not '
-        f"reached; closest {h.closest:.2f} °C at {h.closest_at:.0f} s"
+        f'event "{h.name}" did not happen within {history.final.time:g} s: '
+        f"{watched(history.system.case, h.name)} was not reached; closest {h.closest:.2f} °C at {h.closest_at:.0f} s"
         for h in history.events
         if h.time is None
     ]

@@ -55,7 +55,8 @@ def time_troubles(case: Case) -> Iterator[Trouble]:
             yield (
                 place,
                 (
-                    f"ends at {schedule.end:g} s, before the run does at {case.time.duration:g} s; give it a last row there, or repeat = true"
+                    f"ends at {schedule.end:g} s, before the run does at {case.time.duration:g} s; give it a last row "
+                    "there, or repeat = true"
                 ),
             )
     yield from _capacities(case)

@@ -6,8 +6,8 @@ Per volume, with rho c below the melting range [a, b], rho c' above it and laten
            (rho (c + c')/2 + rho L/(b - a)) (T - a)        a < T < b
            e(b) + rho c' (T - b)                           T >= b
 
-(Voller, Swaminathan, Thomas 1990, Int. J. Numer. Meth. Engng 30, 875; for food and ground a wider range stands for the freezing
-curve). A single melting point is a range of :data:`NARROW`. Density is that given for the material: volume does not change.
+(Voller, Swaminathan, Thomas 1990, Int. J. Numer. Meth. Engng 30, 875; for food and ground a wider range stands for
+the freezing curve). A single melting point is a range of :data:`NARROW`. Density does not change on melting.
 """
 
 from __future__ import annotations
@@ -72,7 +72,9 @@ class HeatContent:
         for layer in range(len(self.start)):
             a, b = self.start[layer], self.end[layer]
             between = 0.5 * (self.below[layer] + self.above[layer]) + self.latent[layer] / (b - a)
-            total += np.where(temperature <= a, self.below[layer], np.where(temperature < b, between, self.above[layer]))
+            total += np.where(
+                temperature <= a, self.below[layer], np.where(temperature < b, between, self.above[layer])
+            )
         return total
 
     def temperature(self, heat: np.ndarray) -> np.ndarray:

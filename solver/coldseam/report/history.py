@@ -143,7 +143,8 @@ def _chart(view: View, folder: Path, name: str, title: str, label: str, lines, l
         for text, moment in history.moments:
             ax.axvline(moment / seconds, color=style.INK, linestyle=(0, (1, 2)), linewidth=style.THIN)
             ax.annotate(
-                style.shortened(text, 40), (moment / seconds, 0.02), xycoords=("data", "axes fraction"), rotation=90, ha="right",
+                style.shortened(text, 40), (moment / seconds, 0.02), xycoords=("data", "axes fraction"),
+                rotation=90, ha="right",
                 va="bottom", fontsize=style.SMALL,
             )  # fmt: skip
         ax.set_xlim(time[0], time[-1] if time[-1] > time[0] else time[0] + 1.0)

@@ -50,7 +50,8 @@ def event_lines(answers: Answers) -> list[str]:
             lines.append(f"{name}: after {duration_text(event['time'])}{error} ({event['watched']})")
         else:
             lines.append(
-                f"{name}: not reached; closest {event['closest']:.1f} °C after {duration_text(event['closest_at'])} ({event['watched']})"
+                f"{name}: not reached; closest {event['closest']:.1f} °C after {duration_text(event['closest_at'])} "
+                f"({event['watched']})"
             )
     return lines
 
@@ -64,20 +65,21 @@ def run_lines(answers: Answers) -> list[str]:
     for name, machine in history["machines"].items():
         used = f", used {energy_text(machine['energy'], per)}" if machine["energy"] else ""
         lines.append(
-            f"  machine of {name}   took {energy_text(machine['heat'], per)}{used}; ran {100 * machine['running_share']:.0f} % of the time, "
-            f"{100 * machine['running_share_at_end']:.0f} % towards the end; peak {machine['peak']:.4g} W{per}"
+            f"  machine of {name}   took {energy_text(machine['heat'], per)}{used}; "
+            f"ran {100 * machine['running_share']:.0f} % of the time, {100 * machine['running_share_at_end']:.0f} % towards the end; peak {machine['peak']:.4g} W{per}"
         )
     for name, energy in history["energies"]["boundaries"].items():
         if energy:
             lines.append(f"  heat through {name}   {energy_text(energy, per)} into the solid")
     for name, melted in history.get("melted", {}).items():
         lines.append(
-            f"  melted part of {name}   {100 * melted['at_start']:.0f} % at the start, {100 * melted['at_end']:.0f} % at the end"
+            f"  melted part of {name}   {100 * melted['at_start']:.0f} % at the start, "
+            f"{100 * melted['at_end']:.0f} % at the end"
         )
     heat = history["energies"]
     lines.append(
-        f"  balance   {energy_text(heat['in'], per)} came in, {energy_text(heat['stored'], per)} are stored: they differ by "
-        f"{heat['relative_closure']:.1e} of what passed through"
+        f"  balance   {energy_text(heat['in'], per)} came in, {energy_text(heat['stored'], per)} are stored: "
+        f"they differ by {heat['relative_closure']:.1e} of what passed through"
     )
     if history.get("time_constants"):
         unit, seconds = scale_of(history["time_constants"][0])

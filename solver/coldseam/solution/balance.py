@@ -185,7 +185,7 @@ def machine_remarks(spaces: Spaces, found: Balance, when: str = "") -> tuple[str
 
 
 def held_at_guess(case: Case) -> Case:
-    """Return a steady case with floating spaces at a guess: their setpoint, their start, or the middle of the others."""
+    """Return a steady case with floating spaces at a guess: setpoint, start, or the middle of the others."""
     middle = 0.5 * sum(outside_range(case)) if any(s.temperature is not None for s in case.spaces.values()) else 20.0
     return held(case, {name: guess(case, name, middle) for name in case.spaces}, {})
 

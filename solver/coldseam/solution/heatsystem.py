@@ -58,6 +58,8 @@ class HeatSystem:
         How boundary flows are read, see :class:`FlowReaders`.
     source_flow
         Heat released in bodies, W.
+    operator
+        By which new conductivities make a new matrix.
     """
 
     case: Case
@@ -74,6 +76,7 @@ class HeatSystem:
     terminal_course: tuple[float | Schedule | None, ...]
     readers: FlowReaders
     source_flow: float
+    operator: EdgeOperator
 
     @property
     def free(self) -> np.ndarray:
@@ -117,7 +120,7 @@ class HeatSystem:
     def boundary_flows(
         self, temperature: np.ndarray, y: np.ndarray, terminals: np.ndarray, node_heat: np.ndarray
     ) -> np.ndarray:
-        """Return the heat flow into the solid of every boundary, W, (n_boundaries,), storage of fixed nodes left out."""
+        """Return every boundary's heat flow into the solid, W, (n_boundaries,), less what fixed nodes store."""
         r = self.readers
         outside = np.where(r.unknown >= 0, y[r.unknown] if self.spaces.n else 0.0, terminals[r.terminal])
         flow = r.constant + r.film * outside - r.film_nodes @ temperature
@@ -169,7 +172,8 @@ def heat_system(case: Case, mesh: Mesh) -> HeatSystem:
     facet_boundary = claim_facets(case, mesh)
     mesh = with_contacts(case, mesh)
     given = conditions(held_for_structure(case), mesh, facet_boundary)
-    network = node_network(mesh, given, node_operator(mesh, given)[0])
+    operator = node_operator(mesh, given)[0]
+    network = node_network(mesh, given, operator)
     require_temperatures(mesh, network)
     spaces = floating_spaces(case)
     courses = _courses(case, given)
@@ -190,22 +194,21 @@ def heat_system(case: Case, mesh: Mesh) -> HeatSystem:
         terminal_course=courses,
         readers=_readers(case, mesh, facet_boundary, given, behind),
         source_flow=float(given.source @ cell_measure(mesh)),
+        operator=operator,
     )
 
 
-def with_conditions(system: HeatSystem, given: Conditions, operator: EdgeOperator) -> HeatSystem:
-    """Return the equations with other coefficients on the same mesh.
+def with_conditions(system: HeatSystem, given: Conditions) -> HeatSystem:
+    """Return the equations with other coefficients: conductivities, films and sources that follow the temperature.
 
     Parameters
     ----------
     system
-        The equations.
+        The present equations.
     given
-        Conditions with the same terminals.
-    operator
-        From :func:`coldseam.volumes.nodes.node_operator`, for the mesh.
+        New conditions with the same terminals; for a ``refresh`` of :class:`coldseam.solution.transient.Transient`.
     """
-    network = node_network(system.mesh, given, operator)
+    network = node_network(system.mesh, given, system.operator)
     behind = _behind(system.case, given, system.spaces)
     coupling, drive = _split(network.exchange, behind, system.spaces.n)
     return replace(
@@ -217,6 +220,7 @@ def with_conditions(system: HeatSystem, given: Conditions, operator: EdgeOperato
         films=np.asarray(coupling.sum(axis=0)).ravel(),
         drive=drive,
         readers=_readers(system.case, system.mesh, system.facet_boundary, given, behind),
+        source_flow=float(given.source @ cell_measure(system.mesh)),
     )
 
 
@@ -243,8 +247,8 @@ def _courses(case: Case, given: Conditions) -> tuple[float | Schedule | None, ..
         spans = [span_of(_course(case, boundary)) for boundary in names]
         if spans[0] != spans[1] or spans[0][0] != spans[0][1]:
             what = (
-                f'the surfaces "{names[0].name}" and "{names[1].name}" touch and are held at different temperatures, so the '
-                "flow between them has no limit; give them films"
+                f'the surfaces "{names[0].name}" and "{names[1].name}" touch and are held at different temperatures, '
+                "so the flow between them has no limit; give them films"
             )
             raise CaseError([Fault(path=("boundary", given.terminals[first].boundaries[0]), what=what)])
     return tuple(_course(case, case.boundary[terminal.boundaries[0]]) for terminal in given.terminals)

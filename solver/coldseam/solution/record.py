@@ -98,7 +98,7 @@ class Gauges:
         )
 
     def row(self, state: State, flows: np.ndarray) -> np.ndarray:
-        """Return one row: time, temperatures, flows."""
+        """Return one row of the history, (n_columns,): time (s), temperatures (°C), flows (W, (n_channels,))."""
         return np.concatenate([[state.time], self.temperatures(state), flows])
 
     def reading(self, when: When):

@@ -17,8 +17,9 @@ from coldseam.solution.enclosed import cavity_models
 from coldseam.solution.heatsystem import HeatSystem, held_for_structure, with_conditions
 from coldseam.solution.stepper import State
 from coldseam.volumes.conditions import Conditions
-from coldseam.volumes.nodes import node_operator
 
+KEPT = ("conductivity", "film", "flux", "sheet_conductance")
+"""The fields of the conditions that follow the temperatures."""
 MOVED = 2e-3
 """Relative change of a film, a conductivity or a heat flux from which the equations are made anew."""
 
@@ -35,7 +36,6 @@ class Refresher:
     def __init__(self, system: HeatSystem):
         self.system = system
         self.base = system.given
-        self.operator = node_operator(system.mesh, system.given)[0]
         self.case = held_for_structure(system.case)
         self.cavities = cavity_models(self.case, system.mesh, system.facet_boundary)
         self.present: Conditions | None = None
@@ -49,8 +49,26 @@ class Refresher:
         if self.present is not None and not moved(self.present, given):
             return None
         self.present = given
-        self.system = with_conditions(self.system, given, self.operator)
+        self.system = with_conditions(self.system, given)
         self.count += 1
+        return self.system
+
+    def memory(self) -> dict[str, np.ndarray]:
+        """Return what a checkpoint must keep of it, arrays by name; empty before the first step."""
+        if self.before is None or self.present is None:
+            return {}
+        kept = {name: getattr(self.present, name) for name in KEPT}
+        return kept | {"before": np.append(self.before.time, self.before.temperature)}
+
+    def recall(self, kept: dict[str, np.ndarray]) -> HeatSystem | None:
+        """Return the equations that :meth:`memory` was taken with, and go on from there; None if it was empty."""
+        if not kept:
+            return None
+        empty = np.zeros(0)
+        time, temperature = float(kept["before"][0]), kept["before"][1:]
+        self.before = State(time=time, temperature=temperature, y=empty, running=empty.astype(np.int64))
+        self.present = replace(self.base, **{name: kept[name] for name in KEPT})
+        self.system = with_conditions(self.system, self.present)
         return self.system
 
     def _at(self, state: State) -> Conditions:

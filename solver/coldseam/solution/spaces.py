@@ -73,7 +73,7 @@ class Spaces:
         return value_at(self.case.spaces[name].temperature, time, before=before)
 
     def temperature_of(self, name: str, y: np.ndarray, time: float, *, before: bool = False) -> float:
-        """Return the temperature (°C) of any space."""
+        """Return the temperature (°C) of any space, that of a floating one from y, (n,)."""
         return float(y[self.names.index(name)]) if name in self.names else self.outside(name, time, before=before)
 
     def flows(
@@ -140,7 +140,10 @@ class Spaces:
         return sum(value_at(self.floating(s).goods[g].heat, time, before=before) for s, g in self.goods)
 
     def outside_heat(self, flows: np.ndarray, y: np.ndarray, time: float, *, before: bool = False) -> float:
-        """Return the heat into spaces and goods from outside the model, surfaces left out, W."""
+        """Return the heat into spaces and goods from outside the model, surfaces left out, W; arguments as in :meth:`heat`.
+
+        ``flows`` is of shape (n_spaces, 5), y of shape (n,).
+        """
         inside = 0.0
         for s in range(len(self.names)):
             for exchange in self.floating(s).air_exchange:
@@ -152,14 +155,14 @@ class Spaces:
     def machine_heat(
         self, s: int, y: np.ndarray, running, time: float, *, before: bool = False
     ) -> tuple[float, float, float]:
-        """Return the heat that a space's machine takes (W), its slope (W/K) and the share of its output."""
+        """Return what a space's machine takes at y, (n,): heat (W), its slope (W/K) and the share of its output."""
         machine = self.machines[s]
         full, full_slope = machine.full(float(y[s]), self.ambient(s, y, time, before=before), time, before=before)
         share, share_slope = machine.share(float(y[s]), int(running[s]), time, before=before)
         return full * share, full_slope * share + full * share_slope, share if full > 0.0 else 0.0
 
     def ambient(self, s: int, y: np.ndarray, time: float, *, before: bool = False) -> float:
-        """Return the temperature of the space that a machine gives its heat to, °C; 0 where none is named."""
+        """Return the temperature of the space that a machine gives its heat to at y, (n,), °C; 0 where none is named."""
         name = self.machines[s].cooling.ambient
         return 0.0 if name is None else self.temperature_of(name, y, time, before=before)
 

@@ -20,12 +20,36 @@ from scipy import sparse
 
 from coldseam.errors import SolveError
 from coldseam.solution.heatsystem import HeatSystem
-from coldseam.solution.linear import DIRECT_LIMIT, DirectSolver, MultigridSolver, node_hierarchy
+from coldseam.solution.linear import DirectSolver, MultigridSolver
 
+DIRECT_LIMIT = {2: 60_000, 3: 6_000}
+"""Unknowns up to which a stage is factorised: more than for a steady solve, for a factor serves many stages."""
 KEPT = {2: 8, 3: 3}
 """Factorisations or multigrid hierarchies kept for step sizes that come back."""
 RELATIVE_ENERGY = 1e-14  # missing energy of an iterative solution over that of the increment
 MOST_NEWTON = 60
+
+
+def stage_hierarchy(matrix: sparse.csr_array):
+    """Return a smoothed-aggregation hierarchy for the matrix of a stage, (n, n), J/K.
+
+    Unlike a steady one it may be all but diagonal (short steps): every coupling counts as strong, so that no node is
+    left out of the coarse levels.
+    """
+    import pyamg
+
+    narrow = sparse.csr_matrix(matrix)
+    narrow.indices, narrow.indptr = narrow.indices.astype(np.int32), narrow.indptr.astype(np.int32)
+    return pyamg.smoothed_aggregation_solver(
+        narrow,
+        strength=("symmetric", {"theta": 0.0}),
+        smooth=("jacobi", {"omega": 4.0 / 3.0, "weighting": "local"}),
+        presmoother=("gauss_seidel", {"sweep": "forward"}),
+        postsmoother=("gauss_seidel", {"sweep": "backward"}),
+        improve_candidates=None,
+        max_coarse=200,
+        coarse_solver="splu",
+    )
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -94,7 +118,7 @@ class StageSolver:
         solver = (
             DirectSolver(matrix)
             if len(self.free) <= DIRECT_LIMIT[dim]
-            else MultigridSolver(matrix, node_hierarchy(matrix))
+            else MultigridSolver(matrix, stage_hierarchy(matrix))
         )
         self.method = solver.method
         self.factorisations += 1

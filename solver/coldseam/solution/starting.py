@@ -1,4 +1,4 @@
-"""The state a run over time begins with: one temperature, one for each body, the steady state, or an earlier run's end."""
+"""What a run over time begins with: one temperature, one for each body, the steady state, or an earlier run."""
 
 from __future__ import annotations
 

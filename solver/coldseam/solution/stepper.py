@@ -74,7 +74,19 @@ class State:
 
 @dataclass(frozen=True, kw_only=True, eq=False)
 class Stage:
-    """One solved stage: node temperatures (°C), heat stored since the step began (J), increments (K) and the factor."""
+    """One solved stage.
+
+    Parameters
+    ----------
+    temperature
+        °C, (n_nodes,).
+    stored
+        Heat stored since the step began, J, (n_nodes,).
+    e, d
+        Increments of spaces (n,) and of free nodes (n_free,), K.
+    factor
+        That the stage was solved with.
+    """
 
     temperature: np.ndarray
     stored: np.ndarray
@@ -116,7 +128,7 @@ class Step:
 
 
 def channels(system: HeatSystem) -> list[tuple[str, str]]:
-    """Return kind and name of every recorded flow: boundaries, then what goes into spaces, machines' power and share."""
+    """Return kind and name of every recorded flow: boundaries, what goes into spaces, power and share of machines."""
     found = [("boundary", boundary.name) for boundary in system.case.boundary]
     for name in system.spaces.names:
         found += [(kind, name) for kind in CHANNELS]
@@ -165,7 +177,9 @@ class Stepper:
         y3 = state.y + three.e
         flows3 = self._flows(state, three.temperature, y3, end, before=True)
         node_heat, space_heat = np.stack([first[0], r2, r3]), np.stack([first[1], s2, s3])
-        error = self._error(state, three.factor, h * (ERROR_WEIGHTS @ node_heat), h * (ERROR_WEIGHTS @ space_heat), y3, end)
+        error = self._error(
+            state, three.factor, h * (ERROR_WEIGHTS @ node_heat), h * (ERROR_WEIGHTS @ space_heat), y3, end
+        )
         self._remember(two.d, three.d, h)
         return Step(
             start=state,
@@ -238,7 +252,9 @@ class Stepper:
         moved[free] += d
         return Stage(temperature=moved, stored=stored, e=e, d=d, factor=factor)
 
-    def _melting(self, state: State, a: float, moved, known_nodes, known_spaces, terminals, time: float, before) -> Stage:
+    def _melting(
+        self, state: State, a: float, moved, known_nodes, known_spaces, terminals, time: float, before
+    ) -> Stage:
         """Iterate e <- e + (de/dT) d, T <- T(e) (Swaminathan, Voller 1992, Metall. Trans. B 23, 651).
 
         The heat content, not the temperature, is carried on, so that no step can jump over latent heat.

@@ -90,8 +90,8 @@ def mesh_over_time(case: Case, mesher, log) -> tuple[Mesh, Solution, tuple[str, 
     remarks = ()
     if relaxed > 1.3:
         remarks = (
-            f"near surfaces the mesh is {relaxed:.1f} times coarser than the recording interval of {case.time.record:g} s asks for, to "
-            "stay within the program's limit of nodes: changes faster than some "
+            f"near surfaces the mesh is {relaxed:.1f} times coarser than the recording interval of "
+            f"{case.time.record:g} s asks for, to stay within the program's limit of nodes: changes faster than some "
             f"{relaxed**2:.0f} intervals are smeared there (max_nodes in [model] raises the limit)",
         )
     return mesh, solution, remarks

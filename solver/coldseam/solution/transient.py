@@ -16,6 +16,7 @@ from coldseam.errors import SolveError
 from coldseam.solution.events import Happened, Watch, first_crossing
 from coldseam.solution.heatsystem import HeatSystem
 from coldseam.solution.record import Column, Gauges, flows_at
+from coldseam.solution.refresh import Refresher
 from coldseam.solution.spaces import outside_range
 from coldseam.solution.stage import StageSolver
 from coldseam.solution.stepper import NoConvergence, State, Step, Stepper, channels, rates_at, weights_at
@@ -132,7 +133,7 @@ class Transient:
     refresh
         Called with the state before every step; returns a new system when coefficients have changed, else None.
     on_field
-        Called with time (s) and node temperatures (°C) at every time a field is asked for.
+        Called with time (s) and node temperatures (°C) at every time after 0 that a field is asked for.
     """
 
     def __init__(
@@ -141,7 +142,7 @@ class Transient:
         initial: State,
         *,
         phase=None,
-        refresh: Callable[[State], HeatSystem | None] | None = None,
+        refresh: Refresher | None = None,
         on_field: Callable[[float, np.ndarray], None] | None = None,
     ):
         self.system, self.phase, self.refresh, self.on_field = system, phase, refresh, on_field
@@ -169,8 +170,6 @@ class Transient:
         self.stops = [e.stop for e in system.case.event]
         for watch in self.watches:
             watch.begin(self.state)
-        if self.on_field is not None:
-            self.on_field(0.0, self.state.temperature)
 
     @property
     def time(self) -> float:
@@ -276,9 +275,15 @@ class Transient:
     def _refresh(self) -> None:
         changed = None if self.refresh is None else self.refresh(self.state)
         if changed is not None:
-            self.system = changed
-            self.solver = StageSolver(changed, self.tolerance)
-            self.stepper = Stepper(changed, self.solver, self.phase)
+            self.adopt(changed)
+
+    def adopt(self, system: HeatSystem) -> None:
+        """Go on with equations that have other coefficients."""
+        self.system = system
+        before, self.solver = self.solver, StageSolver(system, self.tolerance)
+        self.solver.factorisations, self.solver.solves = before.factorisations, before.solves
+        self.solver.iterations = before.iterations
+        self.stepper = Stepper(system, self.solver, self.phase)
 
     def _length(self, end: float) -> float:
         """Return the next step: a rung of the ladder, or an equal part of what is left before a bend."""
