@@ -72,9 +72,9 @@ def measure() -> list[Table]:
             head=("mesh", "nodes", f"heat flow of the {SIDE}, W", "off the refined one", "processor seconds"),
             rows=rows,
             remarks=(
-                f"By the two finest meshes one size everywhere is within 0.2 % after some {needed:,.0f} s (error falls as "
-                f"time to the -{power:.2f}): the proof takes {ratio:.2f} of that; goal ≤ {GOAL:g}: {verdict}. Circles have "
-                "96 segments in the meshes of one size; the error of the shape is in the refined run's answer.",
+                f"By the two finest meshes one size everywhere is within 0.2 % after some {needed:,.0f} s (error falls "
+                f"as time to the -{power:.2f}): the proof takes {ratio:.2f} of that; goal ≤ {GOAL:g}: {verdict}. "
+                "Circles have 96 segments in the meshes of one size; the error of the shape is in the refined run's answer.",
             ),
         )
     ]

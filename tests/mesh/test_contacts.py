@@ -2,7 +2,7 @@
 
 import numpy as np
 import pytest
-from grids import Model, bricks, mesh_of
+from brick_models import Model, bricks, mesh_of
 
 from coldseam.mesh.build import signed_measure
 from coldseam.mesh.contacts import interface_facets, open_contacts

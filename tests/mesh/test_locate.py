@@ -2,7 +2,7 @@
 
 import numpy as np
 import pytest
-from grids import Model, bricks, mesh_of
+from brick_models import Model, bricks, mesh_of
 
 from coldseam.mesh.locate import NEAREST, locate
 

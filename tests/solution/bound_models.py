@@ -12,7 +12,7 @@ from dataclasses import dataclass
 from math import inf, log, pi
 
 import numpy as np
-from grids import Model
+from brick_models import Model
 
 EDGE = 1.0 - 2.0 * log(2.0) / pi
 """Excess of a square edge over its plain walls (conformal mapping, 0.558729)."""

@@ -5,7 +5,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 from bound_models import INDEPENDENT, MODELS
-from grids import bricks, independent_flows, prove_on, solved_on
+from brick_models import bricks, independent_flows, prove_on, solved_on
 
 from coldseam.errors import SolveError
 from coldseam.solution import bounds as bounds_module

@@ -2,7 +2,7 @@
 
 import numpy as np
 import pytest
-from grids import Model, bricks, conditions_of, mesh_of
+from brick_models import Model, bricks, conditions_of, mesh_of
 
 from coldseam.errors import SolveError
 from coldseam.solution import linear

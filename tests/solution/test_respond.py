@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 from bound_models import MODELS
-from grids import bricks, solved_on
+from brick_models import bricks, solved_on
 
 from coldseam.solution.linear import MultigridSolver, node_hierarchy
 from coldseam.solution.respond import respond

@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 import skfem
-from grids import Model, bricks, conditions_of, mesh_of, prove_on
+from brick_models import Model, bricks, conditions_of, mesh_of, prove_on
 from skfem.helpers import dot, grad, mul
 
 from coldseam.volumes.facets import facet_system, find_facets

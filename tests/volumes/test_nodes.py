@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 import skfem
-from grids import Model, bricks, conditions_of, mesh_of
+from brick_models import Model, bricks, conditions_of, mesh_of
 
 from coldseam.mesh.measure import cell_measure, facet_measure
 from coldseam.solution.linear import DirectSolver

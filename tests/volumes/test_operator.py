@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 import skfem
-from grids import Model, bricks, mesh_of
+from brick_models import Model, bricks, mesh_of
 from skfem.helpers import dot, grad, mul
 
 from coldseam.volumes.operator import cell_pairs, cell_weights, edge_operator

@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 import skfem
-from grids import Model, bricks, mesh_of
+from brick_models import Model, bricks, mesh_of
 
 from coldseam.volumes.sheets import sheet_laplacian, sheet_moment, sheet_weights
 

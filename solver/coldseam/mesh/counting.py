@@ -48,8 +48,8 @@ def pair_order(first: np.ndarray, second: np.ndarray, n_keys: int, carried: np.n
     start
         Where each value of ``first`` begins, shape (n_keys + 1,).
 
-    >>> pair_order(np.array([1, 0, 1]), np.array([0, 2, 1]), 3, np.arange(3))
-    (array([1, 0, 2]), array([2, 0, 1], dtype=int32), array([0, 1, 3, 3], dtype=int32))
+    >>> [found.tolist() for found in pair_order(np.array([1, 0, 1]), np.array([0, 2, 1]), 3, np.arange(3))]
+    [[1, 0, 2], [2, 0, 1], [0, 1, 3, 3]]
     """
     pairs = sparse.coo_array((carried, (second, first)), shape=(n_keys, n_keys))
     pairs.has_canonical_format = True  # else tocsr would add up equal pairs
