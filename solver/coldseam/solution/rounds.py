@@ -337,7 +337,7 @@ def _reason_to_stop(case: Case, mesh: Mesh, rounds: list[Round], target: int) ->
         return f"a finer mesh would need some {target / per_node:,.0f} nodes, more than {limit} of {most:,}".replace(
             ",", " "
         )
-    if not room_for(target):
+    if not room_for(target, mesh.dim):
         return f"a finer mesh of some {target:,} cells would not fit in this computer's free memory".replace(",", " ")
     return ""
 
