@@ -171,6 +171,26 @@ def evaluate(
     return Coefficients(given=given, excess=excess, films=films, gaps=told, coupled=coupled)
 
 
+def facing_air(case: Case, given: Conditions, air: Mapping[str, float]) -> Conditions:
+    """Return the same conditions with the air's temperatures outside, and what comes from elsewhere as heat fluxes.
+
+    Parameters
+    ----------
+    case, given
+        The case, and conditions of it from :func:`evaluate`.
+    air
+        Temperature of every space, °C, by name.
+    """
+    flux, terminals = given.flux.copy(), list(given.terminals)
+    for number, terminal in enumerate(given.terminals):
+        space = case.boundary[terminal.boundaries[0]].space
+        if space is not None:
+            facets = (given.terminal == number) & (given.film > 0)
+            flux[facets] += given.film[facets] * (terminal.temperature - air[space])
+            terminals[number] = dataclasses.replace(terminal, temperature=air[space])
+    return dataclasses.replace(given, flux=flux, terminals=tuple(terminals))
+
+
 def _enclosed(case: Case, mesh: Mesh, facet_boundary: np.ndarray, model: CavityModel, temperature, into, base) -> None:
     """Write films, fluxes, outside temperatures and what is told of a cavity's boundaries into their places."""
     film, flux, temperatures, films = into

@@ -12,7 +12,7 @@ from dataclasses import replace
 
 import numpy as np
 
-from coldseam.solution.coefficients import depends, evaluate
+from coldseam.solution.coefficients import depends, evaluate, facing_air
 from coldseam.solution.enclosed import cavity_models
 from coldseam.solution.heatsystem import HeatSystem, held_for_structure, with_conditions
 from coldseam.solution.stepper import State
@@ -79,13 +79,7 @@ class Refresher:
         air = {name: spaces.temperature_of(name, state.y, state.time) for name in self.system.case.spaces}
         mesh, facet_boundary = self.system.mesh, self.system.facet_boundary
         found = evaluate(self.case, mesh, facet_boundary, self.base, field, air, self.cavities).given
-        flux = found.flux.copy()
-        for number, terminal in enumerate(found.terminals):
-            space = self.case.boundary[terminal.boundaries[0]].space
-            if space is not None:  # the rest of the way from the air to the temperature that the surface meets
-                facets = (found.terminal == number) & (found.film > 0)
-                flux[facets] += found.film[facets] * (terminal.temperature - air[space])
-        return replace(found, flux=flux, terminals=self.base.terminals)
+        return replace(facing_air(self.case, found, air), terminals=self.base.terminals)
 
 
 def moved(one: Conditions, other: Conditions) -> bool:

@@ -16,7 +16,7 @@ from coldseam.mesh.measure import cell_measure
 from coldseam.mesh.types import Mesh
 from coldseam.solution.balance import at_balance, floating_names, held_at_guess
 from coldseam.solution.bounds import Bounds
-from coldseam.solution.coefficients import depends
+from coldseam.solution.coefficients import depends, facing_air
 from coldseam.solution.nonlinear import Settled, settle
 from coldseam.solution.respond import Response, respond
 from coldseam.volumes.conditions import Conditions, body_mask, conditions
@@ -28,6 +28,8 @@ if TYPE_CHECKING:
     from coldseam.case.model import Case
 
 NODE_TOLERANCE = 1e-13
+MOST_BALANCES = 30
+BALANCED = 1e-4  # K
 CLOSURE_LIMIT = 1e-4
 """ISO 10211: the sum of the heat flows over half the sum of their absolute values."""
 
@@ -135,7 +137,10 @@ def solve_on(case: Case, mesh: Mesh, before: Steady | None = None) -> Steady:
     """
     facet_boundary = claim_facets(case, mesh)
     mesh = with_contacts(case, mesh)
-    floats, remarks = floating_names(case), ()
+    remarks: tuple[str, ...] = ()
+    if floating_names(case) and depends(case):
+        case, remarks = _at_balance_of_laws(case, mesh, facet_boundary)
+    floats = floating_names(case)
     given = conditions(held_at_guess(case) if floats else case, mesh, facet_boundary)
     operator, weights = node_operator(mesh, given)
     network = node_network(mesh, given, operator)
@@ -179,6 +184,30 @@ def solve_on(case: Case, mesh: Mesh, before: Steady | None = None) -> Steady:
             f"what passes through ({CLOSURE_LIMIT:.0e} is allowed, ISO 10211); the result is refused"
         )
     return result
+
+
+def _at_balance_of_laws(case: Case, mesh: Mesh, facet_boundary: np.ndarray) -> tuple[Case, tuple[str, ...]]:
+    """Return the case with floating spaces held where they balance, films and conductivities being those at the balance."""
+    found, remarks = held_at_guess(case), ()
+    field = None
+    for _ in range(MOST_BALANCES):
+        air = {name: space.temperature for name, space in found.spaces.items()}
+        given = conditions(found, mesh, facet_boundary)
+        operator, _ = node_operator(mesh, given)
+        require_temperatures(mesh, node_network(mesh, given, operator))
+        settled = settle(found, mesh, facet_boundary, given, operator, field)
+        field = settled.temperature
+        given = facing_air(found, settled.given, air)
+        response = respond(node_network(mesh, given, operator), mesh.dim, NODE_TOLERANCE, uneven=given.uneven)
+        found, _, remarks = at_balance(case, given, response)
+        moves = [abs(space.temperature - air[name]) for name, space in found.spaces.items()]
+        if max(moves) <= BALANCED:
+            return found, remarks
+    moving = list(found.spaces)[int(np.argmax(moves))]
+    raise SolveError(
+        f'the temperature of the floating space "{moving}" did not settle with the films that depend on it: it still moves '
+        f"by {max(moves):.2g} K after {MOST_BALANCES} rounds"
+    )
 
 
 def _from(before: Steady, mesh: Mesh):
