@@ -138,7 +138,7 @@ class Law(Table):
     ``value`` at the temperature ``at`` is converted by ``exp(per_kelvin (T - at))`` (ISO 10456).
     """
 
-    ONE_OF: ClassVar = (("table", "polynomial", "log_polynomial", "value"),)
+    ONE_OF: ClassVar[tuple[tuple[str, ...], ...]] = (("table", "polynomial", "log_polynomial", "value"),)
     polynomial: Coefficients | None = Field(
         None, description="coefficients over the temperature in °C, or see argument"
     )

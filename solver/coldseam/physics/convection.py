@@ -176,6 +176,7 @@ def _free(law: Convection, surface: float, outside: float, properties) -> Film:
 def _slender(pr: float, grashof: float, length: float, diameter: float | None) -> float:
     import ht
 
+    assert diameter is not None
     return ht.Nu_vertical_cylinder_Popiel_Churchill(pr, grashof, length, diameter)
 
 
@@ -242,10 +243,11 @@ def _forced(law: Convection, kind: str, surface: float, outside: float, properti
             correlation=name, valid=valid, temperature=at,
         )  # fmt: skip
     if kind == "tube bank":
-        along, across = law.pitch or (0.0, 0.0)
+        assert law.pitch is not None and law.rows is not None
+        (along, across), rows = law.pitch, law.rows
         name, valid = "Žukauskas 1987, tube bank (speed in the narrowest place)", (40.0, 1e6)
         return _made(
-            lambda re: ht.Nu_Zukauskas_Bejan(re, pr, law.rows, along, across), "Re", reynolds, length, p,
+            lambda re: ht.Nu_Zukauskas_Bejan(re, pr, rows, along, across), "Re", reynolds, length, p,
             correlation=name, valid=valid, temperature=at,
         )  # fmt: skip
     turbulent = reynolds >= DUCT_TRANSITION

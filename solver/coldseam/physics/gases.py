@@ -92,9 +92,8 @@ def conductivity(gas: Gas, temperature: np.ndarray) -> np.ndarray:
     0.0176
     """
     t = np.asarray(temperature, dtype=float) + KELVIN
-    if gas.monatomic:
-        per_mole = 3.75 * GAS_CONSTANT
-    else:
+    per_mole: float | np.ndarray = 3.75 * GAS_CONSTANT
+    if not gas.monatomic:
         per_mole = 1.15 * (gas.heat_capacity + gas.heat_slope * (t - 300.0) - GAS_CONSTANT) + 2.03 * GAS_CONSTANT
     return per_mole / (1e-3 * gas.molar_mass) * viscosity(gas, temperature)
 

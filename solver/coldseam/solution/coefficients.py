@@ -9,7 +9,8 @@ evaluated from a field, so that the linear network has this field's heat flows e
 - radiation: one film for each facet, ``h_r (t_r - t_s) = emissivity sigma (T_r^4 - T_s^4)``;
 - all that a boundary meets (air, surroundings, sky, sun) is one outside temperature t_e, with
   ``h (t_e - t_s) = h_c (t_air - t_s) + h_r (t_r - t_s) + absorbed sun``. Where it differs from facet to facet, because
-  h_r does, t_e is the mean and a heat flux makes up the rest.
+  h_r does, t_e is the mean and a heat flux makes up the rest. The mean is weighted by h, so these fluxes add up to
+  nothing over a boundary, and its heat flow is read from its film alone.
 
 ``excess`` is by how much ``-dq/dt_s`` is above the secant film: with it added, the iteration of solution/nonlinear.py
 is Newton's at the boundaries. The mean surface temperature is treated there as if it were each facet's own,
@@ -145,7 +146,7 @@ def evaluate(
     for number, boundary in enumerate(case.boundary):
         found = None if boundary.space is None else exchange(case.spaces[boundary.space], boundary)
         facets = np.flatnonzero(facet_boundary == number)
-        if found is None or not found.depends or not len(facets):
+        if found is None or boundary.space is None or not found.depends or not len(facets):
             continue
         part = _surface(case, mesh, boundary, found, facets, temperature, air[boundary.space])
         film[facets], excess[facets] = part.film, part.excess
@@ -286,7 +287,7 @@ def _surface(
     surface = (shares * temperature[mesh.facets[facets]]).sum(axis=1) / area
     mean = float(area @ surface / area.sum())
     h, excess, used = _convective(case, found, mean, air)
-    driven, total = h * air, np.full(len(facets), h)
+    driven, total = np.full(len(facets), h * air), np.full(len(facets), h)
     excess_all = np.full(len(facets), excess)
     radiant = air
     if found.radiation is not None:
@@ -399,10 +400,10 @@ def range_remarks(case: Case, mesh: Mesh, temperature: np.ndarray, films: dict[s
     for name, used in films.items():
         found = used["convection"]
         if not found.get("in_range", True):
-            number = "Ra" if "Ra" in found else "Re"
+            symbol = "Ra" if "Ra" in found else "Re"
             low, high = found["valid"]
             told.append(
-                f'boundary "{name}": {number} = {found[number]:.3g} or a part of the film is outside the range of '
+                f'boundary "{name}": {symbol} = {found[symbol]:.3g} or a part of the film is outside the range of '
                 f'"{found["correlation"]}", {low:.3g} to {high:.3g}; the film coefficient of {found["film"]:.3g} '
                 "W/(m²·K) is an extrapolation"
             )

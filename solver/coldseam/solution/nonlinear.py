@@ -221,6 +221,7 @@ class _Stepper:
 
     def _solver(self, matrix: sparse.csr_array):
         """Return the function that solves with a matrix of the free nodes."""
+        solver: DirectSolver | MultigridSolver
         if matrix.shape[0] <= DIRECT_LIMIT[self.mesh.dim]:
             solver = DirectSolver(matrix)
         else:

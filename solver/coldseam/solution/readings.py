@@ -7,7 +7,6 @@ from dataclasses import dataclass
 import numpy as np
 
 from coldseam.mesh.build import signed_measure
-from coldseam.mesh.measure import facet_measure
 from coldseam.mesh.types import Mesh
 from coldseam.solution.nonlinear import REASON
 from coldseam.solution.steady import Steady
@@ -134,21 +133,7 @@ def _unit(n: int, entries: list[int]) -> np.ndarray:
 
 def _interval(steady: Steady, terminals: list[int], value: float) -> Interval:
     reading = _unit(len(steady.state), terminals)
-    beside = flux_beside(steady, terminals)
-    found = _bounded(steady, reading, steady.state, value - beside, list(range(len(steady.given.terminals))))
-    if beside == 0.0:
-        return found
-    low, high = (None if end is None else end + beside for end in (found.low, found.high))
-    return Interval(value=found.value + beside, low=low, high=high, kind=found.kind, reason=found.reason)
-
-
-def flux_beside(steady: Steady, terminals: list[int]) -> float:
-    """Return the heat that enters by a flux through faces which have a film too, W (2D: W/m): known, not solved for."""
-    given = steady.given
-    if not np.any(given.flux):
-        return 0.0
-    faces = np.isin(given.terminal, terminals) & (given.film > 0)
-    return float(given.flux[faces] @ facet_measure(steady.mesh)[faces])
+    return _bounded(steady, reading, steady.state, value, list(range(len(steady.given.terminals))))
 
 
 def _bounded(steady: Steady, reading, state, value: float, involved: list[int]) -> Interval:
