@@ -9,6 +9,7 @@ import pytest
 from scipy.linalg import expm
 from solution.grids import first_state, grid, run_on, slab_text, stepping
 
+from coldseam.solution import stage
 from coldseam.solution.heatsystem import with_conditions
 
 LINE = (np.linspace(0.0, 1.0, 81), np.linspace(0.0, 0.1, 3))
@@ -229,3 +230,28 @@ def test_coefficients_may_follow_the_temperature():
     expected = run_on(mesh, slab_text(film=1, k=2, tolerance=1e-3))
     assert changed.column("probe", "centre") == pytest.approx(expected.column("probe", "centre"), abs=2e-3)
     assert changed.relative_closure < 1e-10
+
+
+def test_multigrid_stages_give_what_factors_give(monkeypatch):
+    """In three dimensions, with a floating space: the same history from either solver, and a closed balance."""
+    text = slab_text(film=2, duration=0.5, record=0.1, tolerance=1e-3).replace("dimensions = 2", "dimensions = 3")
+    for flat, solid in (
+        ("[0, 0], to = [1000, 100]", "[0, 0, 0], to = [1000, 1000, 1000]"),
+        ("at = [0, 50.0]", "at = [0, 500, 500]"),
+        ("at = [1000, 50.0]", "at = [1000, 500, 500]"),
+    ):
+        text = text.replace(flat, solid)
+    text = text.replace("temperature = 0\n", "floating = { start = 0, heat_capacity = 0.4, gain = 0.1 }\n")
+    text = text.replace("[materials", "[spaces.far]\ntemperature = 0\nfilm = 1\n[materials")
+    text = text.replace('[[boundary]]\nname = "rest"', FAR + '[[boundary]]\nname = "rest"')
+    mesh = grid(*(np.linspace(0, 1, 8),) * 3)
+    direct = run_on(mesh, text)
+    monkeypatch.setattr(stage, "DIRECT_LIMIT", {2: 10, 3: 10})
+    iterative = run_on(mesh, text)
+    assert "multigrid" in iterative.solver["method"] and "multigrid" not in direct.solver["method"]
+    assert iterative.rows[:, :4] == pytest.approx(direct.rows[:, :4], abs=1e-6)
+    assert iterative.relative_closure < 1e-6
+    assert iterative.solver["iterations"] < 12 * iterative.solver["solves"]
+
+
+FAR = '[[boundary]]\nname = "far"\non = { plane = { x = 0 } }\nspace = "far"\n'
