@@ -6,7 +6,12 @@ from scipy.optimize import brentq
 
 from coldseam.case.read import loads, replace
 from coldseam.errors import CaseError
+from coldseam.geometry.mesher import open_geometry
 from coldseam.physics import cavities, iso6946
+from coldseam.solution.heatsystem import heat_system
+from coldseam.solution.refresh import refresher
+from coldseam.solution.starting import starting_state
+from coldseam.solution.transient import Transient
 
 SIGMA = 5.670374419e-8
 
@@ -214,6 +219,20 @@ def test_an_open_cavity_is_refused_and_can_be_given_its_surroundings():
     wall = found.settled.films["walls"]
     surface = wall["surface_temperature"] + 273.15
     assert wall["radiation"]["heat_flow"] == pytest.approx(0.6 * 0.9 * SIGMA * (243.15**4 - surface**4), rel=1e-3)
+
+
+def test_a_cavity_over_time_ends_at_its_steady_state():
+    """Walls of a hollow at 5 °C at first: after many times its time constant the flows are those of the steady case."""
+    text = HOLLOW.replace("emissivity = 0.9\n", "emissivity = 0.9\ndensity = 1000\nspecific_heat = 1000\n")
+    timed = loads(text.replace("[spaces.a]", '[time]\nduration = "6 h"\nstart = 5\n[spaces.a]'))
+    steady = on_mesh(loads(text), 1500)
+    with open_geometry(timed) as mesher:
+        system = heat_system(timed, mesher.mesh(None, 1500))
+    run = Transient(system, starting_state(system), refresh=refresher(system))
+    while run.status == "running":
+        run.step()
+    final = run.result().final.temperature
+    assert final == pytest.approx(steady.temperature, abs=0.05)
 
 
 @pytest.mark.parametrize(

@@ -32,7 +32,7 @@ from coldseam.mesh.types import Mesh
 from coldseam.physics import convection, fluids, laws, radiation
 from coldseam.solution.enclosed import CavityModel, cavity_models
 from coldseam.solution.gaps import Gaps, air_gaps
-from coldseam.volumes.conditions import Conditions, conditions
+from coldseam.volumes.conditions import Conditions, Terminal, conditions
 from coldseam.volumes.operator import cell_pairs
 from coldseam.volumes.section import facet_shares
 
@@ -172,7 +172,9 @@ def evaluate(
     return Coefficients(given=given, excess=excess, films=films, gaps=told, coupled=coupled)
 
 
-def facing_air(case: Case, given: Conditions, air: Mapping[str, float]) -> Conditions:
+def facing_air(
+    case: Case, given: Conditions, air: Mapping[str, float], cavities: tuple[Terminal, ...] | None = None
+) -> Conditions:
     """Return the same conditions with the air's temperatures outside, and what comes from elsewhere as heat fluxes.
 
     Parameters
@@ -181,14 +183,21 @@ def facing_air(case: Case, given: Conditions, air: Mapping[str, float]) -> Condi
         The case, and conditions of it from :func:`evaluate`.
     air
         Temperature of every space, °C, by name.
+    cavities
+        Terminals whose temperatures the walls of cavities are to meet, as the air's; None leaves them.
     """
     flux, terminals = given.flux.copy(), list(given.terminals)
     for number, terminal in enumerate(given.terminals):
-        space = case.boundary[terminal.boundaries[0]].space
-        if space is not None:
-            facets = (given.terminal == number) & (given.film > 0)
-            flux[facets] += given.film[facets] * (terminal.temperature - air[space])
-            terminals[number] = dataclasses.replace(terminal, temperature=air[space])
+        boundary = case.boundary[terminal.boundaries[0]]
+        if boundary.space is not None:
+            known = air[boundary.space]
+        elif boundary.cavity is not None and cavities is not None:
+            known = cavities[number].temperature
+        else:
+            continue
+        facets = (given.terminal == number) & (given.film > 0)
+        flux[facets] += given.film[facets] * (terminal.temperature - known)
+        terminals[number] = dataclasses.replace(terminal, temperature=known)
     return dataclasses.replace(given, flux=flux, terminals=tuple(terminals))
 
 

@@ -251,7 +251,12 @@ def _courses(case: Case, given: Conditions) -> tuple[float | Schedule | None, ..
                 "so the flow between them has no limit; give them films"
             )
             raise CaseError([Fault(path=("boundary", given.terminals[first].boundaries[0]), what=what)])
-    return tuple(_course(case, case.boundary[terminal.boundaries[0]]) for terminal in given.terminals)
+    # What a cavity's wall meets has no course of its own: a flux beside the film makes up for it (solution/refresh.py).
+    return tuple(
+        terminal.temperature if boundary.cavity is not None else _course(case, boundary)
+        for terminal in given.terminals
+        for boundary in (case.boundary[terminal.boundaries[0]],)
+    )
 
 
 def _behind(case: Case, given: Conditions, spaces: Spaces) -> np.ndarray:

@@ -79,7 +79,7 @@ class Refresher:
         air = {name: spaces.temperature_of(name, state.y, state.time) for name in self.system.case.spaces}
         mesh, facet_boundary = self.system.mesh, self.system.facet_boundary
         found = evaluate(self.case, mesh, facet_boundary, self.base, field, air, self.cavities).given
-        return replace(facing_air(self.case, found, air), terminals=self.base.terminals)
+        return replace(facing_air(self.case, found, air, self.base.terminals), terminals=self.base.terminals)
 
 
 def moved(one: Conditions, other: Conditions) -> bool:
