@@ -1,6 +1,6 @@
 """ISO 10211 case 3 by its coupling table and weighting factors, case 4 again as a point bridge.
 
-Case files of tests/published, on meshes small enough for every day; the published values and their limits as there.
+Case files of tests/published, case 4 on a mesh small enough for every day; published values and their limits as there.
 """
 
 from __future__ import annotations
@@ -30,7 +30,7 @@ def small(stem: str, most_nodes: int, **keys):
 
 @pytest.fixture(scope="module")
 def three():
-    return small("iso10211-case-3", 40_000)
+    return runs.result_of("iso10211-case-3")
 
 
 def test_case_3_coupling(three):

@@ -61,7 +61,10 @@ class Refresher:
         return kept | {"before": np.append(self.before.time, self.before.temperature)}
 
     def recall(self, kept: dict[str, np.ndarray]) -> HeatSystem | None:
-        """Return the equations that :meth:`memory` was taken with, and go on from there; None if it was empty."""
+        """Return the equations that :meth:`memory` (arrays by name, such as film, W/(m² K), (n_facets,)) was taken with.
+
+        None where it was empty.
+        """
         if not kept:
             return None
         empty = np.zeros(0)
