@@ -187,6 +187,8 @@ def _at(options: argparse.Namespace) -> int:
     if wrong:
         raise CaseError([Fault(path=(), what=f"{text!r} is not of the form SPACE=TEMPERATURE") for text in wrong])
     temperatures = {name.strip(): _number(value.strip()) for name, _, value in pairs}
+    if case.time is not None:
+        raise CaseError([Fault(path=("time",), what="answers are superposed for steady cases only")], case.source.place)
     at_temperatures(case, temperatures)  # before the work, not after it
     folder = None if options.out is None else prepare_folder(options.out)
     with _log(options) as log:

@@ -24,7 +24,7 @@ from coldseam.report.view import View, model_view
 from coldseam.solution import checkpoint
 from coldseam.solution.heatsystem import HeatSystem, heat_system
 from coldseam.solution.refresh import refresher
-from coldseam.solution.starting import FINAL, save_final, starting_state
+from coldseam.solution.starting import FINAL, machine_outlook, save_final, starting_state
 from coldseam.solution.timeconstants import time_constants
 from coldseam.solution.timemesh import mesh_over_time
 from coldseam.solution.transient import History, Transient
@@ -141,7 +141,8 @@ def run_over_time(case: Case, log: Log, *, folder: Path | None = None, resume: b
         fields(0.0, transient.state.temperature)
     _go(transient, log, folder, fields)
     history = transient.result()
-    answers = timed_answers(history, facts["mesh"], facts["remarks"], {"time_constants": time_constants(system)})
+    remarks = [*facts["remarks"], *machine_outlook(history.system)]
+    answers = timed_answers(history, facts["mesh"], remarks, {"time_constants": time_constants(system)})
     return TimedResult(case=case, answers=answers, history=history)
 
 

@@ -121,6 +121,7 @@ def bounds_of(mesh: Mesh, given: Conditions, system: FacetSystem, nodes: Respons
 
 
 def facet_solver(system: FacetSystem, nodes: Response, dim: int, uneven: bool):
+    """Return a solver of the facet system's free sites: direct when small, else on top of the nodes' hierarchy."""
     free = system.network.free
     matrix = system.network.free_matrix
     if matrix.shape[0] <= 2 * DIRECT_LIMIT[dim]:

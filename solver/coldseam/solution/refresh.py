@@ -12,7 +12,8 @@ from dataclasses import replace
 
 import numpy as np
 
-from coldseam.solution.coefficients import depends, evaluate, facing_air
+from coldseam.errors import CaseError, Fault
+from coldseam.solution.coefficients import SAME, depends, evaluate, facing_air
 from coldseam.solution.enclosed import cavity_models
 from coldseam.solution.heatsystem import HeatSystem, held_for_structure, with_conditions
 from coldseam.solution.stepper import State
@@ -82,7 +83,16 @@ class Refresher:
         air = {name: spaces.temperature_of(name, state.y, state.time) for name in self.system.case.spaces}
         mesh, facet_boundary = self.system.mesh, self.system.facet_boundary
         found = evaluate(self.case, mesh, facet_boundary, self.base, field, air, self.cavities).given
+        self._require_air(found, air)
         return replace(facing_air(self.case, found, air, self.base.terminals), terminals=self.base.terminals)
+
+    def _require_air(self, found: Conditions, air: dict[str, float]) -> None:
+        """Raise a CaseError where a floating space's surfaces meet more than its air: its balance would not know of it."""
+        for terminal in found.terminals:
+            space = self.case.boundary[terminal.boundaries[0]].space
+            if space in self.system.spaces.names and abs(terminal.temperature - air[space]) > SAME:
+                what = "surfaces of a floating space exchange heat with its air only; take surroundings and sun out"
+                raise CaseError([Fault(path=("spaces", space), what=what)])
 
 
 def moved(one: Conditions, other: Conditions) -> bool:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -10,23 +11,27 @@ from scipy.spatial import cKDTree
 
 from coldseam.case.overtime import held
 from coldseam.case.schedules import value_at
-from coldseam.errors import CaseError, Fault
+from coldseam.errors import CaseError, Fault, SolveError
 from coldseam.mesh.types import Mesh
-from coldseam.solution.balance import balance, guess
+from coldseam.solution.balance import balance, guess, machine_remarks
 from coldseam.solution.heatsystem import HeatSystem
-from coldseam.solution.respond import respond
+from coldseam.solution.nonlinear import settle
+from coldseam.solution.refresh import refresher
+from coldseam.solution.respond import Response, respond
 from coldseam.solution.spaces import outside_range
 from coldseam.solution.steady import NODE_TOLERANCE
 from coldseam.solution.stepper import State
+from coldseam.volumes.conditions import conditions
 
 if TYPE_CHECKING:
     from coldseam.case.model import Case
 
 FINAL = "final_state.npz"
+MOST_REPEATS, SETTLED = 40, 1e-3  # K
 
 
 def starting_state(system: HeatSystem) -> State:
-    """Return the state at time 0.
+    """Return the state at time 0; coefficients of a steady start are those of its own temperatures.
 
     Raises
     ------
@@ -35,7 +40,7 @@ def starting_state(system: HeatSystem) -> State:
     """
     start = system.case.time.start
     if start == "steady":
-        return _steady(system)
+        return _settled(system)
     if isinstance(start, Path):
         return _continued(system, start / FINAL)
     if isinstance(start, dict):
@@ -78,19 +83,67 @@ def _by_body(system: HeatSystem, table: dict[str, float]) -> np.ndarray:
     return node_shares_of_cells(mesh, heat * np.array(values)[mesh.cell_body]) / node_shares_of_cells(mesh, heat)
 
 
+def _settled(system: HeatSystem) -> State:
+    """Return the steady state at time 0, its coefficients those of its own temperatures.
+
+    With the spaces held the field is settled as that of a steady case; then their balance moves them, by turns.
+    """
+    refresh = refresher(system)
+    if refresh is None:
+        return _steady(system)
+    y, field = _guessed(system), None
+    for _ in range(MOST_REPEATS):
+        case = held_at_start(system.case, dict(zip(system.spaces.names, y.tolist(), strict=False)))
+        base = conditions(case, system.mesh, system.facet_boundary)
+        field = settle(case, system.mesh, system.facet_boundary, base, system.operator, field).temperature
+        system = refresh(State(time=0.0, temperature=field, y=y, running=_none_running(system))) or system
+        state = _steady(system)
+        if np.max(np.abs(state.y - y), initial=0.0) < SETTLED:
+            return state
+        y = state.y
+    raise SolveError("the steady start did not settle: floating spaces and coefficients kept changing each other")
+
+
+def _guessed(system: HeatSystem) -> np.ndarray:
+    held_spaces = held_at_start(system.case).spaces
+    rooms = [held_spaces[name].temperature for name in system.spaces.names]
+    return np.array([*rooms, *(rooms[s] for s, _ in system.spaces.goods)], dtype=float)
+
+
 def _steady(system: HeatSystem) -> State:
     """Return the steady state of the conditions at time 0, machines running as much as they must."""
     network, spaces = system.network, system.spaces
-    response = respond(network, system.mesh.dim, NODE_TOLERANCE)
-    courses = system.terminal_course
-    outside = np.array([0.0 if course is None else value_at(course, 0.0) for course in courses])
-    rooms = [system.case.boundary[terminal.boundaries[0]].space for terminal in system.given.terminals]
-    behind = np.array([spaces.names.index(name) if name in spaces.names else -1 for name in rooms])
+    response, outside, behind = _response(system)
     y = balance(spaces, network.energy(response.fields), behind, outside).y if spaces.n else np.zeros(0)
     terminals = np.where(behind >= 0, y[np.maximum(behind, 0)], outside) if spaces.n else outside
     reference = 0.5 * float(terminals.min() + terminals.max())
     state = np.append(terminals - reference, [1.0] * network.has_load)
     return State(time=0.0, temperature=response.fields @ state + reference, y=y, running=_none_running(system))
+
+
+def _response(system: HeatSystem) -> tuple[Response, np.ndarray, np.ndarray]:
+    """Return unit fields, temperature of every terminal at time 0 (°C) and the floating space behind it (-1: none)."""
+    response = respond(system.network, system.mesh.dim, NODE_TOLERANCE)
+    outside = np.array([0.0 if course is None else value_at(course, 0.0) for course in system.terminal_course])
+    names = system.spaces.names
+    rooms = [system.case.boundary[terminal.boundaries[0]].space for terminal in system.given.terminals]
+    return response, outside, np.array([names.index(name) if name in names else -1 for name in rooms])
+
+
+def machine_outlook(system: HeatSystem) -> tuple[str, ...]:
+    """Return a sentence for every machine that could never hold its setpoint in the conditions of time 0.
+
+    Parameters
+    ----------
+    system
+        The equations, temperatures in °C; machines that are not fully available then are passed over.
+    """
+    coolings = [system.spaces.floating(s).cooling for s in range(len(system.spaces.names))]
+    if not any(coolings) or any(c is not None and value_at(c.available, 0.0) < 1.0 for c in coolings):
+        return ()
+    response, outside, behind = _response(system)
+    found = balance(system.spaces, system.network.energy(response.fields), behind, outside)
+    return machine_remarks(system.spaces, found, " in the conditions of the start")
 
 
 def save_final(path: Path, system: HeatSystem, state: State) -> None:
@@ -139,12 +192,12 @@ def _interpolated(points: np.ndarray, temperature: np.ndarray, mesh: Mesh) -> np
     return (temperature[near] * weight).sum(axis=1) / weight.sum(axis=1)
 
 
-def held_at_start(case: Case) -> Case:
-    """Return a steady case at the conditions of time 0, floating spaces at a guess."""
+def held_at_start(case: Case, floating: Mapping[str, float] | None = None) -> Case:
+    """Return a steady case at the conditions of time 0, floating spaces (°C, by name) as given or at a guess."""
     middle = 0.5 * sum(outside_range(case))
     spaces = {
         n: guess(case, n, middle) if s.temperature is None else value_at(s.temperature, 0.0)
         for n, s in case.spaces.items()
     }
     surfaces = {n: value_at(b.temperature, 0.0) for n, b in enumerate(case.boundary) if b.temperature is not None}
-    return held(case, spaces, surfaces)
+    return held(case, spaces | dict(floating or {}), surfaces)
