@@ -1,7 +1,7 @@
 """A mesh with fewer cells for the viewer of a report.
 
-Nodes are merged into a neighbour (half-edge collapse), many at once: in every round those that are smoothest in
-temperature among all nodes that they share a cell with. A merge is made only if every cell it changes keeps a part of its
+Nodes are merged into a neighbour (half-edge collapse), many at once: in every round from among those round which the
+temperature is smoothest, no two in one cell. A merge is made only if every cell it changes keeps a part of its
 volume and the volume of all of them together stays what it was, and a node on a face between bodies or on a
 boundary goes only to a node on all of its planes. So no part changes its shape, no name is lost, and what was a tiling stays one.
 The temperatures kept are those solved; the largest difference at the nodes left out is measured and told.
@@ -21,7 +21,7 @@ MOST_ROUNDS = 40
 LEAST_GAIN = 0.01
 """Part of the cells that a round must save; after ``PATIENCE`` rounds that save less no more follow."""
 PATIENCE = 3
-SMOOTHEST = 0.6
+SMOOTHEST = 0.4
 """Part of the nodes that could be merged, the smoothest in temperature, that one round considers."""
 KEEPS = 0.05
 """Part of its volume that a changed cell must keep."""
@@ -111,8 +111,9 @@ def _merge(thin: Thinned, temperature: np.ndarray, fixed: np.ndarray, surplus: i
     nodes = np.flatnonzero(_stays_valid(cells, points, target))
     rough = _roughness(cells, points, temperature, target)[nodes]
     smooth = rough <= np.quantile(rough, SMOOTHEST) if len(nodes) else np.zeros(0, dtype=bool)
-    nodes, rough = nodes[smooth], rough[smooth]
-    rank[nodes[np.lexsort((nodes, rough))]] = np.arange(len(nodes))
+    nodes = nodes[smooth]
+    # Ranked by chance, always the same: ranked by roughness, which varies evenly, few nodes would be first of all round them.
+    rank[nodes] = np.random.default_rng(turn).permutation(len(nodes))
     chosen = _apart(cells, rank, len(points)) & (rank < np.iinfo(np.int64).max)
     nodes = np.flatnonzero(chosen)
     nodes = nodes[np.argsort(rank[nodes])][: max(1, surplus // 4)]  # a merge saves some five cells
@@ -254,7 +255,7 @@ def _difference(points, cells, temperature, places, solved) -> float:
     tree = cKDTree(corner.mean(axis=1))
     matrix = np.linalg.inv(np.swapaxes(corner[:, 1:] - corner[:, :1], 1, 2))
     worst, left = 0.0, np.arange(len(places))
-    for near in NEAR:
+    for near in NEAR if len(places) else ():
         missed = []
         for part in np.array_split(left, max(1, len(left) * near // 400_000)):
             weight, cell = _inside(tree, corner, matrix, places[part], min(near, len(cells)))
@@ -265,6 +266,8 @@ def _difference(points, cells, temperature, places, solved) -> float:
             found = (weight / weight.sum(axis=1, keepdims=True) * temperature[cells[cell]]).sum(axis=1)
             worst = max(worst, float(np.abs(found - solved[part])[counts].max(initial=0.0)))
         left = np.concatenate(missed)
+        if not len(left):
+            break
     return worst
 
 
