@@ -64,7 +64,7 @@ class Thinned:
 def thinned(view: View, most: int = MOST_CELLS) -> Thinned:
     """Return the mesh of a result with about ``most`` cells, or as few as its faces permit."""
     mesh = view.mesh
-    flux = np.linalg.norm(view.cell_flux, axis=1)
+    flux = np.zeros(mesh.n_cells) if view.cell_flux is None else np.linalg.norm(view.cell_flux, axis=1)
     thin = Thinned(
         node=np.arange(mesh.n_nodes), points=mesh.points, cells=mesh.cells, body=mesh.cell_body, flux=flux,
         facets=mesh.facets, facet_cell=mesh.facet_cell, facet_boundary=view.facet_boundary, whole=mesh.n_cells,
