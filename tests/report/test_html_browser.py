@@ -11,6 +11,8 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from coldseam.mesh.locate import locate
+
 sync_api = pytest.importorskip("playwright.sync_api", reason="playwright comes with scripts/setup (the test extra)")
 CHROMIUM = os.environ.get("CHROMIUM") or shutil.which("chromium") or shutil.which("chromium-browser")
 if CHROMIUM is None:
@@ -49,6 +51,13 @@ def made(request, view, tmp_path_factory):
     model = view(request.param)
     title = "Wall <b>of</b> " + "unbroken" * 40 if request.param == "square" else "A wall"
     return model, reports.report(model, tmp_path_factory.mktemp(request.param), title=title)
+
+
+@pytest.fixture(scope="module")
+def opened(browser, made):
+    """The report, open and drawn; starting to draw takes seconds, so the tests of one report share it."""
+    with Opened(browser, made[1]).drawn() as page:
+        yield page
 
 
 class Opened:
@@ -103,30 +112,38 @@ def temperature_told(words: str) -> float:
     return float(words.split(" ")[0])
 
 
+def field_at(model, told: np.ndarray, temperature: float) -> float:
+    """Return the solved temperature at a place that was told, mm."""
+    if model.mesh.dim == 3:
+        return temperature  # the warm face is so even that a pixel makes no difference
+    cells, weights = locate(model.mesh, told[None] * 1e-3)
+    return float((model.temperature[model.mesh.cells[cells]] * weights).sum())
+
+
 def visible_places(model) -> list[tuple[np.ndarray, float]]:
     """Return a few places that the first view shows, mm, with their temperature: middles of facets or cells."""
     mesh = model.mesh
     if mesh.dim == 2:
-        rows = mesh.cells[:: max(1, len(mesh.cells) // 7)]
+        rows = mesh.cells[:: max(1, len(mesh.cells) // 5)]
     else:
         middle = mesh.points[mesh.facets].mean(axis=1)
         rows = mesh.facets[middle[:, 2] > mesh.points[:, 2].max() - 1e-9]
-        rows = rows[:: max(1, len(rows) // 7)]
+        rows = rows[:: max(1, len(rows) // 5)]
     return [(mesh.points[row].mean(axis=0) * 1e3, float(model.temperature[row].mean())) for row in rows]
 
 
-def test_the_view_is_drawn_and_reads_the_solved_temperature(browser, made):
-    model, path = made
-    with Opened(browser, path).drawn() as opened:
-        seen = opened.pixels()
-        assert len(np.unique(seen.reshape(-1, 3), axis=0)) > 50
-        assert (seen.sum(axis=2) < 700).mean() > 0.02
-        for place, temperature in visible_places(model):
-            words = opened.read_at(place)
-            # 0.05 K: what the issue asks; half a pixel of a steep gradient is allowed for on top.
-            steep = np.abs(model.temperature).max() if model.mesh.dim == 2 else 0.0
-            assert temperature_told(words) == pytest.approx(temperature, abs=0.05 + 0.01 * steep)
-        assert opened.quiet(), (opened.asked, opened.wrong)
+def test_the_view_is_drawn_and_reads_the_solved_temperature(made, opened):
+    model = made[0]
+    seen = opened.pixels()
+    assert len(np.unique(seen.reshape(-1, 3), axis=0)) > 50
+    assert (seen.sum(axis=2) < 700).mean() > 0.02
+    for place, temperature in visible_places(model):
+        words = opened.read_at(place)
+        told = np.array([float(x) for x in words.split("(")[1].split(")")[0].split(",")])
+        # A pixel is some half millimetre wide, over which the pipe's temperature varies: the place told decides.
+        assert np.abs(told - place).max() < 2.0
+        assert temperature_told(words) == pytest.approx(field_at(model, told, temperature), abs=0.05)
+    assert opened.quiet(), (opened.asked, opened.wrong)
 
 
 def test_the_cut_moves_and_shows_the_field_inside(browser, view, tmp_path):
@@ -142,8 +159,6 @@ def test_the_cut_moves_and_shows_the_field_inside(browser, view, tmp_path):
         assert all((np.abs(a - b).sum(axis=2) > 30).mean() > 0.01 for a, b in ((whole, pictures[0]), pictures))
         level = 0.620 * np.ptp(model.mesh.points[:, 1])
         told = [opened.read_at((x, 1e3 * level, z)) for x in (60, 110, 260) for z in (30, 55)]
-        from coldseam.mesh.locate import locate
-
         at = np.array([(x, 1e3 * level, z) for x in (60, 110, 260) for z in (30, 55)]) * 1e-3
         cells, weights = locate(model.mesh, at)
         solved = (model.temperature[model.mesh.cells[cells]] * weights).sum(axis=1)
@@ -177,50 +192,50 @@ def test_every_field_can_be_shown_and_keys_work(browser, view, tmp_path):
 
 
 @pytest.mark.parametrize("width", WIDTHS)
-def test_nothing_overflows(browser, made, width):
-    with Opened(browser, made[1], width).drawn() as opened:
-        inside = opened.page.evaluate(
-            """() => [...document.querySelectorAll("body *")].filter((e) => {
-                 const box = e.getBoundingClientRect();
-                 return box.width && box.height > 1 && box.right > innerWidth + 1 && !e.closest("thead");
-               }).map((e) => e.tagName + " " + e.textContent.slice(0, 40))"""
-        )
-        assert inside == []
-        assert opened.page.evaluate("document.documentElement.scrollWidth") <= width
+def test_nothing_overflows(opened, width):
+    opened.page.set_viewport_size({"width": width, "height": 900})
+    outside = opened.page.evaluate(
+        """() => [...document.querySelectorAll("body *")].filter((e) => {
+             const box = e.getBoundingClientRect();
+             return box.width && box.height > 1 && box.right > innerWidth + 1 && !(innerWidth < 700 && e.closest("thead"));
+           }).map((e) => e.tagName + " " + e.textContent.slice(0, 40))"""
+    )
+    assert outside == []
+    assert opened.page.evaluate("document.documentElement.scrollWidth") <= width
 
 
 def test_the_still_picture_shows_without_scripts(browser, made):
     with Opened(browser, made[1], scripts=False) as opened:
         assert opened.page.locator("#view img").is_visible()
         assert not opened.page.locator("#view canvas").is_visible()
-        assert opened.page.evaluate is not None and opened.asked == [made[1].as_uri()]
+        assert opened.asked == [made[1].as_uri()]
 
 
-def test_paper_holds_every_table(browser, made):
+def test_paper_holds_every_table(opened):
+    opened.page.emulate_media(media="print")
     for paper, width in (("A4", 210 - 28), ("Letter", 215.9 - 28)):
         pixels = int(width / 25.4 * 96)
-        with Opened(browser, made[1], pixels).drawn() as opened:
-            opened.page.emulate_media(media="print")
-            cut = opened.page.evaluate(
-                "(wide) => [...document.querySelectorAll('table, pre, img')].filter((e) => "
-                "e.getBoundingClientRect().right > wide + 1).map((e) => e.textContent.slice(0, 40))",
-                pixels,
-            )
-            assert cut == []
-            assert opened.page.locator("#view img").is_visible() and not opened.page.locator("#view canvas").is_visible()
-            assert opened.page.pdf(format=paper)[:5] == b"%PDF-"
+        opened.page.set_viewport_size({"width": pixels, "height": 900})
+        cut = opened.page.evaluate(
+            "(wide) => [...document.querySelectorAll('table, pre, img')].filter((e) => "
+            "e.getBoundingClientRect().right > wide + 1).map((e) => e.textContent.slice(0, 40))",
+            pixels,
+        )
+        assert cut == []
+        assert opened.page.locator("#view img").is_visible() and not opened.page.locator("#view canvas").is_visible()
+        assert opened.page.pdf(format=paper)[:5] == b"%PDF-"
+    opened.page.emulate_media(media="screen")
 
 
 def test_no_serious_barriers(browser, made):
-    axe = pytest.importorskip("axe_playwright_python.sync_playwright", reason="axe comes with scripts/setup (the test extra)")
-    with Opened(browser, made[1]).drawn() as opened:
-        # The checker is injected as a script, which the page's own policy rightly refuses: it is lifted for this test alone.
-        context = browser.new_context(bypass_csp=True)
-        page = context.new_page()
-        page.goto(made[1].as_uri())
-        page.wait_for_selector("#view canvas[data-drawn=yes]")
-        found = axe.Axe().run(page).response["violations"]
-        context.close()
+    axe = pytest.importorskip("axe_playwright_python.sync_playwright", reason="axe: the test extra")
+    # The checker is injected as a script, which the page's own policy rightly refuses: it is lifted for this test alone.
+    context = browser.new_context(bypass_csp=True)
+    page = context.new_page()
+    page.goto(made[1].as_uri())
+    page.wait_for_selector("#view canvas[data-drawn=yes]")
+    found = axe.Axe().run(page).response["violations"]
+    context.close()
     serious = [(v["id"], [n["html"][:120] for n in v["nodes"][:3]]) for v in found if v["impact"] in ("serious", "critical")]
     assert serious == []
 

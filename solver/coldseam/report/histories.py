@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from pathlib import Path
 from typing import Any
 
+from coldseam.case.units import BTU
 from coldseam.report.markup import Markup, joined, name, table, tag
 from coldseam.report.shown import Shown
 
@@ -18,7 +19,7 @@ def histories(answers: Mapping[str, Any], folder: Path, shown: Shown) -> Markup:
     Parameters
     ----------
     answers
-        ``history`` is read if it is there: ``events`` (a list of tables), ``file`` (CSV), and plain facts beside.
+        ``history`` is read if it is there: ``events`` and ``machines`` (tables by name), ``file`` (CSV), plain facts beside.
     folder
         Where the CSV lies.
     shown
@@ -27,20 +28,35 @@ def histories(answers: Mapping[str, Any], folder: Path, shown: Shown) -> Markup:
     history = answers.get("history")
     if not isinstance(history, Mapping) or not history:
         return Markup("")
-    events = [event for event in history.get("events") or () if isinstance(event, Mapping)]
-    keys = list(dict.fromkeys(key for event in events for key in event))
-    rows = [tuple(_cell(key, event.get(key), shown) for key in keys) for event in events[:MOST_EVENTS]]
+    events = _entries(history.get("events"))
+    events.sort(key=lambda event: (not event.get("happened", True), event.get("time") or 0.0))
     facts = [(key.replace("_", " "), _cell(key, value, shown)) for key, value in history.items()
              if key not in ("events", "file") and not isinstance(value, Mapping | list | tuple)]  # fmt: skip
+    constants = [duration(float(tau)) for tau in history.get("time_constants") or ()]
+    facts += [("slowest time constants", ", ".join(constants))] if constants else []
     left = f"The first {MOST_EVENTS} of {len(events)} events are shown." if len(events) > MOST_EVENTS else ""
     file = history.get("file")
     where = [tag("p", ["Every value over time is in ", tag("code", file), " beside this report."])] if file else []
     return joined([
         table("Histories", ("what", "value"), facts),
-        table("Events", [key.replace("_", " ") for key in keys], rows) if rows else tag("p", "No event happened."),
+        _by_name("Events", events[:MOST_EVENTS], shown) if events else tag("p", "The case asks for no event."),
+        _by_name("Machines", _entries(history.get("machines")), shown),
         tag("p", left) if left else "",
         *where,
     ])  # fmt: skip
+
+
+def _entries(given: Any) -> list[Mapping[str, Any]]:
+    """Return tables by name, or a list of them, as a list whose entries carry their name."""
+    if isinstance(given, Mapping):
+        return [{"name": key, **entry} for key, entry in given.items() if isinstance(entry, Mapping)]
+    return [entry for entry in given or () if isinstance(entry, Mapping)]
+
+
+def _by_name(caption: str, entries: list[Mapping[str, Any]], shown: Shown) -> Markup:
+    keys = list(dict.fromkeys(key for entry in entries for key in entry if not isinstance(entry[key], Mapping | list)))
+    rows = [tuple(_cell(key, entry.get(key), shown) for key in keys) for entry in entries]
+    return table(caption, [key.replace("_", " ") for key in keys], rows)
 
 
 def _cell(key: str, value: Any, shown: Shown) -> Markup | str:
@@ -49,9 +65,15 @@ def _cell(key: str, value: Any, shown: Shown) -> Markup | str:
     if isinstance(value, bool):
         return "yes" if value else "no"
     if isinstance(value, int | float):
-        if "temperature" in key:
+        if "share" in key:
+            return f"{100 * value:.3g} %"
+        if key in ("energy", "heat"):
+            return f"{value / 3.6e6:.4g} kWh" if shown.system == "metric" else f"{value / BTU:.4g} Btu"
+        if key == "peak":
+            return shown.amount("flow", float(value))
+        if "temperature" in key or key == "closest":
             return shown.temperature(float(value))
-        if key in ("time", "at", "start", "end", "duration", "first", "last"):
+        if key in ("time", "at", "start", "end", "duration", "first", "last", "error", "closest_at"):
             return duration(float(value))
         return f"{value:.5g}"
     return name(value)

@@ -34,7 +34,7 @@ def packed(view: View, shown: Shown) -> tuple[str, str]:
     Parameters
     ----------
     view
-        With temperature and flux.
+        With temperature; the choice of flux is left out where there is none.
     shown
         Units that the viewer shows.
     """
@@ -187,6 +187,7 @@ def _header(view, thin: Thinned, shown: Shown, low, size: float, entries, fields
         "materials": [body.material for body in view.mesh.bodies],
         "boundaries": list(view.boundary_names),
         "fields": fields,
+        "has_flux": view.cell_flux is not None,
         "flux": {"title": "Heat flux", "unit": shown.unit("flux"), "steps": FLUX_STEPS,
                  "low": shown.value("flux", flux_range[0]), "high": shown.value("flux", flux_range[1])},
         "colours": ramp.ravel().tolist(),

@@ -47,7 +47,7 @@ def stills(view: View, drawings: Drawings, folder: Path, shown: Shown, *, viewer
         Whether the view that can be turned stands above them.
     """
     under = next((p for p in drawings.pictures if Path(p.file).stem in UNDER_THE_VIEW), None)
-    viewer = viewer and under is not None and view.temperature is not None and view.cell_flux is not None
+    viewer = viewer and under is not None and view.temperature is not None
     figures = [interactive(view, under, folder, shown)] if viewer and under else []
     figures += [figure(picture, folder) for picture in drawings.pictures if not (viewer and picture is under)]
     metric = "" if shown.system == "metric" else tag("p", METRIC_STILLS)

@@ -80,7 +80,7 @@ function modelOf(header, arrays) {
   });
   const ratio = header.flux.high / header.flux.low;
   const flux = Float32Array.from(arrays.flux, (step) => header.flux.low * ratio ** (step / header.flux.steps));
-  fields.splice(1, 0, { key: "heat_flux", ...header.flux, at: "cell", logarithmic: true, values: flux,
+  if (header.has_flux) fields.splice(1, 0, { key: "heat_flux", ...header.flux, at: "cell", logarithmic: true, values: flux,
     note: "Size of the heat flux in each element; the colours are in equal ratios." });
   const body = Float32Array.from(arrays.body);
   fields.push({ key: "bodies", title: "Bodies", unit: "", at: "cell", low: 0, high: 1, values: body, note: "" });
@@ -418,7 +418,7 @@ class Viewer {
     const words = [`${mean(model.fields[0]).toFixed(2)} ${model.fields[0].unit}`, `(${place.join(", ")}) ${header.length.unit}`];
     words.push(header.bodies[model.body[cell]]);
     if (!found.which && model.dim === 3) words.push(header.boundaries[model.boundary[triangle]]);
-    words.push(`heat flux ${model.flux[cell].toPrecision(3)} ${header.flux.unit}`);
+    if (header.has_flux) words.push(`heat flux ${model.flux[cell].toPrecision(3)} ${header.flux.unit}`);
     const { field } = this;
     if (field.at === "node" && field.key !== "temperature" && !found.which) {
       const value = mean(field);
