@@ -26,7 +26,8 @@ class _Pairs:
         """Return (°C, W) rows, sorted; a bare amount holds at every temperature."""
         if not isinstance(value, list):
             return ((0.0, Amount("heat flow", at_least=0.0).read(value, context)),)
-        rows, troubles = [], []
+        rows: list[tuple[float, float]] = []
+        troubles: list[Trouble] = []
         for number, row in enumerate(value):
             try:
                 if not isinstance(row, list) or len(row) != 2:

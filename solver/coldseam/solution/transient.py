@@ -245,7 +245,8 @@ class Transient:
         if history.relative_closure > BALANCE_LIMIT:
             raise SolveError(
                 f"the heat balance over time does not close: {heat_in:.6g} J came in and {stored:.6g} J are stored, "
-                f"{history.relative_closure:.1e} of what passed through ({BALANCE_LIMIT:.0e} is allowed); the result is refused"
+                f"{history.relative_closure:.1e} of what passed through ({BALANCE_LIMIT:.0e} is allowed); "
+                "the result is refused"
             )
         return history
 
