@@ -74,7 +74,9 @@ def report(view, folder: Path, *, title: str = "A wall", system: str = "metric",
     side = view.faces_space(view.spaces[0])
     values = np.full(mesh.n_nodes, np.nan)
     values[mesh.facets[side]] = 10.0 + mesh.points[mesh.facets[side]][..., 0]
-    excess = SurfaceMap(key="excess_flux", space=view.spaces[0], values=values, title="Excess heat flux", unit="W/m²", note="")
+    excess = SurfaceMap(
+        key="excess_flux", space=view.spaces[0], values=values, title="Excess heat flux", unit="W/m²", note=""
+    )
     told = answers(view, title) | ({"history": history} if history is not None else {})
     bodies = tuple(replace(body, name=f"{title} {k}") for k, body in enumerate(mesh.bodies))
     view = replace(view, title=title, answers=told, maps=(excess,), mesh=replace(mesh, bodies=bodies))

@@ -39,7 +39,10 @@ def test_differences_are_to_the_first(tmp_path):
 
     Image.new("RGB", (40, 20)).save(tmp_path / "temperature.png")
     shown = Picture(file="temperature.png", title="Temperature", alt="t", table=Table(columns=(), rows=()))
-    variants = [Variant(name=n, answers=answers(f, f < 12), folder=tmp_path, pictures=(shown,)) for n, f in (("one", 10.0), ("<b>two", 12.5))]
+    variants = [
+        Variant(name=n, answers=answers(f, f < 12), folder=tmp_path, pictures=(shown,))
+        for n, f in (("one", 10.0), ("<b>two", 12.5))
+    ]
     write_comparison(variants, tmp_path, "metric", one_scale=True)
     page = page_of(tmp_path)
     found = rows(page)

@@ -14,6 +14,9 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from coldseam.case.read import load
+from coldseam.report import given
+from coldseam.report.document import cautions
 from coldseam.report.histories import duration, histories
 from coldseam.report.markup import Markup, table, tag
 from coldseam.report.packing import POSITION_BITS, packed
@@ -34,6 +37,7 @@ def load_reports():
 
 reports = load_reports()
 
+CASES = Path(__file__).parents[2] / "cases"
 HOSTILE = {
     "tag": '<script>alert("x")</script><img src=x onerror=alert(1)>',
     "quotes": """it's "quoted" & <b>bold</b> </style></script><!--""",
@@ -144,7 +148,10 @@ def test_histories_appear_when_answers_carry_them(view, tmp_path):
     history = {
         "file": "history.csv",
         "steps": 412,
-        "events": [{"time": 5400.0, "event": "power <lost>"}, {"time": 93600.0, "event": "limit passed", "temperature": -15.0}],
+        "events": [
+            {"time": 5400.0, "event": "power <lost>"},
+            {"time": 93600.0, "event": "limit passed", "temperature": -15.0},
+        ],
     }
     page = parsed(reports.report(view("square"), tmp_path, history=history).read_text(encoding="utf-8"))
     section = next(s for s in page.iter("section") if s.get("id") == "histories")
@@ -158,6 +165,17 @@ def test_a_long_case_is_shown_whole(view, tmp_path):
     page = parsed(reports.report(view("square"), tmp_path, title=HOSTILE["long"]).read_text(encoding="utf-8"))
     code = words(next(p for p in page.iter("pre")))
     assert code == reports.case(HOSTILE["long"]).source.text
+
+
+@pytest.mark.parametrize("path", sorted(CASES.glob("*.toml")), ids=lambda path: path.stem)
+def test_every_shipped_case_can_be_told(path):
+    # Laws, schedules and floating spaces are told as typed; no solution is needed for that.
+    case = load(path)
+    shown = Shown(system="inch")
+    parts = [given.bodies(case, {}, shown), given.materials(case, shown), given.outside(case, shown), cautions(case)]
+    page = parsed(f"<!DOCTYPE html><html><head><title>t</title></head><body>{''.join(parts)}</body></html>")
+    told = words(page)
+    assert all(name in told for name in (*case.materials, *case.spaces, *(body.name for body in case.body)))
 
 
 def test_markup_escapes_and_tables_mark_empty_cells():
@@ -202,5 +220,8 @@ def test_the_packed_model_is_the_model(view, name):
     assert {tuple(row) for row in cells.tolist()} == mine
     if model.mesh.dim == 3:
         facets = np.array([np.delete(cells[f // 4], f % 4) for f in arrays["facet"]])
-        wanted = {(tuple(row), int(b)) for row, b in zip(np.sort(which[model.mesh.facets], axis=1).tolist(), model.facet_boundary, strict=True)}
+        wanted = {
+            (tuple(row), int(b))
+            for row, b in zip(np.sort(which[model.mesh.facets], axis=1).tolist(), model.facet_boundary, strict=True)
+        }
         assert {(tuple(row), int(b)) for row, b in zip(facets.tolist(), arrays["boundary"], strict=True)} == wanted

@@ -64,7 +64,9 @@ class Opened:
     """A page, with everything it asked for and complained of."""
 
     def __init__(self, browser, path: Path, width: int = 1024, scripts: bool = True):
-        self.context = browser.new_context(viewport={"width": width, "height": 900}, java_script_enabled=scripts, offline=True)
+        self.context = browser.new_context(
+            viewport={"width": width, "height": 900}, java_script_enabled=scripts, offline=True
+        )
         self.page = self.context.new_page()
         self.asked, self.wrong = [], []
         self.page.on("request", lambda r: self.asked.append(r.url) if not r.url.startswith("data:") else None)
@@ -96,7 +98,9 @@ class Opened:
 
         from PIL import Image
 
-        return np.asarray(Image.open(io.BytesIO(self.page.locator("#view canvas").screenshot())).convert("RGB")).astype(int)
+        return np.asarray(Image.open(io.BytesIO(self.page.locator("#view canvas").screenshot())).convert("RGB")).astype(
+            int
+        )
 
     def read_at(self, place) -> str:
         """Point at a place, mm, and return what is told."""
@@ -236,7 +240,9 @@ def test_no_serious_barriers(browser, made):
     page.wait_for_selector("#view canvas[data-drawn=yes]")
     found = axe.Axe().run(page).response["violations"]
     context.close()
-    serious = [(v["id"], [n["html"][:120] for n in v["nodes"][:3]]) for v in found if v["impact"] in ("serious", "critical")]
+    serious = [
+        (v["id"], [n["html"][:120] for n in v["nodes"][:3]]) for v in found if v["impact"] in ("serious", "critical")
+    ]
     assert serious == []
 
 

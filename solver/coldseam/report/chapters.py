@@ -37,7 +37,16 @@ def answer_sentence(answers: Answers, shown: Shown) -> Markup:
     if not spaces:
         return joined(["Through the boundary ", name(key), " ", tag("strong", flow), " flow."])
     at = f", at {shown.temperature(entry['temperature'])}," if entry.get("temperature") is not None else ""
-    return joined(["The space ", name(key), at, f" {does} ", tag("strong", flow), _to_the_others(answers, key, shown)])
+    return joined(
+        [
+            "At the end of the run the space " if answers.get("history") else "The space ",
+            name(key),
+            at,
+            f" {does} ",
+            tag("strong", flow),
+            _to_the_others(answers, key, shown),
+        ]
+    )
 
 
 def _to_the_others(answers: Answers, key: str, shown: Shown) -> Markup:
@@ -107,7 +116,10 @@ def flows(answers: Answers, shown: Shown) -> Markup:
     rows = [(tag("span", [kind, " ", key]), *rest) for kind, key, *rest in rows]
     columns = ("from", "heat flow", "temperature (a surface's mean)", "area", "kind of error")
     return joined([
-        tag("p", "A flow is positive into the solid. The error covers the numerical solution of the model as given."),
+        tag("p", [
+                    "These are the flows at the end of the run. " if answers.get("history") else "",
+                    "A flow is positive into the solid. The error covers the numerical solution of the model as given.",
+                ]),
         table("Heat flows", columns, rows, (1, 2, 3)),
         _coupling(answers, shown),
         _trust(answers, shown),

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 import re
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from typing import Any
 
 from coldseam.case.model import Case
@@ -14,6 +14,7 @@ from coldseam.report.markup import Markup, joined, name, table, tag
 from coldseam.report.shown import Shown
 
 Answers = Mapping[str, Any]
+SPACE_COLUMNS = {"temperature", "film", "surface_resistance", "relative_humidity"}
 DIRECT = {"name", "material"}
 """Keys of a [[body]] that have a column of their own."""
 _COMMENT = re.compile(r"^\s*#\s?(.*)$")
@@ -41,9 +42,12 @@ def bodies(case: Case, answers: Answers, shown: Shown) -> Markup:
     ])  # fmt: skip
 
 
-def _typed(entry: Mapping[str, Any]) -> Markup:
+def _typed(entry: Mapping[str, Any], *, bare: bool = False) -> Markup:
+    """Return keys as they stand in the case file, a line each; ``bare``: the value of the only one, without its key."""
+    if not entry:
+        return Markup("")
     header, _, keys = to_toml({"as-typed": [dict(entry)]}).partition("\n")  # one entry of an array: a key a line
-    return tag("code", keys.strip())
+    return tag("code", keys.strip().partition(" = ")[2] if bare else keys.strip())
 
 
 def materials(case: Case, shown: Shown) -> Markup:
@@ -75,9 +79,12 @@ def _several(value: Any, shown: Shown) -> str:
 def outside(case: Case, shown: Shown) -> Markup:
     """Return the spaces with their films and humidity, the boundaries, sheets and contacts."""
     spaces = [
-        (name(key), shown.temperature(space.temperature), _film(space.h, shown),
-         "" if space.relative_humidity is None else f"{100 * space.relative_humidity:.3g} %")
+        (name(key), _or_typed(typed.get("temperature"), space.temperature, shown.temperature),
+         _or_typed(typed.get("film", typed.get("surface_resistance")), _coefficient(space), lambda h: _film(h, shown)),
+         _or_typed(typed.get("relative_humidity"), space.relative_humidity, lambda part: f"{100 * part:.3g} %"),
+         _typed({key: value for key, value in typed.items() if key not in SPACE_COLUMNS}))
         for key, space in case.spaces.items()
+        for typed in [case.raw.get("spaces", {}).get(key, {})]
     ]  # fmt: skip
     boundaries = [(name(entry.get("name", "")), _typed({key: value for key, value in entry.items() if key != "name"}))
                   for entry in case.raw.get("boundary", ())]  # fmt: skip
@@ -87,10 +94,24 @@ def outside(case: Case, shown: Shown) -> Markup:
         for entry in case.raw.get(kind, ())
     ]
     return joined([
-        table("Spaces", ("space", "temperature", "film coefficient (surface resistance)", "humidity"), spaces, (1, 2, 3)),
+        table("Spaces", ("space", "temperature", "film coefficient (surface resistance)", "humidity", "other keys as typed"), spaces),
         table("Boundaries as typed", ("boundary", "what holds where"), boundaries),
         table("Sheets and contacts as typed", ("name", "kind", "keys"), thin),
     ])  # fmt: skip
+
+
+def _or_typed(typed: Any, value: Any, write: Callable[[float], str]) -> Markup | str:
+    """Return a number as shown; a law or a schedule as it stands in the case file."""
+    if isinstance(value, int | float) and not isinstance(value, bool):
+        return write(float(value))
+    return "" if typed is None else _typed({"": typed}, bare=True)
+
+
+def _coefficient(space: Any) -> Any:
+    """Return a space's film coefficient, W/(m²·K), where it is a number; None for a law."""
+    film, resistance = getattr(space, "film", None), getattr(space, "surface_resistance", None)
+    numbers = [value for value in (film, resistance) if value is not None]
+    return space.h if numbers and all(isinstance(value, int | float) for value in numbers) else None
 
 
 def _film(h: float | None, shown: Shown) -> str:

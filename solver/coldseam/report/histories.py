@@ -71,9 +71,19 @@ def _cell(key: str, value: Any, shown: Shown) -> Markup | str:
             return f"{value / 3.6e6:.4g} kWh" if shown.system == "metric" else f"{value / BTU:.4g} Btu"
         if key == "peak":
             return shown.amount("flow", float(value))
-        if "temperature" in key or key == "closest":
+        if "temperature" in key or key in ("closest", "level"):
             return shown.temperature(float(value))
-        if key in ("time", "at", "start", "end", "duration", "first", "last", "error", "closest_at"):
+        if key.endswith("duration") or key in (
+            "time",
+            "at",
+            "start",
+            "end",
+            "duration",
+            "first",
+            "last",
+            "error",
+            "closest_at",
+        ):
             return duration(float(value))
         return f"{value:.5g}"
     return name(value)

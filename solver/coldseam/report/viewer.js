@@ -112,7 +112,7 @@ void main() {
   if (lit > 0.0 && dot(cut, cut) > 0.0 && dot(cut, at) > cutAt) discard;
   vec3 shade;
   if (kind == 2) shade = texture(tints, vec2((mod(floor(v + 0.5), tintCount) + 0.5) / tintCount, 0.5)).rgb;
-  else if (isnan(v) || v > 1e30) shade = vec3(0.86);
+  else if (isnan(v) || v > 1e29) shade = vec3(0.86);
   else {
     float part = kind == 1 ? log(v / ends.x) / max(log(ends.y / ends.x), 1e-9) : (v - ends.x) / max(ends.y - ends.x, 1e-9);
     shade = texture(ramp, vec2(clamp(part, 0.0, 1.0) * 31.0 / 32.0 + 0.5 / 32.0, 0.5)).rgb;
@@ -218,7 +218,7 @@ function section(model, axis, level) {
 
 // --------------------------------------------------------------------------------------------- viewer
 
-const NO_VALUE = 3e38;
+const NO_VALUE = 1e30; // far from what a shader can hold, so that weights do not overflow it
 
 class Viewer {
   constructor(figure, canvas, gl, model) {
