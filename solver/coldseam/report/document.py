@@ -20,6 +20,7 @@ from coldseam.report.histories import histories
 from coldseam.report.markup import Markup, joined, name, tag
 from coldseam.report.shown import Shown
 from coldseam.report.stills import stills
+from coldseam.report.timed import event_lines
 from coldseam.report.view import Drawings, View
 
 LONGEST_HEADING = 300
@@ -82,6 +83,7 @@ def document(view: View, case: Case, drawings: Drawings, folder: Path, shown: Sh
         ("cautions", "Cautions, and what this does not cover", cautions(case)),
     ]  # fmt: skip
     summary = joined([
+        *(tag("p", line, {"class": "answer"}) for line in event_lines(answers)),
         tag("p", chapters.answer_sentence(answers, shown), {"class": "answer"}),
         tag("p", chapters.limits_sentence(answers), {"class": "verdict"}),
     ])  # fmt: skip

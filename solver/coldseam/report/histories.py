@@ -31,7 +31,7 @@ def histories(answers: Mapping[str, Any], folder: Path, shown: Shown) -> Markup:
     events = _entries(history.get("events"))
     events.sort(key=lambda event: (not event.get("happened", True), event.get("time") or 0.0))
     facts = [(key.replace("_", " "), _cell(key, value, shown)) for key, value in history.items()
-             if key not in ("events", "file") and not isinstance(value, Mapping | list | tuple)]  # fmt: skip
+             if key not in ("events", "file", "asked_duration") and not isinstance(value, Mapping | list | tuple)]  # fmt: skip
     constants = [duration(float(tau)) for tau in history.get("time_constants") or ()]
     facts += [("slowest time constants", ", ".join(constants))] if constants else []
     left = f"The first {MOST_EVENTS} of {len(events)} events are shown." if len(events) > MOST_EVENTS else ""

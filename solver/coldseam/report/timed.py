@@ -42,8 +42,10 @@ def energy_text(joules: float, per: str) -> str:
 
 def event_lines(answers: Answers) -> list[str]:
     """Return one line for every event, the ones that happened first."""
-    events = answers.get("history", {}).get("events", {})
-    lines = []
+    events = (answers.get("history") or {}).get("events")
+    lines: list[str] = []
+    if not isinstance(events, Mapping):
+        return lines
     for name, event in sorted(events.items(), key=lambda item: (not item[1]["happened"], item[1]["time"] or 0.0)):
         if event["happened"]:
             error = f" ± {duration_text(max(event['error'], 1.0))}" if event.get("error") else ""
