@@ -14,6 +14,7 @@ import sys
 import tempfile
 import traceback
 from collections.abc import Callable, Iterator
+from concurrent.futures import ThreadPoolExecutor
 from dataclasses import asdict
 from pathlib import Path
 
@@ -141,21 +142,25 @@ def _draw(view: View, folder: Path, groups: tuple[str, ...], log: Log) -> Drawin
             packed.write_bytes(pickle.dumps(view, protocol=pickle.HIGHEST_PROTOCOL))
         except OSError as fault:
             return Drawings(pictures=(), warnings=(f"No pictures: no room for scratch data ({fault.strerror}).",))
-        for group in groups:
-            window = None
-            if group == "space":
-                verdict = render_probe.rendering()
-                if not verdict.able:
-                    warnings.append(_missing(verdict.why_not))
-                    continue
-                window = verdict.window
-            say("pictures", "drawing sections" if group == "flat" and view.mesh.dim == 3 else "drawing")
-            made, wrong = _child(packed, folder, group, Path(scratch) / f"{group}.list", window)
-            pictures += made
-            warnings += wrong
+        say("pictures", "drawing")
+        with ThreadPoolExecutor(len(groups)) as pool:  # each draws in a process of its own
+            for made, wrong in pool.map(lambda group: _group(packed, folder, group, Path(scratch)), groups):
+                pictures += made
+                warnings += wrong
     for warning in warnings:
         say("pictures", warning)
     return Drawings(pictures=tuple(pictures), warnings=tuple(warnings))
+
+
+def _group(packed: Path, folder: Path, group: str, scratch: Path) -> tuple[list[Picture], list[str]]:
+    """Draw one group and return its pictures, and a sentence for what could not be."""
+    window = None
+    if group == "space":
+        verdict = render_probe.rendering()
+        if not verdict.able:
+            return [], [_missing(verdict.why_not)]
+        window = verdict.window
+    return _child(packed, folder, group, scratch / f"{group}.list", window)
 
 
 def _missing(why: str) -> str:
