@@ -18,6 +18,8 @@ from coldseam.report.view import Picture, Table, View, boundary_areas
 
 EVEN = 0.02
 """Part of the whole model's temperature range below which a section counts as even."""
+THINNEST = 2e-4
+"""Least height of a triangle that is shaded, as a part of the picture."""
 MOST_NAMES = 24
 """Names in a legend; the table beside the picture has all."""
 
@@ -248,9 +250,18 @@ def _shade(ax, section: Section, low: float, high: float) -> None:
     from matplotlib.tri import Triangulation
 
     points = section.points * 1e3
-    field = Triangulation(points[:, 0], points[:, 1], section.cells)
+    field = Triangulation(points[:, 0], points[:, 1], _wide_enough(points, section.cells))
     ax.tripcolor(field, section.temperature, shading="gouraud", cmap=style.COLOUR_MAP, vmin=low,
                  vmax=max(high, low + 1e-9), rasterized=True, zorder=1)  # fmt: skip
+
+
+def _wide_enough(points: np.ndarray, cells: np.ndarray) -> np.ndarray:
+    """Return the triangles without those thinner than a small part of a pixel, whose shades are drawn as streaks."""
+    corner = points[cells]
+    u, v = corner[:, 1] - corner[:, 0], corner[:, 2] - corner[:, 0]
+    longest = np.max(np.linalg.norm(np.stack([u, v, v - u]), axis=2), axis=0)
+    height = np.abs(u[:, 0] * v[:, 1] - u[:, 1] * v[:, 0]) / np.maximum(longest, 1e-300)
+    return cells[height > THINNEST * float(np.ptp(points, axis=0).max())]
 
 
 def _outlines(ax, section: Section) -> None:
