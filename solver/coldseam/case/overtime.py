@@ -60,8 +60,6 @@ def time_troubles(case: Case) -> Iterator[Trouble]:
                 ),
             )
     yield from _capacities(case)
-    for name in case.cavities:
-        yield ("cavities", name), "walls that radiate to one another are computed in steady cases only"
 
 
 def _spaces(case: Case) -> Iterator[Trouble]:

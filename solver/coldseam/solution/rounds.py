@@ -17,7 +17,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from coldseam.mesh.locate import locate
-from coldseam.mesh.types import Mesh
+from coldseam.mesh.types import Mesh, SizeField
 from coldseam.solution.adapt import refine_near, size_field, wanted_sizes
 from coldseam.solution.bounds import cell_sizes, check_gap, local_gap, prove
 from coldseam.solution.memory import require_room, room_for
@@ -151,18 +151,26 @@ def solve(case: Case, mesher, log: Callable[[str, str], None]) -> Solution:
         points_met = exact or not watched or (moved is not None and moved <= point_limit(case))
         if flows_met and points_met:
             return Solution(steady=steady, rounds=tuple(rounds), flows_met=flows_met, points_met=points_met)
-        sizes = _next_sizes(steady, flows, error, restless)
         segments = _next_segments(steady, segments)
         calibration *= float(mesh.quality.get("scale", 1.0))
-        size = size_field(steady.mesh, sizes)
-        growth = (cell_sizes(steady.mesh) / size.size[steady.mesh.cells].mean(axis=1)) ** mesh.dim
-        target = max(int(growth.sum()), 1)
-        size = dataclasses.replace(size, size=size.size * calibration)
-        stop = _reason_to_stop(case, mesh, rounds, target)
+        for points in (restless, []) if restless and not flows_met else (restless,):
+            # Where both don't fit the heat flows come first.
+            size, target = _plan(mesh=steady.mesh, sizes=_next_sizes(steady, flows, error, points))
+            stop = _reason_to_stop(case, mesh, rounds, target)
+            if not stop:
+                break
         if stop:
             return Solution(
                 steady=steady, rounds=tuple(rounds), flows_met=flows_met, points_met=points_met, remarks=(stop,)
             )
+        size = dataclasses.replace(size, size=size.size * calibration)
+
+
+def _plan(mesh: Mesh, sizes: np.ndarray) -> tuple[SizeField, int]:
+    """Return the size field of cell sizes, m, (n_cells,), and about how many cells it makes."""
+    size = size_field(mesh, sizes)
+    growth = (cell_sizes(mesh) / size.size[mesh.cells].mean(axis=1)) ** mesh.dim
+    return size, max(int(growth.sum()), 1)
 
 
 def _proven(case: Case, mesh: Mesh, before: Steady | None, log) -> Steady:
