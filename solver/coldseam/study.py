@@ -141,7 +141,9 @@ class Result:
         return write_all(view, self.case, Path(folder), shown, pictures=pictures, log=log or _quiet)
 
 
-def run(case: Case, log: Log | None = None, *, folder: Path | None = None, resume: bool = False) -> Result | TimedResult:
+def run(
+    case: Case, log: Log | None = None, *, folder: Path | None = None, resume: bool = False
+) -> Result | TimedResult:
     """Solve a case to its asked accuracy; one with a ``[time]`` table over time.
 
     Parameters
@@ -165,7 +167,9 @@ def run(case: Case, log: Log | None = None, *, folder: Path | None = None, resum
         if case.time is not None:
             return run_over_time(case, log, folder=folder, resume=resume)
         if resume:
-            raise CaseError([Fault(path=(), what="only a run over time can be resumed, and this case has no [time] table")])
+            raise CaseError(
+                [Fault(path=(), what="only a run over time can be resumed, and this case has no [time] table")]
+            )
         require_bridges(case)
         require_answerable(case)
         with open_geometry(case, log=log) as mesher:

@@ -60,7 +60,11 @@ def test_a_run_starts_steady_and_tells_of_a_machine_too_small():
 
 
 def test_a_space_that_gains_heat_and_loses_it_to_nothing_has_no_balance():
-    case = text("gain = 70", hall=30).replace('space = "hall"', "adiabatic = true").replace("[spaces.hall]\ntemperature = 30\nfilm = 4\n", "")
+    case = (
+        text("gain = 70", hall=30)
+        .replace('space = "hall"', "adiabatic = true")
+        .replace("[spaces.hall]\ntemperature = 30\nfilm = 4\n", "")
+    )
     system = heat_system(loads(case.replace("start = 20\nrecord", 'start = "steady"\nrecord')), MESH)
     with pytest.raises(SolveError):
         starting_state(system)

@@ -48,5 +48,7 @@ def test_all_of_the_gain_goes_through_the_wall_at_the_balance():
     held = run(read.loads(ROOM.replace("HELD", f"temperature = {room.temperature}"))).answers
     assert held.spaces["room"].heat_flow == pytest.approx(50, rel=1e-3)
     # Series resistances with the film that the answer made: 50 W over 0.5 m² through h, board and outer film.
-    film = floating.boundaries["face"].heat_flow / 0.5 / (room.temperature - floating.boundaries["face"].temperature.mean)
+    film = (
+        floating.boundaries["face"].heat_flow / 0.5 / (room.temperature - floating.boundaries["face"].temperature.mean)
+    )
     assert room.temperature == pytest.approx(5 + 100 * (1 / film + 0.02 / 0.2 + 1 / 10), rel=1e-3)

@@ -96,12 +96,19 @@ def test_a_steady_start_has_the_coefficients_of_its_own_temperatures():
 
 def test_a_floating_space_with_laws_starts_steady():
     """20 W into a room behind 0.1 m² of a plate: the air is above 20 °C by what radiation, film and plate need, and it stays."""
-    text = slab_text(k=10, rho=100, c=500, start='"steady"', length=100, width=100, duration=36000, record=18000, tolerance=0.02)
-    text = text.replace("temperature = 0\nfilm = 1", "film = 2\nradiation = { emissivity = 0.9 }\nfloating = { heat_capacity = 50, gain = 20 }")
+    text = slab_text(
+        k=10, rho=100, c=500, start='"steady"', length=100, width=100, duration=36000, record=18000, tolerance=0.02
+    )
+    text = text.replace(
+        "temperature = 0\nfilm = 1",
+        "film = 2\nradiation = { emissivity = 0.9 }\nfloating = { heat_capacity = 50, gain = 20 }",
+    )
     far = '[[boundary]]\nname = "far"\non = { plane = { x = 0 } }\ntemperature = 20\n'
     history = run(text.replace('[[boundary]]\nname = "rest"', far + '[[boundary]]\nname = "rest"'))
     surface = 20 + 200 * 0.1 / 10
-    air = brentq(lambda t: 2 * (t - surface) + 0.9 * 5.670374419e-8 * ((t + 273.15) ** 4 - (surface + 273.15) ** 4) - 200, 0, 99)
+    air = brentq(
+        lambda t: 2 * (t - surface) + 0.9 * 5.670374419e-8 * ((t + 273.15) ** 4 - (surface + 273.15) ** 4) - 200, 0, 99
+    )
     # Coefficients stay while they have moved by less than 2e-3 of themselves: 0.05 K of these 27 K.
     assert history.column("space", "air") == pytest.approx([air] * 3, abs=0.05)
 

@@ -78,7 +78,9 @@ def test_the_error_estimate_keeps_the_tolerance():
     finest = run_on(mesh, slab_text(film=5, tolerance=1e-6)).column("probe", "surface")
     for tolerance in (1e-2, 1e-3):
         rough = run_on(mesh, slab_text(film=5, tolerance=tolerance)).column("probe", "surface")
-        assert np.abs(rough - finest).max() < 0.5 * tolerance  # 0.07 and 0.25 of it as found; the estimate is of one step
+        assert (
+            np.abs(rough - finest).max() < 0.5 * tolerance
+        )  # 0.07 and 0.25 of it as found; the estimate is of one step
 
 
 @pytest.mark.parametrize("count", [5, 81])

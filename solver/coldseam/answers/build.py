@@ -178,7 +178,9 @@ def warnings(solution: Solution) -> tuple[str, ...]:
     cells = np.bincount(steady.mesh.cell_body, minlength=len(steady.mesh.bodies))
     coarse = [f'"{body.name}"' for body, n in zip(steady.mesh.bodies, cells, strict=True) if n == 1]
     if coarse and not exact_on(solution):
-        found.append(f"the mesh is so coarse that a body has one cell ({', '.join(coarse)}): its temperatures are rough")
+        found.append(
+            f"the mesh is so coarse that a body has one cell ({', '.join(coarse)}): its temperatures are rough"
+        )
     asked = steady.case.model.accuracy
     if not solution.flows_met and solution.rounds[-1].error is not None:
         reached = asked * solution.rounds[-1].error

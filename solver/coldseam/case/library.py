@@ -120,7 +120,8 @@ def search(text: str) -> list[Entry]:
 def as_material_keys(entry: Entry) -> dict[str, Any]:
     """Return the keys that the entry fills in a case file's ``[materials.<name>]`` table.
 
-    Keys: conductivity W/(m K) (a table where it follows a law over temperature), density kg/m3, specific_heat J/(kg K), emissivity (None where unknown)
+    Keys: conductivity W/(m K) (a table where it follows a law over temperature), density kg/m3,
+    specific_heat J/(kg K), emissivity (None where unknown)
     and source, in which the entry's name and the temperature it holds for are said too.
     """
     return {

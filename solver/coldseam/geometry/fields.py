@@ -67,7 +67,7 @@ def growing(
 
 
 def nodal(gmsh, points: np.ndarray, cells: np.ndarray, size: np.ndarray) -> int:
-    """Return the field of a size, mm, shape (n_nodes,), on a simplex mesh: points (n_nodes, dim) in mm, cells (n_cells, dim + 1)."""
+    """Return the field of a size, mm, (n_nodes,), on a simplex mesh: points, mm, (n_nodes, dim), cells (n_cells, dim + 1)."""
     corners = np.zeros((len(cells), 3, cells.shape[1]))
     corners[:, : points.shape[1]] = points[cells].transpose(0, 2, 1)
     data = np.concatenate([corners.reshape(len(cells), -1), size[cells]], axis=1)

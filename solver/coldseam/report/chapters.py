@@ -282,7 +282,8 @@ def _moisture(key: str, entry: Answers, shown: Shown) -> tuple:
     margin = found["margin_condensation_kelvin"]
     if margin < 0:
         verdict = joined([tag("strong", "frosts" if over_ice else "sweats"),
-                          f", {shown.difference(-margin)} below, on {100 * found['share_condensation']:.2g} % of its area"])  # fmt: skip
+                          f", {shown.difference(-margin)} below, ",
+                           f"on {100 * found['share_condensation']:.2g} % of its area"])  # fmt: skip
     elif found["margin_mould"] < 0:
         verdict = joined([tag("strong", "mould can grow"), f" on {100 * found['share_mould']:.2g} % of its area; "
                           f"{shown.difference(margin)} above"])  # fmt: skip

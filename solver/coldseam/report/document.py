@@ -140,7 +140,8 @@ def page(
         tag("main", joined(sections, "\n")),
         Markup(f"<script>{script}</script>" if script else ""),
     ]
-    return f'<!DOCTYPE html>\n<html lang="en">\n{tag("head", joined(head, chr(10)))}\n{tag("body", joined(body, chr(10)))}\n</html>\n'
+    top, rest = tag("head", joined(head, chr(10))), tag("body", joined(body, chr(10)))
+    return f'<!DOCTYPE html>\n<html lang="en">\n{top}\n{rest}\n</html>\n'
 
 
 def resource(file: str) -> str:

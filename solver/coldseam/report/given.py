@@ -94,7 +94,8 @@ def outside(case: Case, shown: Shown) -> Markup:
         for entry in case.raw.get(kind, ())
     ]
     return joined([
-        table("Spaces", ("space", "temperature", "film coefficient (surface resistance)", "humidity", "other keys as typed"), spaces),
+        table("Spaces", ("space", "temperature", "film coefficient (surface resistance)", "humidity", "other keys as typed"),
+              spaces),
         table("Boundaries as typed", ("boundary", "what holds where"), boundaries),
         table("Sheets and contacts as typed", ("name", "kind", "keys"), thin),
     ])  # fmt: skip

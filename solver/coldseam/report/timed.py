@@ -68,7 +68,8 @@ def run_lines(answers: Answers) -> list[str]:
         used = f", used {energy_text(machine['energy'], per)}" if machine["energy"] else ""
         lines.append(
             f"  machine of {name}   took {energy_text(machine['heat'], per)}{used}; "
-            f"ran {100 * machine['running_share']:.0f} % of the time, {100 * machine['running_share_at_end']:.0f} % towards the end; peak {machine['peak']:.4g} W{per}"
+            f"ran {100 * machine['running_share']:.0f} % of the time, {100 * machine['running_share_at_end']:.0f} % "
+            f"towards the end; peak {machine['peak']:.4g} W{per}"
         )
     for name, energy in history["energies"]["boundaries"].items():
         if energy:

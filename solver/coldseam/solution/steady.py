@@ -94,6 +94,7 @@ class Steady:
         principle), so holding a node there only brings it nearer; heat flows come from ``temperature``.
         """
         return np.clip(self.temperature, *self.possible)
+
     remarks: tuple[str, ...] = ()
 
     @property
