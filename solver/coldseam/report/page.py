@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 
@@ -26,10 +27,10 @@ PAD = 0.22
 class Page:
     """A figure with its axes: ``ax`` for the drawing, ``bar`` for the colour bar, ``detail`` for a close-up."""
 
-    figure: object
-    ax: object
-    bar: object | None
-    detail: object | None
+    figure: Any
+    ax: Any
+    bar: Any | None
+    detail: Any | None
     stretch: tuple[float, float]
 
 

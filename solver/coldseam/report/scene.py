@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
+from typing import Any
 
 import numpy as np
 
@@ -114,7 +115,7 @@ def paint(
     surface = pyvista.PolyData.from_regular_faces(np.asarray(points), np.asarray(facets))
     plotter = pyvista.Plotter(off_screen=True, window_size=size.tolist(), lighting="none")
     plotter.set_background("white")
-    look = {"show_scalar_bar": False, "culling": "back" if front_only else None}
+    look: dict[str, Any] = {"show_scalar_bar": False, "culling": "back" if front_only else None}
     if values is not None:  # no light: a shade must mean a temperature and nothing else
         surface.point_data["T"] = np.asarray(values)
         plotter.add_mesh(surface, scalars="T", cmap=style.COLOUR_MAP, clim=span, lighting=False,
