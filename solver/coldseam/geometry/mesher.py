@@ -10,7 +10,7 @@ import numpy as np
 from coldseam.errors import GeometryError
 from coldseam.geometry import client, sizes
 from coldseam.geometry.parts import MM, Part, expand, fault
-from coldseam.geometry.quality import check_measure, mesh_quality, shape_of
+from coldseam.geometry.quality import check_measure, mesh_quality
 from coldseam.geometry.slivers import without_flat
 from coldseam.mesh.build import build_mesh
 from coldseam.mesh.types import Mesh, MeshBody, SizeField
@@ -196,7 +196,7 @@ class Mesher:
                 raw["flat_removed"] = removed
                 if removed:
                     self._log("mesh", f"{removed} flat cells taken out")
-                worst = shape_of(raw["points"], raw["cells"]).min()
+                worst = raw["worst"]
                 if worst >= FLATTEST:
                     return raw, solid[1]
                 self._failed.append(f"{stage}: left flat cells (radius ratio {worst:.1e})")

@@ -34,13 +34,15 @@ def without_flat(raw: dict, flattest: float) -> tuple[dict, int]:
     Returns
     -------
     raw
-        The mesh; flat cells remain where no two edges cross.
+        The mesh, with ``worst``, its least radius ratio; flat cells remain where no two edges cross.
     removed
         Number of cells taken out.
     """
     removed = 0
     for _ in range(MOST):
-        flat = np.flatnonzero(shape_of(raw["points"], raw["cells"]) < flattest)
+        shape = shape_of(raw["points"], raw["cells"])
+        raw = {**raw, "worst": float(shape.min())}
+        flat = np.flatnonzero(shape < flattest)
         if len(flat) == 0 or len(flat) > MOST:
             break
         taken = 0

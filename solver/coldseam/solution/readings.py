@@ -213,6 +213,8 @@ def averaging_error(steady: Steady) -> float:
     How much the heat flow would change, to first order in the conductivities, if the other of two second-order
     averages were taken: k at the cell's mean temperature. Times ``AVERAGING_SAFETY``.
     """
+    if steady.settled is None:
+        return 0.0
     part = averaging_energy(steady)
     return AVERAGING_SAFETY * abs(float(part.sum())) / max(float(cell_energy(steady).sum()), 1e-300)
 

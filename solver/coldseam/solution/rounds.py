@@ -151,6 +151,11 @@ def solve(case: Case, mesher, log: Callable[[str, str], None]) -> Solution:
         points_met = exact or not watched or (moved is not None and moved <= point_limit(case))
         if flows_met and points_met:
             return Solution(steady=steady, rounds=tuple(rounds), flows_met=flows_met, points_met=points_met)
+        stop = _spent(case, mesh)  # before sizes are looked for, which takes a while on a large mesh
+        if stop:
+            return Solution(
+                steady=steady, rounds=tuple(rounds), flows_met=flows_met, points_met=points_met, remarks=(stop,)
+            )
         segments = _next_segments(steady, segments)
         calibration *= float(mesh.quality.get("scale", 1.0))
         for points in (restless, []) if restless and not flows_met else (restless,):
@@ -333,6 +338,15 @@ def _next_segments(steady: Steady, segments: int | None) -> int | None:
         return segments
     present = int(steady.mesh.quality.get("curve_segments", 24))
     return int(np.ceil(present * min(2.0, np.sqrt(effect / (0.2 * steady.case.model.accuracy)))))
+
+
+def _spent(case: Case, mesh: Mesh) -> str:
+    """Return why no finer mesh is even looked for; empty where the present one has nodes to spare."""
+    most = case.model.max_nodes or MOST_NODES[mesh.dim]
+    if mesh.n_nodes <= most:
+        return ""
+    limit = "max_nodes" if case.model.max_nodes else "the program's limit"
+    return f"a finer mesh than this of {mesh.n_nodes:,} nodes is beyond {limit} of {most:,}".replace(",", " ")
 
 
 def _reason_to_stop(case: Case, mesh: Mesh, rounds: list[Round], target: int) -> str:
