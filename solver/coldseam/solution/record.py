@@ -52,7 +52,7 @@ class Gauges:
     def __init__(self, system: HeatSystem, phase=None):
         self.system, self.phase = system, phase
         case, mesh = system.case, system.mesh
-        self.probes = _probe_weights(system)
+        self.probes = system.reading(_probe_weights(system))
         count = len(case.boundary)
         rows = np.repeat(system.facet_boundary, mesh.dim)
         nodes = mesh.facets.ravel()
@@ -60,9 +60,10 @@ class Gauges:
             (facet_shares(mesh, mesh.facets).ravel(), (rows, nodes)), shape=(count, mesh.n_nodes)
         ).tocsr()
         area = np.asarray(shares.sum(axis=1)).ravel()
-        self.mean = sparse.diags_array(1.0 / area) @ shares
+        self.mean = system.reading(sparse.csr_array(sparse.diags_array(1.0 / area) @ shares))
         touched = sparse.coo_array((np.ones(len(nodes)), (rows, nodes)), shape=shares.shape).tocsr()
-        self.nodes, self.starts = touched.indices, touched.indptr[:-1]
+        self.surface = system.reading(picked(touched.indices, mesh.n_nodes))
+        self.starts = touched.indptr[:-1]
 
     def columns(self) -> list[Column]:
         """Return the columns that :meth:`row` fills."""
@@ -84,7 +85,7 @@ class Gauges:
         spaces, case = self.system.spaces, self.system.case
         room = [spaces.temperature_of(name, state.y, state.time, before=True) for name in case.spaces]
         t = state.temperature
-        surface = t[self.nodes]
+        surface = self.surface @ t
         return np.concatenate(
             [
                 room,
@@ -113,9 +114,14 @@ class Gauges:
         if when.temperature == "mean":
             weights = self.mean[[number]]
             return lambda state: float((weights @ state.temperature)[0])
-        end = self.starts[number + 1] if number + 1 < len(self.starts) else len(self.nodes)
-        nodes, pick = self.nodes[self.starts[number] : end], np.min if when.temperature == "min" else np.max
-        return lambda state: float(pick(state.temperature[nodes]))
+        end = self.starts[number + 1] if number + 1 < len(self.starts) else self.surface.shape[0]
+        rows, pick = self.surface[self.starts[number] : end], np.min if when.temperature == "min" else np.max
+        return lambda state: float(pick(rows @ state.temperature))
+
+
+def picked(nodes: np.ndarray, n_nodes: int) -> sparse.csr_array:
+    """Return the weights that pick nodes, (n,), from node temperatures, (n, n_nodes)."""
+    return sparse.csr_array((np.ones(len(nodes)), nodes, np.arange(len(nodes) + 1)), shape=(len(nodes), n_nodes))
 
 
 def _probe_weights(system: HeatSystem) -> sparse.csr_array:

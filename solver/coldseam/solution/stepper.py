@@ -115,6 +115,8 @@ class Step:
         Into every space and lump of goods, W, (3, n).
     flows
         Heat flows by channel at the stages, W, (3, n_channels); see :func:`channels`.
+    temperatures, ys
+        Of nodes, (n_nodes,), and of spaces and goods, (n,), at the three stages, °C.
     error
         Estimated error, K.
     """
@@ -124,6 +126,8 @@ class Step:
     node_heat: np.ndarray
     space_heat: np.ndarray
     flows: np.ndarray
+    temperatures: tuple[np.ndarray, np.ndarray, np.ndarray]
+    ys: tuple[np.ndarray, np.ndarray, np.ndarray]
     error: float
 
 
@@ -177,7 +181,7 @@ class Stepper:
         y3 = state.y + three.e
         flows3 = self._flows(state, three.temperature, y3, end, before=True)
         node_heat, space_heat = np.stack([first[0], r2, r3]), np.stack([first[1], s2, s3])
-        error = self._error(
+        x, e = self.filtered(
             state, three.factor, h * (ERROR_WEIGHTS @ node_heat), h * (ERROR_WEIGHTS @ space_heat), y3, end
         )
         self._remember(two.d, three.d, h)
@@ -187,7 +191,9 @@ class Stepper:
             node_heat=node_heat,
             space_heat=space_heat,
             flows=np.stack([first[2], flows2, flows3]),
-            error=error,
+            temperatures=(state.temperature, two.temperature, three.temperature),
+            ys=(state.y, state.y + two.e, y3),
+            error=float(max(self.system.largest(x), np.max(np.abs(e), initial=0.0))),
         )
 
     def at(self, step: Step, s: float) -> State:
@@ -298,18 +304,33 @@ class Stepper:
         e = solver.newton(factor, known_spaces + a * films, own_heat, np.zeros(system.spaces.n))
         return x + a * (factor.response @ e), e
 
-    def _error(
+    def filtered(
         self, state: State, factor: Factor, nodes: np.ndarray, spaces: np.ndarray, y: np.ndarray, time: float
-    ) -> float:
-        """Return the filtered error estimate's largest entry, K."""
+    ) -> tuple[np.ndarray, np.ndarray]:
+        """Return what heats (J) given to nodes, (n_nodes,), and spaces, (n,), move in one implicit step.
+
+        Parameters
+        ----------
+        state, y, time
+            Which machines run; temperatures of spaces and goods (°C, (n,)) and the time (s) to linearise at.
+        factor
+            Of the step.
+        nodes, spaces
+            The heats.
+
+        Returns
+        -------
+        tuple
+            Changes of the free nodes' temperatures, (n_free,), and of those of spaces and goods, (n,), K.
+        """
         solver, a = self.solver, factor.a
         x = solver.solve(factor, nodes[solver.free], None)
         if not self.system.spaces.n:
-            return float(np.max(np.abs(x)))
+            return x, np.zeros(0)
         _, slope = self.system.spaces.flows(y, state.running, time, before=True)
         matrix = np.diag(self._space_capacity() + a * self.system.films) - a * a * factor.schur - a * slope
         e = np.linalg.solve(matrix, spaces + a * (solver.gather @ x))
-        return float(max(np.max(np.abs(x + a * (factor.response @ e)), initial=0.0), np.max(np.abs(e))))
+        return x + a * (factor.response @ e), e
 
     def _guess(self, number: int, h: float) -> np.ndarray | None:
         """Extrapolate the increment per second of the last two steps; None at first."""

@@ -8,7 +8,7 @@ divided into equal steps of at most the present size. After a jump the step star
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
@@ -218,18 +218,19 @@ class Transient:
         SolveError
             The heat that came in is not the heat stored.
         """
-        heat_in, stored = self._heat_in(), self._stored()
+        nodes, spaces = self._moved()
+        heat_in, stored = self._heat_in(), float(nodes.sum() + spaces.sum())
         outside = self._outside_channels()
         crossed = float(self.totals.magnitude[outside].sum()) + abs(self.system.source_flow) * self.time
-        through = 0.5 * (crossed + self._rearranged())
+        through = 0.5 * (crossed + float(np.abs(nodes).sum() + np.abs(spaces).sum()))  # inside, or from outside
         history = History(
-            system=self.system,
+            system=self.system.whole,
             columns=tuple(self.gauges.columns()),
             rows=np.array(self.rows),
             events=tuple(watch.result() for watch in self.watches),
             totals=self.totals,
-            initial=self.initial,
-            final=self.state,
+            initial=self._expanded(self.initial),
+            final=self._expanded(self.state),
             heat_in=heat_in,
             heat_stored=stored,
             throughput=through,
@@ -297,7 +298,7 @@ class Transient:
         """Return the rung whose step moves no temperature by much more than the tolerance."""
         first = self.stepper._evaluate(self.state, self.state.temperature, self.state.y, self.state.time, before=False)
         capacity = self.system.capacity if self.phase is None else self.phase.slope(self.state.temperature)
-        slope = np.max(np.abs(first[0]) / capacity, initial=0.0)
+        slope = self.system.largest((first[0] / capacity)[self.system.free])
         if self.system.spaces.n:
             slope = max(slope, float(np.max(np.abs(first[1]) / self.system.spaces.capacity)))
         wanted = 4.0 * self.tolerance / slope if slope > 0.0 else self.longest
@@ -379,7 +380,8 @@ class Transient:
         while self.fields and self.fields[0] <= last * (1 + 1e-12):
             time = self.fields.pop(0)
             if self.on_field is not None:
-                self.on_field(time, self.stepper.at(step, min((time - step.start.time) / step.h, 1.0)).temperature)
+                state = self.stepper.at(step, min((time - step.start.time) / step.h, 1.0))
+                self.on_field(time, self.system.expand(state.temperature))
 
     def _last_row(self, step: Step, s: float) -> None:
         if not self.rows or self.rows[-1][0] < self.time * (1 - 1e-12):
@@ -395,24 +397,20 @@ class Transient:
         return float(self.totals.heat[self._outside_channels()].sum()) + self.system.source_flow * self.time
 
     def _content(self, now: np.ndarray, then: np.ndarray) -> np.ndarray:
-        """Return what nodes hold more at one temperature than at another, J, (n_nodes,)."""
+        """Return what the unknowns hold more at one temperature than at another, J, (n_nodes,)."""
         if self.phase is None:
             return self.system.capacity * (now - then)
         return self.phase.heat(now) - self.phase.heat(then)
 
-    def _rearranged(self) -> float:
-        """Return the sum of all nodes' absolute changes of heat content, J: heat that moved, inside or from outside."""
-        moved = self._content(self.state.temperature, self.initial.temperature)
-        spaces = self.system.spaces.capacity * (self.state.y - self.initial.y) if self.system.spaces.n else np.zeros(0)
-        return float(np.abs(moved).sum() + np.abs(spaces).sum())
+    def _moved(self) -> tuple[np.ndarray, np.ndarray]:
+        """Return what all nodes, and all spaces and goods, hold more than at the beginning, J, (n_nodes,) and (n,)."""
+        system, expand = self.system, self.system.expand
+        now, then = expand(self.state.temperature), expand(self.initial.temperature)
+        nodes = system.whole.capacity * (now - then) if self.phase is None else self._content(now, then)
+        return nodes, system.spaces.capacity * (self.state.y - self.initial.y) if system.spaces.n else np.zeros(0)
 
-    def _stored(self) -> float:
-        stored = float(self._content(self.state.temperature, self.initial.temperature).sum())
-        return (
-            stored + float(self.system.spaces.capacity @ (self.state.y - self.initial.y))
-            if self.system.spaces.n
-            else stored
-        )
+    def _expanded(self, state: State) -> State:
+        return replace(state, temperature=self.system.expand(state.temperature))
 
 
 def field_times(time) -> list[float]:
