@@ -1,15 +1,16 @@
 """Checkpoints of a run over time: everything from which it goes on as if it had never stopped.
 
 A checkpoint is one npz file, written under another name, flushed and renamed, so that a run killed at any moment
-leaves the last whole one. The mesh is kept beside it, for a mesher need not give the same one twice. Arrays and JSON
-text only: a file from a stranger can't run code.
+leaves the last whole one. The mesh is kept beside it, for a mesher need not give the same one twice, and so is the basis
+of a reduced model, once: the multigrid solver that it came from begins with random numbers. Arrays and JSON text only: a
+file from a stranger can't run code.
 """
 
 from __future__ import annotations
 
 import json
 import os
-from dataclasses import asdict
+from dataclasses import asdict, fields
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -19,13 +20,16 @@ from coldseam._version import __version__
 from coldseam.errors import CaseError, Fault, OutputError
 from coldseam.mesh.types import Mesh, MeshBody
 from coldseam.solution.events import Happened
+from coldseam.solution.heatsystem import HeatSystem
+from coldseam.solution.reduced import Basis, reduced_system
+from coldseam.solution.reducing import Reduction
 from coldseam.solution.stepper import State
 from coldseam.solution.transient import Totals, Transient, Work
 
 if TYPE_CHECKING:
     from coldseam.case.model import Case
 
-CHECKPOINT, MESH = "checkpoint.npz", "checkpoint_mesh.npz"
+CHECKPOINT, MESH, REDUCTION = "checkpoint.npz", "checkpoint_mesh.npz", "checkpoint_reduced.npz"
 _MESH_ARRAYS = ("points", "cells", "cell_body", "facets", "facet_cell", "facet_patch")
 
 
@@ -78,6 +82,32 @@ def load_mesh(folder: Path) -> tuple[Mesh, dict[str, Any]]:
         axisymmetric=told["axisymmetric"],
     )
     return mesh, told["facts"]
+
+
+def save_reduction(folder: Path, found: Reduction) -> None:
+    """Write what became of a reduced model, with its basis.
+
+    Raises
+    ------
+    OutputError
+        It could not be written.
+    """
+    basis = None if found.system is None else found.system.basis
+    arrays = {} if basis is None else {"vectors": basis.vectors, "rates": basis.rates, "seen": basis.seen}
+    told = {entry.name: getattr(found, entry.name) for entry in fields(found) if entry.name != "system"}
+    _write(folder / REDUCTION, arrays | {"told": _text(told)})
+
+
+def load_reduction(folder: Path, system: HeatSystem) -> Reduction | None:
+    """Return what :func:`save_reduction` was given, for the same equations of all nodes; None where nothing was."""
+    if not (folder / REDUCTION).is_file():
+        return None
+    with np.load(folder / REDUCTION, allow_pickle=False) as file:
+        told = _value(file["told"])
+        if "vectors" not in file.files:
+            return Reduction(system=None, **told)
+        basis = Basis(vectors=np.asfortranarray(file["vectors"]), rates=file["rates"], seen=file["seen"])
+    return Reduction(system=reduced_system(system, basis), **told)
 
 
 def has_checkpoint(folder: Path) -> bool:
@@ -140,6 +170,12 @@ def save(folder: Path, transient: Transient, extra: dict[str, Any]) -> None:
     )
 
 
+def extra_of(folder: Path) -> dict[str, Any]:
+    """Return the ``extra`` that a folder's checkpoint was saved with."""
+    with np.load(folder / CHECKPOINT, allow_pickle=False) as file:
+        return _value(file["told"])["extra"]
+
+
 def require_same(folder: Path, case: Case) -> None:
     """Raise a CaseError when a folder's checkpoint is of another case file or another version."""
     with np.load(folder / CHECKPOINT, allow_pickle=False) as file:
@@ -196,5 +232,5 @@ def restore(folder: Path, transient: Transient) -> dict[str, Any]:
 
 def remove(folder: Path) -> None:
     """Remove the checkpoint of a run that has come to its end."""
-    for name in (CHECKPOINT, MESH):
+    for name in (CHECKPOINT, MESH, REDUCTION):
         (folder / name).unlink(missing_ok=True)

@@ -83,10 +83,15 @@ class StageSolver:
         The equations.
     scale
         Temperature difference below which errors don't matter, K: sets the iterative solver's floor.
+    missing
+        Energy that an iterative solution may miss, over that of the increment.
+    keep
+        Factors kept; None for as many as :data:`KEPT` says.
     """
 
-    def __init__(self, system: HeatSystem, scale: float):
-        self.system = system
+    def __init__(self, system: HeatSystem, scale: float, *, missing: float = RELATIVE_ENERGY, keep: int | None = None):
+        self.system, self.missing = system, missing
+        self.keep = KEPT[system.mesh.dim] if keep is None else keep
         self.free = np.flatnonzero(system.free)
         matrix = system.network.matrix
         self.matrix = sparse.csr_array(matrix[self.free][:, self.free])
@@ -107,7 +112,7 @@ class StageSolver:
             return self.kept[a]
         made = self.made(a, self.capacity)
         self.kept[a] = made
-        while len(self.kept) > KEPT[self.system.mesh.dim]:
+        while len(self.kept) > self.keep:
             self.kept.popitem(last=False)
         return made
 
@@ -141,8 +146,8 @@ class StageSolver:
             return solver.factor.solve(right)
         rest = right if guess is None else right - solver.matrix @ guess
         scale = abs(float(right @ guess)) if guess is not None else 0.0
-        offset = -max(scale, self.floor / RELATIVE_ENERGY, 1e-300)
-        solved = solver.solve(rest[:, None], np.array([offset]), RELATIVE_ENERGY)
+        offset = -max(scale, self.floor / self.missing, 1e-300)
+        solved = solver.solve(rest[:, None], np.array([offset]), self.missing)
         self.iterations += solved.iterations[0]
         return solved.values[:, 0] if guess is None else guess + solved.values[:, 0]
 
