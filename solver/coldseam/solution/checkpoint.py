@@ -23,7 +23,7 @@ from coldseam.solution.events import Happened
 from coldseam.solution.heatsystem import HeatSystem
 from coldseam.solution.reduced import Basis, reduced_system
 from coldseam.solution.reducing import Reduction
-from coldseam.solution.stepper import State
+from coldseam.solution.stepper import EXTRAPOLATED, State
 from coldseam.solution.transient import Totals, Transient, Work
 
 if TYPE_CHECKING:
@@ -145,9 +145,9 @@ def save(folder: Path, transient: Transient, extra: dict[str, Any]) -> None:
         "extra": extra,
     }
     guesses = {
-        f"guess_{stage}_{n}": np.append(h, d)
+        f"guess_{stage}_{n}": np.concatenate([[start, h], d])
         for stage, past in transient.stepper.guesses.items()
-        for n, (h, d) in enumerate(past)
+        for n, (start, h, d) in enumerate(past)
     }
     refresh = {} if transient.refresh is None else transient.refresh.memory()
     _write(
@@ -225,8 +225,8 @@ def restore(folder: Path, transient: Transient) -> dict[str, Any]:
         watch.closest, watch.closest_at = known["closest"], known["closest_at"]
         watch.happened = None if known["happened"] is None else Happened(**known["happened"])
     for stage in transient.stepper.guesses:
-        past = [stored[name] for name in (f"guess_{stage}_0", f"guess_{stage}_1") if name in stored]
-        transient.stepper.guesses[stage] = [(float(array[0]), array[1:]) for array in past]
+        past = [stored[name] for name in (f"guess_{stage}_{n}" for n in range(EXTRAPOLATED)) if name in stored]
+        transient.stepper.guesses[stage] = [(float(array[0]), float(array[1]), array[2:]) for array in past]
     return told["extra"]
 
 

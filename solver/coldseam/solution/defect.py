@@ -49,11 +49,11 @@ class Interval:
     length
         How much of it the run has passed, s.
     w, y, t
-        Integrals of the unknowns, of spaces and goods, of terminals, K s.
+        Integrals of the unknowns, (n_unknowns,), of spaces and goods, (n,), and of terminals, (n_terminals,), K s.
     taken
-        Heat taken up along the unknowns, J per K of theirs, and by flows' channel, J.
+        What the unknowns took up, (n_unknowns,).
     flows
-        Heat by channel, J.
+        Heat by channel, J, (n_channels,).
     state
         Where the last step in it began.
     """

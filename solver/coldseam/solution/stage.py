@@ -26,7 +26,9 @@ DIRECT_LIMIT = {2: 60_000, 3: 6_000}
 """Unknowns up to which a stage is factorised: more than for a steady solve, for a factor serves many stages."""
 KEPT = {2: 8, 3: 3}
 """Factorisations or multigrid hierarchies kept for step sizes that come back."""
-RELATIVE_ENERGY = 1e-14  # missing energy of an iterative solution over that of the increment
+RELATIVE_ENERGY, FLOOR = 1e-11, 1e-4
+"""Missing energy of an iterative solution over that of the increment, and its error over the step's tolerance, by the
+estimate of ``linear.py``, which is that of some iterations before: what is really missing is a thousandth and less."""
 MOST_NEWTON = 60
 
 
@@ -98,7 +100,7 @@ class StageSolver:
         self.capacity = system.capacity[self.free]
         self.coupling = sparse.csr_array(system.coupling[self.free])
         self.gather = sparse.csr_array(self.coupling.T)
-        self.floor = (1e-5 * scale) ** 2 * float(self.capacity.sum())
+        self.floor = (FLOOR * scale) ** 2 * float(self.capacity.sum())
         self.kept: OrderedDict[float, Factor] = OrderedDict()
         self.factorisations = 0
         self.solves = 0
@@ -136,18 +138,21 @@ class StageSolver:
         """Drop all factors: the coefficients have changed."""
         self.kept.clear()
 
-    def solve(self, factor: Factor, right: np.ndarray, guess: np.ndarray | None) -> np.ndarray:
-        """Return S^-1 right over the free nodes, (n_free,)."""
-        return self._solve(factor.solver, right, guess)
+    def solve(
+        self, factor: Factor, right: np.ndarray, guess: np.ndarray | None, missing: float | None = None
+    ) -> np.ndarray:
+        """Return S^-1 right over the free nodes, (n_free,); ``missing`` energy if it may be more than usual."""
+        return self._solve(factor.solver, right, guess, missing)
 
-    def _solve(self, solver, right: np.ndarray, guess: np.ndarray | None) -> np.ndarray:
+    def _solve(self, solver, right: np.ndarray, guess: np.ndarray | None, missing: float | None = None) -> np.ndarray:
+        missing = self.missing if missing is None else max(missing, self.missing)
         self.solves += 1
         if isinstance(solver, DirectSolver):
             return solver.factor.solve(right)
         rest = right if guess is None else right - solver.matrix @ guess
         scale = abs(float(right @ guess)) if guess is not None else 0.0
-        offset = -max(scale, self.floor / self.missing, 1e-300)
-        solved = solver.solve(rest[:, None], np.array([offset]), self.missing)
+        offset = -max(scale, self.floor / missing, 1e-300)
+        solved = solver.solve(rest[:, None], np.array([offset]), missing)
         self.iterations += solved.iterations[0]
         return solved.values[:, 0] if guess is None else guess + solved.values[:, 0]
 

@@ -28,6 +28,9 @@ GAMMA = 2.0 - np.sqrt(2.0)
 D = GAMMA / 2.0
 W = np.sqrt(2.0) / 4.0
 WEIGHTS = np.array([W, W, D])
+EXTRAPOLATED = 3
+"""Steps from which the start of an iterative solution is extrapolated: quadratic."""
+FILTERED = 1e-6  # energy that the error estimate may miss: a thousandth of it
 MOST_MELTING = 60
 MELTING_TOLERANCE = 1e-9  # K
 ERROR_WEIGHTS = WEIGHTS - np.array([(1.0 - W) / 3.0, (3.0 * W + 1.0) / 3.0, D / 3.0])
@@ -157,7 +160,7 @@ class Stepper:
         self.system = system
         self.solver = solver
         self.phase = phase
-        self.guesses: dict[int, list[tuple[float, np.ndarray]]] = {2: [], 3: []}
+        self.guesses: dict[int, list[tuple[float, float, np.ndarray]]] = {2: [], 3: []}
 
     def attempt(self, state: State, h: float) -> Step:
         """Solve one step and estimate its error; nothing is kept but the solver's factor.
@@ -184,7 +187,7 @@ class Stepper:
         x, e = self.filtered(
             state, three.factor, h * (ERROR_WEIGHTS @ node_heat), h * (ERROR_WEIGHTS @ space_heat), y3, end
         )
-        self._remember(two.d, three.d, h)
+        self._remember(two.d, three.d, state.time, h)
         return Step(
             start=state,
             h=h,
@@ -251,7 +254,7 @@ class Stepper:
         if self.phase is not None:
             return self._melting(state, a, moved, known_nodes, known_spaces, terminals, time, before)
         factor, free = self.solver.factor(a), self.solver.free
-        guess = self._guess(number, h)
+        guess = self._guess(number, state.time, h)
         d, e = self._linear(factor, state, moved, known_nodes[free], known_spaces, terminals, time, before, guess)
         stored = np.zeros(len(moved))
         stored[free] = self.solver.capacity * d
@@ -324,7 +327,7 @@ class Stepper:
             Changes of the free nodes' temperatures, (n_free,), and of those of spaces and goods, (n,), K.
         """
         solver, a = self.solver, factor.a
-        x = solver.solve(factor, nodes[solver.free], None)
+        x = solver.solve(factor, nodes[solver.free], None, FILTERED)
         if not self.system.spaces.n:
             return x, np.zeros(0)
         _, slope = self.system.spaces.flows(y, state.running, time, before=True)
@@ -332,15 +335,30 @@ class Stepper:
         e = np.linalg.solve(matrix, spaces + a * (solver.gather @ x))
         return x + a * (factor.response @ e), e
 
-    def _guess(self, number: int, h: float) -> np.ndarray | None:
-        """Extrapolate the increment per second of the last two steps; None at first."""
+    def _guess(self, number: int, time: float, h: float) -> np.ndarray | None:
+        """Extrapolate a stage's increment per second from those of up to three steps before; None at first."""
         past = self.guesses[number]
         if not past:
             return None
-        if len(past) == 1 or past[0][0] != past[1][0]:
-            return past[-1][1] * h / past[-1][0]
-        return (2.0 * past[1][1] - past[0][1]) * h / past[1][0]
+        middles = np.array([start + 0.5 * length for start, length, _ in past])
+        weights = lagrange(middles, time + 0.5 * h)
+        guess = (weights[0] * h / past[0][1]) * past[0][2]
+        for weight, (_, length, d) in zip(weights[1:], past[1:], strict=True):
+            guess += (weight * h / length) * d
+        return guess
 
-    def _remember(self, d2: np.ndarray, d3: np.ndarray, h: float) -> None:
+    def _remember(self, d2: np.ndarray, d3: np.ndarray, time: float, h: float) -> None:
         for number, d in ((2, d2), (3, d3)):
-            self.guesses[number] = [*self.guesses[number][-1:], (h, d)]
+            past = [entry for entry in self.guesses[number] if entry[0] < time]
+            self.guesses[number] = [*past[1 - EXTRAPOLATED :], (time, h, d)]
+
+
+def lagrange(places: np.ndarray, place: float) -> np.ndarray:
+    """Return the weights, (n,), by which values at places, (n,), are interpolated or extrapolated to another.
+
+    >>> lagrange(np.array([0.0, 1.0]), 2.0).tolist()
+    [-1.0, 2.0]
+    """
+    apart = places[:, None] - places[None, :] + np.eye(len(places))
+    away = np.broadcast_to(place - places, apart.shape)
+    return np.prod(np.where(np.eye(len(places), dtype=bool), 1.0, away / apart), axis=1)
