@@ -122,20 +122,18 @@ def reduced_system(system: HeatSystem, basis: Basis) -> ReducedSystem:
     shares = sparse.csr_array(system.readers.fixed_nodes[held].T)
     size = len(basis.rates)
 
-    def project(block) -> sparse.csr_array:
-        return sparse.csr_array(_projected(sparse.csr_array(block.T), free, basis.vectors, shares).T)
+    def project(block: sparse.csr_array) -> np.ndarray:
+        return _projected(sparse.csr_array(block.T), free, basis.vectors, shares).T
 
-    matrix = sparse.csr_array(project(sparse.csr_array(network.matrix @ shares)))  # what meets the fixed boundaries
-    top = sparse.diags_array(basis.rates)
-    whole = sparse.csr_array(sparse.block_array([[top, matrix[:size]], [matrix[:size].T, matrix[size:]]]))
+    meets = project(network.matrix @ shares)  # conductances to the fixed boundaries
     coupling = project(system.coupling)
-    load = project(sparse.csr_array(network.load[:, None])).toarray()[:, 0]
+    load = project(sparse.csr_array(network.load[:, None]))[:, 0]
     own = {f.name: getattr(system, f.name) for f in fields(HeatSystem)}
     return ReducedSystem(
         **own
         | {
             "network": Network(
-                matrix=whole,
+                matrix=np.block([[np.diag(basis.rates), meets[:size]], [meets[:size].T, meets[size:]]]),
                 exchange=project(network.exchange),
                 fixed=np.concatenate([np.full(size, -1), system.readers.terminal[held]]),
                 load=load,
@@ -144,7 +142,7 @@ def reduced_system(system: HeatSystem, basis: Basis) -> ReducedSystem:
             ),
             "capacity": np.concatenate([np.ones(size), shares.T @ system.capacity]),
             "coupling": coupling,
-            "gather": sparse.csr_array(coupling.T),
+            "gather": coupling.T,
             "drive": project(system.drive),
             "readers": _readers(system.readers, free, basis, shares, held),
         },
@@ -158,7 +156,7 @@ def _readers(readers: FlowReaders, free, basis: Basis, shares, held: np.ndarray)
     size, count = len(basis.rates), len(held)
     return replace(
         readers,
-        film_nodes=sparse.csr_array(_projected(readers.film_nodes, free, basis.vectors, shares)),
+        film_nodes=_projected(readers.film_nodes, free, basis.vectors, shares),
         fixed_nodes=sparse.coo_array(
             (np.ones(count), (held, size + np.arange(count))), shape=(len(readers.film), size + count)
         ).tocsr(),

@@ -20,7 +20,7 @@ from scipy import sparse
 
 from coldseam.errors import SolveError
 from coldseam.solution.heatsystem import HeatSystem
-from coldseam.solution.linear import DirectSolver, MultigridSolver
+from coldseam.solution.linear import DirectSolver, MultigridSolver, by_rows
 
 DIRECT_LIMIT = {2: 60_000, 3: 6_000}
 """Unknowns up to which a stage is factorised: more than for a steady solve, for a factor serves many stages."""
@@ -42,7 +42,7 @@ def stage_hierarchy(matrix: sparse.csr_array):
 
     narrow = sparse.csr_matrix(matrix)
     narrow.indices, narrow.indptr = narrow.indices.astype(np.int32), narrow.indptr.astype(np.int32)
-    return pyamg.smoothed_aggregation_solver(
+    hierarchy = pyamg.smoothed_aggregation_solver(
         narrow,
         strength=("symmetric", {"theta": 0.0}),
         smooth=("jacobi", {"omega": 4.0 / 3.0, "weighting": "local"}),
@@ -52,6 +52,7 @@ def stage_hierarchy(matrix: sparse.csr_array):
         max_coarse=200,
         coarse_solver="splu",
     )
+    return by_rows(hierarchy)
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)

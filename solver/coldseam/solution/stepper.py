@@ -187,7 +187,8 @@ class Stepper:
         x, e = self.filtered(
             state, three.factor, h * (ERROR_WEIGHTS @ node_heat), h * (ERROR_WEIGHTS @ space_heat), y3, end
         )
-        self._remember(two.d, three.d, state.time, h)
+        if three.factor.solver.iterative:
+            self._remember(two.d, three.d, state.time, h)
         return Step(
             start=state,
             h=h,
@@ -254,7 +255,7 @@ class Stepper:
         if self.phase is not None:
             return self._melting(state, a, moved, known_nodes, known_spaces, terminals, time, before)
         factor, free = self.solver.factor(a), self.solver.free
-        guess = self._guess(number, state.time, h)
+        guess = self._guess(number, state.time, h) if factor.solver.iterative else None
         d, e = self._linear(factor, state, moved, known_nodes[free], known_spaces, terminals, time, before, guess)
         stored = np.zeros(len(moved))
         stored[free] = self.solver.capacity * d
