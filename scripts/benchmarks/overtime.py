@@ -11,8 +11,7 @@ from coldseam.case.read import loads
 from coldseam.mesh.build import build_mesh
 from coldseam.mesh.types import MeshBody
 from coldseam.solution.heatsystem import HeatSystem, heat_system
-from coldseam.solution.reduced import reduced_state
-from coldseam.solution.reducing import Reduction, reduction
+from coldseam.solution.reducing import Reduction, reduced_run, reduction
 from coldseam.solution.respond import respond
 from coldseam.solution.starting import starting_state
 from coldseam.solution.steady import NODE_TOLERANCE
@@ -80,7 +79,9 @@ def block(dim: int, per_side: int, times: dict[str, str]) -> HeatSystem:
     drawn = brick_grid(dim, per_side)
     centres = drawn.p[:, drawn.t].mean(axis=1)
     bolt = np.abs(centres[: dim - 1] - 0.5).max(axis=0) < 0.06
-    bodies = tuple(MeshBody(name=n, material=m, source=s) for s, (n, m) in enumerate((("block", "foam"), ("bolt", "steel"))))
+    bodies = tuple(
+        MeshBody(name=n, material=m, source=s) for s, (n, m) in enumerate((("block", "foam"), ("bolt", "steel")))
+    )
     mesh = build_mesh(SIDE * drawn.p.T, drawn.t.T, bolt.astype(int), bodies)
     text = CASE.format(dim=dim, low=[0] * dim, high=[100] * dim, middle=[50] * dim, axis="xyz"[dim - 1], **times)
     return heat_system(loads(text), mesh)
@@ -102,11 +103,11 @@ def timed(work):
 
 def in_reduced_model(system: HeatSystem) -> tuple[History, Reduction]:
     """Return the history by the reduced model, from nothing."""
-    start = starting_state(system)
-    found = reduction(Transient(system, start))
+    whole = Transient(system, starting_state(system))
+    found = reduction(whole)
     if found.system is None:
         raise SystemExit(f"no reduced model: {found.why}")
-    return run(Transient(found.system, reduced_state(found.system, start))), found
+    return run(reduced_run(found.system, whole)), found
 
 
 def difference(one: History, other: History) -> float:
@@ -157,8 +158,13 @@ def measure(cells: int = CELLS) -> list[Table]:
         head=("nodes", "steps", "all steps, s", "a stage, s", "fresh solve with set-up, s", "ratio", "goal"),
         rows=[
             (
-                f"{len(system.capacity):,}", f"{full.work.steps:,}", f"{slow:.0f}", f"{stage:.3f}", f"{fresh:.2f}",
-                f"{stage / fresh:.2f}", verdict(stage / fresh, 0.2, at_least=False),
+                f"{len(system.capacity):,}",
+                f"{full.work.steps:,}",
+                f"{slow:.0f}",
+                f"{stage:.3f}",
+                f"{fresh:.2f}",
+                f"{stage / fresh:.2f}",
+                verdict(stage / fresh, 0.2, at_least=False),
             )  # fmt: skip
         ],
         remarks=(
@@ -172,8 +178,18 @@ def measure(cells: int = CELLS) -> list[Table]:
         name="reduced",
         title="The reduced model, its search and checks included, against stepping all nodes",
         head=(
-            "case", "nodes", "steps", "all nodes, s", "reduced, s", "vectors", "full solves", "faster by", "goal",
-            "largest difference, mK", "as checked, mK", "goal",
+            "case",
+            "nodes",
+            "steps",
+            "all nodes, s",
+            "reduced, s",
+            "vectors",
+            "full solves",
+            "faster by",
+            "goal",
+            "largest difference, mK",
+            "as checked, mK",
+            "goal",
         ),  # fmt: skip
         rows=[row_of("3D, cooldown over a day", *solid), row_of("2D, 20 days of weather", *flat)],
         remarks=("Processor seconds. The difference is that of all recorded temperatures and of the last field.",),

@@ -23,8 +23,7 @@ from coldseam.report.shown import Shown
 from coldseam.report.view import View, model_view
 from coldseam.solution import checkpoint
 from coldseam.solution.heatsystem import HeatSystem, heat_system
-from coldseam.solution.reduced import reduced_state
-from coldseam.solution.reducing import Reduction, not_tried, reduction
+from coldseam.solution.reducing import Reduction, not_tried, reduced_run, reduction
 from coldseam.solution.refresh import refresher
 from coldseam.solution.starting import FINAL, machine_outlook, save_final, starting_state
 from coldseam.solution.timeconstants import time_constants
@@ -155,9 +154,8 @@ def _begun(
 
     While it is looked for, ``folder`` holds a checkpoint of the start: a run killed then keeps its mesh.
     """
-    start = starting_state(system)
     phase, refresh = heat_content(system.case, system.mesh), refresher(system)
-    whole = Transient(system, start, phase=phase, refresh=refresh, on_field=fields)
+    whole = Transient(system, starting_state(system), phase=phase, refresh=refresh, on_field=fields)
     reduced = None if folder is None else checkpoint.load_reduction(folder, system)
     if reduced is None:
         if folder is not None and not not_tried(system, whole):
@@ -167,7 +165,7 @@ def _begun(
             checkpoint.save_reduction(folder, reduced)
     if reduced.system is None:
         return whole, reduced
-    return Transient(reduced.system, reduced_state(reduced.system, start), on_field=fields), reduced
+    return reduced_run(reduced.system, whole, fields), reduced
 
 
 def _mesh(case: Case, log: Log, folder: Path | None) -> tuple[Mesh, dict]:

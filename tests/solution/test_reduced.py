@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+from functools import cache
+
 import numpy as np
 import pytest
 from solution.grids import first_state, grid, run_on, slab_text, stepping
@@ -14,8 +17,8 @@ from coldseam.physics.melting import heat_content
 from coldseam.solution import checkpoint, reducing
 from coldseam.solution.defect import EACH, SAFETY, intervals_of, ladder_of
 from coldseam.solution.heatsystem import heat_system
-from coldseam.solution.reduced import reduced_state, reduced_system, turned
-from coldseam.solution.reducing import Reduction, extended, not_tried, reduction
+from coldseam.solution.reduced import reduced_system, turned
+from coldseam.solution.reducing import Reduction, extended, not_tried, reduced_run, reduction
 from coldseam.solution.transient import History, Transient
 
 ROOM = """
@@ -97,14 +100,18 @@ def room(dim: int) -> tuple:
     return mesh, text
 
 
+@cache
+def room_reduction(dim: int) -> Reduction:
+    """Return the reduced model of :func:`room`, made once."""
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(reducing, "LEAST_NODES", {2: 10, 3: 10})
+        return reduction(stepping(*room(dim)))
+
+
 def finished(run: Transient) -> History:
     while run.status == "running":
         run.step()
     return run.result()
-
-
-def in_reduced_model(found: Reduction, run: Transient) -> Transient:
-    return Transient(found.system, reduced_state(found.system, run.initial))
 
 
 @pytest.fixture(autouse=True)
@@ -119,20 +126,40 @@ def off(one: History, other: History, unit: str) -> float:
     return float(np.abs(one.rows[:, columns] - other.rows[:, columns]).max())
 
 
+def stepped_along(run: Transient, whole: Transient) -> float:
+    """Take a reduced run's own steps over all nodes too; return the largest difference at their ends, K."""
+    state, worst = whole.state, 0.0
+    while run.status == "running":
+        running, step = run.state.running, run.step()
+        full = whole.stepper.attempt(replace(state, running=running), step.h)
+        state = whole.stepper.at(full, min((run.time - step.start.time) / step.h, 1.0))
+        terminals = whole.system.terminals(run.time)
+        temperature = whole.system.with_fixed(state.temperature, terminals)
+        state = replace(state, time=run.time, temperature=temperature)
+        worst = max(worst, np.abs(run.system.expand(run.state.temperature) - temperature).max())
+        worst = max(worst, np.abs(run.state.y - state.y).max(initial=0.0))
+    return worst
+
+
+@pytest.mark.parametrize("dim", [2, 3])
+def test_along_the_same_steps_no_node_is_off_by_more_than_was_checked(dim):
+    """Every node and space after every step, jumps included: under the checked error, which is under a millikelvin."""
+    whole, found = stepping(*room(dim)), room_reduction(dim)
+    assert found.why == "" and found.error <= found.allowed == 1e-3
+    assert stepped_along(reduced_run(found.system, whole), whole) < found.error
+
+
 @pytest.mark.parametrize("dim", [2, 3])
 def test_it_gives_what_full_stepping_gives(dim):
-    """Every temperature of the history within the checked error, which is under a millikelvin; the same switches."""
-    whole = stepping(*room(dim))
-    found = reduction(whole)
-    assert found.why == "" and found.error <= found.allowed == 1e-3
-    reduced, full = finished(in_reduced_model(found, whole)), finished(whole)
-    assert reduced.work == full.work and full.work.switched >= 3
-    assert off(reduced, full, "degC") < found.error
-    assert np.abs(reduced.final.temperature - full.final.temperature).max() < found.error
+    """The histories may differ by parts of the step's tolerance besides, where a step's error lies at a threshold."""
+    whole, found = stepping(*room(dim)), room_reduction(dim)
+    reduced, full = finished(reduced_run(found.system, whole)), finished(whole)
+    assert off(reduced, full, "degC") < found.error + 0.05 * full.tolerance
     assert off(reduced, full, "W") < 1e-3 * np.abs(full.column("boundary", "inside")).max()
     assert reduced.totals.heat == pytest.approx(full.totals.heat, rel=1e-4)
     assert [e.time for e in reduced.events] == pytest.approx([e.time for e in full.events], abs=1.0)
-    assert reduced.relative_closure < 1e-9 and reduced.system is full.system
+    assert reduced.work.switched == full.work.switched >= 3
+    assert reduced.relative_closure < 1e-9 and reduced.system is found.system.full
     assert found.solves < 0.5 * full.solver["solves"]  # of the full system: the work that it saves
     assert found.factorisations < 0.5 * full.solver["factorisations"]
 
@@ -142,7 +169,7 @@ def test_slab_series(biot):
     """The exact series of test_transient.py, to the grid's 5e-4, from a few vectors."""
     whole = stepping(grid(*LINE), slab_text(film=biot))
     found = reduction(whole)
-    history = finished(in_reduced_model(found, whole))
+    history = finished(reduced_run(found.system, whole))
     assert found.vectors < 40
     for (bi, fo), (centre, surface, given_off) in SERIES["slab"].items():
         if bi == biot:
@@ -166,7 +193,7 @@ def test_with_a_whole_basis_it_is_the_full_system():
     basis = turned(full, extended(np.empty((len(capacity), 0)), capacity, np.eye(len(capacity))))
     assert len(basis.rates) == len(capacity) and len(full.readers.film) == 3
     system = reduced_system(full, basis)
-    run = Transient(system, reduced_state(system, whole.initial))
+    run = reduced_run(system, whole)
     assert system.expand(run.initial.temperature) == pytest.approx(whole.initial.temperature, abs=1e-9)
     assert run.totals.heat == pytest.approx(whole.totals.heat)  # what the jump of the held nodes took
     reduced, expected = finished(run), finished(whole)
@@ -206,7 +233,7 @@ def test_a_poor_basis_is_told_how_poor_it_is():
     solver = reducing.StageSolver(whole.system, whole.tolerance, keep=len(lengths))
     vectors = reducing.first_vectors(solver, whole.initial, lengths)[:, :6]
     system = reduced_system(whole.system, turned(whole.system, vectors))
-    found, run = reducing.run_checked(system, whole.initial, reducing.Stepper(whole.system, solver), lengths)
+    found, run = reducing.run_checked(system, whole, reducing.Stepper(whole.system, solver), lengths)
     real = off(run.result(), finished(whole), "degC")
     assert real / 3.0 < found.largest / SAFETY < 3.0 * real and real > 1e-3
 
@@ -232,10 +259,9 @@ def test_where_it_does_not_pay_it_is_not_tried(monkeypatch):
 def test_a_run_in_it_resumes_to_the_same_history(tmp_path):
     """The basis comes back from its file, the state from the checkpoint: not a bit of the history changes."""
     mesh, text = room(2)
-    whole = stepping(mesh, text)
-    found = reduction(whole)
+    whole, found = stepping(mesh, text), room_reduction(2)
     checkpoint.save_reduction(tmp_path, found)
-    run = in_reduced_model(found, whole)
+    run = reduced_run(found.system, whole)
     for _ in range(40):
         run.step()
     checkpoint.save(tmp_path, run, {"fields": [], "decided": True})
@@ -243,7 +269,7 @@ def test_a_run_in_it_resumes_to_the_same_history(tmp_path):
     again = stepping(mesh, text)
     known = checkpoint.load_reduction(tmp_path, again.system)
     assert known.facts() == found.facts()
-    other = in_reduced_model(known, again)
+    other = reduced_run(known.system, again)
     checkpoint.restore(tmp_path, other)
     one, two = finished(run), finished(other)
     assert np.abs(one.rows - two.rows).max() < 1e-9 and two.work == one.work
@@ -257,7 +283,7 @@ def test_fields_are_handed_out_on_the_mesh():
     seen = []
     whole = stepping(grid(*LINE), text)
     found = reduction(whole)
-    finished(Transient(found.system, reduced_state(found.system, whole.initial), on_field=lambda t, f: seen.append(f)))
+    finished(reduced_run(found.system, whole, lambda t, f: seen.append(f)))
     expected = []
     run_on(grid(*LINE), text, on_field=lambda t, f: expected.append(f))
     assert np.abs(seen[0] - expected[0]).max() < found.error and seen[0].shape == expected[0].shape

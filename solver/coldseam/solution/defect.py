@@ -11,8 +11,9 @@ basis's. Then e is stepped by implicit Euler over these intervals, with a few ke
 each. Intervals grow in a ladder from the start and from the largest jumps, where a basis is worst, and keep to the bends
 of the first schedules' pieces; everything else is gathered in long ones. Implicit Euler smears and meets the worst
 moment only by chance, hence SAFETY; on runs compared with full stepping the estimate without it was off by a factor of
-2 at most (tests/solution/test_reduced.py compares again). What it can't see: thermostats switch a little earlier or
-later in either run, within the step's own tolerance.
+2 at most (tests/solution/test_reduced.py compares again). What it does not tell: where the error of a step lies at a
+threshold, either run may take a longer step than the other and a thermostat switch a little earlier, which moves the
+history by parts of the step's own tolerance.
 """
 
 from __future__ import annotations

@@ -38,8 +38,53 @@ class Column:
     unit: str
 
 
+@dataclass(frozen=True, kw_only=True, eq=False)
+class Weights:
+    """What reads probes and surfaces from node temperatures.
+
+    Parameters
+    ----------
+    probes, mean
+        Weights of the nodes, (n_probes, n_nodes), and for boundaries' mean temperatures, (n_boundaries, n_nodes).
+    surface
+        Picks the nodes of every boundary in turn, (n_picked, n_nodes).
+    starts
+        Where each boundary's begin among them, (n_boundaries,).
+    """
+
+    probes: sparse.csr_array
+    mean: sparse.csr_array
+    surface: sparse.csr_array
+    starts: np.ndarray
+
+
+def weights_of(system: HeatSystem) -> Weights:
+    """Return what reads the probes and surfaces of a system's case from its mesh.
+
+    Raises
+    ------
+    CaseError
+        A probe outside the model.
+    """
+    case, mesh = system.case, system.mesh
+    count = len(case.boundary)
+    rows = np.repeat(system.facet_boundary, mesh.dim)
+    nodes = mesh.facets.ravel()
+    shares = sparse.coo_array(
+        (facet_shares(mesh, mesh.facets).ravel(), (rows, nodes)), shape=(count, mesh.n_nodes)
+    ).tocsr()
+    area = np.asarray(shares.sum(axis=1)).ravel()
+    touched = sparse.coo_array((np.ones(len(nodes)), (rows, nodes)), shape=shares.shape).tocsr()
+    return Weights(
+        probes=_probe_weights(system),
+        mean=sparse.csr_array(sparse.diags_array(1.0 / area) @ shares),
+        surface=picked(touched.indices, mesh.n_nodes),
+        starts=touched.indptr[:-1],
+    )
+
+
 class Gauges:
-    """Reads temperatures at probes and surfaces from node temperatures.
+    """Reads temperatures at probes and surfaces from the unknowns.
 
     Parameters
     ----------
@@ -47,23 +92,15 @@ class Gauges:
         The equations; its case names probes and boundaries.
     phase
         Heat content where bodies melt, or None.
+    weights
+        Of its mesh, where they are known already.
     """
 
-    def __init__(self, system: HeatSystem, phase=None):
+    def __init__(self, system: HeatSystem, phase=None, weights: Weights | None = None):
         self.system, self.phase = system, phase
-        case, mesh = system.case, system.mesh
-        self.probes = system.reading(_probe_weights(system))
-        count = len(case.boundary)
-        rows = np.repeat(system.facet_boundary, mesh.dim)
-        nodes = mesh.facets.ravel()
-        shares = sparse.coo_array(
-            (facet_shares(mesh, mesh.facets).ravel(), (rows, nodes)), shape=(count, mesh.n_nodes)
-        ).tocsr()
-        area = np.asarray(shares.sum(axis=1)).ravel()
-        self.mean = system.reading(sparse.csr_array(sparse.diags_array(1.0 / area) @ shares))
-        touched = sparse.coo_array((np.ones(len(nodes)), (rows, nodes)), shape=shares.shape).tocsr()
-        self.surface = system.reading(picked(touched.indices, mesh.n_nodes))
-        self.starts = touched.indptr[:-1]
+        self.weights = weights or weights_of(system)
+        self.probes, self.mean = system.reading(self.weights.probes), system.reading(self.weights.mean)
+        self.surface, self.starts = system.reading(self.weights.surface), self.weights.starts
 
     def columns(self) -> list[Column]:
         """Return the columns that :meth:`row` fills."""

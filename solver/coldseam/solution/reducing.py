@@ -191,21 +191,38 @@ def first_vectors(solver: StageSolver, initial: State, lengths: list[float]) -> 
     return extended(vectors, capacity, np.hstack(found))
 
 
+def reduced_run(
+    system: ReducedSystem, whole: Transient, on_field: Callable[[float, np.ndarray], None] | None = None
+) -> Transient:
+    """Return the run of reduced equations that begins where one over all nodes does, and hands out its fields.
+
+    Parameters
+    ----------
+    system
+        The reduced equations.
+    whole
+        The run over all nodes, which has not begun.
+    on_field
+        As for a :class:`coldseam.solution.transient.Transient`, with temperatures of shape (n_nodes,).
+    """
+    return Transient(system, reduced_state(system, whole.initial), on_field=on_field, weights=whole.gauges.weights)
+
+
 def run_checked(
-    system: ReducedSystem, initial: State, stepper: Stepper, lengths: list[float]
+    system: ReducedSystem, whole: Transient, stepper: Stepper, lengths: list[float]
 ) -> tuple[Defect, Transient]:
     """Return the error of a whole reduced run, and the run.
 
     Parameters
     ----------
-    system, initial
-        The reduced equations, and the state of all nodes at the beginning.
+    system, whole
+        As for :func:`reduced_run`.
     stepper
         Of the full equations.
     lengths
         The ladder that its factors are kept for, s.
     """
-    run = Transient(system, reduced_state(system, initial))
+    run = reduced_run(system, whole)
     ledger = Ledger(system, intervals_of(system, run.ends, run.duration, lengths))
     while run.status == "running":
         step = run.step()
@@ -239,12 +256,12 @@ def reduction(run: Transient, log: Callable[[str, str], None] | None = None) -> 
 
 def _searched(run: Transient, solver: StageSolver, vectors: np.ndarray, lengths: list[float], log) -> Reduction:
     """Extend the basis by the errors it leaves until they are allowed, or too many, or too slow."""
-    system, initial, stepper = run.system, run.initial, Stepper(run.system, solver)
+    system, stepper = run.system, Stepper(run.system, solver)
     allowed, before = min(ALLOWED, ALLOWED_OF_STEP * run.tolerance), np.inf
     allowed_flow = ALLOWED_FLOW * system.case.model.accuracy
     for turn in range(1, MOST_ROUNDS + 1):
         reduced = reduced_system(system, turned(system, vectors))
-        found, tried = run_checked(reduced, initial, stepper, lengths)
+        found, tried = run_checked(reduced, run, stepper, lengths)
         worst = max(found.largest / allowed, found.flow / allowed_flow)
         log(
             "run",

@@ -15,7 +15,7 @@ import numpy as np
 from coldseam.errors import SolveError
 from coldseam.solution.events import Happened, Watch, first_crossing
 from coldseam.solution.heatsystem import HeatSystem
-from coldseam.solution.record import Column, Gauges, flows_at
+from coldseam.solution.record import Column, Gauges, Weights, flows_at
 from coldseam.solution.refresh import Refresher
 from coldseam.solution.spaces import outside_range
 from coldseam.solution.stage import StageSolver
@@ -134,6 +134,8 @@ class Transient:
         Called with the state before every step; returns a new system when coefficients have changed, else None.
     on_field
         Called with time (s) and node temperatures (°C) at every time after 0 that a field is asked for.
+    weights
+        What reads its mesh, where another run on it has them already.
     """
 
     def __init__(
@@ -144,12 +146,13 @@ class Transient:
         phase=None,
         refresh: Refresher | None = None,
         on_field: Callable[[float, np.ndarray], None] | None = None,
+        weights: Weights | None = None,
     ):
         self.system, self.phase, self.refresh, self.on_field = system, phase, refresh, on_field
         self.tolerance = tolerance_of(system)
         self.solver = StageSolver(system, self.tolerance)
         self.stepper = Stepper(system, self.solver, phase)
-        self.gauges = Gauges(system, phase)
+        self.gauges = Gauges(system, phase, weights)
         time = system.case.time
         self.duration = time.duration
         self.totals = Totals(*(np.zeros(len(channels(system))) for _ in range(3)))
