@@ -180,6 +180,15 @@ def test_slab_series(biot):
                 assert -history.totals.heat[0] / 0.1 == pytest.approx(given_off, abs=5e-4)
 
 
+def test_an_uneven_start_is_in_the_basis_and_the_balance_closes():
+    mesh = grid(*LINE)
+    whole = stepping(mesh, slab_text(film=1.0), np.cos(3.0 * mesh.points[:, 0]))
+    found = reduction(whole)
+    run = reduced_run(found.system, whole)
+    assert run.system.expand(run.initial.temperature) == pytest.approx(whole.initial.temperature, abs=1e-9)
+    assert finished(run).relative_closure < 1e-10
+
+
 def test_with_a_whole_basis_it_is_the_full_system():
     """All nodes' vectors: flows, capacities and what fixed boundaries store are the full ones, shared nodes included."""
     text = held_face(slab_text(start=3)).replace(

@@ -2,7 +2,7 @@
 
 What drives the nodes (start, schedules, floating spaces, loads) enters through a few fixed vectors b, so that the field
 lies close to a rational Krylov space (Druskin, Knizhnerman, Zaslavsky 2009, SIAM J. Sci. Comput. 31, 3760): the uniform
-field (for the heat balance), the start, C^-1 b, and (C + a A)^-1 b for a ladder of times a from that in which a
+field (for the heat balance), the start, C^-1 b, and ((C + a A)^-1 C)^k (C + a A)^-1 b for a ladder of times a from that in which a
 disturbance crosses a cell to the run itself. The whole run is then taken in this space, and its error computed from what
 it leaves unbalanced (``defect.py``): fields of the full system, which extend the basis where this run needs it. When the
 error, with its safety, is a small part of what a step may be off, the basis is accepted as it was checked.
@@ -28,8 +28,10 @@ from coldseam.solution.stage import StageSolver
 from coldseam.solution.stepper import State, Stepper
 from coldseam.solution.transient import LONGEST, Transient
 
-RATIO = 6.0
+RATIO = 8.0
 """Of neighbouring times of the ladder."""
+DEEP = 3
+"""Solves in turn with one factor, for what drives the nodes from the start."""
 LEAST_NODES = {2: 10_000, 3: 4_000}
 """Free nodes below which stepping them costs less than stepping and checking several reduced runs."""
 MOST_VECTORS = 160
@@ -122,7 +124,7 @@ def _jumps(run: Transient) -> list[float]:
 def _cost(system: HeatSystem, run: Transient) -> float:
     """Return the solves with the full system that two rounds will take at least."""
     lengths = _lengths(system, run)
-    return len(lengths) * _inputs(system, run.initial).shape[1] + 2 * len(
+    return DEEP * len(lengths) * _inputs(system, run.initial).shape[1] + 2 * len(
         intervals_of(system, run.ends, run.duration, lengths)
     )
 
@@ -187,7 +189,12 @@ def first_vectors(solver: StageSolver, initial: State, lengths: list[float]) -> 
     found = [inputs / capacity[:, None], solver.coupling.toarray() / capacity[:, None]]
     for a in lengths:
         factor = solver.factor(a)
-        found += [solver.solve(factor, right, None)[:, None] for right in inputs.T] + [factor.response]
+        found.append(factor.response)
+        rights = inputs
+        for _ in range(DEEP):
+            answers = np.column_stack([solver.solve(factor, right, None) for right in rights.T])
+            found.append(answers)
+            rights = capacity[:, None] * answers
     return extended(vectors, capacity, np.hstack(found))
 
 

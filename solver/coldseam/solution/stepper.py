@@ -30,7 +30,7 @@ W = np.sqrt(2.0) / 4.0
 WEIGHTS = np.array([W, W, D])
 EXTRAPOLATED = 3
 """Steps from which the start of an iterative solution is extrapolated: quadratic."""
-FILTERED = 1e-6  # energy that the error estimate may miss: a thousandth of it
+FILTERED = 1e-4  # energy that the error estimate may miss: a hundredth of it
 MOST_MELTING = 60
 MELTING_TOLERANCE = 1e-9  # K
 ERROR_WEIGHTS = WEIGHTS - np.array([(1.0 - W) / 3.0, (3.0 * W + 1.0) / 3.0, D / 3.0])
