@@ -180,13 +180,18 @@ def test_slab_series(biot):
                 assert -history.totals.heat[0] / 0.1 == pytest.approx(given_off, abs=5e-4)
 
 
-def test_an_uneven_start_is_in_the_basis_and_the_balance_closes():
+def test_the_uniform_field_and_an_uneven_start_are_in_the_basis():
+    """The one closes the heat balance, the other is where the run begins; a start outside it is told as an error."""
     mesh = grid(*LINE)
-    whole = stepping(mesh, slab_text(film=1.0), np.cos(3.0 * mesh.points[:, 0]))
-    found = reduction(whole)
-    run = reduced_run(found.system, whole)
-    assert run.system.expand(run.initial.temperature) == pytest.approx(whole.initial.temperature, abs=1e-9)
-    assert finished(run).relative_closure < 1e-10
+    whole = stepping(mesh, slab_text(film=1.0), np.sign(mesh.points[:, 0] - 0.5))
+    solver = reducing.StageSolver(whole.system, whole.tolerance, keep=1)
+    vectors = reducing.first_vectors(solver, whole.initial, [0.1])
+    for field in (np.ones(mesh.n_nodes), whole.initial.temperature):
+        assert vectors @ (vectors.T @ (whole.system.capacity * field)) == pytest.approx(field, abs=1e-9)
+    system = reduced_system(whole.system, turned(whole.system, vectors[:, :1]))
+    stepper = reducing.Stepper(whole.system, solver)
+    found, run = reducing.run_checked(system, whole, stepper, [0.001])
+    assert run.result().relative_closure < 1e-10 and found.largest > 0.9 * SAFETY
 
 
 def test_with_a_whole_basis_it_is_the_full_system():

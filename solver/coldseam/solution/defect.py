@@ -178,7 +178,7 @@ def _sum(weights: np.ndarray, values: Sequence[np.ndarray]) -> np.ndarray:
     return weights[0] * values[0] + weights[1] * values[1] + weights[2] * values[2]
 
 
-def defect(stepper: Stepper, ledger: Ledger) -> Defect:
+def defect(stepper: Stepper, ledger: Ledger, begun: np.ndarray) -> Defect:
     """Return the error of a finished reduced run.
 
     Parameters
@@ -187,11 +187,13 @@ def defect(stepper: Stepper, ledger: Ledger) -> Defect:
         Of the full equations.
     ledger
         Of the run.
+    begun
+        By how much its beginning is off, K, (n_nodes,).
     """
     full, system = stepper.system, ledger.system
     passed = [interval for interval in ledger.intervals if interval.length > 0.0 and interval.state is not None]
-    nodes, spaces = np.zeros(len(full.capacity)), np.zeros(full.spaces.n)
-    errors, largest, flow = [], [0.0], [0.0]
+    nodes, spaces = begun, np.zeros(full.spaces.n)
+    errors, largest, flow = [], [full.largest(begun[full.free])], [0.0]
     count = len(full.case.boundary)
     quiet = QUIET * np.abs(sum(i.flows[:count] for i in passed)).max() / sum(i.length for i in passed)
     for interval in passed:

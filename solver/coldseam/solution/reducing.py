@@ -2,8 +2,8 @@
 
 What drives the nodes (start, schedules, floating spaces, loads) enters through a few fixed vectors b, so that the field
 lies close to a rational Krylov space (Druskin, Knizhnerman, Zaslavsky 2009, SIAM J. Sci. Comput. 31, 3760): the uniform
-field (for the heat balance), the start, C^-1 b, and ((C + a A)^-1 C)^k (C + a A)^-1 b for a ladder of times a from that in which a
-disturbance crosses a cell to the run itself. The whole run is then taken in this space, and its error computed from what
+field (for the heat balance), the start, C^-1 b, and (C + a A)^-1 b, some powers deep, for a ladder of times a from that
+in which a disturbance crosses a cell to the run itself. The whole run is then taken in this space, and its error computed from what
 it leaves unbalanced (``defect.py``): fields of the full system, which extend the basis where this run needs it. When the
 error, with its safety, is a small part of what a step may be off, the basis is accepted as it was checked.
 The step's tolerance, ladder and cuts are those of full stepping.
@@ -234,7 +234,7 @@ def run_checked(
     while run.status == "running":
         step = run.step()
         ledger.enter(step, run.time)
-    return defect(stepper, ledger), run
+    return defect(stepper, ledger, whole.initial.temperature - system.expand(run.initial.temperature)), run
 
 
 def reduction(run: Transient, log: Callable[[str, str], None] | None = None) -> Reduction:
