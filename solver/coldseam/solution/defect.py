@@ -191,13 +191,13 @@ def defect(stepper: Stepper, ledger: Ledger, begun: np.ndarray) -> Defect:
         By how much its beginning is off, K, (n_nodes,).
     """
     full, system = stepper.system, ledger.system
-    passed = [interval for interval in ledger.intervals if interval.length > 0.0 and interval.state is not None]
+    passed = [(i, i.state) for i in ledger.intervals if i.length > 0.0 and i.state is not None]
     nodes, spaces = begun, np.zeros(full.spaces.n)
     errors, largest, flow = [], [full.largest(begun[full.free])], [0.0]
     count = len(full.case.boundary)
-    quiet = QUIET * np.abs(sum(i.flows[:count] for i in passed)).max() / sum(i.length for i in passed)
-    for interval in passed:
-        state, part = interval.state, interval.pole / interval.length
+    quiet = QUIET * np.abs(sum(i.flows[:count] for i, _ in passed)).max() / sum(i.length for i, _ in passed)
+    for interval, state in passed:
+        part = interval.pole / interval.length
         known = full.capacity * nodes + part * _unbalanced(full, system, interval)
         x, spaces = stepper.filtered(
             state, stepper.solver.factor(interval.pole), known, full.spaces.capacity * spaces, state.y, state.time
