@@ -6,11 +6,10 @@ import resource
 from pathlib import Path
 
 import numpy as np
-from benchmarks.common import Table
+from benchmarks.common import Table, one_size
 
 from coldseam.case import read
 from coldseam.geometry.mesher import open_geometry
-from coldseam.mesh.types import SizeField
 from coldseam.solution.rounds import solve
 from coldseam.solution.steady import solve_on
 
@@ -41,8 +40,7 @@ def plain(case, size: float) -> tuple[float, float, int]:
     """Return seconds, heat flow and nodes of one mesh of one size, solved and not proven."""
     start = processor_seconds()
     with open_geometry(case) as mesher:
-        first = mesher.mesh()
-        mesh = mesher.mesh(SizeField(mesh=first, size=np.full(first.n_nodes, 1e-3 * size)), curve_segments=96)
+        mesh = one_size(mesher, size)
     steady = solve_on(case, mesh)
     number = [boundary.name for boundary in case.boundary].index(SIDE)
     return processor_seconds() - start, float(steady.boundary_flow[number]), mesh.n_nodes

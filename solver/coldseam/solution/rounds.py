@@ -44,7 +44,7 @@ POINT_LIMIT = 0.005
 """ISO 10211: largest change of a temperature factor on a finer mesh."""
 LARGEST_STEP = 12.0  # the gap is reduced by at most this factor in one round
 MARGIN = 1.3
-SMALLEST_STEP = 2.0  # and at least by this one
+SMALLEST_STEP = 1.6  # and at least by this one
 POINT_STEPS = (0.25, 0.5)  # change of size at a point that moved: the more it moved the smaller
 MOST_PEAKS = 24
 MOST_READINGS = 4  # unit states whose gap is looked at in one round, the worst first
