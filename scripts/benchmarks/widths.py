@@ -54,9 +54,10 @@ def nodes_for(points: list[tuple[int, float]], asked: float) -> tuple[float, flo
 
 
 def adaptive_nodes(rounds) -> float:
-    """Return the nodes at which the rounds' worst error meets what is allowed, between rounds by the power law."""
+    """Return the fewest nodes that meet what is allowed: of a round, or between two rounds by the power law."""
     nodes, errors = (np.array([getattr(entry, name) for entry in rounds]) for name in ("nodes", "error"))
-    return float(np.exp(np.interp(0.0, -np.log(errors), np.log(nodes))))
+    between = float(np.exp(np.interp(0.0, -np.log(errors), np.log(nodes))))
+    return min(between, float(nodes[errors <= 1.0].min(initial=np.inf)))
 
 
 def compared(name: str, plain: list[tuple[int, float]], mesher, case, goal: float, asked: float) -> tuple[str, ...]:
