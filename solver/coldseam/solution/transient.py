@@ -23,7 +23,8 @@ from coldseam.solution.stepper import NoConvergence, State, Step, Stepper, chann
 
 TOLERANCE = 0.1
 """Error allowed to a step over accuracy times the temperatures' range, where the case does not say."""
-BALANCE_LIMIT = 1e-5
+BALANCE_LIMIT = 1e-6
+"""Heat in less heat stored over what passed through; stages balance to rounding, so that real runs stay far below."""
 LONGEST = 50.0  # the run over its longest step, at least
 SMALLEST = 1e-12  # of the run
 PATIENCE = 3  # steps after a rejected one before the step may grow again
