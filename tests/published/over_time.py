@@ -129,4 +129,32 @@ def _brick() -> Iterator[Reference]:
     yield Reference(quantity=("bodies", "brick", "mean_temperature"), value=mean, **same)
 
 
-GROUPS = (_cooling_down, _nafems_t3, _half_space, _periodic, _brick)
+def _freezing() -> Iterator[Reference]:
+    water = dict(k=2.22, c=2050, rho=1000, latent=333.6e3)
+    front, flux = exact.freezing(10, 3600, **water)
+    for stem, axis in (("strip", 0), ("cylinder", 1), ("3d", 0)):
+        same = dict(
+            case=f"freezing-{stem}",
+            reason="1 %: the front passes node by node",
+            source="Neumann's solution, Carslaw, Jaeger 1959, 11.2",
+            slow=True,  # some 30 s each; tests/solution/test_melting.py has the same on grids
+        )
+        yield Reference(
+            title="Freezing water, front after 1 h: strip, axisymmetric, 3D",
+            quantity=("history", "melted", "water", "front", "mean", axis),
+            value=1000 * front,
+            unit="mm",
+            tolerance=0.01 * 1000 * front,
+            **same,
+        )
+        yield Reference(
+            title="Freezing water, heat flux after 1 h: strip, axisymmetric, 3D",
+            quantity=("boundaries", "cold face", "heat_flux_mean"),
+            value=-flux,
+            unit="W/m²",
+            tolerance=0.01 * flux,
+            **same,
+        )
+
+
+GROUPS = (_cooling_down, _nafems_t3, _half_space, _periodic, _brick, _freezing)

@@ -15,6 +15,7 @@ from coldseam.case.model import Case
 from coldseam.errors import CaseError, Fault
 from coldseam.mesh.measure import cell_measure, facet_measure
 from coldseam.mesh.types import Mesh
+from coldseam.solution.fronts import Fronts
 from coldseam.solution.spaces import CHANNELS
 from coldseam.solution.stepper import channels
 from coldseam.solution.transient import History
@@ -44,7 +45,8 @@ def timed_answers(
     system = history.system
     case, mesh = system.case, system.mesh
     section = mesh.dim == 2 and not mesh.axisymmetric
-    units = UNITS | {"time": "s", "energy": "J"} | (SECTION_UNITS | {"energy": "J/m"} if section else {})
+    units = UNITS | {"time": "s", "energy": "J", "melted": "1", "front": "mm"}
+    units |= (SECTION_UNITS | {"energy": "J/m"}) if section else {}
     verdicts = timed_limits(history)
     return Answers(
         title=case.title,
@@ -120,13 +122,32 @@ def history_answer(history: History) -> dict[str, Any]:
             for s, name in enumerate(system.spaces.names)
             if system.spaces.machines[s] is not None
         },
-        "melted": {
-            c.name: {"at_start": float(history.rows[0, n]), "at_end": float(history.rows[-1, n])}
-            for n, c in enumerate(history.columns)
-            if c.kind == "melted"
-        },
+        "melted": _melted(history),
         "switches": history.work.switched,
         "tolerance": history.tolerance,
+    }
+
+
+def _melted(history: History) -> dict[str, dict[str, Any]]:
+    """Return of every melting body the melted part at both ends and where its front is at the end; mm, m² (m²/m)."""
+    phase = history.phase
+    if phase is None:
+        return {}
+    fronts = Fronts(history.system.mesh, phase).at(history.final.temperature)
+    return {
+        name: {
+            "at_start": float(history.column("melted", name)[0]),
+            "at_end": float(history.column("melted", name)[-1]),
+            "front": None
+            if front is None
+            else {
+                "area": front.area,
+                "from": place(front.low),
+                "to": place(front.high),
+                "mean": place(front.mean),
+            },
+        }
+        for name, front in zip(phase.names, fronts, strict=True)
     }
 
 
@@ -291,5 +312,6 @@ def headings(history: History) -> list[str]:
     ]
 
 
-_UNIT = {"degC": "degC", "W": "W", "W/m": "W_per_m", "1": "1", "s": "s"}
+_UNIT = {"degC": "degC", "W": "W", "W/m": "W_per_m", "1": "1", "s": "s", "mm": "mm"}
 _WORDS = {"min": "coldest", "mean": "mean", "max": "warmest", "boundary": "flow", "outside": "spaces from outside"}
+_WORDS |= {f"front_{end}_{axis}": f"front {end} {axis} in" for end in ("from", "to") for axis in "xyz"}

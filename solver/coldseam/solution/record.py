@@ -10,12 +10,15 @@ from scipy import sparse
 
 from coldseam.errors import CaseError, Fault
 from coldseam.mesh.locate import locate
+from coldseam.solution.fronts import Fronts
 from coldseam.solution.heatsystem import HeatSystem
 from coldseam.solution.stepper import State, Step, channels, rates_at
 from coldseam.volumes.section import facet_shares
 
 if TYPE_CHECKING:
     from coldseam.case.timing import When
+
+MM = 1000.0  # mm in a metre
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -25,8 +28,9 @@ class Column:
     Parameters
     ----------
     kind
-        ``"time"``, ``"space"``, ``"goods"``, ``"probe"``, ``"min"``, ``"mean"`` or ``"max"`` of a boundary, or a kind
-        of flow of :func:`coldseam.solution.stepper.channels`.
+        ``"time"``, ``"space"``, ``"goods"``, ``"probe"``, ``"min"``, ``"mean"`` or ``"max"`` of a boundary, ``"melted"`` of
+        a body and where its front is along every axis (``"front_from_x"``, ``"front_to_x"``; NaN without a front), or a
+        kind of flow of :func:`coldseam.solution.stepper.channels`.
     name
         Of what.
     unit
@@ -51,6 +55,7 @@ class Gauges:
 
     def __init__(self, system: HeatSystem, phase=None):
         self.system, self.phase = system, phase
+        self.fronts = None if phase is None else Fronts(system.mesh, phase)
         case, mesh = system.case, system.mesh
         self.probes = _probe_weights(system)
         count = len(case.boundary)
@@ -75,12 +80,14 @@ class Gauges:
             found += [Column(kind=kind, name=boundary.name, unit="degC") for boundary in case.boundary]
         if self.phase is not None:
             found += [Column(kind="melted", name=name, unit="1") for name in self.phase.names]
+            kinds = [f"front_{end}_{axis}" for end in ("from", "to") for axis in "xyz"[: self.system.mesh.dim]]
+            found += [Column(kind=kind, name=name, unit="mm") for name in self.phase.names for kind in kinds]
         section = self.system.mesh.dim == 2 and not self.system.mesh.axisymmetric
         heat = "W/m" if section else "W"
         return found + [Column(kind=k, name=n, unit="1" if k == "share" else heat) for k, n in channels(self.system)]
 
     def temperatures(self, state: State) -> np.ndarray:
-        """Return the row's temperatures, °C."""
+        """Return the row's temperatures (°C), and what has melted with its fronts (mm)."""
         spaces, case = self.system.spaces, self.system.case
         room = [spaces.temperature_of(name, state.y, state.time, before=True) for name in case.spaces]
         t = state.temperature
@@ -94,6 +101,7 @@ class Gauges:
                 self.mean @ t,
                 np.maximum.reduceat(surface, self.starts),
                 [] if self.phase is None else self.phase.melted(t),
+                [] if self.fronts is None else self.fronts.extents(t).ravel() * MM,
             ]
         )
 

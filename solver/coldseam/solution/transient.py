@@ -13,6 +13,7 @@ from dataclasses import dataclass, field
 import numpy as np
 
 from coldseam.errors import SolveError
+from coldseam.physics.melting import HeatContent
 from coldseam.solution.events import Happened, Watch, first_crossing
 from coldseam.solution.heatsystem import HeatSystem
 from coldseam.solution.record import Column, Gauges, flows_at
@@ -91,6 +92,8 @@ class History:
         Error allowed to a step, K.
     work
         Counts.
+    phase
+        Heat content where bodies melt, or None.
     solver
         Method and counts of the linear solver.
     """
@@ -107,6 +110,7 @@ class History:
     throughput: float
     tolerance: float
     work: Work
+    phase: HeatContent | None = None
     solver: dict[str, object] = field(default_factory=dict)
 
     @property
@@ -236,6 +240,7 @@ class Transient:
             throughput=through,
             tolerance=self.tolerance,
             work=self.work,
+            phase=self.phase,
             solver={
                 "method": self.solver.method,
                 "factorisations": self.solver.factorisations,
