@@ -181,7 +181,7 @@ def _event_warnings(history: History) -> list[str]:
 
 
 def timed_limits(history: History) -> dict[str, dict[str, Any]]:
-    """Return verdict and margin of every limit, held against the worst of the recorded history.
+    """Return verdict and margin of every limit, held against the worst of every step.
 
     Raises
     ------
@@ -212,21 +212,14 @@ def require_timed_limits(case: Case) -> None:
 def _verdict(history: History, number: int, limit) -> dict[str, Any]:
     asked, measure = limit.quantity, limit.quantity.measure
     name = getattr(asked, asked.target)
-    if measure == "temperature":
-        series = history.column("probe" if asked.target == "probe" else asked.temperature, name)
-    elif asked.target == "boundary":
-        series = history.column("boundary", name)
-    else:
-        facing = [b.name for b in history.system.case.boundary if b.space == name]
-        series = np.sum([history.column("boundary", b) for b in facing], axis=0)
+    low, low_at, high, high_at = history.extremes[number].tolist()
     signed = any(bound is not None and bound < 0.0 for bound in (limit.at_most, limit.at_least))
     if measure == "heat_flow" and not signed:
-        series = np.abs(series)
-    worst = series.max() if limit.at_least is None else series.min()
-    if limit.at_least is not None and limit.at_most is not None:
-        worst = max((series.min(), series.max()), key=lambda v: max(limit.at_least - v, v - limit.at_most))
+        (low, low_at), (high, high_at) = _sizes(low, low_at, high, high_at)
+    below = -np.inf if limit.at_least is None else limit.at_least - low
+    above = -np.inf if limit.at_most is None else high - limit.at_most
+    value, at = (high, high_at) if above >= below else (low, low_at)
     section = history.system.mesh.dim == 2 and not history.system.mesh.axisymmetric
-    value = float(worst)
     return {
         "quantity": {asked.target: name, measure: getattr(asked, measure)},
         "value": value,
@@ -236,8 +229,15 @@ def _verdict(history: History, number: int, limit) -> dict[str, Any]:
         "at_most": limit.at_most,
         "at_least": limit.at_least,
         "size_of_flow": measure == "heat_flow" and not signed,
-        "over": "the whole recorded history",
+        "at": at,
+        "over": "every step of the run",
     } | judge(value, None, None, limit.at_most, limit.at_least)
+
+
+def _sizes(low: float, low_at: float, high: float, high_at: float):
+    """Return least and largest absolute value between two extremes, each with its time; 0 where the sign changes."""
+    small, large = sorted(((abs(low), low_at), (abs(high), high_at)))
+    return ((0.0, low_at) if low <= 0.0 <= high else small), large
 
 
 def _boundaries(history: History) -> dict[str, BoundaryAnswer]:

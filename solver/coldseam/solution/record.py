@@ -86,6 +86,21 @@ class Gauges:
         heat = "W/m" if section else "W"
         return found + [Column(kind=k, name=n, unit="1" if k == "share" else heat) for k, n in channels(self.system)]
 
+    def limited(self) -> list[list[int]]:
+        """Return for every limit of the case the positions in a row that add up to its quantity."""
+        places = {(c.kind, c.name): n for n, c in enumerate(self.columns())}
+        found = []
+        for limit in self.system.case.limit:
+            asked, name = limit.quantity, getattr(limit.quantity, limit.quantity.target)
+            if asked.measure == "temperature":
+                wanted = [("probe" if asked.target == "probe" else asked.temperature, name)]
+            elif asked.target == "boundary":
+                wanted = [("boundary", name)]
+            else:
+                wanted = [("boundary", b.name) for b in self.system.case.boundary if b.space == name]
+            found.append([places[key] for key in wanted])
+        return found
+
     def temperatures(self, state: State) -> np.ndarray:
         """Return the row's temperatures (°C), and what has melted with its fronts (mm)."""
         spaces, case = self.system.spaces, self.system.case

@@ -18,6 +18,7 @@ from coldseam.solution.events import Happened, Watch, first_crossing
 from coldseam.solution.heatsystem import HeatSystem
 from coldseam.solution.record import Column, Gauges, flows_at
 from coldseam.solution.refresh import Refresher
+from coldseam.solution.rows import Extremes, Rows
 from coldseam.solution.spaces import outside_range
 from coldseam.solution.stage import StageSolver
 from coldseam.solution.stepper import NoConvergence, State, Step, Stepper, channels, rates_at, weights_at
@@ -80,6 +81,8 @@ class History:
         The equations.
     columns, rows
         What was recorded; rows of (n_rows, n_columns).
+    extremes
+        Of every limit's quantity over all steps: least value, when, largest value, when (s), (n_limits, 4).
     events
         What became of the events.
     totals
@@ -101,6 +104,7 @@ class History:
     system: HeatSystem
     columns: tuple[Column, ...]
     rows: np.ndarray
+    extremes: np.ndarray
     events: tuple[Happened, ...]
     totals: Totals
     initial: State
@@ -166,7 +170,8 @@ class Transient:
         self.work = Work()
         self.patience = 0
         self.status = "running"
-        self.rows: list[np.ndarray] = []
+        self.rows = Rows(len(self.gauges.columns()))
+        self.extremes = Extremes(self.gauges.limited())
         self.recorded = 0
         self.fields = field_times(time)
         self.watches = [
@@ -230,7 +235,8 @@ class Transient:
         history = History(
             system=self.system,
             columns=tuple(self.gauges.columns()),
-            rows=np.array(self.rows),
+            rows=self.rows.array(),
+            extremes=self.extremes.values,
             events=tuple(watch.result() for watch in self.watches),
             totals=self.totals,
             initial=self.initial,
@@ -319,7 +325,7 @@ class Transient:
                 s, stopped, switch = (found - step.start.time) / step.h, True, None
                 state = self.stepper.at(step, s)
         self._integrate(step, s, state)
-        self._record(step, s)
+        self._record(step, s, state)
         self.work.steps += 1
         bend = switch is None and s == 1.0 and abs(state.time - end) <= 1e-9 * self.duration
         if bend:  # land exactly on it: what follows must not see the moment before
@@ -370,17 +376,22 @@ class Transient:
             now = np.abs(rates_at(part) @ step.flows + extra / (s * step.h))
             self.totals.peak = np.maximum(self.totals.peak, now)
 
-    def _record(self, step: Step, s: float) -> None:
-        """Write the rows and fields whose times lie in a step."""
+    def _record(self, step: Step, s: float, state: State) -> None:
+        """Write the rows and fields whose times lie in a step, and look at what limits hold at its ends."""
         every, last = self.system.case.time.record, step.start.time + s * step.h
         extra: float | np.ndarray = 0.0
         if self.system.readers.fixed_nodes.nnz:
-            extra = self._into_fixed(self.stepper.at(step, s).temperature, step.start.temperature) / (s * step.h)
+            extra = self._into_fixed(state.temperature, step.start.temperature) / (s * step.h)
+        if self.extremes.positions:
+            self.extremes.look(self.gauges.row(step.start, flows_at(step, 0.0, extra)))
+            self.extremes.look(self.gauges.row(state, flows_at(step, s, extra)))
         while self.recorded * every <= last * (1 + 1e-14) and self.recorded * every <= self.duration * (1 + 1e-12):
             part = min(max((self.recorded * every - step.start.time) / step.h, 0.0), 1.0)
             if part >= s and last < self.duration * (1 - 1e-12) and part > 0.0:
                 break  # the next step says what holds after a jump or switch
-            self.rows.append(self.gauges.row(self.stepper.at(step, part), flows_at(step, part, extra)))
+            row = self.gauges.row(self.stepper.at(step, part), flows_at(step, part, extra))
+            self.rows.append(row)
+            self.extremes.look(row)
             self.recorded += 1
         while self.fields and self.fields[0] <= last * (1 + 1e-12):
             time = self.fields.pop(0)
@@ -388,7 +399,7 @@ class Transient:
                 self.on_field(time, self.stepper.at(step, min((time - step.start.time) / step.h, 1.0)).temperature)
 
     def _last_row(self, step: Step, s: float) -> None:
-        if not self.rows or self.rows[-1][0] < self.time * (1 - 1e-12):
+        if self.rows.last_time < self.time * (1 - 1e-12):
             extra = self._into_fixed(self.state.temperature, step.start.temperature) / (s * step.h)
             self.rows.append(self.gauges.row(self.state, flows_at(step, s, extra)))
 
