@@ -258,7 +258,7 @@ def _boundaries(history: History) -> dict[str, BoundaryAnswer]:
             area=float(area[number]),
             heat_flux_mean=flow / float(area[number]),
             film=float(film) if boundary.space is not None and np.isfinite(film) else None,
-            temperature=extremes(system.mesh, history.final.temperature, system.facet_boundary == number),
+            temperature=extremes(system.mesh, history.temperature, system.facet_boundary == number),
         )
     return found
 
@@ -279,7 +279,7 @@ def _spaces(history: History) -> dict[str, SpaceAnswer]:
 
 
 def _bodies(mesh: Mesh, history: History) -> dict[str, BodyAnswer]:
-    volume, t = cell_measure(mesh), history.final.temperature
+    volume, t = cell_measure(mesh), history.temperature
     found = {}
     for number, body in enumerate(mesh.bodies):
         cells = mesh.cell_body == number

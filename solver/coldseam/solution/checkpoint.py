@@ -135,6 +135,7 @@ def save(folder: Path, transient: Transient, extra: dict[str, Any]) -> None:
             "magnitude": transient.totals.magnitude,
             "peak": transient.totals.peak,
             "extremes": transient.extremes.values,
+            "causes": np.array([transient.causes.low, transient.causes.high]),
             **guesses,
             **{f"refresh_{name}": array for name, array in refresh.items()},
         },
@@ -178,6 +179,7 @@ def restore(folder: Path, transient: Transient) -> dict[str, Any]:
     transient.status = told["status"]  # a run may be killed after its last step, while its answers are written
     transient.rows.recall(folder / ROWS, told["rows"])
     transient.extremes.values = stored["extremes"]
+    transient.causes.low, transient.causes.high = stored["causes"].tolist()
     transient.rung, transient.patience = told["rung"], told["patience"]
     transient.recorded, transient.fields = told["recorded"], told["fields"]
     transient.work = Work(**told["work"])

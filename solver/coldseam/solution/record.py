@@ -10,6 +10,7 @@ from scipy import sparse
 
 from coldseam.errors import CaseError, Fault
 from coldseam.mesh.locate import locate
+from coldseam.solution.causes import Causes
 from coldseam.solution.fronts import Fronts
 from coldseam.solution.heatsystem import HeatSystem
 from coldseam.solution.stepper import State, Step, channels, rates_at
@@ -49,12 +50,14 @@ class Gauges:
     ----------
     system
         The equations; its case names probes and boundaries.
+    causes
+        The range within which temperatures are read.
     phase
         Heat content where bodies melt, or None.
     """
 
-    def __init__(self, system: HeatSystem, phase=None):
-        self.system, self.phase = system, phase
+    def __init__(self, system: HeatSystem, causes: Causes, phase=None):
+        self.system, self.causes, self.phase = system, causes, phase
         self.fronts = None if phase is None else Fronts(system.mesh, phase)
         case, mesh = system.case, system.mesh
         self.probes = _probe_weights(system)
@@ -105,7 +108,7 @@ class Gauges:
         """Return the row's temperatures (°C), and what has melted with its fronts (mm)."""
         spaces, case = self.system.spaces, self.system.case
         room = [spaces.temperature_of(name, state.y, state.time, before=True) for name in case.spaces]
-        t = state.temperature
+        t = self.causes.held(state)
         surface = t[self.nodes]
         return np.concatenate(
             [
@@ -131,14 +134,14 @@ class Gauges:
             return lambda state: spaces.temperature_of(when.space, state.y, state.time, before=True)
         if when.probe is not None:
             weights = self.probes[[[probe.name for probe in case.probe].index(when.probe)]]
-            return lambda state: float((weights @ state.temperature)[0])
+            return lambda state: float((weights @ self.causes.held(state))[0])
         number = [boundary.name for boundary in case.boundary].index(when.boundary)
         if when.temperature == "mean":
             weights = self.mean[[number]]
-            return lambda state: float((weights @ state.temperature)[0])
+            return lambda state: float((weights @ self.causes.held(state))[0])
         end = self.starts[number + 1] if number + 1 < len(self.starts) else len(self.nodes)
         nodes, pick = self.nodes[self.starts[number] : end], np.min if when.temperature == "min" else np.max
-        return lambda state: float(pick(state.temperature[nodes]))
+        return lambda state: float(pick(self.causes.held(state)[nodes]))
 
 
 def _probe_weights(system: HeatSystem) -> sparse.csr_array:

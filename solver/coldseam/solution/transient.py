@@ -14,6 +14,7 @@ import numpy as np
 
 from coldseam.errors import SolveError
 from coldseam.physics.melting import HeatContent
+from coldseam.solution.causes import Causes
 from coldseam.solution.events import Happened, Watch, first_crossing
 from coldseam.solution.heatsystem import HeatSystem
 from coldseam.solution.record import Column, Gauges, flows_at
@@ -89,6 +90,8 @@ class History:
         Integrals by channel.
     initial, final
         The states at both ends.
+    temperature
+        Node temperatures at the end as they are read: within the range of their causes, °C, (n_nodes,).
     heat_in, heat_stored, throughput
         J: what came in, what is stored, and what passed through.
     tolerance
@@ -109,6 +112,7 @@ class History:
     totals: Totals
     initial: State
     final: State
+    temperature: np.ndarray
     heat_in: float
     heat_stored: float
     throughput: float
@@ -158,7 +162,8 @@ class Transient:
         self.tolerance = tolerance_of(system)
         self.solver = StageSolver(system, self.tolerance)
         self.stepper = Stepper(system, self.solver, phase)
-        self.gauges = Gauges(system, phase)
+        self.causes = Causes(system, initial)
+        self.gauges = Gauges(system, self.causes, phase)
         time = system.case.time
         self.duration = time.duration
         self.totals = Totals(*(np.zeros(len(channels(system))) for _ in range(3)))
@@ -241,6 +246,7 @@ class Transient:
             totals=self.totals,
             initial=self.initial,
             final=self.state,
+            temperature=self.causes.held(self.state),
             heat_in=heat_in,
             heat_stored=stored,
             throughput=through,
@@ -316,6 +322,7 @@ class Transient:
         return max(int(np.ceil(np.log2(max(self.longest / wanted, 1.0)))), 0)
 
     def _accept(self, step: Step, end: float) -> None:
+        self.causes.look(self.system, step.start)
         s, switch = self._first_switch(step)
         state = self.stepper.at(step, s)
         stopped = False
@@ -396,7 +403,9 @@ class Transient:
         while self.fields and self.fields[0] <= last * (1 + 1e-12):
             time = self.fields.pop(0)
             if self.on_field is not None:
-                self.on_field(time, self.stepper.at(step, min((time - step.start.time) / step.h, 1.0)).temperature)
+                self.on_field(
+                    time, self.causes.held(self.stepper.at(step, min((time - step.start.time) / step.h, 1.0)))
+                )
 
     def _last_row(self, step: Step, s: float) -> None:
         if self.rows.last_time < self.time * (1 - 1e-12):
