@@ -60,7 +60,7 @@ class TimedResult:
     @property
     def temperature(self) -> np.ndarray:
         """Temperature at the mesh's nodes at the end, °C, shape (n_nodes,)."""
-        return self.history.final.temperature
+        return self.history.temperature
 
     def view(self) -> View:
         """Return what pictures and files are made from; its fields are those at the end."""
