@@ -10,7 +10,7 @@ from brick_models import bricks, independent_flows, prove_on, solved_on
 from coldseam.errors import SolveError
 from coldseam.solution import bounds as bounds_module
 from coldseam.solution import linear
-from coldseam.solution.bounds import bounds_of, check_gap, local_gap, prove
+from coldseam.solution.bounds import bounds_of, check_gap, facet_temperatures, local_gap, prove
 from coldseam.solution.linear import MultigridSolver, facet_hierarchy, node_hierarchy
 from coldseam.solution.respond import respond
 from coldseam.volumes.facets import facet_system
@@ -166,3 +166,24 @@ def test_small_sections_are_factorised_once_a_network(monkeypatch):
     model = MODELS["three spaces"].model
     proof = prove_on(model, bricks(model, 4))
     assert factored == [proof.nodes.network.free.sum(), proof.bounds.response.network.free.sum()]
+
+
+def test_the_facets_tell_the_nodes_a_layered_wall_exactly():
+    """Piecewise linear: both networks hold it to rounding, and no jump of the conductivity (1 to 100) blurs the interface."""
+    answer = study.run(read.load(PUBLISHED / "two-layers.toml")).solution.steady
+    far = replace(answer.given, conductivity=np.where(answer.mesh.cell_body == 0, 100.0, 1.0) * 0.02)
+    proof = prove_on_conditions(answer.mesh, far)
+    state = answer.state
+    told = facet_temperatures(answer.mesh, far, proof.bounds, state)
+    assert told == pytest.approx(proof.nodes.fields @ state, abs=1e-8 * np.abs(state).max())
+
+
+def test_read_temperatures_are_the_mean_of_both_networks_and_nearer():
+    """ISO 10211 case 4: the bar's cold end, published 0.805 °C; the nodes alone come from below, the facets from above."""
+    case = read.replace(read.load(PUBLISHED / "iso10211-case-4.toml"), "model.accuracy", 0.02)
+    steady = study.run(case).solution.steady
+    end = int(np.argmax(np.where(np.isclose(steady.mesh.points[:, 2], 0.0), steady.temperature, -np.inf)))
+    facets = steady.reference + facet_temperatures(steady.mesh, steady.given, steady.bounds, steady.state)[end]
+    assert steady.temperature[end] < 0.805 < facets
+    assert steady.read_temperature[end] == pytest.approx(0.5 * (steady.temperature[end] + facets))
+    assert abs(steady.read_temperature[end] - 0.805) < 0.5 * abs(steady.temperature[end] - 0.805)
