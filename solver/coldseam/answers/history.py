@@ -153,9 +153,9 @@ def _melted(history: History) -> dict[str, dict[str, Any]]:
             if front is None
             else {
                 "area": front.area,
-                "from": place(front.low),
-                "to": place(front.high),
-                "mean": place(front.mean),
+                "from": place(front.low.tolist()),
+                "to": place(front.high.tolist()),
+                "mean": place(front.mean.tolist()),
             },
         }
         for name, front in zip(phase.names, fronts, strict=True)
