@@ -216,7 +216,7 @@ def accuracy_sentence(accuracy: Answers, entries: Sequence[Answers]) -> str:
 
 def _accuracy_over_time(accuracy: Answers) -> str:
     found, reached = accuracy["over_time"], accuracy["reached"]
-    steady = "" if reached is None else f"; steady heat flows on this mesh are known to {100 * reached:.2g} %"
+    steady = "" if reached is None else f"; steady heat flows on the mesh before it to {100 * reached:.2g} %"
     return (
         f"Accuracy (an estimate, not a proof): temperatures to some {found['temperature']:.2g} K, of which the time steps "
         f"{found['temperature_from_steps']:.2g} K; times and heat to some {100 * found['share']:.2g} %{steady}"
