@@ -160,7 +160,8 @@ def test_an_event_is_located_to_the_second_and_reported_with_its_error():
     assert warm.time == pytest.approx(exact, abs=1.0)
     assert 0 < warm.error < 10.0
     assert hot.time is None and hot.closest == pytest.approx(history.final.y[0], abs=1e-6)
-    answers = timed_answers(history, {}, (), {}).as_dict()
+    answers = timed_answers(history, {}, {"over_time": {"share": 0.01}}, (), {}).as_dict()
+    assert answers["history"]["events"]["warm"]["error"] == pytest.approx(warm.error + 0.01 * warm.time)
     first, second = event_lines(answers)
     assert first.startswith("warm: after ") and " ± " in first
     assert second == f"hot: not reached; closest {hot.closest:.1f} °C after 4 h (space room rises above 90 °C)"

@@ -10,6 +10,7 @@ import numpy as np
 from coldseam._version import __version__
 from coldseam.answers.build import SECTION_UNITS, UNITS, extremes, kind_of
 from coldseam.answers.limits import FLOW_UNITS, judge
+from coldseam.answers.trust import event_error
 from coldseam.answers.types import Answers, BodyAnswer, BoundaryAnswer, ProbeAnswer, SpaceAnswer, place
 from coldseam.case.model import Case
 from coldseam.errors import CaseError, Fault
@@ -27,7 +28,11 @@ NO_INTERVAL = "the proof of the heat flows holds for steady states; over time th
 
 
 def timed_answers(
-    history: History, mesh_facts: dict[str, Any], remarks: Sequence[str], extra: dict[str, Any]
+    history: History,
+    mesh_facts: dict[str, Any],
+    accuracy: dict[str, Any],
+    remarks: Sequence[str],
+    extra: dict[str, Any],
 ) -> Answers:
     """Return the answers of a run over time; flows and temperatures outside ``history`` are those at its end.
 
@@ -37,6 +42,8 @@ def timed_answers(
         The finished run.
     mesh_facts
         How the mesh was made, from :func:`coldseam.answers.build.mesh_answer`.
+    accuracy
+        From :func:`coldseam.answers.trust.accuracy_over_time`.
     remarks
         Warnings of the run.
     extra
@@ -56,7 +63,7 @@ def timed_answers(
         case_sha256=case.source.sha256,
         units=units,
         mesh=mesh_facts | {"nodes": mesh.n_nodes, "cells": mesh.n_cells},
-        accuracy={},
+        accuracy=accuracy,
         balance={
             "closure": (history.heat_in - history.heat_stored) / history.final.time,
             "relative": history.relative_closure,
@@ -75,12 +82,15 @@ def timed_answers(
         limits=verdicts,
         solver=history.solver | {"steps": history.work.steps, "rejected": history.work.rejected},
         warnings=(*case.warnings, *remarks, *_event_warnings(history)),
-        history=history_answer(history) | extra,
+        history=history_answer(history, accuracy["over_time"]["share"]) | extra,
     )
 
 
-def history_answer(history: History) -> dict[str, Any]:
-    """Return what answers.json says under ``history``: s, J and W; in a cross-section per metre of depth."""
+def history_answer(history: History, share: float) -> dict[str, Any]:
+    """Return what answers.json says under ``history``: s, J and W; in a cross-section per metre of depth.
+
+    ``share`` is what the mesh may be off, from :func:`coldseam.answers.trust.accuracy_over_time`.
+    """
     system, totals = history.system, history.totals
     named = channels(system)
     heat = dict(zip(named, totals.heat.tolist(), strict=True))
@@ -94,7 +104,8 @@ def history_answer(history: History) -> dict[str, Any]:
             h.name: {
                 "happened": h.time is not None,
                 "time": h.time,
-                "error": h.error,
+                "error": event_error(h.time, h.error, share),
+                "error_from_steps": h.error,
                 "level": h.level,
                 "closest": h.closest,
                 "closest_at": h.closest_at,
@@ -142,9 +153,9 @@ def _melted(history: History) -> dict[str, dict[str, Any]]:
             if front is None
             else {
                 "area": front.area,
-                "from": place(front.low),
-                "to": place(front.high),
-                "mean": place(front.mean),
+                "from": place(front.low.tolist()),
+                "to": place(front.high.tolist()),
+                "mean": place(front.mean.tolist()),
             },
         }
         for name, front in zip(phase.names, fronts, strict=True)

@@ -92,11 +92,11 @@ class Gauges:
     def limited(self) -> list[list[int]]:
         """Return for every limit of the case the positions in a row that add up to its quantity."""
         places = {(c.kind, c.name): n for n, c in enumerate(self.columns())}
-        found = []
+        found: list[list[int]] = []
         for limit in self.system.case.limit:
             asked, name = limit.quantity, getattr(limit.quantity, limit.quantity.target)
             if asked.measure == "temperature":
-                wanted = [("probe" if asked.target == "probe" else asked.temperature, name)]
+                wanted = [("probe" if asked.target == "probe" else str(asked.temperature), name)]
             elif asked.target == "boundary":
                 wanted = [("boundary", name)]
             else:
@@ -161,6 +161,6 @@ def _probe_weights(system: HeatSystem) -> sparse.csr_array:
     ).tocsr()
 
 
-def flows_at(step: Step, s: float, extra: np.ndarray) -> np.ndarray:
+def flows_at(step: Step, s: float, extra: np.ndarray | float) -> np.ndarray:
     """Return the flows at a fraction of a step, W; ``extra`` is what fixed nodes store, (n_channels,)."""
     return rates_at(s) @ step.flows + extra

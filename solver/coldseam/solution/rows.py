@@ -33,7 +33,7 @@ class Rows:
         return self.spilled + len(self.waiting)
 
     def append(self, row: np.ndarray) -> None:
-        """Add one row, (width,)."""
+        """Add one row, (width,): its time (s), then temperatures (°C), places (mm) and flows (W)."""
         self.waiting.append(row)
 
     @property
@@ -79,7 +79,7 @@ class Rows:
         self.path, self.spilled, self.waiting = path, count, []
 
     def array(self) -> np.ndarray:
-        """Return all rows, (n, width); those of a file are mapped, not read."""
+        """Return all rows, (n, width), first the times (s); those of a file are mapped, not read."""
         waiting = np.array(self.waiting).reshape(-1, self.width)
         if not self.spilled or self.path is None:
             return waiting
@@ -102,7 +102,7 @@ class Extremes:
         """Least value, its time (s), largest value, its time (s); (n, 4)."""
 
     def look(self, row: np.ndarray) -> None:
-        """Take a row into account; its first number is the time, s."""
+        """Take a row into account, (n_columns,); its first number is the time, s."""
         for known, places in zip(self.values, self.positions, strict=True):
             value = float(row[places].sum())
             if value < known[0]:

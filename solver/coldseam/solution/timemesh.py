@@ -67,8 +67,8 @@ def _range(case: Case, name: str) -> tuple[float, float]:
     return (start, start)
 
 
-def mesh_over_time(case: Case, mesher, log) -> tuple[Mesh, Solution, tuple[str, ...]]:
-    """Return a mesh for a run over time, the steady solution it came from, and remarks.
+def mesh_over_time(case: Case, mesher, log) -> tuple[Mesh, Solution, float, tuple[str, ...]]:
+    """Return a mesh for a run over time, the steady solution it came from, by how much it was relaxed, and remarks.
 
     Parameters
     ----------
@@ -95,7 +95,7 @@ def mesh_over_time(case: Case, mesher, log) -> tuple[Mesh, Solution, tuple[str, 
             f"{case.time.record:g} s asks for, to stay within the program's limit of nodes: changes faster than some "
             f"{relaxed**2:.0f} intervals are smeared there (max_nodes in [model] raises the limit)",
         )
-    return mesh, solution, remarks
+    return mesh, solution, relaxed, remarks
 
 
 def sizes_over_time(case: Case, solution: Solution) -> tuple[np.ndarray, float]:
