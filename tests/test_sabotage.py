@@ -13,6 +13,7 @@ from published import runs
 from published.references import REFERENCES
 
 from coldseam.errors import ColdseamError
+from coldseam.solution import heatsystem
 from coldseam.study import run
 from coldseam.volumes import conditions
 
@@ -151,3 +152,19 @@ def test_a_radius_that_does_not_count_is_noticed(monkeypatch):
 
     monkeypatch.setattr(nodes, "cell_radius", mean)
     assert notices("cylinder-axisymmetric")
+
+
+@pytest.mark.parametrize("factor", [0.97, 1.03])
+def test_wrong_heat_capacities_are_noticed(monkeypatch, factor):
+    """Over time; 3 % shift the temperatures of a half-space by more than the accuracy asked."""
+    honest = heatsystem.node_capacities
+    monkeypatch.setattr(heatsystem, "node_capacities", lambda case, mesh: factor * honest(case, mesh))
+    assert notices("half-space-with-film")
+
+
+def test_a_time_step_that_lags_is_noticed(monkeypatch):
+    """Schedules read two seconds late: NAFEMS T3 must turn red."""
+    honest = heatsystem.value_at
+    late = lambda course, time, *, before=False: honest(course, max(time - 2.0, 0.0), before=before)  # noqa: E731
+    monkeypatch.setattr(heatsystem, "value_at", late)
+    assert notices("nafems-t3")

@@ -13,7 +13,7 @@ import numpy as np
 import skfem
 
 from coldseam.mesh.build import build_mesh
-from coldseam.mesh.types import Mesh, MeshBody
+from coldseam.mesh.types import Mesh, MeshBody, SizeField
 from coldseam.volumes.conditions import Conditions, Terminal
 
 
@@ -94,6 +94,15 @@ def mesh_of(grid) -> Mesh:
     """Return our mesh of a scikit-fem mesh, one body."""
     body = (MeshBody(name="body", material="material", source=0),)
     return build_mesh(grid.p.T, grid.t.T, np.zeros(grid.t.shape[1], dtype=int), body)
+
+
+FEWEST_SEGMENTS = 6  # of a circle, however large the elements
+
+
+def one_size(mesher, size: float) -> Mesh:
+    """Return a mesh with elements of one size, mm, everywhere: round parts are no exception."""
+    first = mesher.mesh()
+    return mesher.mesh(SizeField(mesh=first, size=np.full(first.n_nodes, 1e-3 * size)), curve_segments=FEWEST_SEGMENTS)
 
 
 def walls(mesh: Mesh, films: float = 8.0, terminals: int = 2) -> Conditions:

@@ -83,7 +83,7 @@ class Result:
     @property
     def temperature(self) -> np.ndarray:
         """Temperature at the mesh's nodes, °C, shape (n_nodes,)."""
-        return self.solution.steady.bounded
+        return self.solution.steady.read_temperature
 
     def view(self) -> View:
         """Return what pictures and field files are made from."""
@@ -92,7 +92,7 @@ class Result:
         return View(
             **{
                 **plain.__dict__,
-                "temperature": steady.bounded,
+                "temperature": steady.read_temperature,
                 "cell_flux": cell_flux(steady),
                 "answers": self.answers.as_dict(),
                 "maps": surface_maps(steady, self.answers.bridges, self.answers.enclosures),

@@ -9,8 +9,9 @@ from pathlib import Path
 
 import numpy as np
 
-from coldseam.answers.build import mesh_answer
+from coldseam.answers.build import accuracy_answer, mesh_answer
 from coldseam.answers.history import headings, require_timed_limits, timed_answers
+from coldseam.answers.trust import accuracy_over_time
 from coldseam.answers.types import Answers, plain
 from coldseam.case.model import Case
 from coldseam.case.schedules import Schedule
@@ -61,7 +62,7 @@ class TimedResult:
     @property
     def temperature(self) -> np.ndarray:
         """Temperature at the mesh's nodes at the end, °C, shape (n_nodes,)."""
-        return self.history.final.temperature
+        return self.history.temperature
 
     def view(self) -> View:
         """Return what pictures and files are made from; its fields are those at the end."""
@@ -143,7 +144,8 @@ def run_over_time(case: Case, log: Log, *, folder: Path | None = None, resume: b
     history = transient.result()
     history = replace(history, solver=reduced.told(history.solver))
     remarks = [*facts["remarks"], *machine_outlook(history.system)]
-    answers = timed_answers(history, facts["mesh"], remarks, {"time_constants": time_constants(system)})
+    accuracy = accuracy_over_time(history, facts["accuracy"], facts["relaxed"])
+    answers = timed_answers(history, facts["mesh"], accuracy, remarks, {"time_constants": time_constants(system)})
     return TimedResult(case=case, answers=answers, history=history)
 
 
@@ -171,8 +173,13 @@ def _begun(
 def _mesh(case: Case, log: Log, folder: Path | None) -> tuple[Mesh, dict]:
     """Return the mesh of the run and what is known of it; in ``folder`` it is kept for resuming."""
     with open_geometry(case, log=log) as mesher:
-        mesh, solution, remarks = mesh_over_time(case, mesher, log)
-    facts = {"mesh": plain(mesh_answer(solution)), "remarks": list(remarks)}
+        mesh, solution, relaxed, remarks = mesh_over_time(case, mesher, log)
+    facts = {
+        "mesh": plain(mesh_answer(solution)),
+        "accuracy": plain(accuracy_answer(solution)),
+        "relaxed": float(relaxed),
+        "remarks": list(remarks),
+    }
     if folder is not None:
         checkpoint.remove(folder)
         checkpoint.save_mesh(folder, mesh, facts)

@@ -34,7 +34,7 @@ class Reference:
 
     title: str
     case: str
-    quantity: tuple[str, ...]
+    quantity: tuple[str | int, ...]
     value: float
     unit: str
     tolerance: float
@@ -55,7 +55,7 @@ class Reference:
     def label(self) -> str:
         """Identity for the test's name."""
         variant = ",".join(str(value) for _, value in self.change)
-        return "-".join((self.case, *self.quantity, variant)).replace(" ", "_").rstrip("-")
+        return "-".join((self.case, *map(str, self.quantity), variant)).replace(" ", "_").rstrip("-")
 
     def of(self, answers: dict) -> float:
         """Return the compared quantity of a run's answers, in ``unit``."""
@@ -72,7 +72,7 @@ class Reference:
         return min(ends), max(ends)
 
 
-def _look_up(answers: dict, path: tuple[str, ...]):
+def _look_up(answers: dict, path: tuple[str | int, ...]):
     for key in path:
         answers = answers[key]
     return answers

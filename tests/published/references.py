@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from math import log, pi
 
-from published import exact
+from published import exact, over_time
 from published.reference import Reference
 
 ISO = "ISO 10211:2007 annex A, {} (limits from memory)"
@@ -465,6 +465,7 @@ def references() -> tuple[Reference, ...]:
         _source_slab_centre,
         _over_temperature,
         _iso_10211_closer,
+        *over_time.GROUPS,
     )
     return tuple(reference for group in groups for reference in group())
 

@@ -11,7 +11,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from coldseam.mesh.types import Mesh, MeshBody
-from coldseam.report.summary import flow_unit, model_summary, number, summary, with_error
+from coldseam.report.summary import accuracy_sentence, flow_unit, model_summary, number, summary, with_error
 from coldseam.report.view import View
 
 SHOWN = re.compile(r"^(-?[\d.e+-]+) ± ([\d.e+-]+) W$")
@@ -175,3 +175,12 @@ def test_a_check_names_bodies_and_boundaries_with_their_sizes():
 def test_answers_without_optional_parts_still_read_well():
     bare = {"title": "", "dimensions": 3, "spaces": {"a": {"heat_flow": 1.0, "temperature": 20.0}}}
     assert summary(bare).startswith("Untitled case\n\nHeat flow")
+
+
+def test_accuracy_over_time_is_called_an_estimate():
+    over_time = {"share": 0.01, "temperature": 0.55, "temperature_from_steps": 0.05}
+    said = accuracy_sentence({"asked": 0.01, "reached": 0.004, "over_time": over_time}, [])
+    assert said == (
+        "Accuracy (an estimate, not a proof): temperatures to some 0.55 K, of which the time steps 0.05 K; times and heat to "
+        "some 1 %; steady heat flows on the mesh before it to 0.4 %"
+    )

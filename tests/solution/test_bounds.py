@@ -1,20 +1,24 @@
 """Two-sided bounds hold on every mesh, and a broken proof is noticed."""
 
 from dataclasses import replace
+from pathlib import Path
 
 import numpy as np
 import pytest
 from bound_models import INDEPENDENT, MODELS
 from brick_models import bricks, independent_flows, prove_on, solved_on
 
+from coldseam import study
+from coldseam.case import read
 from coldseam.errors import SolveError
 from coldseam.solution import bounds as bounds_module
 from coldseam.solution import linear
-from coldseam.solution.bounds import bounds_of, check_gap, local_gap, prove
+from coldseam.solution.bounds import bounds_of, check_gap, facet_temperatures, local_gap, prove
 from coldseam.solution.linear import MultigridSolver, facet_hierarchy, node_hierarchy
 from coldseam.solution.respond import respond
 from coldseam.volumes.facets import facet_system
 
+PUBLISHED = Path(__file__).parents[1] / "published"
 MESHES = {
     2: [dict(per_metre=n) for n in (1, 2, 4, 8)]
     + [dict(per_metre=2, refined=3, seed=1), dict(per_metre=4, refined=2, seed=2)],
@@ -166,3 +170,21 @@ def test_small_sections_are_factorised_once_a_network(monkeypatch):
     model = MODELS["three spaces"].model
     proof = prove_on(model, bricks(model, 4))
     assert factored == [proof.nodes.network.free.sum(), proof.bounds.response.network.free.sum()]
+
+
+def test_the_facets_tell_the_nodes_a_layered_wall_exactly():
+    """Piecewise linear: both networks hold it to rounding, and the jump of the conductivity (1 to 5) blurs no interface."""
+    steady = study.run(read.load(PUBLISHED / "two-layers.toml")).solution.steady
+    told = steady.reference + facet_temperatures(steady.mesh, steady.given, steady.bounds, steady.state)
+    assert told == pytest.approx(steady.temperature, abs=1e-6)
+
+
+def test_read_temperatures_are_the_mean_of_both_networks_and_nearer():
+    """ISO 10211 case 4: the bar's cold end, published 0.805 °C; the nodes alone come from below, the facets from above."""
+    case = read.replace(read.load(PUBLISHED / "iso10211-case-4.toml"), "model.accuracy", 0.02)
+    steady = study.run(case).solution.steady
+    end = int(np.argmax(np.where(np.isclose(steady.mesh.points[:, 2], 0.0), steady.temperature, -np.inf)))
+    facets = steady.reference + facet_temperatures(steady.mesh, steady.given, steady.bounds, steady.state)[end]
+    assert steady.temperature[end] < 0.805 < facets
+    assert steady.read_temperature[end] == pytest.approx(0.5 * (steady.temperature[end] + facets))
+    assert abs(steady.read_temperature[end] - 0.805) < 0.5 * abs(steady.temperature[end] - 0.805)

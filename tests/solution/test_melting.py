@@ -8,6 +8,7 @@ from solution.grids import grid, stepping
 
 from coldseam.case.read import loads
 from coldseam.physics.melting import heat_content
+from coldseam.solution.fronts import Fronts
 from coldseam.solution.heatsystem import heat_system
 from coldseam.solution.transient import Transient
 
@@ -62,6 +63,11 @@ def test_neumann_front_and_flux_within_one_percent(axes, size):
     area = np.prod([axis[-1] for axis in axes[1:]])
     front = 0.03 * (1.0 - float(phase.melted(history.final.temperature)[0]))
     assert front == pytest.approx(FRONT, rel=0.01)
+    (read,) = Fronts(history.system.mesh, phase).at(history.final.temperature)
+    assert read.mean[0] == pytest.approx(FRONT, rel=0.01)
+    assert read.area == pytest.approx(area, rel=0.02)  # level but for the diagonals of cells
+    assert history.column("front_from_x", "slab")[-1] == pytest.approx(1000 * read.low[0])
+    assert history.column("front_to_x", "slab")[-1] == pytest.approx(1000 * FRONT, rel=0.02)
     # The flux falls as 1/sqrt(t), so the heat given off is 2 q t.
     time, melted = history.column("time"), 1.0 - history.column("melted", "slab")
     half = int(np.argmin(np.abs(time - 1800)))

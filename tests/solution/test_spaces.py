@@ -8,6 +8,9 @@ from scipy.linalg import expm
 from scipy.optimize import brentq
 from solution.grids import grid, run_on, stepping
 
+from coldseam.answers.history import timed_answers
+from coldseam.report.timed import event_lines
+
 # A body that conducts so well that it has one temperature (Bi < 1e-4): with the room's air a system of two nodes.
 ROOM = """
 title = "two nodes"
@@ -157,6 +160,12 @@ def test_an_event_is_located_to_the_second_and_reported_with_its_error():
     assert warm.time == pytest.approx(exact, abs=1.0)
     assert 0 < warm.error < 10.0
     assert hot.time is None and hot.closest == pytest.approx(history.final.y[0], abs=1e-6)
+    answers = timed_answers(history, {}, {"over_time": {"share": 0.01}}, (), {}).as_dict()
+    assert answers["history"]["events"]["warm"]["error"] == pytest.approx(warm.error + 0.01 * warm.time)
+    first, second = event_lines(answers)
+    assert first.startswith("warm: after ") and " ± " in first
+    assert second == f"hot: not reached; closest {hot.closest:.1f} °C after 4 h (space room rises above 90 °C)"
+    assert [w for w in answers["warnings"] if 'event "hot" did not happen within 14400 s' in w and "closest" in w]
 
 
 def test_a_run_ends_at_an_event_that_stops_it():

@@ -243,7 +243,7 @@ def _boundaries(steady: Steady) -> dict[str, BoundaryAnswer]:
             area=float(area[number]),
             heat_flux_mean=interval.value / float(area[number]),
             film=float(film) if boundary.space is not None and np.isfinite(film) else None,
-            temperature=extremes(steady.mesh, steady.bounded, steady.facet_boundary == number),
+            temperature=extremes(steady.mesh, steady.read_temperature, steady.facet_boundary == number),
             film_used=None if steady.settled is None else steady.settled.films.get(boundary.name),
             **_flow(interval),
         )
@@ -293,7 +293,7 @@ def probes(steady: Steady) -> dict[str, ProbeAnswer]:
     ]
     if faults:
         raise CaseError(faults)
-    values = (steady.bounded[steady.mesh.cells[cells]] * weights).sum(axis=1)
+    values = (steady.read_temperature[steady.mesh.cells[cells]] * weights).sum(axis=1)
     return {
         probe.name: ProbeAnswer(temperature=float(value), at=place(point))
         for probe, point, value in zip(steady.case.probe, at, values, strict=True)
@@ -316,9 +316,9 @@ def _bodies(steady: Steady) -> dict[str, BodyAnswer]:
         found[body.name] = BodyAnswer(
             material=body.material,
             volume=size,
-            mean_temperature=float(share @ steady.bounded / share.sum()),
-            min_temperature=float(steady.bounded[nodes].min()),
-            max_temperature=float(steady.bounded[nodes].max()),
+            mean_temperature=float(share @ steady.read_temperature / share.sum()),
+            min_temperature=float(steady.read_temperature[nodes].min()),
+            max_temperature=float(steady.read_temperature[nodes].max()),
             heat_source=float((steady.given.source[cells] * volume[cells]).sum()),
             loss_share=float(energy[number]) / total if total > 0 else 0.0,
             air_gap=None if steady.settled is None else steady.settled.coefficients.gaps.get(body.name),

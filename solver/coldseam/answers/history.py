@@ -10,11 +10,13 @@ import numpy as np
 from coldseam._version import __version__
 from coldseam.answers.build import SECTION_UNITS, UNITS, extremes, kind_of
 from coldseam.answers.limits import FLOW_UNITS, judge
+from coldseam.answers.trust import event_error
 from coldseam.answers.types import Answers, BodyAnswer, BoundaryAnswer, ProbeAnswer, SpaceAnswer, place
 from coldseam.case.model import Case
 from coldseam.errors import CaseError, Fault
 from coldseam.mesh.measure import cell_measure, facet_measure
 from coldseam.mesh.types import Mesh
+from coldseam.solution.fronts import Fronts
 from coldseam.solution.spaces import CHANNELS
 from coldseam.solution.stepper import channels
 from coldseam.solution.transient import History
@@ -26,7 +28,11 @@ NO_INTERVAL = "the proof of the heat flows holds for steady states; over time th
 
 
 def timed_answers(
-    history: History, mesh_facts: dict[str, Any], remarks: Sequence[str], extra: dict[str, Any]
+    history: History,
+    mesh_facts: dict[str, Any],
+    accuracy: dict[str, Any],
+    remarks: Sequence[str],
+    extra: dict[str, Any],
 ) -> Answers:
     """Return the answers of a run over time; flows and temperatures outside ``history`` are those at its end.
 
@@ -36,6 +42,8 @@ def timed_answers(
         The finished run.
     mesh_facts
         How the mesh was made, from :func:`coldseam.answers.build.mesh_answer`.
+    accuracy
+        From :func:`coldseam.answers.trust.accuracy_over_time`.
     remarks
         Warnings of the run.
     extra
@@ -44,7 +52,8 @@ def timed_answers(
     system = history.system
     case, mesh = system.case, system.mesh
     section = mesh.dim == 2 and not mesh.axisymmetric
-    units = UNITS | {"time": "s", "energy": "J"} | (SECTION_UNITS | {"energy": "J/m"} if section else {})
+    units = UNITS | {"time": "s", "energy": "J", "melted": "1", "front": "mm"}
+    units |= (SECTION_UNITS | {"energy": "J/m"}) if section else {}
     verdicts = timed_limits(history)
     return Answers(
         title=case.title,
@@ -54,7 +63,7 @@ def timed_answers(
         case_sha256=case.source.sha256,
         units=units,
         mesh=mesh_facts | {"nodes": mesh.n_nodes, "cells": mesh.n_cells},
-        accuracy={},
+        accuracy=accuracy,
         balance={
             "closure": (history.heat_in - history.heat_stored) / history.final.time,
             "relative": history.relative_closure,
@@ -73,12 +82,15 @@ def timed_answers(
         limits=verdicts,
         solver=history.solver | {"steps": history.work.steps, "rejected": history.work.rejected},
         warnings=(*case.warnings, *remarks, *_event_warnings(history)),
-        history=history_answer(history) | extra,
+        history=history_answer(history, accuracy["over_time"]["share"]) | extra,
     )
 
 
-def history_answer(history: History) -> dict[str, Any]:
-    """Return what answers.json says under ``history``: s, J and W; in a cross-section per metre of depth."""
+def history_answer(history: History, share: float) -> dict[str, Any]:
+    """Return what answers.json says under ``history``: s, J and W; in a cross-section per metre of depth.
+
+    ``share`` is what the mesh may be off, from :func:`coldseam.answers.trust.accuracy_over_time`.
+    """
     system, totals = history.system, history.totals
     named = channels(system)
     heat = dict(zip(named, totals.heat.tolist(), strict=True))
@@ -92,7 +104,8 @@ def history_answer(history: History) -> dict[str, Any]:
             h.name: {
                 "happened": h.time is not None,
                 "time": h.time,
-                "error": h.error,
+                "error": event_error(h.time, h.error, share),
+                "error_from_steps": h.error,
                 "level": h.level,
                 "closest": h.closest,
                 "closest_at": h.closest_at,
@@ -120,13 +133,32 @@ def history_answer(history: History) -> dict[str, Any]:
             for s, name in enumerate(system.spaces.names)
             if system.spaces.machines[s] is not None
         },
-        "melted": {
-            c.name: {"at_start": float(history.rows[0, n]), "at_end": float(history.rows[-1, n])}
-            for n, c in enumerate(history.columns)
-            if c.kind == "melted"
-        },
+        "melted": _melted(history),
         "switches": history.work.switched,
         "tolerance": history.tolerance,
+    }
+
+
+def _melted(history: History) -> dict[str, dict[str, Any]]:
+    """Return of every melting body the melted part at both ends and where its front is at the end; mm, m² (m²/m)."""
+    phase = history.phase
+    if phase is None:
+        return {}
+    fronts = Fronts(history.system.mesh, phase).at(history.final.temperature)
+    return {
+        name: {
+            "at_start": float(history.column("melted", name)[0]),
+            "at_end": float(history.column("melted", name)[-1]),
+            "front": None
+            if front is None
+            else {
+                "area": front.area,
+                "from": place(front.low.tolist()),
+                "to": place(front.high.tolist()),
+                "mean": place(front.mean.tolist()),
+            },
+        }
+        for name, front in zip(phase.names, fronts, strict=True)
     }
 
 
@@ -160,7 +192,7 @@ def _event_warnings(history: History) -> list[str]:
 
 
 def timed_limits(history: History) -> dict[str, dict[str, Any]]:
-    """Return verdict and margin of every limit, held against the worst of the recorded history.
+    """Return verdict and margin of every limit, held against the worst of every step.
 
     Raises
     ------
@@ -191,21 +223,14 @@ def require_timed_limits(case: Case) -> None:
 def _verdict(history: History, number: int, limit) -> dict[str, Any]:
     asked, measure = limit.quantity, limit.quantity.measure
     name = getattr(asked, asked.target)
-    if measure == "temperature":
-        series = history.column("probe" if asked.target == "probe" else asked.temperature, name)
-    elif asked.target == "boundary":
-        series = history.column("boundary", name)
-    else:
-        facing = [b.name for b in history.system.case.boundary if b.space == name]
-        series = np.sum([history.column("boundary", b) for b in facing], axis=0)
+    low, low_at, high, high_at = history.extremes[number].tolist()
     signed = any(bound is not None and bound < 0.0 for bound in (limit.at_most, limit.at_least))
     if measure == "heat_flow" and not signed:
-        series = np.abs(series)
-    worst = series.max() if limit.at_least is None else series.min()
-    if limit.at_least is not None and limit.at_most is not None:
-        worst = max((series.min(), series.max()), key=lambda v: max(limit.at_least - v, v - limit.at_most))
+        (low, low_at), (high, high_at) = _sizes(low, low_at, high, high_at)
+    below = -np.inf if limit.at_least is None else limit.at_least - low
+    above = -np.inf if limit.at_most is None else high - limit.at_most
+    value, at = (high, high_at) if above >= below else (low, low_at)
     section = history.system.mesh.dim == 2 and not history.system.mesh.axisymmetric
-    value = float(worst)
     return {
         "quantity": {asked.target: name, measure: getattr(asked, measure)},
         "value": value,
@@ -215,8 +240,15 @@ def _verdict(history: History, number: int, limit) -> dict[str, Any]:
         "at_most": limit.at_most,
         "at_least": limit.at_least,
         "size_of_flow": measure == "heat_flow" and not signed,
-        "over": "the whole recorded history",
+        "at": at,
+        "over": "every step of the run",
     } | judge(value, None, None, limit.at_most, limit.at_least)
+
+
+def _sizes(low: float, low_at: float, high: float, high_at: float):
+    """Return least and largest absolute value between two extremes, each with its time; 0 where the sign changes."""
+    small, large = sorted(((abs(low), low_at), (abs(high), high_at)))
+    return ((0.0, low_at) if low <= 0.0 <= high else small), large
 
 
 def _boundaries(history: History) -> dict[str, BoundaryAnswer]:
@@ -237,7 +269,7 @@ def _boundaries(history: History) -> dict[str, BoundaryAnswer]:
             area=float(area[number]),
             heat_flux_mean=flow / float(area[number]),
             film=float(film) if boundary.space is not None and np.isfinite(film) else None,
-            temperature=extremes(system.mesh, history.final.temperature, system.facet_boundary == number),
+            temperature=extremes(system.mesh, history.temperature, system.facet_boundary == number),
         )
     return found
 
@@ -258,7 +290,7 @@ def _spaces(history: History) -> dict[str, SpaceAnswer]:
 
 
 def _bodies(mesh: Mesh, history: History) -> dict[str, BodyAnswer]:
-    volume, t = cell_measure(mesh), history.final.temperature
+    volume, t = cell_measure(mesh), history.temperature
     found = {}
     for number, body in enumerate(mesh.bodies):
         cells = mesh.cell_body == number
@@ -291,5 +323,6 @@ def headings(history: History) -> list[str]:
     ]
 
 
-_UNIT = {"degC": "degC", "W": "W", "W/m": "W_per_m", "1": "1", "s": "s"}
+_UNIT = {"degC": "degC", "W": "W", "W/m": "W_per_m", "1": "1", "s": "s", "mm": "mm"}
 _WORDS = {"min": "coldest", "mean": "mean", "max": "warmest", "boundary": "flow", "outside": "spaces from outside"}
+_WORDS |= {f"front_{end}_{axis}": f"front {end} {axis} in" for end in ("from", "to") for axis in "xyz"}

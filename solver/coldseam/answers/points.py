@@ -43,7 +43,7 @@ def weighting(steady: Steady) -> dict[str, dict[str, dict]]:
         if boundary.space is None:
             continue
         nodes = np.unique(steady.mesh.facets[steady.facet_boundary == number])
-        values = steady.bounded[nodes]
+        values = steady.read_temperature[nodes]
         found["surfaces"][boundary.name] = {
             which: _entry(steady, points, steady.response.fields[node], steady.mesh.points[node])
             for which, node in (("coldest", nodes[np.argmin(values)]), ("warmest", nodes[np.argmax(values)]))

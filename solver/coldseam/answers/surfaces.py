@@ -95,7 +95,7 @@ def surfaces(steady: Steady) -> dict[str, dict[str, Any]]:
             continue
         mask = steady.facet_boundary == number
         nodes = np.unique(steady.mesh.facets[mask])
-        values = steady.bounded[nodes]
+        values = steady.read_temperature[nodes]
         low, high = int(np.argmin(values)), int(np.argmax(values))
         found[boundary.name] = {
             "space": boundary.space,
@@ -119,7 +119,7 @@ def temperature_factor(steady: Steady, space: str, nodes: np.ndarray) -> Factor:
     other = max((name for name in outside if name != space), key=lambda name: abs(outside[name] - inside), default=None)
     if other is None or outside[other] == inside:
         return Factor(value=None, inside=space, remark="no other space has another temperature")
-    factors = (steady.bounded[nodes] - outside[other]) / (inside - outside[other])
+    factors = (steady.read_temperature[nodes] - outside[other]) / (inside - outside[other])
     worst = int(np.argmin(factors))
     remark = ""
     if len(outside) > 2:
@@ -208,7 +208,7 @@ def area_below(steady: Steady, mask: np.ndarray, level: float) -> float:
     """
     chosen = np.flatnonzero(mask)
     area = facet_measure(steady.mesh)[chosen]
-    below = fraction_below(steady.bounded[steady.mesh.facets[chosen]], level)
+    below = fraction_below(steady.read_temperature[steady.mesh.facets[chosen]], level)
     return float(area @ below / area.sum())
 
 
@@ -251,7 +251,7 @@ def humidity_map(steady: Steady) -> np.ndarray:
             continue
         mask = steady.facet_boundary == number
         pressure = humidity.vapour_pressure(air.temperature, air.relative_humidity)
-        found[mask] = humidity.surface_humidity(pressure, steady.bounded[steady.mesh.facets[mask]])
+        found[mask] = humidity.surface_humidity(pressure, steady.read_temperature[steady.mesh.facets[mask]])
     return found
 
 

@@ -94,11 +94,14 @@ class HeatContent:
             slope = np.where(higher, self.slope(np.full_like(heat, beyond)), slope)
         return at + (heat - base) / slope
 
+    def parts(self, temperature: np.ndarray) -> np.ndarray:
+        """Return the melted part of every layer's latent heat at every node, 0 to 1, (n_layers, n_nodes)."""
+        inside = np.clip(temperature[None], self.start[:, None], self.end[:, None]) - self.start[:, None]
+        return inside / (self.end - self.start)[:, None]
+
     def melted(self, temperature: np.ndarray) -> np.ndarray:
         """Return the melted part of every layer's latent heat, (n_layers,)."""
-        inside = np.clip(temperature[None], self.start[:, None], self.end[:, None]) - self.start[:, None]
-        part = inside / (self.end - self.start)[:, None]
-        return (part * self.latent).sum(axis=1) / np.maximum(self.latent.sum(axis=1), 1e-300)
+        return (self.parts(temperature) * self.latent).sum(axis=1) / np.maximum(self.latent.sum(axis=1), 1e-300)
 
 
 def heat_content(case: Case, mesh: Mesh) -> HeatContent | None:

@@ -15,6 +15,7 @@ import json
 import math
 import os
 import tempfile
+from collections.abc import Iterable, Mapping
 from contextlib import suppress
 from pathlib import Path
 
@@ -49,7 +50,7 @@ def prepare_folder(path: str | Path) -> Path:
     return folder
 
 
-def write_files(folder: str | Path, contents: dict[str, bytes]) -> list[Path]:
+def write_files(folder: str | Path, contents: Mapping[str, bytes | Iterable[bytes]]) -> list[Path]:
     """Write several files into a folder, all or none.
 
     Parameters
@@ -57,7 +58,7 @@ def write_files(folder: str | Path, contents: dict[str, bytes]) -> list[Path]:
     folder
         An existing folder.
     contents
-        File name -> content.
+        File name -> content, whole or in blocks that are written as they come.
 
     Raises
     ------
@@ -90,11 +91,12 @@ def write_text(path: str | Path, text: str) -> Path:
     return write_files(path.parent, {path.name: text.encode()})[0]
 
 
-def _fill(handle: int, content: bytes) -> None:
+def _fill(handle: int, content: bytes | Iterable[bytes]) -> None:
     try:
-        left = memoryview(content)
-        while len(left):
-            left = left[os.write(handle, left) :]
+        for block in (content,) if isinstance(content, bytes) else content:
+            left = memoryview(block)
+            while len(left):
+                left = left[os.write(handle, left) :]
         os.fsync(handle)
         mask = os.umask(0)
         os.umask(mask)

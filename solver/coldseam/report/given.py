@@ -137,7 +137,8 @@ def computed(case: Case, answers: Answers, mesh: Mesh, shown: Shown) -> Markup:
                                       f"{quality.get('worst_radius_ratio', math.nan):.2g} (1 is perfect)"))  # fmt: skip
     if accuracy:
         reached = accuracy.get("reached")
-        facts.append(("accuracy", f"{100 * accuracy['asked']:.3g} % of every heat flow asked, "
+        which = "steady heat flow" if "over_time" in accuracy else "heat flow"
+        facts.append(("accuracy", f"{100 * accuracy['asked']:.3g} % of every {which} asked, "
                                   + ("error not known" if reached is None else f"{100 * reached:.2g} % reached")))  # fmt: skip
     if solver:
         iterations = solver.get("iterations") or ()

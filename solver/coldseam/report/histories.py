@@ -41,9 +41,22 @@ def histories(answers: Mapping[str, Any], folder: Path, shown: Shown) -> Markup:
         table("Histories", ("what", "value"), facts),
         _by_name("Events", events[:MOST_EVENTS], shown) if events else tag("p", "The case asks for no event."),
         _by_name("Machines", _entries(history.get("machines")), shown),
+        _melting(history.get("melted"), shown),
         tag("p", left) if left else "",
         *where,
     ])  # fmt: skip
+
+
+def _melting(given: Any, shown: Shown) -> Markup | str:
+    """Return the table of melting bodies: parts melted, and where the front (half of it melted) is at the end."""
+    if not isinstance(given, Mapping) or not given:
+        return ""
+    rows = []
+    for body, entry in given.items():
+        front = entry.get("front")
+        where = "none" if front is None else " to ".join(shown.place(front[end]) for end in ("from", "to"))
+        rows.append((name(body), *(f"{100 * entry[key]:.0f} %" for key in ("at_start", "at_end")), where))
+    return table("Melting", ("body", "melted at the start", "melted at the end", "front at the end"), rows)
 
 
 def _entries(given: Any) -> list[Mapping[str, Any]]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -13,6 +14,7 @@ from coldseam.report.view import Picture, Table, View
 
 MOST_LINES = 12
 MOST_POINTS = 40
+BLOCK = 10_000  # rows written at a time
 SCALES = ((3 * 86400.0, "d", 86400.0), (2 * 3600.0, "h", 3600.0), (300.0, "min", 60.0), (0.0, "s", 1.0))
 
 
@@ -47,9 +49,12 @@ class HistoryView:
     given: tuple[str, ...] = ()
 
 
-def history_csv(history: HistoryView) -> str:
-    """Return history.csv: times in s, temperatures in °C, flows in W (a cross-section: W/m)."""
-    return csv_text(list(history.headings), history.rows.tolist())
+def history_csv(history: HistoryView) -> Iterator[bytes]:
+    """Yield history.csv in blocks: times in s, temperatures in °C, places in mm, flows in W (a cross-section: W/m)."""
+    yield csv_text(list(history.headings), []).encode()
+    for start in range(0, len(history.rows), BLOCK):
+        _, _, text = csv_text([""], history.rows[start : start + BLOCK].tolist()).partition("\n")
+        yield text.encode()
 
 
 def scale_of(duration: float) -> tuple[str, float]:

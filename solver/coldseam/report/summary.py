@@ -202,6 +202,8 @@ def _trust(answers: Answers) -> list[str]:
 
 def accuracy_sentence(accuracy: Answers, entries: Sequence[Answers]) -> str:
     """Return the accuracy reached and asked, and what kind of statement it is."""
+    if "over_time" in accuracy:
+        return _accuracy_over_time(accuracy)
     asked = f"{100 * accuracy['asked']:.3g} % asked"
     if accuracy["reached"] is None:
         return f"Accuracy: the error of the heat flows is not known ({asked})"
@@ -210,6 +212,15 @@ def accuracy_sentence(accuracy: Answers, entries: Sequence[Answers]) -> str:
         return f"{reached} (a guaranteed interval)"
     reasons = dict.fromkeys(entry["interval_reason"] for entry in entries if entry.get("interval_reason"))
     return f"{reached} (an estimate{': ' if reasons else ''}{'; '.join(reasons)})"
+
+
+def _accuracy_over_time(accuracy: Answers) -> str:
+    found, reached = accuracy["over_time"], accuracy["reached"]
+    steady = "" if reached is None else f"; steady heat flows on the mesh before it to {100 * reached:.2g} %"
+    return (
+        f"Accuracy (an estimate, not a proof): temperatures to some {found['temperature']:.2g} K, of which the time steps "
+        f"{found['temperature_from_steps']:.2g} K; times and heat to some {100 * found['share']:.2g} %{steady}"
+    )
 
 
 def _surfaces(answers: Answers) -> list[str]:

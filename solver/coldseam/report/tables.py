@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from pathlib import Path
 
 from coldseam.report.files import answers_text, csv_text, write_files
@@ -26,17 +27,18 @@ def write_answers(folder: str | Path, view: View) -> list[Path]:
     OutputError
         They could not be written.
     """
-    contents = {"answers.json": answers_text(view.answers).encode()}
+    contents: dict[str, bytes | Iterable[bytes]] = {"answers.json": answers_text(view.answers).encode()}
+    if view.history is not None:
+        contents["history.csv"] = history_csv(view.history)
     contents.update({name: text.encode() for name, text in tables(view).items()})
     return write_files(folder, contents)
 
 
 def tables(view: View) -> dict[str, str]:
-    """Return file name -> CSV text of every table that the answers hold."""
+    """Return file name -> CSV text of every table that the answers hold, but for the history."""
     flat = view.mesh.dim == 2 and not view.mesh.axisymmetric
     axes = ("r", "z") if view.mesh.axisymmetric else "xyz"[: view.mesh.dim]
-    over_time = {} if view.history is None else {"history.csv": history_csv(view.history)}
-    return over_time | {
+    return {
         "boundaries.csv": _boundaries(view, axes, flat),
         "spaces.csv": _spaces(view.answers, flat),
         "coupling.csv": _coupling(view.answers, flat),

@@ -58,6 +58,22 @@ def event_lines(answers: Answers) -> list[str]:
     return lines
 
 
+def front_text(front: Mapping[str, Any] | None) -> str:
+    """Return where a front is, along every axis in mm; nothing where there is none.
+
+    >>> front_text({"from": (20.2, 0.0), "to": (23.64, 5.0)})
+    '; its front is at x 20.2 to 23.6, y 0 to 5 mm'
+    """
+    if front is None:
+        return ""
+    ends = zip("xyz", front["from"], front["to"], strict=False)
+    return (
+        "; its front is at "
+        + ", ".join(f"{a} {round(low, 1):g} to {round(high, 1):g}" for a, low, high in ends)
+        + " mm"
+    )
+
+
 def run_lines(answers: Answers) -> list[str]:
     """Return what the machines did, what heat went where, and how slow the model is."""
     history = answers["history"]
@@ -77,7 +93,7 @@ def run_lines(answers: Answers) -> list[str]:
     for name, melted in history.get("melted", {}).items():
         lines.append(
             f"  melted part of {name}   {100 * melted['at_start']:.0f} % at the start, "
-            f"{100 * melted['at_end']:.0f} % at the end"
+            f"{100 * melted['at_end']:.0f} % at the end{front_text(melted['front'])}"
         )
     heat = history["energies"]
     lines.append(

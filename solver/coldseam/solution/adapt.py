@@ -16,6 +16,9 @@ from coldseam.solution.bounds import cell_sizes
 from coldseam.volumes.operator import cell_pairs
 
 FINEST, COARSEST = 0.2, 2.0  # limits of one round's change of size
+SMALLEST_SHARE = 0.25
+"""Weight of the smallest size round a node against their mean: at a half the meshes came out a third larger than
+their error asked for (measured on six cases in 2D and 3D), at nothing the next one too coarse."""
 GROWTH = 0.6  # largest difference of size along an edge, as a part of its length
 SWEEPS = 12
 POINT_REACH = 4.0  # new element sizes around a watched point that stay small
@@ -59,12 +62,12 @@ def refine_near(mesh: Mesh, sizes: np.ndarray, points: np.ndarray, step: float =
 
 
 def size_field(mesh: Mesh, sizes: np.ndarray) -> SizeField:
-    """Return nodal sizes from cell sizes, m, (n_cells,), smallest first, with limited growth along edges."""
+    """Return nodal sizes from cell sizes, m, (n_cells,), rather the smaller ones, with limited growth along edges."""
     node = np.full(mesh.n_nodes, np.inf)
     np.minimum.at(node, mesh.cells.ravel(), np.repeat(sizes, mesh.dim + 1))
     total = np.bincount(mesh.cells.ravel(), np.repeat(np.log(sizes), mesh.dim + 1), mesh.n_nodes)
     count = np.bincount(mesh.cells.ravel(), minlength=mesh.n_nodes)
-    node = np.exp(0.5 * (np.log(node) + total / count))
+    node = np.exp(SMALLEST_SHARE * np.log(node) + (1.0 - SMALLEST_SHARE) * total / count)
     pairs = cell_pairs(mesh.dim)
     ends = np.concatenate([mesh.cells[:, pairs[:, 0]].ravel(), mesh.cells[:, pairs[:, 1]].ravel()])
     others = np.concatenate([mesh.cells[:, pairs[:, 1]].ravel(), mesh.cells[:, pairs[:, 0]].ravel()])

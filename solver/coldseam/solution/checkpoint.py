@@ -1,9 +1,9 @@
 """Checkpoints of a run over time: everything from which it goes on as if it had never stopped.
 
 A checkpoint is one npz file, written under another name, flushed and renamed, so that a run killed at any moment
-leaves the last whole one. The mesh is kept beside it, for a mesher need not give the same one twice, and so is the basis
-of a reduced model, once: the multigrid solver that it came from begins with random numbers. Arrays and JSON text only: a
-file from a stranger can't run code.
+leaves the last whole one. The mesh is kept beside it, for a mesher need not give the same one twice; the rows of the
+history, which are only ever added to; and the basis of a reduced model, once: the multigrid solver that it came from
+begins with random numbers. Arrays and JSON text only: a file from a stranger can't run code.
 """
 
 from __future__ import annotations
@@ -29,7 +29,8 @@ from coldseam.solution.transient import Totals, Transient, Work
 if TYPE_CHECKING:
     from coldseam.case.model import Case
 
-CHECKPOINT, MESH, REDUCTION = "checkpoint.npz", "checkpoint_mesh.npz", "checkpoint_reduced.npz"
+CHECKPOINT, MESH = "checkpoint.npz", "checkpoint_mesh.npz"
+ROWS, REDUCTION = "checkpoint_rows.bin", "checkpoint_reduced.npz"
 _MESH_ARRAYS = ("points", "cells", "cell_body", "facets", "facet_cell", "facet_patch")
 
 
@@ -131,6 +132,7 @@ def save(folder: Path, transient: Transient, extra: dict[str, Any]) -> None:
         "rung": transient.rung,
         "patience": transient.patience,
         "recorded": transient.recorded,
+        "rows": transient.rows.spill(folder / ROWS),
         "fields": transient.fields,
         "work": asdict(transient.work),
         "counts": [transient.solver.factorisations, transient.solver.solves, transient.solver.iterations],
@@ -163,7 +165,8 @@ def save(folder: Path, transient: Transient, extra: dict[str, Any]) -> None:
             "heat": transient.totals.heat,
             "magnitude": transient.totals.magnitude,
             "peak": transient.totals.peak,
-            "rows": np.array(transient.rows),
+            "extremes": transient.extremes.values,
+            "causes": np.array([transient.causes.low, transient.causes.high]),
             **guesses,
             **{f"refresh_{name}": array for name, array in refresh.items()},
         },
@@ -211,7 +214,9 @@ def restore(folder: Path, transient: Transient) -> dict[str, Any]:
     )
     transient.totals = Totals(heat=stored["heat"], magnitude=stored["magnitude"], peak=stored["peak"])
     transient.status = told["status"]  # a run may be killed after its last step, while its answers are written
-    transient.rows = list(stored["rows"])
+    transient.rows.recall(folder / ROWS, told["rows"])
+    transient.extremes.values = stored["extremes"]
+    transient.causes.low, transient.causes.high = stored["causes"].tolist()
     transient.rung, transient.patience = told["rung"], told["patience"]
     transient.recorded, transient.fields = told["recorded"], told["fields"]
     transient.work = Work(**told["work"])
@@ -232,5 +237,5 @@ def restore(folder: Path, transient: Transient) -> dict[str, Any]:
 
 def remove(folder: Path) -> None:
     """Remove the checkpoint of a run that has come to its end."""
-    for name in (CHECKPOINT, MESH, REDUCTION):
+    for name in (CHECKPOINT, MESH, ROWS, REDUCTION):
         (folder / name).unlink(missing_ok=True)

@@ -10,12 +10,16 @@ from scipy import sparse
 
 from coldseam.errors import CaseError, Fault
 from coldseam.mesh.locate import locate
+from coldseam.solution.causes import Causes
+from coldseam.solution.fronts import Fronts
 from coldseam.solution.heatsystem import HeatSystem
 from coldseam.solution.stepper import State, Step, channels, rates_at
 from coldseam.volumes.section import facet_shares
 
 if TYPE_CHECKING:
     from coldseam.case.timing import When
+
+MM = 1000.0  # mm in a metre
 
 
 @dataclass(frozen=True, kw_only=True, eq=False)
@@ -25,8 +29,9 @@ class Column:
     Parameters
     ----------
     kind
-        ``"time"``, ``"space"``, ``"goods"``, ``"probe"``, ``"min"``, ``"mean"`` or ``"max"`` of a boundary, or a kind
-        of flow of :func:`coldseam.solution.stepper.channels`.
+        ``"time"``, ``"space"``, ``"goods"``, ``"probe"``, ``"min"``, ``"mean"`` or ``"max"`` of a boundary, ``"melted"`` of
+        a body and where its front is along every axis (``"front_from_x"``, ``"front_to_x"``; NaN without a front), or a
+        kind of flow of :func:`coldseam.solution.stepper.channels`.
     name
         Of what.
     unit
@@ -90,14 +95,17 @@ class Gauges:
     ----------
     system
         The equations; its case names probes and boundaries.
+    causes
+        The range within which temperatures are read.
     phase
         Heat content where bodies melt, or None.
     weights
         Of its mesh, where they are known already.
     """
 
-    def __init__(self, system: HeatSystem, phase=None, weights: Weights | None = None):
-        self.system, self.phase = system, phase
+    def __init__(self, system: HeatSystem, causes: Causes, phase=None, weights: Weights | None = None):
+        self.system, self.causes, self.phase = system, causes, phase
+        self.fronts = None if phase is None else Fronts(system.mesh, phase)
         self.weights = weights or weights_of(system)
         self.probes, self.mean = system.reading(self.weights.probes), system.reading(self.weights.mean)
         self.surface, self.starts = system.reading(self.weights.surface), self.weights.starts
@@ -113,27 +121,40 @@ class Gauges:
             found += [Column(kind=kind, name=boundary.name, unit="degC") for boundary in case.boundary]
         if self.phase is not None:
             found += [Column(kind="melted", name=name, unit="1") for name in self.phase.names]
+            kinds = [f"front_{end}_{axis}" for end in ("from", "to") for axis in "xyz"[: self.system.mesh.dim]]
+            found += [Column(kind=kind, name=name, unit="mm") for name in self.phase.names for kind in kinds]
         section = self.system.mesh.dim == 2 and not self.system.mesh.axisymmetric
         heat = "W/m" if section else "W"
         return found + [Column(kind=k, name=n, unit="1" if k == "share" else heat) for k, n in channels(self.system)]
 
+    def limited(self) -> list[list[int]]:
+        """Return for every limit of the case the positions in a row that add up to its quantity."""
+        places = {(c.kind, c.name): n for n, c in enumerate(self.columns())}
+        found: list[list[int]] = []
+        for limit in self.system.case.limit:
+            asked, name = limit.quantity, getattr(limit.quantity, limit.quantity.target)
+            if asked.measure == "temperature":
+                wanted = [("probe" if asked.target == "probe" else str(asked.temperature), name)]
+            elif asked.target == "boundary":
+                wanted = [("boundary", name)]
+            else:
+                wanted = [("boundary", b.name) for b in self.system.case.boundary if b.space == name]
+            found.append([places[key] for key in wanted])
+        return found
+
     def temperatures(self, state: State) -> np.ndarray:
-        """Return the row's temperatures, °C."""
+        """Return the row's temperatures (°C), and what has melted with its fronts (mm)."""
         spaces, case = self.system.spaces, self.system.case
         room = [spaces.temperature_of(name, state.y, state.time, before=True) for name in case.spaces]
         t = state.temperature
         surface = self.surface @ t
-        return np.concatenate(
-            [
-                room,
-                state.y[len(spaces.names) :],
-                self.probes @ t,
-                np.minimum.reduceat(surface, self.starts),
-                self.mean @ t,
-                np.maximum.reduceat(surface, self.starts),
-                [] if self.phase is None else self.phase.melted(t),
-            ]
-        )
+        read = [self.probes @ t, np.minimum.reduceat(surface, self.starts), self.mean @ t]
+        read = self.causes.within(np.concatenate([*read, np.maximum.reduceat(surface, self.starts)]), state)
+        found = [room, state.y[len(spaces.names) :], read]
+        if self.phase is not None and self.fronts is not None:
+            nodes = self.causes.within(t, state)
+            found += [self.phase.melted(nodes), self.fronts.extents(nodes).ravel() * MM]
+        return np.concatenate(found)
 
     def row(self, state: State, flows: np.ndarray) -> np.ndarray:
         """Return one row of the history, (n_columns,): time (s), temperatures (°C), flows (W, (n_channels,))."""
@@ -146,14 +167,14 @@ class Gauges:
             return lambda state: spaces.temperature_of(when.space, state.y, state.time, before=True)
         if when.probe is not None:
             weights = self.probes[[[probe.name for probe in case.probe].index(when.probe)]]
-            return lambda state: float((weights @ state.temperature)[0])
+            return lambda state: float(self.causes.within(weights @ state.temperature, state)[0])
         number = [boundary.name for boundary in case.boundary].index(when.boundary)
         if when.temperature == "mean":
             weights = self.mean[[number]]
-            return lambda state: float((weights @ state.temperature)[0])
+            return lambda state: float(self.causes.within(weights @ state.temperature, state)[0])
         end = self.starts[number + 1] if number + 1 < len(self.starts) else self.surface.shape[0]
         rows, pick = self.surface[self.starts[number] : end], np.min if when.temperature == "min" else np.max
-        return lambda state: float(pick(rows @ state.temperature))
+        return lambda state: float(pick(self.causes.within(rows @ state.temperature, state)))
 
 
 def picked(nodes: np.ndarray, n_nodes: int) -> sparse.csr_array:
@@ -178,6 +199,6 @@ def _probe_weights(system: HeatSystem) -> sparse.csr_array:
     ).tocsr()
 
 
-def flows_at(step: Step, s: float, extra: np.ndarray) -> np.ndarray:
+def flows_at(step: Step, s: float, extra: np.ndarray | float) -> np.ndarray:
     """Return the flows at a fraction of a step, W; ``extra`` is what fixed nodes store, (n_channels,)."""
     return rates_at(s) @ step.flows + extra

@@ -44,7 +44,7 @@ POINT_LIMIT = 0.005
 """ISO 10211: largest change of a temperature factor on a finer mesh."""
 LARGEST_STEP = 12.0  # the gap is reduced by at most this factor in one round
 MARGIN = 1.3
-SMALLEST_STEP = 2.0  # and at least by this one
+SMALLEST_STEP = 1.6  # and at least by this one
 POINT_STEPS = (0.25, 0.5)  # change of size at a point that moved: the more it moved the smaller
 MOST_PEAKS = 24
 MOST_READINGS = 4  # unit states whose gap is looked at in one round, the worst first
@@ -233,14 +233,14 @@ def watched_points(steady: Steady) -> dict[tuple, tuple[np.ndarray, float]]:
     if steady.case.probe:
         at = np.array([probe.at for probe in steady.case.probe], dtype=float)
         cells, weights = locate(steady.mesh, at)
-        values = (steady.bounded[steady.mesh.cells[cells]] * weights).sum(axis=1)
+        values = (steady.read_temperature[steady.mesh.cells[cells]] * weights).sum(axis=1)
         for probe, place, value in zip(steady.case.probe, at, values, strict=True):
             watched["probe", probe.name] = (place, float(value))
     for number, boundary in enumerate(steady.case.boundary):
         if boundary.space is None:
             continue
         nodes = np.unique(steady.mesh.facets[steady.facet_boundary == number])
-        values = steady.bounded[nodes]
+        values = steady.read_temperature[nodes]
         for kind, pick in (("min", np.argmin(values)), ("max", np.argmax(values))):
             watched["boundary", boundary.name, kind] = (steady.mesh.points[nodes[pick]], float(values[pick]))
     return watched
@@ -254,8 +254,8 @@ def point_limit(case: Case) -> float:
 def temperature_range(steady: Steady) -> float:
     """Return the spread of the field's and the outside's temperatures, K."""
     outside = steady.state[: len(steady.given.terminals)] + steady.reference
-    low = min(float(outside.min()), float(steady.bounded.min()))
-    return max(float(outside.max()), float(steady.bounded.max())) - low
+    low = min(float(outside.min()), float(steady.read_temperature.min()))
+    return max(float(outside.max()), float(steady.read_temperature.max())) - low
 
 
 def _moves(steady: Steady, before, watched) -> tuple[float | None, list[_Restless]]:
@@ -284,12 +284,12 @@ def _candidates(steady: Steady, key: tuple, point: tuple[np.ndarray, float], mov
         return place[None]
     number = [boundary.name for boundary in steady.case.boundary].index(key[1])
     facets = steady.mesh.facets[steady.facet_boundary == number]
-    height = steady.bounded if key[2] == "max" else -steady.bounded
+    height = steady.read_temperature if key[2] == "max" else -steady.read_temperature
     around = np.full(steady.mesh.n_nodes, -np.inf)
     np.maximum.at(around, facets.ravel(), np.repeat(height[facets].max(axis=1), facets.shape[1]))
     peaks = np.unique(facets)
     peaks = peaks[height[peaks] >= around[peaks]]
-    near = peaks[np.abs(steady.bounded[peaks] - value) <= move]
+    near = peaks[np.abs(steady.read_temperature[peaks] - value) <= move]
     return steady.mesh.points[near[np.argsort(-height[near])][:MOST_PEAKS]]
 
 

@@ -55,6 +55,22 @@ def stage_hierarchy(matrix: sparse.csr_array):
     return by_rows(hierarchy)
 
 
+def balanced(matrix: sparse.csr_array, right: np.ndarray, x: np.ndarray) -> np.ndarray:
+    """Return an approximate solution shifted by the constant (K) that makes its residuals add up to nothing.
+
+    The constant is the best one in the matrix's energy, so the error only gets smaller; and what is stored is then
+    what came in, to rounding, however early the iteration stopped.
+
+    Parameters
+    ----------
+    matrix, right
+        Of a stage, J/K (n, n) and J (n,).
+    x
+        Its approximate solution, K, (n,).
+    """
+    return x + float((right - matrix @ x).sum()) / float((matrix @ np.ones(len(x))).sum())
+
+
 @dataclass(frozen=True, kw_only=True, eq=False)
 class Factor:
     """What is kept for one step size.
@@ -155,7 +171,7 @@ class StageSolver:
         offset = -max(scale, self.floor / missing, 1e-300)
         solved = solver.solve(rest[:, None], np.array([offset]), missing)
         self.iterations += solved.iterations[0]
-        return solved.values[:, 0] if guess is None else guess + solved.values[:, 0]
+        return balanced(solver.matrix, right, solved.values[:, 0] if guess is None else guess + solved.values[:, 0])
 
     def newton(self, factor: Factor, known: np.ndarray, heat, start: np.ndarray) -> np.ndarray:
         """Return the increments e of the unknowns outside the mesh, K, (n,).

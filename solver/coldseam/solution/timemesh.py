@@ -4,10 +4,11 @@ The steady refinement for the largest temperature differences of the schedules m
 as accurate as asked; it is then made finer near the surfaces that exchange heat, where a change spreads inward by
 the diffusion length ``sqrt(alpha tau)`` within the recording interval tau:
 
-    h <= LENGTH sqrt(alpha tau) + GROWTH distance
+    h <= LENGTH sqrt(alpha tau) + GROWTH sqrt(accuracy/1 %) distance
 
-relaxed evenly where that needs more nodes than the program's limit. The steady proof does not cover how
-temperatures change over time; a run with a shorter ``record_every`` or a finer ``size`` shows that.
+(inside, a field that came from the surface varies over the distance from it, and errors fall as h²), relaxed evenly where
+that needs more nodes than the program's limit. The steady proof does not cover how temperatures change over time; a run
+with a shorter ``record_every`` or a finer ``size`` shows that.
 """
 
 from __future__ import annotations
@@ -29,7 +30,7 @@ from coldseam.volumes.capacity import volumetric_capacity
 if TYPE_CHECKING:
     from coldseam.case.model import Case
 
-LENGTH, GROWTH = 0.7, 0.35
+LENGTH, GROWTH = 0.7, 0.25
 MOST_NODES = {2: 30_000, 3: 80_000}
 RELAX = 1.2
 
@@ -66,8 +67,8 @@ def _range(case: Case, name: str) -> tuple[float, float]:
     return (start, start)
 
 
-def mesh_over_time(case: Case, mesher, log) -> tuple[Mesh, Solution, tuple[str, ...]]:
-    """Return a mesh for a run over time, the steady solution it came from, and remarks.
+def mesh_over_time(case: Case, mesher, log) -> tuple[Mesh, Solution, float, tuple[str, ...]]:
+    """Return a mesh for a run over time, the steady solution it came from, by how much it was relaxed, and remarks.
 
     Parameters
     ----------
@@ -94,7 +95,7 @@ def mesh_over_time(case: Case, mesher, log) -> tuple[Mesh, Solution, tuple[str, 
             f"{case.time.record:g} s asks for, to stay within the program's limit of nodes: changes faster than some "
             f"{relaxed**2:.0f} intervals are smeared there (max_nodes in [model] raises the limit)",
         )
-    return mesh, solution, remarks
+    return mesh, solution, relaxed, remarks
 
 
 def sizes_over_time(case: Case, solution: Solution) -> tuple[np.ndarray, float]:
@@ -106,7 +107,8 @@ def sizes_over_time(case: Case, solution: Solution) -> tuple[np.ndarray, float]:
     active = (steady.given.terminal >= 0) | (steady.given.flux != 0)
     distance = _distance(mesh, mesh.facets[active], centres)
     diffusivity = steady.given.conductivity / volumetric_capacity(case, mesh)
-    wanted = LENGTH * np.sqrt(diffusivity * case.time.record) + GROWTH * distance
+    growth = GROWTH * np.sqrt(np.clip(case.model.accuracy / 0.01, 0.1, 2.0))
+    wanted = LENGTH * np.sqrt(diffusivity * case.time.record) + growth * distance
     most = case.model.max_nodes or MOST_NODES[mesh.dim]
     per_node = mesh.n_cells / mesh.n_nodes
     factor = 1.0

@@ -13,17 +13,21 @@ from dataclasses import dataclass, field, replace
 import numpy as np
 
 from coldseam.errors import SolveError
+from coldseam.physics.melting import HeatContent
+from coldseam.solution.causes import Causes
 from coldseam.solution.events import Happened, Watch, first_crossing
 from coldseam.solution.heatsystem import HeatSystem
 from coldseam.solution.record import Column, Gauges, Weights, flows_at
 from coldseam.solution.refresh import Refresher
+from coldseam.solution.rows import Extremes, Rows
 from coldseam.solution.spaces import outside_range
 from coldseam.solution.stage import StageSolver
 from coldseam.solution.stepper import NoConvergence, State, Step, Stepper, channels, rates_at, weights_at
 
 TOLERANCE = 0.1
 """Error allowed to a step over accuracy times the temperatures' range, where the case does not say."""
-BALANCE_LIMIT = 1e-5
+BALANCE_LIMIT = 1e-6
+"""Heat in less heat stored over what passed through; stages balance to rounding, so that real runs stay far below."""
 LONGEST = 50.0  # the run over its longest step, at least
 SMALLEST = 1e-12  # of the run
 PATIENCE = 3  # steps after a rejected one before the step may grow again
@@ -78,18 +82,24 @@ class History:
         The equations.
     columns, rows
         What was recorded; rows of (n_rows, n_columns).
+    extremes
+        Of every limit's quantity over all steps: least value, when, largest value, when (s), (n_limits, 4).
     events
         What became of the events.
     totals
         Integrals by channel.
     initial, final
         The states at both ends.
+    temperature
+        Node temperatures at the end as they are read: within the range of their causes, °C, (n_nodes,).
     heat_in, heat_stored, throughput
         J: what came in, what is stored, and what passed through.
     tolerance
         Error allowed to a step, K.
     work
         Counts.
+    phase
+        Heat content where bodies melt, or None.
     solver
         Method and counts of the linear solver.
     """
@@ -97,15 +107,18 @@ class History:
     system: HeatSystem
     columns: tuple[Column, ...]
     rows: np.ndarray
+    extremes: np.ndarray
     events: tuple[Happened, ...]
     totals: Totals
     initial: State
     final: State
+    temperature: np.ndarray
     heat_in: float
     heat_stored: float
     throughput: float
     tolerance: float
     work: Work
+    phase: HeatContent | None = None
     solver: dict[str, object] = field(default_factory=dict)
 
     @property
@@ -152,7 +165,8 @@ class Transient:
         self.tolerance = tolerance_of(system)
         self.solver = StageSolver(system, self.tolerance)
         self.stepper = Stepper(system, self.solver, phase)
-        self.gauges = Gauges(system, phase, weights)
+        self.causes = Causes(system, initial)
+        self.gauges = Gauges(system, self.causes, phase, weights)
         time = system.case.time
         self.duration = time.duration
         self.totals = Totals(*(np.zeros(len(channels(system))) for _ in range(3)))
@@ -164,7 +178,8 @@ class Transient:
         self.work = Work()
         self.patience = 0
         self.status = "running"
-        self.rows: list[np.ndarray] = []
+        self.rows = Rows(len(self.gauges.columns()))
+        self.extremes = Extremes(self.gauges.limited())
         self.recorded = 0
         self.fields = field_times(time)
         self.watches = [
@@ -229,16 +244,19 @@ class Transient:
         history = History(
             system=self.system.whole,
             columns=tuple(self.gauges.columns()),
-            rows=np.array(self.rows),
+            rows=self.rows.array(),
+            extremes=self.extremes.values,
             events=tuple(watch.result() for watch in self.watches),
             totals=self.totals,
             initial=self._expanded(self.initial),
             final=self._expanded(self.state),
+            temperature=self._read(self.state),
             heat_in=heat_in,
             heat_stored=stored,
             throughput=through,
             tolerance=self.tolerance,
             work=self.work,
+            phase=self.phase,
             solver={
                 "method": self.solver.method,
                 "factorisations": self.solver.factorisations,
@@ -308,6 +326,7 @@ class Transient:
         return max(int(np.ceil(np.log2(max(self.longest / wanted, 1.0)))), 0)
 
     def _accept(self, step: Step, end: float) -> None:
+        self.causes.look(self.system, step.start)
         s, switch = self._first_switch(step)
         state = self.stepper.at(step, s)
         stopped = False
@@ -317,7 +336,7 @@ class Transient:
                 s, stopped, switch = (found - step.start.time) / step.h, True, None
                 state = self.stepper.at(step, s)
         self._integrate(step, s, state)
-        self._record(step, s)
+        self._record(step, s, state)
         self.work.steps += 1
         bend = switch is None and s == 1.0 and abs(state.time - end) <= 1e-9 * self.duration
         if bend:  # land exactly on it: what follows must not see the moment before
@@ -368,26 +387,30 @@ class Transient:
             now = np.abs(rates_at(part) @ step.flows + extra / (s * step.h))
             self.totals.peak = np.maximum(self.totals.peak, now)
 
-    def _record(self, step: Step, s: float) -> None:
-        """Write the rows and fields whose times lie in a step."""
+    def _record(self, step: Step, s: float, state: State) -> None:
+        """Write the rows and fields whose times lie in a step, and look at what limits hold at its ends."""
         every, last = self.system.case.time.record, step.start.time + s * step.h
         extra: float | np.ndarray = 0.0
         if self.system.readers.fixed_nodes.nnz:
-            extra = self._into_fixed(self.stepper.at(step, s).temperature, step.start.temperature) / (s * step.h)
+            extra = self._into_fixed(state.temperature, step.start.temperature) / (s * step.h)
+        if self.extremes.positions:
+            self.extremes.look(self.gauges.row(step.start, flows_at(step, 0.0, extra)))
+            self.extremes.look(self.gauges.row(state, flows_at(step, s, extra)))
         while self.recorded * every <= last * (1 + 1e-14) and self.recorded * every <= self.duration * (1 + 1e-12):
             part = min(max((self.recorded * every - step.start.time) / step.h, 0.0), 1.0)
             if part >= s and last < self.duration * (1 - 1e-12) and part > 0.0:
                 break  # the next step says what holds after a jump or switch
-            self.rows.append(self.gauges.row(self.stepper.at(step, part), flows_at(step, part, extra)))
+            row = self.gauges.row(self.stepper.at(step, part), flows_at(step, part, extra))
+            self.rows.append(row)
+            self.extremes.look(row)
             self.recorded += 1
         while self.fields and self.fields[0] <= last * (1 + 1e-12):
             time = self.fields.pop(0)
             if self.on_field is not None:
-                state = self.stepper.at(step, min((time - step.start.time) / step.h, 1.0))
-                self.on_field(time, self.system.expand(state.temperature))
+                self.on_field(time, self._read(self.stepper.at(step, min((time - step.start.time) / step.h, 1.0))))
 
     def _last_row(self, step: Step, s: float) -> None:
-        if not self.rows or self.rows[-1][0] < self.time * (1 - 1e-12):
+        if self.rows.last_time < self.time * (1 - 1e-12):
             extra = self._into_fixed(self.state.temperature, step.start.temperature) / (s * step.h)
             self.rows.append(self.gauges.row(self.state, flows_at(step, s, extra)))
 
@@ -411,6 +434,10 @@ class Transient:
         now, then = expand(self.state.temperature), expand(self.initial.temperature)
         nodes = system.whole.capacity * (now - then) if self.phase is None else self._content(now, then)
         return nodes, system.spaces.capacity * (self.state.y - self.initial.y) if system.spaces.n else np.zeros(0)
+
+    def _read(self, state: State) -> np.ndarray:
+        """Return the nodes' temperatures within the range of their causes, °C, (n_nodes,)."""
+        return self.causes.within(self.system.expand(state.temperature), state)
 
     def _expanded(self, state: State) -> State:
         return replace(state, temperature=self.system.expand(state.temperature))
