@@ -103,13 +103,13 @@ class StageSolver:
     scale
         Temperature difference below which errors don't matter, K: sets the iterative solver's floor.
     missing
-        Energy that an iterative solution may miss, over that of the increment.
+        Energy that an iterative solution may miss, over that of the increment; None for :data:`RELATIVE_ENERGY`.
     keep
         Factors kept; None for as many as :data:`KEPT` says.
     """
 
-    def __init__(self, system: HeatSystem, scale: float, *, missing: float = RELATIVE_ENERGY, keep: int | None = None):
-        self.system, self.missing = system, missing
+    def __init__(self, system: HeatSystem, scale: float, *, missing: float | None = None, keep: int | None = None):
+        self.system, self.missing = system, RELATIVE_ENERGY if missing is None else missing
         self.keep = KEPT[system.mesh.dim] if keep is None else keep
         self.free = np.flatnonzero(system.free)
         matrix = system.network.matrix
