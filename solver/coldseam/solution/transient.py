@@ -144,7 +144,8 @@ class Transient:
     phase
         Heat content where bodies melt.
     refresh
-        Called with the state before every step; returns a new system when coefficients have changed, else None.
+        Called with state and length of every step to be tried; returns a new system when coefficients have changed,
+        else None.
     on_field
         Called with time (s) and node temperatures (°C) at every time after 0 that a field is asked for.
     """
@@ -201,10 +202,10 @@ class Transient:
         """
         if self.status != "running":
             raise ValueError(f"the run is {self.status}")
-        self._refresh()
         end = next(e for e in self.ends if e > self.time * (1 + 1e-14) + 1e-12)
         while True:
             h = self._length(end)
+            self._refresh(h)
             try:
                 step = self.stepper.attempt(self.state, h)
                 error = step.error
@@ -236,7 +237,9 @@ class Transient:
         heat_in, stored = self._heat_in(), self._stored()
         outside = self._outside_channels()
         crossed = float(self.totals.magnitude[outside].sum()) + abs(self.system.source_flow) * self.time
-        through = 0.5 * (crossed + self._rearranged())
+        # What would move all temperatures by a thousandth of a step's tolerance is the least, or a run at rest fails.
+        least = 1e-3 * self.tolerance * float(self.system.capacity.sum())
+        through = max(0.5 * (crossed + self._rearranged()), least)
         history = History(
             system=self.system,
             columns=tuple(self.gauges.columns()),
@@ -291,8 +294,8 @@ class Transient:
             running=running,
         )
 
-    def _refresh(self) -> None:
-        changed = None if self.refresh is None else self.refresh(self.state)
+    def _refresh(self, h: float) -> None:
+        changed = None if self.refresh is None else self.refresh(self.state, h)
         if changed is not None:
             self.adopt(changed)
 
