@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated, Any, ClassVar
@@ -9,7 +10,7 @@ from typing import TYPE_CHECKING, Annotated, Any, ClassVar
 from pydantic import Field, PrivateAttr, WithJsonSchema
 
 from coldseam.case.gaps import Gap
-from coldseam.case.laws import ConductivityLaw
+from coldseam.case.laws import ConductivityLaw, SpecificHeatLaw
 from coldseam.case.shapes import Box, Cone, Cylinder, Disc, Enclosure, Polygon, Repeat, Ring, Sphere, Tube
 from coldseam.case.tables import Context, Table, Trouble, listing
 from coldseam.case.values import (
@@ -130,8 +131,30 @@ MaterialAxes = Annotated[
 ]
 
 
+class _SpecificHeat:
+    """One number, or a law over temperature."""
+
+    def read(self, value: Any, context: Context) -> float | SpecificHeatLaw:
+        """Return the specific heat, J/(kg K)."""
+        if isinstance(value, (dict, SpecificHeatLaw)):
+            return SpecificHeatLaw.model_validate(value, context=context)
+        return Amount("specific heat", above=0.0).read(value, context)
+
+    def __get_pydantic_core_schema__(self, source: Any, handler: Any) -> Any:
+        return checked(self.read)
+
+
+HeatOrLaw = Annotated[
+    float | SpecificHeatLaw,
+    _SpecificHeat(),
+    WithJsonSchema(
+        {"anyOf": [*_AMOUNT_SCHEMA["anyOf"], {"type": "object"}], "description": "J/(kg·K), or a law over temperature"}
+    ),
+]
+
+
 class Melting(Table):
-    """How a material melts and freezes; its specific heat is that of the solid."""
+    """How a material melts and freezes; its specific heat is that of the solid, or a law that goes through both."""
 
     ONE_OF: ClassVar = (("at", "between"),)
     at: Temperature | None = Field(None, description="°C, a single melting point")
@@ -159,7 +182,7 @@ class Material(Table):
     conductivity: Conductivity = Field()
     axes: MaterialAxes | None = None
     density: Density | None = Field(None, description="kg/m³")
-    specific_heat: SpecificHeat | None = Field(None, description="J/(kg·K)")
+    specific_heat: HeatOrLaw | None = Field(None, description="J/(kg·K), or a law over temperature")
     melting: Melting | None = Field(None, description="latent heat, over time")
     emissivity: Emissivity | None = None
     uncertainty: Uncertainty | None = Field(None, description="of the conductivity, a fraction")
@@ -189,7 +212,10 @@ class Material(Table):
         return {key: value for key, value in entry.items() if value is not None} | data, []
 
     def check(self, context: Context) -> Iterator[Trouble]:
-        """Yield a fault when axes don't fit the conductivity."""
+        """Yield axes that don't fit the conductivity, and two specific heats for one liquid."""
+        if self.heat_law is not None and self.melting is not None and self.melting.specific_heat_liquid is not None:
+            what = "has no meaning where specific_heat is a law over temperature: the law holds for the liquid too"
+            yield ("melting", "specific_heat_liquid"), what
         if self.axes is None:
             return
         if isinstance(self.conductivity, (float, ConductivityLaw)):
@@ -201,6 +227,17 @@ class Material(Table):
     def law(self) -> ConductivityLaw | None:
         """The law over temperature that the conductivity follows; None where it is constant."""
         return self.conductivity if isinstance(self.conductivity, ConductivityLaw) else None
+
+    @property
+    def heat_law(self) -> SpecificHeatLaw | None:
+        """The law over temperature that the specific heat follows; None where it is constant or not given."""
+        return self.specific_heat if isinstance(self.specific_heat, SpecificHeatLaw) else None
+
+    def heat_at(self, celsius: float) -> float:
+        """Return the specific heat at a temperature (°C), J/(kg K); NaN where it is not given."""
+        if isinstance(self.specific_heat, SpecificHeatLaw):
+            return self.specific_heat.held(celsius)
+        return math.nan if self.specific_heat is None else self.specific_heat
 
     def tensor(self, dim: int) -> float | np.ndarray:
         """Return the conductivity in global axes, W/(m K); of a law over temperature its typical value.

@@ -46,7 +46,7 @@ class HeatSystem:
     case, mesh, facet_boundary, given, network
         The case, its mesh with contacts opened, the boundary of every facet, conditions and steady network.
     capacity
-        J/K of every node, (n_nodes,).
+        J/K of every node, (n_nodes,); specific heats over temperature at the middle of what the case names.
     spaces
         The unknowns outside the mesh.
     coupling
@@ -195,7 +195,7 @@ def heat_system(case: Case, mesh: Mesh) -> HeatSystem:
         facet_boundary=facet_boundary,
         given=given,
         network=network,
-        capacity=node_capacities(case, mesh),
+        capacity=node_capacities(case, mesh, 0.5 * sum(outside_range(case))),
         spaces=spaces,
         coupling=coupling,
         gather=sparse.csr_array(coupling.T),

@@ -122,7 +122,11 @@ def moved(one: Conditions, other: Conditions) -> bool:
     largest = max(float(np.max(np.abs(one.flux), initial=0.0)), 1e-300)
     if np.max(np.abs(other.flux - one.flux), initial=0.0) > MOVED_FLUX * largest:
         return True
-    pairs = ((one.film, other.film), (one.conductivity, other.conductivity))
+    pairs = (
+        (one.film, other.film),
+        (one.conductivity, other.conductivity),
+        (one.sheet_conductance, other.sheet_conductance),
+    )
     return any(bool(np.any(np.abs(b - a) > MOVED * np.abs(a))) for a, b in pairs)
 
 

@@ -80,7 +80,7 @@ def _by_body(system: HeatSystem, table: dict[str, float]) -> np.ndarray:
         values.append(table.get(name, table.get("rest", 0.0)))
     if faults:
         raise CaseError(faults)
-    heat = volumetric_capacity(system.case, mesh)
+    heat = volumetric_capacity(system.case, mesh, np.array(values))
     return node_shares_of_cells(mesh, heat * np.array(values)[mesh.cell_body]) / node_shares_of_cells(mesh, heat)
 
 

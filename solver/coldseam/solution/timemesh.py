@@ -107,7 +107,7 @@ def sizes_over_time(case: Case, solution: Solution) -> tuple[np.ndarray, float]:
     centres = mesh.points[mesh.cells].mean(axis=1)
     active = (steady.given.terminal >= 0) | (steady.given.flux != 0)
     distance = _distance(mesh, mesh.facets[active], centres)
-    diffusivity = steady.given.conductivity / volumetric_capacity(case, mesh)
+    diffusivity = steady.given.conductivity / volumetric_capacity(case, mesh, float(steady.temperature.mean()))
     growth = GROWTH * np.sqrt(np.clip(case.model.accuracy / 0.01, 0.1, 2.0))
     wanted = LENGTH * np.sqrt(diffusivity * case.time.record) + growth * distance
     most = case.model.max_nodes or MOST_NODES[mesh.dim]
