@@ -229,6 +229,11 @@ class Material(Table):
         return self.conductivity if isinstance(self.conductivity, ConductivityLaw) else None
 
     @property
+    def laws(self) -> tuple[ConductivityLaw, ...]:
+        """All laws over temperature that the conductivity follows, in any direction."""
+        return () if self.law is None else (self.law,)
+
+    @property
     def heat_law(self) -> SpecificHeatLaw | None:
         """The law over temperature that the specific heat follows; None where it is constant or not given."""
         return self.specific_heat if isinstance(self.specific_heat, SpecificHeatLaw) else None

@@ -391,29 +391,3 @@ def _emissivity(case: Case, mesh: Mesh, boundary: Boundary, found: Exchange, fac
         number = next(n for n, b in enumerate(case.boundary) if b.name == boundary.name)
         raise CaseError([Fault(path=("boundary", number), what=what)])
     return found_here
-
-
-def range_remarks(case: Case, mesh: Mesh, temperature: np.ndarray, films: dict[str, dict[str, Any]]) -> tuple[str, ...]:
-    """Return a warning for every body and every boundary where a law was used beyond its range; °C, (n_nodes,)."""
-    told = []
-    for number, body in enumerate(mesh.bodies):
-        law = case.materials[body.material].law
-        cells = mesh.cells[mesh.cell_body == number]
-        reached = laws.beyond(law, temperature[cells]) if law is not None and len(cells) else None
-        if law is not None and reached is not None:
-            told.append(
-                f'body "{body.name}": its temperatures of {reached[0]:.1f} to {reached[1]:.1f} °C leave the range '
-                f'of the conductivity of "{body.material}", {law.limits[0]:.1f} to {law.limits[1]:.1f} °C; beyond it '
-                "the value at the end of the range was taken"
-            )
-    for name, used in films.items():
-        found = used["convection"]
-        if not found.get("in_range", True):
-            symbol = "Ra" if "Ra" in found else "Re"
-            low, high = found["valid"]
-            told.append(
-                f'boundary "{name}": {symbol} = {found[symbol]:.3g} or a part of the film is outside the range of '
-                f'"{found["correlation"]}", {low:.3g} to {high:.3g}; the film coefficient of {found["film"]:.3g} '
-                "W/(m²·K) is an extrapolation"
-            )
-    return tuple(told)

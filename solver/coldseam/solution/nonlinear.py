@@ -27,13 +27,11 @@ from coldseam.mesh.types import Mesh
 from coldseam.solution.coefficients import (
     Coefficients,
     evaluate,
-    exchanges,
-    fluid_range,
     other_average,
-    range_remarks,
 )
 from coldseam.solution.enclosed import cavity_models
 from coldseam.solution.linear import DIRECT_LIMIT, DirectSolver, MultigridSolver, node_hierarchy
+from coldseam.solution.ranges import film_remark, law_remarks, require_fluids
 from coldseam.volumes.conditions import Conditions
 from coldseam.volumes.network import Network
 from coldseam.volumes.nodes import node_network
@@ -149,8 +147,9 @@ def settle(
             raise SolveError(_stalled(case, mesh, facet_boundary, field, step, history))
         field = np.maximum(mixer.next(field, step), COLDEST - 273.15)
     found = evaluate(case, mesh, facet_boundary, base, field, outside, models)
-    _require_fluids(case, found)
-    remarks = range_remarks(case, mesh, field, found.films)
+    require_fluids(case, found)
+    of_films = (film_remark(name, used) for name, used in found.films.items())
+    remarks = (*law_remarks(case, mesh, field, field), *filter(None, of_films))
     other = other_average(case, mesh, found.given, field)
     return Settled(
         coefficients=found,
@@ -280,20 +279,3 @@ def _stalled(case: Case, mesh: Mesh, facet_boundary, field, step, history) -> st
         f"the temperatures do not settle: after {len(history)} steps those of {where} still move by {history[-1]:.3g} "
         f"K (at {field[node]:.1f} °C). Look there at the films, the emissivity and the conductivity over temperature"
     ).replace("'", '"')
-
-
-def _require_fluids(case: Case, found: Coefficients) -> None:
-    """Raise where a film was made from properties beyond what they hold for."""
-    for boundary, outside in exchanges(case):
-        law = outside.convection
-        if law is None or law.kind == "standard" or boundary.name not in found.films:
-            continue
-        at = found.films[boundary.name]["convection"]["property_temperature"]
-        low, high = fluid_range(case, law)
-        if not low <= at <= high:
-            fluid = "air" if law.fluid is None else f'the fluid "{law.fluid}"'
-            raise SolveError(
-                f'boundary "{boundary.name}": its film is at {at:.1f} °C, and the properties of {fluid} hold for '
-                f"{low:g} to {high:g} °C. Give it a film coefficient, or a fluid that covers it (a table in "
-                "[fluids.NAME])"
-            )

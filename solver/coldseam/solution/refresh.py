@@ -16,9 +16,10 @@ import numpy as np
 from coldseam.case.overtime import at_moment
 from coldseam.case.schedules import Schedule
 from coldseam.errors import CaseError, Fault
-from coldseam.solution.coefficients import SAME, depends, evaluate, facing_air
+from coldseam.solution.coefficients import SAME, Coefficients, depends, evaluate, facing_air
 from coldseam.solution.enclosed import cavity_models
 from coldseam.solution.heatsystem import HeatSystem, held_for_structure, with_conditions
+from coldseam.solution.ranges import film_remark, require_fluids
 from coldseam.solution.stepper import State
 from coldseam.volumes.conditions import Conditions
 
@@ -52,6 +53,7 @@ class Refresher:
         self.present: Conditions | None = None
         self.before: State | None = None
         self.last: State | None = None
+        self.strayed: dict[str, str] = {}
         self.count = 0
 
     def __call__(self, state: State, h: float = 0.0) -> HeatSystem | None:
@@ -98,9 +100,27 @@ class Refresher:
         case = at_moment(self.case, middle)
         cavities = tuple(replace(model, surroundings=_seen(case, model.name)) for model in self.cavities)
         mesh, facet_boundary = self.system.mesh, self.system.facet_boundary
-        found = evaluate(case, mesh, facet_boundary, self.base, field, air, cavities).given
-        self._require_air(found, air)
-        return replace(facing_air(case, found, air, self.base.terminals), terminals=self.base.terminals)
+        found = evaluate(case, mesh, facet_boundary, self.base, field, air, cavities)
+        self._note(found, middle)
+        self._require_air(found.given, air)
+        return replace(facing_air(case, found.given, air, self.base.terminals), terminals=self.base.terminals)
+
+    def _note(self, found: Coefficients, time: float) -> None:
+        """Keep the first warning of every boundary whose film leaves its range; fluids without properties end the run."""
+        require_fluids(self.case, found)
+        for name, used in found.films.items():
+            remark = film_remark(name, used)
+            if remark and name not in self.strayed:
+                self.strayed[name] = f"{remark} (first at {time:.4g} s)"
+
+    def told(self, state: State) -> Coefficients:
+        """Return the coefficients, and what was used, at a state of the run: for its answers."""
+        case = at_moment(self.system.case, state.time)
+        spaces = self.system.spaces
+        air = {name: spaces.temperature_of(name, state.y, state.time, before=True) for name in case.spaces}
+        cavities = tuple(replace(model, surroundings=_seen(case, model.name)) for model in self.cavities)
+        mesh, facet_boundary = self.system.mesh, self.system.facet_boundary
+        return evaluate(case, mesh, facet_boundary, self.base, state.temperature, air, cavities)
 
     def _require_air(self, found: Conditions, air: dict[str, float]) -> None:
         """Raise a CaseError where a floating space's surfaces meet more than its air: its balance would not know of it."""

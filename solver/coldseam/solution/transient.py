@@ -15,6 +15,7 @@ import numpy as np
 from coldseam.errors import SolveError
 from coldseam.physics.melting import HeatContent
 from coldseam.solution.causes import Causes
+from coldseam.solution.coefficients import Coefficients
 from coldseam.solution.events import Happened, Watch, first_crossing
 from coldseam.solution.heatsystem import HeatSystem
 from coldseam.solution.record import Column, Gauges, flows_at
@@ -102,6 +103,12 @@ class History:
         Heat content where bodies melt, or None.
     solver
         Method and counts of the linear solver.
+    reached
+        Lowest and highest temperature of every node, °C, (2, n_nodes).
+    coefficients
+        Films, air gaps and conductivities at the end; None where none depend on the temperatures.
+    strayed
+        Warnings of boundaries whose films left their correlations' ranges.
     """
 
     system: HeatSystem
@@ -118,8 +125,11 @@ class History:
     throughput: float
     tolerance: float
     work: Work
+    reached: np.ndarray
     phase: HeatContent | None = None
     solver: dict[str, object] = field(default_factory=dict)
+    coefficients: Coefficients | None = None
+    strayed: tuple[str, ...] = ()
 
     @property
     def relative_closure(self) -> float:
@@ -170,6 +180,7 @@ class Transient:
         self.totals = Totals(*(np.zeros(len(channels(system))) for _ in range(3)))
         self.initial = initial
         self.state = self._settled(initial)
+        self.reached = np.stack([self.state.temperature, self.state.temperature])
         self.ends = [*system.corners(0.0, self.duration), self.duration]
         self.longest = min(time.longest_step or np.inf, self.duration / LONGEST)
         self.rung = self._first_rung()
@@ -256,6 +267,9 @@ class Transient:
             tolerance=self.tolerance,
             work=self.work,
             phase=self.phase,
+            reached=self.reached,
+            coefficients=None if self.refresh is None else self.refresh.told(self.state),
+            strayed=() if self.refresh is None else tuple(self.refresh.strayed.values()),
             solver={
                 "method": self.solver.method,
                 "factorisations": self.solver.factorisations,
@@ -334,6 +348,8 @@ class Transient:
             if found is not None and stop:
                 s, stopped, switch = (found - step.start.time) / step.h, True, None
                 state = self.stepper.at(step, s)
+        held = self.causes.held(state)
+        self.reached = np.stack([np.minimum(self.reached[0], held), np.maximum(self.reached[1], held)])
         self._integrate(step, s, state)
         self._record(step, s, state)
         self.work.steps += 1
