@@ -133,6 +133,12 @@ FAULTS = [
      "materials.foam.specific_heat.polynomial", "must be above 0 over its range"),
     (PANEL, FOAM, FOAM + "\nspecific_heat = { value = 5 }", "specific_heat", "materials.foam.specific_heat.value",
      "is not a key here"),
+    (PANEL, FOAM, "conductivity = [{ table = [[0, 1]] }, 1, 1]", "conductivity", "materials.foam.conductivity[1].table",
+     "at least two points"),
+    (PANEL, FOAM, "conductivity = [1, { tabel = [[0, 1], [1, 2]] }, -3]", "conductivity", "materials.foam.conductivity",
+     'did you mean "table"'),
+    (PANEL, FOAM, "conductivity = [1, { table = [[0, 1], [1, 2]] }]", "conductivity", "materials.foam.conductivity",
+     "not 2 numbers"),
     (PANEL, FOAM, FOAM + "\nspecific_heat = 0", "specific_heat", "materials.foam.specific_heat", "must be above 0"),
     (PANEL, FOAM, FOAM + "\nspecific_heat = { table = [[0, 1], [9, 2]] }\nmelting = { at = 0, latent_heat = 1, "
      "specific_heat_liquid = 5 }", "melting", "materials.foam.melting.specific_heat_liquid", "the law holds for the liquid"),

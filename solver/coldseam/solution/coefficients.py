@@ -20,13 +20,14 @@ which couples nothing and so leaves the matrix as sparse and symmetric as it is.
 from __future__ import annotations
 
 import dataclasses
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from coldseam.case.films import ATMOSPHERE, Exchange, exchange
+from coldseam.case.laws import ConductivityLaw
 from coldseam.errors import CaseError, Fault
 from coldseam.mesh.types import Mesh
 from coldseam.physics import convection, fluids, laws, radiation
@@ -37,7 +38,7 @@ from coldseam.volumes.operator import cell_pairs
 from coldseam.volumes.section import facet_shares
 
 if TYPE_CHECKING:
-    from coldseam.case.model import Boundary, Case
+    from coldseam.case.model import Boundary, Case, Material
 
 LEAST_FILM = 1e-9
 """W/(m² K): keeps a boundary that exchanges nothing (emissivity 0) in the network."""
@@ -71,7 +72,7 @@ class Coefficients:
 def depends(case: Case) -> bool:
     """Return whether anything in a case depends on the answer's temperatures."""
     return (
-        any(m.law is not None for m in case.materials.values())
+        any(m.laws for m in case.materials.values())
         or bool(case.cavities)
         or any(body.air_gap is not None for body in case.body)
         or any(found.depends for _, found in exchanges(case))
@@ -159,9 +160,12 @@ def evaluate(
         dataclasses.replace(terminal, temperature=t) for terminal, t in zip(base.terminals, temperatures, strict=True)
     )
     gaps = air_gaps(case, mesh, temperature)
+    conductivity, tensors = _conductivity(case, mesh, base, temperature, gaps)
     given = dataclasses.replace(
         base,
-        conductivity=_conductivity(case, mesh, base, temperature, gaps),
+        conductivity=conductivity,
+        tensors=base.tensors if tensors is None else tensors,
+        turned=tensors is not None,
         film=film,
         flux=flux,
         terminals=terminals,
@@ -236,32 +240,60 @@ def _outside(case: Case, terminal, air: Mapping[str, float]) -> float:
     return air[spaces.pop()] if spaces else terminal.temperature
 
 
-def _conductivity(case: Case, mesh: Mesh, base: Conditions, temperature: np.ndarray, gaps: Gaps) -> np.ndarray:
-    """Return every cell's conductivity, W/(m K), (n_cells,)."""
+def _conductivity(
+    case: Case, mesh: Mesh, base: Conditions, temperature: np.ndarray, gaps: Gaps
+) -> tuple[np.ndarray, np.ndarray | None]:
+    """Return every cell's conductivity, W/(m K), (n_cells,), and unit tensor, (n_cells, dim, dim), where laws turn it."""
     k, pairs = base.conductivity.copy(), cell_pairs(mesh.dim)
     for number, (value, _) in gaps.items():
         k[mesh.cell_body == number] = value
+    tensors: np.ndarray | None = None
     for number, body in enumerate(mesh.bodies):
-        law = case.materials[body.material].law
-        if law is None or number in gaps:
+        material = case.materials[body.material]
+        if not material.laws or number in gaps:
             continue
         cells = np.flatnonzero(mesh.cell_body == number)
         t = temperature[mesh.cells[cells]]
         first, second = t[:, pairs[:, 0]], t[:, pairs[:, 1]]
         weight = (first - second) ** 2
         weight += 1e-12 * weight.max(initial=0.0) + 1e-30  # cells of one temperature: the plain mean
-        k[cells] = (weight * laws.mean_conductivity(law, first, second)).sum(axis=1) / weight.sum(axis=1)
-    return k
+
+        def mean(law: float | ConductivityLaw, first=first, second=second, weight=weight) -> np.ndarray | float:
+            if isinstance(law, float):
+                return law
+            return (weight * laws.mean_conductivity(law, first, second)).sum(axis=1) / weight.sum(axis=1)
+
+        if material.law is not None:
+            k[cells] = mean(material.law)
+            continue
+        if tensors is None:
+            assert base.tensors is not None
+            tensors = base.tensors[mesh.cell_body]
+        k[cells], tensors[cells] = _along(material, mesh.dim, mean)
+    return k, tensors
+
+
+def _along(material: Material, dim: int, value: Callable[[Any], Any]) -> tuple[np.ndarray, np.ndarray]:
+    """Return conductivity, (n,), and unit tensor, (n, dim, dim), of cells whose axes have conductivities of their own."""
+    whole: Any = sum(np.multiply.outer(value(k), np.outer(axis, axis)) for k, axis in material.directions(dim))
+    k = np.trace(whole, axis1=-2, axis2=-1) / dim
+    return k, whole / k[..., None, None]
 
 
 def other_average(case: Case, mesh: Mesh, given: Conditions, temperature: np.ndarray) -> np.ndarray:
     """Return the conductivity at each cell's mean temperature, W/(m K), (n_cells,); the field in °C, (n_nodes,)."""
     k = given.conductivity.copy()
     for number, body in enumerate(mesh.bodies):
-        law = case.materials[body.material].law
-        if law is not None and case.body[body.source].air_gap is None:
-            cells = np.flatnonzero(mesh.cell_body == number)
-            k[cells] = laws.conductivity(law, temperature[mesh.cells[cells]].mean(axis=1))
+        material = case.materials[body.material]
+        if not material.laws or case.body[body.source].air_gap is not None:
+            continue
+        cells = np.flatnonzero(mesh.cell_body == number)
+        middle = temperature[mesh.cells[cells]].mean(axis=1)
+
+        def there(law: float | ConductivityLaw, at: np.ndarray = middle) -> np.ndarray | float:
+            return law if isinstance(law, float) else laws.conductivity(law, at)
+
+        k[cells] = there(material.law) if material.law is not None else _along(material, mesh.dim, there)[0]
     return k
 
 

@@ -72,7 +72,7 @@ class Refresher:
         """Return what a checkpoint must keep of it, arrays by name; empty before the first step."""
         if self.last is None or self.present is None:
             return {}
-        kept = {name: getattr(self.present, name) for name in KEPT}
+        kept = {name: getattr(self.present, name) for name in (*KEPT, *(["tensors"] if self.present.turned else []))}
         return kept | {"last": np.append(self.last.time, self.last.temperature)}
 
     def recall(self, kept: dict[str, np.ndarray]) -> HeatSystem | None:
@@ -85,7 +85,8 @@ class Refresher:
         empty = np.zeros(0)
         time, temperature = float(kept["last"][0]), kept["last"][1:]
         self.last = State(time=time, temperature=temperature, y=empty, running=empty.astype(np.int64))
-        self.present = replace(self.base, **{name: kept[name] for name in KEPT})
+        self.present = replace(self.base, **{name: kept[name] for name in (*KEPT, "tensors") if name in kept})
+        self.present = replace(self.present, turned="tensors" in kept)
         self.system = with_conditions(self.system, self.present)
         return self.system
 
@@ -141,6 +142,8 @@ def moved(one: Conditions, other: Conditions) -> bool:
     """Return whether any coefficient differs by more than ``MOVED`` of itself, or a flux by ``MOVED_FLUX``."""
     largest = max(float(np.max(np.abs(one.flux), initial=0.0)), 1e-300)
     if np.max(np.abs(other.flux - one.flux), initial=0.0) > MOVED_FLUX * largest:
+        return True
+    if one.turned and np.max(np.abs(other.tensors - one.tensors), initial=0.0) > MOVED:
         return True
     pairs = (
         (one.film, other.film),
