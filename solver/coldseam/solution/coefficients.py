@@ -28,6 +28,7 @@ import numpy as np
 
 from coldseam.case.films import ATMOSPHERE, Exchange, exchange
 from coldseam.case.laws import ConductivityLaw
+from coldseam.case.schedules import constant
 from coldseam.errors import CaseError, Fault
 from coldseam.mesh.types import Mesh
 from coldseam.physics import convection, fluids, laws, radiation
@@ -343,7 +344,7 @@ def _surface(
             "temperature": radiant,
             "heat_flow": float(area @ (h_r * (radiant - surface))),
         }
-    sun = 0.0 if found.sun is None else found.sun.absorptivity * found.sun.irradiance
+    sun = 0.0 if found.sun is None else found.sun.absorptivity * constant(found.sun.irradiance)
     if found.sun is not None:
         used["sun"] = {"absorbed": sun, "heat_flow": sun * float(area.sum())}
     used["convection"]["heat_flow"] = float(area @ (h * (air - surface)))
@@ -400,10 +401,10 @@ def fluid_range(case: Case, law) -> tuple[float, float]:
 def _radiant(found: Exchange, air: float) -> float:
     law = found.radiation
     assert law is not None
-    around = air if law.surroundings is None else law.surroundings
+    around = air if law.surroundings is None else constant(law.surroundings)
     if law.sky is None:
         return around
-    sky = law.sky.temperature if law.sky.temperature is not None else radiation.clear_sky(air)
+    sky = radiation.clear_sky(air) if law.sky.temperature is None else constant(law.sky.temperature)
     return radiation.radiant_temperature(around, sky, law.sky.share)
 
 

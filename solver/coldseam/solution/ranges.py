@@ -12,6 +12,7 @@ from coldseam.physics import laws
 from coldseam.solution.coefficients import Coefficients, exchanges, fluid_range
 
 if TYPE_CHECKING:
+    from coldseam.case.laws import Law
     from coldseam.case.model import Case
 
 
@@ -32,7 +33,7 @@ def law_remarks(case: Case, mesh: Mesh, coldest: np.ndarray, warmest: np.ndarray
             continue
         material = case.materials[body.material]
         reached = np.array([coldest[cells].min(), warmest[cells].max()])
-        found = [("conductivity", law) for law in material.laws]
+        found: list[tuple[str, Law]] = [("conductivity", law) for law in material.laws]
         if case.time is not None and material.heat_law is not None:
             found.append(("specific heat", material.heat_law))
         for what, law in found:

@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from coldseam.case.overtime import at_moment
-from coldseam.case.schedules import Schedule
+from coldseam.case.schedules import constant
 from coldseam.errors import CaseError, Fault
 from coldseam.solution.coefficients import SAME, Coefficients, depends, evaluate, facing_air
 from coldseam.solution.enclosed import cavity_models
@@ -134,8 +134,7 @@ class Refresher:
 
 def _seen(case: Case, cavity: str) -> float | None:
     found = case.cavities[cavity].surroundings
-    assert not isinstance(found, Schedule)  # held at a moment
-    return found
+    return None if found is None else constant(found)
 
 
 def moved(one: Conditions, other: Conditions) -> bool:
