@@ -26,7 +26,7 @@ FREE = (
     "inside of a box",
 )  # fmt: skip
 """Surfaces of free and mixed convection."""
-FORCED = ("plate", "cylinder", "tube bank", "duct")
+FORCED = ("plate", "cylinder", "sphere", "tube bank", "duct")
 """Surfaces of forced convection."""
 STANDARD = ("up", "horizontal", "down", "outside")
 """Directions of heat flow at an inside surface, and the outside surface, of ISO 6946."""
