@@ -10,7 +10,8 @@ fluid temperature (ducts and tube banks: of the fluid). One film holds for a who
 - horizontal cylinders: Churchill, Chu 1975, ibid. 1049; vertical ones: Popiel 2008 where they are slender
 - spheres: Churchill 2002; inside of a box: its six faces by the above, weighted by area (composition: own)
 - plate along a flow: 0.664 Re^(1/2) Pr^(1/3), above Re = 5e5 (0.037 Re^0.8 - 871) Pr^(1/3) (Incropera, section 7.2)
-- cylinder across a flow: Churchill, Bernstein 1977; sphere in a flow: Whitaker 1972, AIChE Journal 18, 361; tube banks: Žukauskas 1987; ducts: 3.66, or Gnielinski 1976
+- cylinder across a flow: Churchill, Bernstein 1977; sphere in a flow: Whitaker 1972, AIChE Journal 18, 361
+- tube banks: Žukauskas 1987; ducts: 3.66, or Gnielinski 1976
 - mixed: Nu^n = Nu_forced^n ± Nu_free^n, n = 3; across 7/2, cylinders and spheres 4 (Incropera, section 9.9); of a sphere
   what both are above the 2 of still air
 - standard: convective part of ISO 6946 (5.0, 2.5, 0.7 inside; 4 + 4 v outside)
