@@ -6,7 +6,8 @@ Each step freezes the coefficients at the present field T (solution/coefficients
 
 With the excess of the films this is Newton's method at the boundaries. Conductivities and the mean temperatures of
 convective films lag by one step (their exact derivatives would make the matrix unsymmetric, the latter also
-full); Anderson's acceleration (1965, J. ACM 12, 547) of depth ``DEPTH`` makes up for that. The first step solves with
+full); Anderson's acceleration (1965, J. ACM 12, 547) of depth ``DEPTH`` makes up for that once steps are small against the
+temperatures' range (``NEAR``); before, it would only spoil Newton's. The first step solves with
 the usual films of :func:`coldseam.volumes.conditions.boundary_film`, so the start is the field of a linear case.
 
 In three dimensions the multigrid hierarchy of the first step stays the preconditioner of all.
@@ -47,6 +48,7 @@ LEAST_RANGE = 1.0
 """K: the range that the tolerance is a part of where all temperatures are alike."""
 MOST_STEPS = 40
 DEPTH = 4
+NEAR = 0.1
 INNER_TOLERANCE = 1e-8
 INNER_RESTARTS = 6
 COLDEST = 1.0
@@ -252,6 +254,11 @@ class _Anderson:
 
     def next(self, x: np.ndarray, step: np.ndarray) -> np.ndarray:
         """Return the next field from the present one and its plain step, all (n,)."""
+        if np.abs(step).max() > NEAR * max(float(np.ptp(x)), LEAST_RANGE):  # far off: Newton's steps as they are
+            self.moves.clear()
+            self.changes.clear()
+            self.before = None
+            return x + step
         if self.before is not None:
             if np.abs(step).max() > 2.0 * np.abs(self.before[1]).max():  # astray: begin again from here
                 self.moves.clear()
