@@ -69,14 +69,14 @@ def test_constant_diffusivity_is_a_linear_problem():
 
     100 mm at 0 °C, one face raised to 80 °C at once, the other kept; after 1000 s alpha t/L² = 0.1.
     """
-    text = slab_text(k=1, rho=1000, c=1, start=0, air=0, film=1e6, length=100, width=20, duration=1000, record=100,
-                     tolerance=0.01)  # fmt: skip
+    text = slab_text(k=1, rho=1000, c=1, start=0, air=0, film=1e6, length=100, width=20, duration=1000, record=200,
+                     tolerance=0.03)  # fmt: skip
     text = text.replace("conductivity = 1\n", "conductivity = { table = [[-50, 0.5], [150, 2.5]] }\n")
     text = text.replace("specific_heat = 1\n", "specific_heat = { table = [[-50, 500], [150, 2500]] }\n")
     warm = '[[boundary]]\nname = "warm"\non = { plane = { x = 0 } }\ntemperature = 80\n'
     text = text.replace('[[boundary]]\nname = "rest"', warm + '[[boundary]]\nname = "rest"')
     text = text.replace("at = [0, 10.0]", "at = [50, 10.0]")
-    history = run(text, grid(np.linspace(0, 0.1, 41), np.array([0.0, 0.02]))).result()
+    history = run(text, grid(np.linspace(0, 0.1, 31), np.array([0.0, 0.02]))).result()
     n = np.arange(1, 200)
 
     def theta(fourier: float) -> float:
@@ -85,7 +85,7 @@ def test_constant_diffusivity_is_a_linear_problem():
             top * (0.5 - (2 / (n * np.pi) * np.sin(n * np.pi / 2) * np.exp(-((n * np.pi) ** 2) * fourier)).sum())
         )
 
-    for row in (5, -1):
+    for row in (3, -1):
         exact = 100 * (np.sqrt(1 + 2 * theta(1e-4 * float(history.column("time")[row])) / 100) - 1)
         assert history.column("probe", "centre")[row] == pytest.approx(exact, abs=0.12)  # 0.15 % of 80 K, the mesh
     assert history.column("probe", "centre")[-1] > 20

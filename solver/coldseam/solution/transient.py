@@ -248,8 +248,8 @@ class Transient:
         heat_in, stored = self._heat_in(), self._stored()
         outside = self._outside_channels()
         crossed = float(self.totals.magnitude[outside].sum()) + abs(self.system.source_flow) * self.time
-        # What would move all temperatures by a thousandth of a step's tolerance is the least, or a run at rest fails.
-        least = 1e-3 * self.tolerance * float(self.system.capacity.sum())
+        # What would move all temperatures by a hundredth of a step's tolerance is the least, or a run at rest fails.
+        least = 1e-2 * self.tolerance * float(self.system.capacity.sum())
         through = max(0.5 * (crossed + self._rearranged()), least)
         history = History(
             system=self.system,
