@@ -268,7 +268,10 @@ def material_card(entry: Entry) -> str:
         ("kind", entry.category),
         ("conductivity", f"{entry.conductivity:g} W/(m·K)" + (" at 20 °C; follows a law" if entry.law else "")),
         ("density", f"{entry.density:g} kg/m³"),
-        ("specific heat", f"{entry.specific_heat:g} J/(kg·K)"),
+        (
+            "specific heat",
+            f"{entry.specific_heat:g} J/(kg·K)" + (" at 20 °C; follows a law" if entry.heat_law else ""),
+        ),
         ("emissivity", "not known" if entry.emissivity is None else f"{entry.emissivity:g}"),
         ("holds for", entry.holds_for),
         ("source", entry.source),

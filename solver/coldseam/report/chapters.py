@@ -143,7 +143,9 @@ def _coupling(answers: Answers, shown: Shown) -> Markup:
                 low, high = intervals.get(one, {}).get(other, (None, None))
                 pair = joined([name(one), " – ", name(other)])
                 rows[frozenset((one, other))] = (pair, shown.bounded("coupling", value, low, high))
-    return table("Thermal coupling coefficients", ("between", "coefficient"), list(rows.values()), (1,))
+    told = (answers.get("solver") or {}).get("linearised")
+    title = "Thermal coupling coefficients" + (f" (linearised: {told})" if told else "")
+    return table(title, ("between", "coefficient"), list(rows.values()), (1,))
 
 
 def _trust(answers: Answers, shown: Shown) -> Markup:

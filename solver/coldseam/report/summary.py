@@ -181,7 +181,9 @@ def _coupling(answers: Answers) -> list[str]:
             if one != other and frozenset((one, other)) not in rows:
                 low, high = intervals.get(one, {}).get(other, (None, None))
                 rows[frozenset((one, other))] = (f"{one} - {other}", with_error(value, low, high, unit))
-    return ["Thermal coupling", *_table(list(rows.values()))] if rows else []
+    linearised = (answers.get("solver") or {}).get("linearised")
+    title = "Thermal coupling" + (" (linearised: films and conductivities held at this answer)" if linearised else "")
+    return [title, *_table(list(rows.values()))] if rows else []
 
 
 def _trust(answers: Answers) -> list[str]:

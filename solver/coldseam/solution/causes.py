@@ -27,9 +27,13 @@ class Causes:
     """
 
     def __init__(self, system: HeatSystem, initial: State):
-        spans = [span_of(course) for course in system.terminal_course if course is not None]
+        courses = system.terminal_course[: system.network.n_terminals]
+        sun = system.terminal_course[system.network.n_terminals :]
+        spans = [span_of(course) for course in courses if course is not None]
         self.low = min([float(initial.temperature.min()), *(low for low, _ in spans)])
         self.high = max([float(initial.temperature.max()), *(high for _, high in spans)])
+        if any(course is not None and span_of(course)[1] > 0.0 for course in sun):
+            self.high = np.inf
         self.look(system, initial)
 
     def look(self, system: HeatSystem, state: State) -> None:
