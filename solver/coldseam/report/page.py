@@ -21,6 +21,8 @@ BAR_ROOM = 0.95
 TALLEST = 5.0
 LONGEST = 6.0
 PAD = 0.22
+PACKED = 3
+"""How hard PNGs are compressed: a half more bytes than the hardest, in a quarter of the time."""
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -180,8 +182,7 @@ def _legend(figure, legend, room: float):
         labelspacing=0.55,
         alignment="left",
     )
-    figure.canvas.draw()
-    tall = made.get_window_extent().height / figure.dpi
+    tall = made.get_window_extent(figure.canvas.get_renderer()).height / figure.dpi
     return made, tall + 0.14
 
 
@@ -214,7 +215,9 @@ def save(page: Page, folder: Path, name: str, *, vector: bool) -> tuple[str, str
 
     contents = {}
     stream = io.BytesIO()
-    page.figure.savefig(stream, format="png", dpi=style.DPI, metadata={"Software": "coldseam"})
+    page.figure.savefig(
+        stream, format="png", dpi=style.DPI, metadata={"Software": "coldseam"}, pil_kwargs={"compress_level": PACKED}
+    )
     contents[f"{name}.png"] = stream.getvalue()
     if vector:
         stream = io.BytesIO()

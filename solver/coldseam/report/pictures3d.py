@@ -17,10 +17,11 @@ from coldseam.report import scene as scenes
 from coldseam.report import style
 from coldseam.report.labels import Wanted, set_labels
 from coldseam.report.pictures2d import _counted, _lines, model_table, temperature_table
-from coldseam.report.plane import AXES, Section, cut, isolines
+from coldseam.report.plane import AXES, isolines
 from coldseam.report.view import Picture, View, boundary_areas
 
 EVEN = 0.02
+MIDDLE = "through the middle"
 CORNER_VIEW = np.array([0.62, -0.70, 0.50])
 
 
@@ -36,7 +37,7 @@ class Spot:
 def section_spots(view: View) -> list[Spot]:
     """Return where a 3D model is cut: through its middle, and through the coldest point on the warmest side."""
     low, high = view.mesh.points.min(axis=0), view.mesh.points.max(axis=0)
-    spots = [Spot(axis=k, at=float((low[k] + high[k]) / 2), why="through the middle") for k in range(3)]
+    spots = [Spot(axis=k, at=float((low[k] + high[k]) / 2), why=MIDDLE) for k in range(3)]
     coldest = coldest_point(view)
     if coldest is not None:
         for k in range(3):
@@ -56,12 +57,6 @@ def coldest_point(view: View) -> np.ndarray | None:
     warmest = max(warm, key=lambda space: spaces[space]["temperature"])
     nodes = np.unique(view.mesh.facets[view.faces_space(warmest)])
     return view.mesh.points[nodes[np.argmin(view.temperature[nodes])]]
-
-
-def sections(view: View) -> list[tuple[Spot, Section]]:
-    """Return the sections that hit the model."""
-    found = [(spot, cut(view, spot.axis, spot.at)) for spot in section_spots(view)]
-    return [(spot, section) for spot, section in found if section is not None]
 
 
 def draw_boundaries(view: View, folder: Path, name: str, *, behind: bool = False) -> Picture:
