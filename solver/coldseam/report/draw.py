@@ -121,6 +121,7 @@ def _space_jobs(view: View):
 def warm(groups: tuple[str, ...]) -> None:
     """Load what drawing groups of pictures needs: the libraries, the font, and for views in space a first window."""
     from matplotlib.backends import backend_agg, backend_svg  # noqa: F401
+    from scipy import spatial  # noqa: F401
 
     from coldseam.report import flow, history, labels, pictures2d, pictures3d, profiles, style  # noqa: F401
 

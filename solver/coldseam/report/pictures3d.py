@@ -11,7 +11,7 @@ from pathlib import Path
 
 import numpy as np
 
-from coldseam.answers.maps import SurfaceMap
+from coldseam.answers.surfacemap import SurfaceMap
 from coldseam.report import page as pages
 from coldseam.report import scene as scenes
 from coldseam.report import style

@@ -7,7 +7,7 @@ from pathlib import Path
 
 import numpy as np
 
-from coldseam.answers.maps import SurfaceMap
+from coldseam.answers.surfacemap import SurfaceMap
 from coldseam.report import page as pages
 from coldseam.report import style
 from coldseam.report.plane import chains

@@ -11,7 +11,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from coldseam.answers.maps import SurfaceMap
+from coldseam.answers.surfacemap import SurfaceMap
 from coldseam.mesh.measure import facet_measure
 from coldseam.mesh.types import Mesh
 
