@@ -193,7 +193,7 @@ def _model(system: HeatSystem) -> View:
 def history_view(history: History) -> HistoryView:
     """Return the recorded run as the report sees it, with levels and limits to draw in."""
     case = history.system.case
-    levels = [(f"{event.name}: {event.when.level:g} °C", event.when.level) for event in case.event]
+    levels = [(event.name, event.when.level) for event in case.event]
     for name, space in case.spaces.items():
         if space.floating is not None and space.floating.cooling is not None:
             setpoint = space.floating.cooling.setpoint

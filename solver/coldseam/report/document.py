@@ -83,7 +83,7 @@ def document(view: View, case: Case, drawings: Drawings, folder: Path, shown: Sh
         ("cautions", "Cautions, and what this does not cover", cautions(case)),
     ]  # fmt: skip
     summary = joined([
-        *(tag("p", line, {"class": "answer"}) for line in event_lines(answers)),
+        *(tag("p", line, {"class": "answer"}) for line in event_lines(answers, shown)),
         tag("p", chapters.answer_sentence(answers, shown), {"class": "answer"}),
         tag("p", chapters.limits_sentence(answers), {"class": "verdict"}),
     ])  # fmt: skip

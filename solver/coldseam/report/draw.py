@@ -18,7 +18,7 @@ from functools import cache, partial
 from pathlib import Path
 
 from coldseam.errors import OutputError
-from coldseam.report.view import Picture, View
+from coldseam.report.view import Picture, View, in_drawing_units
 
 GROUPS = ("flat", "space")
 """Sections and charts, which need no VTK; views in space."""
@@ -191,7 +191,7 @@ def main(groups: list[str]) -> int:
         return 0
     scratch, folder = map(Path, json.loads(told))
     with (scratch / VIEW).open("rb") as stream:
-        view = pickle.load(stream)
+        view = in_drawing_units(pickle.load(stream))
     for group in groups:
         draw_group(view, folder, group, scratch, scratch / f"{os.getpid()}.list")
     return 0

@@ -30,6 +30,7 @@ def set_labels(
     boxed: bool = False,
     spare_small: bool = False,
     avoid: np.ndarray | None = None,
+    lines: np.ndarray | None = None,
 ) -> list:
     """Set labels on axes and return the text artists.
 
@@ -47,11 +48,14 @@ def set_labels(
         Leave out labels on lines hardly longer than the label itself.
     avoid
         Boxes in pixels that no label may touch, shape (n, 4): x0, y0, x1, y1.
+    lines
+        More points, in data coordinates, from which labels keep away, shape (n, 2).
     """
     figure = ax.figure
     frame = ax.get_window_extent().padded(-3.0)
     crowd = [_pixels(ax, _thin(entry.points, 400)) for entry in wanted]
     taken = np.empty((0, 4)) if avoid is None else np.asarray(avoid, dtype=float).reshape(-1, 4)
+    drawn = [] if lines is None else [_pixels(ax, lines)]
     made = []
     # short lines first: they have the fewest places to choose from
     for k in sorted(range(len(wanted)), key=lambda k: len(wanted[k].points)):
@@ -60,7 +64,7 @@ def set_labels(
         if boxed:
             wide = tall = max(wide, tall) + 5
         own = crowd[k][_roomy(crowd[k], 1.5 * wide)] if spare_small else crowd[k]
-        others = [points for j, points in enumerate(crowd) if j != k and len(points)]
+        others = drawn + [points for j, points in enumerate(crowd) if j != k and len(points)]
         spot = _spot(own, np.vstack(others) if others else np.empty((0, 2)), taken, (wide, tall), frame)
         if spot is None:
             continue

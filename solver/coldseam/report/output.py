@@ -55,7 +55,7 @@ def write_all(
     written = [*write_answers(folder, view), *write_field(folder, view)]
     if not pictures:
         return [*written, write_report(view, case, Drawings(pictures=()), folder, shown, viewer=False)]
-    drawings = draw_all(view, folder, log, artists)
+    drawings = draw_all(replace(view, shown=shown), folder, log, artists)
     for picture in drawings.pictures:
         written += [folder / name for name in (picture.file, picture.vector) if name]
     listed = [{"file": p.file, "vector": p.vector, "title": p.title, "alt": p.alt} for p in drawings.pictures]
