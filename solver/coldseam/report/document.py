@@ -82,9 +82,11 @@ def document(view: View, case: Case, drawings: Drawings, folder: Path, shown: Sh
         ("case", "The case file", given.case_file(case)),
         ("cautions", "Cautions, and what this does not cover", cautions(case)),
     ]  # fmt: skip
+    wet = chapters.moisture_sentence(answers, shown)
     summary = joined([
         *(tag("p", line, {"class": "answer"}) for line in event_lines(answers, shown)),
         tag("p", chapters.answer_sentence(answers, shown), {"class": "answer"}),
+        tag("p", wet, {"class": "answer"}) if wet else "",
         tag("p", chapters.limits_sentence(answers), {"class": "verdict"}),
     ])  # fmt: skip
     return page(title, summary, [part for part in parts if part[2]], scripts=viewer)

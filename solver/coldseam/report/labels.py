@@ -13,6 +13,9 @@ import numpy as np
 
 from coldseam.report import style
 
+CLEAR = 0.25
+"""Least distance of a label's place to the next line, as a part of the label's height."""
+
 
 @dataclass(frozen=True, kw_only=True, eq=False)
 class Wanted:
@@ -45,7 +48,7 @@ def set_labels(
     boxed
         Draw a circle round each text, for reference numbers.
     spare_small
-        Leave out labels on lines hardly longer than the label itself.
+        Leave out labels on lines hardly longer than the label itself, or where lines crowd.
     avoid
         Boxes in pixels that no label may touch, shape (n, 4): x0, y0, x1, y1.
     lines
@@ -65,7 +68,10 @@ def set_labels(
             wide = tall = max(wide, tall) + 5
         own = crowd[k][_roomy(crowd[k], 1.5 * wide)] if spare_small else crowd[k]
         others = drawn + [points for j, points in enumerate(crowd) if j != k and len(points)]
-        spot = _spot(own, np.vstack(others) if others else np.empty((0, 2)), taken, (wide, tall), frame)
+        points = np.vstack(others) if others else np.empty((0, 2))
+        if spare_small:
+            own = own[_apart(own, points, CLEAR * tall)]
+        spot = _spot(own, points, taken, (wide, tall), frame)
         if spot is None:
             continue
         taken = np.vstack([taken, [spot[0] - wide / 2, spot[1] - tall / 2, spot[0] + wide / 2, spot[1] + tall / 2]])
@@ -120,6 +126,15 @@ def _roomy(points: np.ndarray, least: float) -> np.ndarray:
     np.minimum.at(low, piece, points)
     np.maximum.at(high, piece, points)
     return ((high - low).max(axis=1) >= least)[piece]
+
+
+def _apart(points: np.ndarray, others: np.ndarray, least: float) -> np.ndarray:
+    """Return which points lie at least so far (pixels) from all others: nearer, a label could belong to any line."""
+    if len(points) == 0 or len(others) == 0:
+        return np.ones(len(points), dtype=bool)
+    from scipy.spatial import cKDTree
+
+    return cKDTree(others).query(points)[0] >= least
 
 
 def _pixels(ax, points: np.ndarray) -> np.ndarray:

@@ -56,7 +56,7 @@ _FT2 = FOOT**2
 _INCH = {
     "length": Measure(unit="in", factor=1e-3 / INCH),
     "temperature": Measure(unit="°F", factor=1.8, offset=32.0),
-    "difference": Measure(unit="°F difference", factor=1.8),
+    "difference": Measure(unit="°F", factor=1.8),
     "area": Measure(unit="ft²", factor=1 / _FT2),
     "area_per_m": Measure(unit="ft²/ft", factor=1 / FOOT),
     "volume": Measure(unit="ft³", factor=1 / FOOT**3),
