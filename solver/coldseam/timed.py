@@ -25,6 +25,7 @@ from coldseam.report.shown import Shown
 from coldseam.report.view import View, model_view
 from coldseam.solution import checkpoint
 from coldseam.solution.heatsystem import HeatSystem, heat_system
+from coldseam.solution.reducing import Reduction, not_tried, reduced_run, reduction
 from coldseam.solution.refresh import refresher
 from coldseam.solution.starting import FINAL, machine_outlook, save_final, starting_state
 from coldseam.solution.timeconstants import time_constants
@@ -133,21 +134,42 @@ def run_over_time(case: Case, log: Log, *, folder: Path | None = None, resume: b
     system = heat_system(case, mesh)
     wanted = folder is not None and (case.time.fields is not None or case.time.fields_every is not None)
     fields = FieldSeries(folder, _model(system)) if wanted and folder else None
-    phase, refresh = heat_content(case, system.mesh), refresher(system)
-    transient = Transient(system, starting_state(system), phase=phase, refresh=refresh, on_field=fields)
-    if go_on and folder:
+    transient, reduced = _begun(system, log, folder, fields)
+    if go_on and folder and checkpoint.extra_of(folder)["decided"]:
         entries = checkpoint.restore(folder, transient)["fields"]
         if fields is not None:
             fields.entries = [(float(moment), str(name)) for moment, name in entries]
         log("run", f"goes on at {transient.time:.6g} s")
     elif fields is not None:
-        fields(0.0, transient.state.temperature)
+        fields(0.0, transient.system.expand(transient.state.temperature))
     _go(transient, log, folder, fields)
     history = transient.result()
+    history = replace(history, solver=reduced.told(history.solver))
     remarks = [*facts["remarks"], *machine_outlook(history.system)]
     accuracy = accuracy_over_time(history, facts["accuracy"], facts["relaxed"])
     answers = timed_answers(history, facts["mesh"], accuracy, remarks, {"time_constants": time_constants(system)})
     return TimedResult(case=case, answers=answers, history=history)
+
+
+def _begun(
+    system: HeatSystem, log: Log, folder: Path | None, fields: FieldSeries | None
+) -> tuple[Transient, Reduction]:
+    """Return the run, over all nodes or in a reduced model, and what became of that.
+
+    While it is looked for, ``folder`` holds a checkpoint of the start: a run killed then keeps its mesh.
+    """
+    phase, refresh = heat_content(system.case, system.mesh), refresher(system)
+    whole = Transient(system, starting_state(system), phase=phase, refresh=refresh, on_field=fields)
+    reduced = None if folder is None else checkpoint.load_reduction(folder, system)
+    if reduced is None:
+        if folder is not None and not not_tried(system, whole):
+            checkpoint.save(folder, whole, {"fields": [], "decided": False})
+        reduced = reduction(whole, log)
+        if folder is not None:
+            checkpoint.save_reduction(folder, reduced)
+    if reduced.system is None:
+        return whole, reduced
+    return reduced_run(reduced.system, whole, fields), reduced
 
 
 def _mesh(case: Case, log: Log, folder: Path | None) -> tuple[Mesh, dict]:
@@ -181,7 +203,7 @@ def _go(transient: Transient, log: Log, folder: Path | None, fields: FieldSeries
             so_far = f"{transient.time / seconds:.4g} of {transient.duration / seconds:.4g} {unit}"
             log("run", f"{so_far}, step {step.h:.3g} s, some {left:.0f} s to go")
         if folder is not None and now - kept > pause:
-            checkpoint.save(folder, transient, {"fields": [] if fields is None else fields.entries})
+            checkpoint.save(folder, transient, {"fields": [] if fields is None else fields.entries, "decided": True})
             kept = time.perf_counter()
             pause = max(CHECKPOINT_EVERY, 20.0 * (kept - now))
 

@@ -146,9 +146,9 @@ def computed(case: Case, answers: Answers, mesh: Mesh, shown: Shown) -> Markup:
                                   + ("error not known" if reached is None else f"{100 * reached:.2g} % reached")))  # fmt: skip
     if solver:
         iterations = solver.get("iterations") or ()
-        facts.append(
-            ("equations", f"{solver.get('method', '')}; iterations {', '.join(map(str, iterations)) or 'none'}")
-        )
+        each = (iterations,) if isinstance(iterations, int) else iterations
+        facts.append(("equations", f"{solver.get('method', '')}; iterations {', '.join(map(str, each)) or 'none'}"))
+        facts += _stepped(solver, shown)
     facts.append(("units", "metric" if shown.system == "metric" else "inch, °F, Btu; the case file as typed"))
     digest = answers.get("case_sha256", "")
     facts.append(("SHA-256 of the case file", tag("code", digest)))
@@ -166,6 +166,18 @@ def computed(case: Case, answers: Answers, mesh: Mesh, shown: Shown) -> Markup:
         table("How it was computed", ("what", "value"), facts),
         table("Rounds of refinement", columns, rows, (1, 2, 3, 4, 5)),
     ])  # fmt: skip
+
+
+def _stepped(solver: Mapping[str, Any], shown: Shown) -> list[tuple[str, object]]:
+    """Return how a run over time was stepped: in a reduced model, with its checked error, or over all nodes, and why."""
+    reduced = solver.get("reduced")
+    if not isinstance(reduced, Mapping):
+        return []
+    if not reduced.get("used"):
+        return [("time steps", f"over all nodes, without a reduced model: {reduced.get('why', '')}")]
+    error, allowed = (shown.difference_fine(reduced[key]) for key in ("checked_error", "allowed_error"))
+    return [("time steps", f"in a reduced model of {reduced['vectors']} unknowns, whose temperatures are within {error} of "
+                           f"stepping all nodes by the check against these ({allowed} allowed)")]  # fmt: skip
 
 
 def case_file(case: Case) -> Markup:

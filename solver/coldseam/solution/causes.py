@@ -13,6 +13,7 @@ import numpy as np
 from coldseam.case.schedules import span_of
 from coldseam.solution.heatsystem import HeatSystem
 from coldseam.solution.stepper import State
+from coldseam.volumes.conditions import Conditions
 
 
 class Causes:
@@ -29,23 +30,28 @@ class Causes:
     def __init__(self, system: HeatSystem, initial: State):
         courses = system.terminal_course[: system.network.n_terminals]
         sun = system.terminal_course[system.network.n_terminals :]
+        begun = system.expand(initial.temperature)
         spans = [span_of(course) for course in courses if course is not None]
-        self.low = min([float(initial.temperature.min()), *(low for low, _ in spans)])
-        self.high = max([float(initial.temperature.max()), *(high for _, high in spans)])
+        self.low = min([float(begun.min()), *(low for low, _ in spans)])
+        self.high = max([float(begun.max()), *(high for _, high in spans)])
         if any(course is not None and span_of(course)[1] > 0.0 for course in sun):
             self.high = np.inf
+        self.given: Conditions | None = None
         self.look(system, initial)
 
     def look(self, system: HeatSystem, state: State) -> None:
         """Take into account where floating spaces are (°C), and heat that the present equations release or draw."""
         self.low, self.high = self._with(state)
+        if system.given is self.given:
+            return
+        self.given = system.given
         heat = np.concatenate([system.given.source, system.given.flux])
         self.low = -np.inf if np.any(heat < 0) else self.low
         self.high = np.inf if np.any(heat > 0) else self.high
 
-    def held(self, state: State) -> np.ndarray:
-        """Return node temperatures as they are read, °C, (n_nodes,)."""
-        return np.clip(state.temperature, *self._with(state))
+    def within(self, temperatures: np.ndarray, state: State) -> np.ndarray:
+        """Return temperatures in a state as they are read, °C, (n,)."""
+        return np.clip(temperatures, *self._with(state))
 
     def _with(self, state: State) -> tuple[float, float]:
         return min(self.low, *state.y, np.inf), max(self.high, *state.y, -np.inf)

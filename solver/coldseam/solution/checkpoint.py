@@ -1,15 +1,16 @@
 """Checkpoints of a run over time: everything from which it goes on as if it had never stopped.
 
 A checkpoint is one npz file, written under another name, flushed and renamed, so that a run killed at any moment
-leaves the last whole one. The mesh is kept beside it, for a mesher need not give the same one twice, and so are the rows
-of the history, which are only ever added to. Arrays and JSON text only: a file from a stranger can't run code.
+leaves the last whole one. The mesh is kept beside it, for a mesher need not give the same one twice; the rows of the
+history, which are only ever added to; and the basis of a reduced model, once: the multigrid solver that it came from
+begins with random numbers. Arrays and JSON text only: a file from a stranger can't run code.
 """
 
 from __future__ import annotations
 
 import json
 import os
-from dataclasses import asdict
+from dataclasses import asdict, fields
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -19,13 +20,17 @@ from coldseam._version import __version__
 from coldseam.errors import CaseError, Fault, OutputError
 from coldseam.mesh.types import Mesh, MeshBody
 from coldseam.solution.events import Happened
-from coldseam.solution.stepper import State
+from coldseam.solution.heatsystem import HeatSystem
+from coldseam.solution.reduced import Basis, reduced_system
+from coldseam.solution.reducing import Reduction
+from coldseam.solution.stepper import EXTRAPOLATED, State
 from coldseam.solution.transient import Totals, Transient, Work
 
 if TYPE_CHECKING:
     from coldseam.case.model import Case
 
-CHECKPOINT, MESH, ROWS = "checkpoint.npz", "checkpoint_mesh.npz", "checkpoint_rows.bin"
+CHECKPOINT, MESH = "checkpoint.npz", "checkpoint_mesh.npz"
+ROWS, REDUCTION = "checkpoint_rows.bin", "checkpoint_reduced.npz"
 _MESH_ARRAYS = ("points", "cells", "cell_body", "facets", "facet_cell", "facet_patch")
 
 
@@ -80,6 +85,32 @@ def load_mesh(folder: Path) -> tuple[Mesh, dict[str, Any]]:
     return mesh, told["facts"]
 
 
+def save_reduction(folder: Path, found: Reduction) -> None:
+    """Write what became of a reduced model, with its basis.
+
+    Raises
+    ------
+    OutputError
+        It could not be written.
+    """
+    basis = None if found.system is None else found.system.basis
+    arrays = {} if basis is None else {"vectors": basis.vectors, "rates": basis.rates, "seen": basis.seen}
+    told = {entry.name: getattr(found, entry.name) for entry in fields(found) if entry.name != "system"}
+    _write(folder / REDUCTION, arrays | {"told": _text(told)})
+
+
+def load_reduction(folder: Path, system: HeatSystem) -> Reduction | None:
+    """Return what :func:`save_reduction` was given, for the same equations of all nodes; None where nothing was."""
+    if not (folder / REDUCTION).is_file():
+        return None
+    with np.load(folder / REDUCTION, allow_pickle=False) as file:
+        told = _value(file["told"])
+        if "vectors" not in file.files:
+            return Reduction(system=None, **told)
+        basis = Basis(vectors=np.asfortranarray(file["vectors"]), rates=file["rates"], seen=file["seen"])
+    return Reduction(system=reduced_system(system, basis), **told)
+
+
 def has_checkpoint(folder: Path) -> bool:
     """Whether a folder holds what a run can go on from."""
     return (folder / CHECKPOINT).is_file() and (folder / MESH).is_file()
@@ -117,9 +148,9 @@ def save(folder: Path, transient: Transient, extra: dict[str, Any]) -> None:
         "extra": extra,
     }
     guesses = {
-        f"guess_{stage}_{n}": np.append(h, d)
+        f"guess_{stage}_{n}": np.concatenate([[start, h], d])
         for stage, past in transient.stepper.guesses.items()
-        for n, (h, d) in enumerate(past)
+        for n, (start, h, d) in enumerate(past)
     }
     refresh = {} if transient.refresh is None else transient.refresh.memory()
     _write(
@@ -142,6 +173,12 @@ def save(folder: Path, transient: Transient, extra: dict[str, Any]) -> None:
             **{f"refresh_{name}": array for name, array in refresh.items()},
         },
     )
+
+
+def extra_of(folder: Path) -> dict[str, Any]:
+    """Return the ``extra`` that a folder's checkpoint was saved with."""
+    with np.load(folder / CHECKPOINT, allow_pickle=False) as file:
+        return _value(file["told"])["extra"]
 
 
 def require_same(folder: Path, case: Case) -> None:
@@ -197,12 +234,12 @@ def restore(folder: Path, transient: Transient) -> dict[str, Any]:
         watch.closest, watch.closest_at = known["closest"], known["closest_at"]
         watch.happened = None if known["happened"] is None else Happened(**known["happened"])
     for stage in transient.stepper.guesses:
-        past = [stored[name] for name in (f"guess_{stage}_0", f"guess_{stage}_1") if name in stored]
-        transient.stepper.guesses[stage] = [(float(array[0]), array[1:]) for array in past]
+        past = [stored[name] for name in (f"guess_{stage}_{n}" for n in range(EXTRAPOLATED)) if name in stored]
+        transient.stepper.guesses[stage] = [(float(array[0]), float(array[1]), array[2:]) for array in past]
     return told["extra"]
 
 
 def remove(folder: Path) -> None:
     """Remove the checkpoint of a run that has come to its end."""
-    for name in (CHECKPOINT, MESH, ROWS):
+    for name in (CHECKPOINT, MESH, ROWS, REDUCTION):
         (folder / name).unlink(missing_ok=True)

@@ -87,6 +87,23 @@ class HeatSystem:
         """Mask of the nodes whose temperature is an unknown, (n_nodes,)."""
         return self.network.free
 
+    @property
+    def whole(self) -> HeatSystem:
+        """The equations of all nodes: these, or what a reduced system stands for."""
+        return self
+
+    def expand(self, temperature: np.ndarray) -> np.ndarray:
+        """Return the mesh's node temperatures, °C, (n_nodes,): these, or what a reduced system's unknowns stand for."""
+        return temperature
+
+    def reading(self, weights: sparse.csr_array) -> sparse.csr_array | np.ndarray:
+        """Return what reads from the unknowns what weights, (n, n_nodes), read from node temperatures."""
+        return weights
+
+    def largest(self, change: np.ndarray) -> float:
+        """Return the largest change of a node's temperature, K, of changes of the free unknowns, (n_free,)."""
+        return float(np.max(np.abs(change), initial=0.0))
+
     def terminals(self, time: float, *, before: bool = False) -> np.ndarray:
         """Return every terminal's temperature, °C, 0 for floating ones, then irradiances, (n_terminals + n_sunlit,)."""
         return np.array([0.0 if c is None else value_at(c, time, before=before) for c in self.terminal_course])

@@ -43,8 +43,53 @@ class Column:
     unit: str
 
 
+@dataclass(frozen=True, kw_only=True, eq=False)
+class Weights:
+    """What reads probes and surfaces from node temperatures.
+
+    Parameters
+    ----------
+    probes, mean
+        Weights of the nodes, (n_probes, n_nodes), and for boundaries' mean temperatures, (n_boundaries, n_nodes).
+    surface
+        Picks the nodes of every boundary in turn, (n_picked, n_nodes).
+    starts
+        Where each boundary's begin among them, (n_boundaries,).
+    """
+
+    probes: sparse.csr_array
+    mean: sparse.csr_array
+    surface: sparse.csr_array
+    starts: np.ndarray
+
+
+def weights_of(system: HeatSystem) -> Weights:
+    """Return what reads the probes and surfaces of a system's case from its mesh.
+
+    Raises
+    ------
+    CaseError
+        A probe outside the model.
+    """
+    case, mesh = system.case, system.mesh
+    count = len(case.boundary)
+    rows = np.repeat(system.facet_boundary, mesh.dim)
+    nodes = mesh.facets.ravel()
+    shares = sparse.coo_array(
+        (facet_shares(mesh, mesh.facets).ravel(), (rows, nodes)), shape=(count, mesh.n_nodes)
+    ).tocsr()
+    area = np.asarray(shares.sum(axis=1)).ravel()
+    touched = sparse.coo_array((np.ones(len(nodes)), (rows, nodes)), shape=shares.shape).tocsr()
+    return Weights(
+        probes=_probe_weights(system),
+        mean=sparse.csr_array(sparse.diags_array(1.0 / area) @ shares),
+        surface=picked(touched.indices, mesh.n_nodes),
+        starts=touched.indptr[:-1],
+    )
+
+
 class Gauges:
-    """Reads temperatures at probes and surfaces from node temperatures.
+    """Reads temperatures at probes and surfaces from the unknowns.
 
     Parameters
     ----------
@@ -54,23 +99,16 @@ class Gauges:
         The range within which temperatures are read.
     phase
         Heat content where bodies melt, or None.
+    weights
+        Of its mesh, where they are known already.
     """
 
-    def __init__(self, system: HeatSystem, causes: Causes, phase=None):
+    def __init__(self, system: HeatSystem, causes: Causes, phase=None, weights: Weights | None = None):
         self.system, self.causes, self.phase = system, causes, phase
         self.fronts = None if phase is None else Fronts(system.mesh, phase)
-        case, mesh = system.case, system.mesh
-        self.probes = _probe_weights(system)
-        count = len(case.boundary)
-        rows = np.repeat(system.facet_boundary, mesh.dim)
-        nodes = mesh.facets.ravel()
-        shares = sparse.coo_array(
-            (facet_shares(mesh, mesh.facets).ravel(), (rows, nodes)), shape=(count, mesh.n_nodes)
-        ).tocsr()
-        area = np.asarray(shares.sum(axis=1)).ravel()
-        self.mean = sparse.diags_array(1.0 / area) @ shares
-        touched = sparse.coo_array((np.ones(len(nodes)), (rows, nodes)), shape=shares.shape).tocsr()
-        self.nodes, self.starts = touched.indices, touched.indptr[:-1]
+        self.weights = weights or weights_of(system)
+        self.probes, self.mean = system.reading(self.weights.probes), system.reading(self.weights.mean)
+        self.surface, self.starts = system.reading(self.weights.surface), self.weights.starts
 
     def columns(self) -> list[Column]:
         """Return the columns that :meth:`row` fills."""
@@ -108,20 +146,15 @@ class Gauges:
         """Return the row's temperatures (°C), and what has melted with its fronts (mm)."""
         spaces, case = self.system.spaces, self.system.case
         room = [spaces.temperature_of(name, state.y, state.time, before=True) for name in case.spaces]
-        t = self.causes.held(state)
-        surface = t[self.nodes]
-        return np.concatenate(
-            [
-                room,
-                state.y[len(spaces.names) :],
-                self.probes @ t,
-                np.minimum.reduceat(surface, self.starts),
-                self.mean @ t,
-                np.maximum.reduceat(surface, self.starts),
-                [] if self.phase is None else self.phase.melted(t),
-                [] if self.fronts is None else self.fronts.extents(t).ravel() * MM,
-            ]
-        )
+        t = state.temperature
+        surface = self.surface @ t
+        read = [self.probes @ t, np.minimum.reduceat(surface, self.starts), self.mean @ t]
+        read = self.causes.within(np.concatenate([*read, np.maximum.reduceat(surface, self.starts)]), state)
+        found = [room, state.y[len(spaces.names) :], read]
+        if self.phase is not None and self.fronts is not None:
+            nodes = self.causes.within(t, state)
+            found += [self.phase.melted(nodes), self.fronts.extents(nodes).ravel() * MM]
+        return np.concatenate(found)
 
     def row(self, state: State, flows: np.ndarray) -> np.ndarray:
         """Return one row of the history, (n_columns,): time (s), temperatures (°C), flows (W, (n_channels,))."""
@@ -134,14 +167,19 @@ class Gauges:
             return lambda state: spaces.temperature_of(when.space, state.y, state.time, before=True)
         if when.probe is not None:
             weights = self.probes[[[probe.name for probe in case.probe].index(when.probe)]]
-            return lambda state: float((weights @ self.causes.held(state))[0])
+            return lambda state: float(self.causes.within(weights @ state.temperature, state)[0])
         number = [boundary.name for boundary in case.boundary].index(when.boundary)
         if when.temperature == "mean":
             weights = self.mean[[number]]
-            return lambda state: float((weights @ self.causes.held(state))[0])
-        end = self.starts[number + 1] if number + 1 < len(self.starts) else len(self.nodes)
-        nodes, pick = self.nodes[self.starts[number] : end], np.min if when.temperature == "min" else np.max
-        return lambda state: float(pick(self.causes.held(state)[nodes]))
+            return lambda state: float(self.causes.within(weights @ state.temperature, state)[0])
+        end = self.starts[number + 1] if number + 1 < len(self.starts) else self.surface.shape[0]
+        rows, pick = self.surface[self.starts[number] : end], np.min if when.temperature == "min" else np.max
+        return lambda state: float(pick(self.causes.within(rows @ state.temperature, state)))
+
+
+def picked(nodes: np.ndarray, n_nodes: int) -> sparse.csr_array:
+    """Return the weights that pick nodes, (n,), from node temperatures, (n, n_nodes)."""
+    return sparse.csr_array((np.ones(len(nodes)), nodes, np.arange(len(nodes) + 1)), shape=(len(nodes), n_nodes))
 
 
 def _probe_weights(system: HeatSystem) -> sparse.csr_array:

@@ -20,13 +20,15 @@ from scipy import sparse
 
 from coldseam.errors import SolveError
 from coldseam.solution.heatsystem import HeatSystem
-from coldseam.solution.linear import DirectSolver, MultigridSolver
+from coldseam.solution.linear import DirectSolver, MultigridSolver, by_rows
 
 DIRECT_LIMIT = {2: 60_000, 3: 6_000}
 """Unknowns up to which a stage is factorised: more than for a steady solve, for a factor serves many stages."""
 KEPT = {2: 8, 3: 3}
 """Factorisations or multigrid hierarchies kept for step sizes that come back."""
-RELATIVE_ENERGY = 1e-14  # missing energy of an iterative solution over that of the increment
+RELATIVE_ENERGY, FLOOR = 1e-11, 1e-4
+"""Missing energy of an iterative solution over that of the increment, and its error over the step's tolerance, by the
+estimate of ``linear.py``, which is that of some iterations before: what is really missing is a thousandth and less."""
 MOST_NEWTON = 60
 
 
@@ -40,7 +42,7 @@ def stage_hierarchy(matrix: sparse.csr_array):
 
     narrow = sparse.csr_matrix(matrix)
     narrow.indices, narrow.indptr = narrow.indices.astype(np.int32), narrow.indptr.astype(np.int32)
-    return pyamg.smoothed_aggregation_solver(
+    hierarchy = pyamg.smoothed_aggregation_solver(
         narrow,
         strength=("symmetric", {"theta": 0.0}),
         smooth=("jacobi", {"omega": 4.0 / 3.0, "weighting": "local"}),
@@ -50,6 +52,7 @@ def stage_hierarchy(matrix: sparse.csr_array):
         max_coarse=200,
         coarse_solver="splu",
     )
+    return by_rows(hierarchy)
 
 
 def balanced(matrix: sparse.csr_array, right: np.ndarray, x: np.ndarray) -> np.ndarray:
@@ -99,17 +102,22 @@ class StageSolver:
         The equations.
     scale
         Temperature difference below which errors don't matter, K: sets the iterative solver's floor.
+    missing
+        Energy that an iterative solution may miss, over that of the increment; None for :data:`RELATIVE_ENERGY`.
+    keep
+        Factors kept; None for as many as :data:`KEPT` says.
     """
 
-    def __init__(self, system: HeatSystem, scale: float):
-        self.system = system
+    def __init__(self, system: HeatSystem, scale: float, *, missing: float | None = None, keep: int | None = None):
+        self.system, self.missing = system, RELATIVE_ENERGY if missing is None else missing
+        self.keep = KEPT[system.mesh.dim] if keep is None else keep
         self.free = np.flatnonzero(system.free)
         matrix = system.network.matrix
         self.matrix = sparse.csr_array(matrix[self.free][:, self.free])
         self.capacity = system.capacity[self.free]
         self.coupling = sparse.csr_array(system.coupling[self.free])
         self.gather = sparse.csr_array(self.coupling.T)
-        self.floor = (1e-5 * scale) ** 2 * float(self.capacity.sum())
+        self.floor = (FLOOR * scale) ** 2 * float(self.capacity.sum())
         self.kept: OrderedDict[float, Factor] = OrderedDict()
         self.factorisations = 0
         self.solves = 0
@@ -123,7 +131,7 @@ class StageSolver:
             return self.kept[a]
         made = self.made(a, self.capacity)
         self.kept[a] = made
-        while len(self.kept) > KEPT[self.system.mesh.dim]:
+        while len(self.kept) > self.keep:
             self.kept.popitem(last=False)
         return made
 
@@ -147,18 +155,21 @@ class StageSolver:
         """Drop all factors: the coefficients have changed."""
         self.kept.clear()
 
-    def solve(self, factor: Factor, right: np.ndarray, guess: np.ndarray | None) -> np.ndarray:
-        """Return S^-1 right over the free nodes, (n_free,)."""
-        return self._solve(factor.solver, right, guess)
+    def solve(
+        self, factor: Factor, right: np.ndarray, guess: np.ndarray | None, missing: float | None = None
+    ) -> np.ndarray:
+        """Return S^-1 right over the free nodes, (n_free,); ``missing`` energy if it may be more than usual."""
+        return self._solve(factor.solver, right, guess, missing)
 
-    def _solve(self, solver, right: np.ndarray, guess: np.ndarray | None) -> np.ndarray:
+    def _solve(self, solver, right: np.ndarray, guess: np.ndarray | None, missing: float | None = None) -> np.ndarray:
+        missing = self.missing if missing is None else max(missing, self.missing)
         self.solves += 1
         if isinstance(solver, DirectSolver):
             return solver.factor.solve(right)
         rest = right if guess is None else right - solver.matrix @ guess
         scale = abs(float(right @ guess)) if guess is not None else 0.0
-        offset = -max(scale, self.floor / RELATIVE_ENERGY, 1e-300)
-        solved = solver.solve(rest[:, None], np.array([offset]), RELATIVE_ENERGY)
+        offset = -max(scale, self.floor / missing, 1e-300)
+        solved = solver.solve(rest[:, None], np.array([offset]), missing)
         self.iterations += solved.iterations[0]
         return balanced(solver.matrix, right, solved.values[:, 0] if guess is None else guess + solved.values[:, 0])
 

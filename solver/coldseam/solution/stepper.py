@@ -28,6 +28,9 @@ GAMMA = 2.0 - np.sqrt(2.0)
 D = GAMMA / 2.0
 W = np.sqrt(2.0) / 4.0
 WEIGHTS = np.array([W, W, D])
+EXTRAPOLATED = 3
+"""Steps from which the start of an iterative solution is extrapolated: quadratic."""
+FILTERED = 1e-4  # energy that the error estimate may miss: a hundredth of it
 MOST_MELTING = 60
 MELTING_TOLERANCE = 1e-9  # K
 NEAR = 0.05  # of a heat capacity, within which a factor is used again
@@ -116,6 +119,8 @@ class Step:
         Into every space and lump of goods, W, (3, n).
     flows
         Heat flows by channel at the stages, W, (3, n_channels); see :func:`channels`.
+    temperatures, ys
+        Of nodes, (n_nodes,), and of spaces and goods, (n,), at the three stages, °C.
     error
         Estimated error, K.
     """
@@ -125,6 +130,8 @@ class Step:
     node_heat: np.ndarray
     space_heat: np.ndarray
     flows: np.ndarray
+    temperatures: tuple[np.ndarray, np.ndarray, np.ndarray]
+    ys: tuple[np.ndarray, np.ndarray, np.ndarray]
     error: float
 
 
@@ -154,7 +161,7 @@ class Stepper:
         self.system = system
         self.solver = solver
         self.phase = phase
-        self.guesses: dict[int, list[tuple[float, np.ndarray]]] = {2: [], 3: []}
+        self.guesses: dict[int, list[tuple[float, float, np.ndarray]]] = {2: [], 3: []}
         self.kept: tuple[Factor, np.ndarray] | None = None
 
     def attempt(self, state: State, h: float) -> Step:
@@ -179,17 +186,20 @@ class Stepper:
         y3 = state.y + three.e
         flows3 = self._flows(state, three.temperature, y3, end, before=True)
         node_heat, space_heat = np.stack([first[0], r2, r3]), np.stack([first[1], s2, s3])
-        error = self._error(
+        x, e = self.filtered(
             state, three.factor, h * (ERROR_WEIGHTS @ node_heat), h * (ERROR_WEIGHTS @ space_heat), y3, end
         )
-        self._remember(two.d, three.d, h)
+        if three.factor.solver.iterative:
+            self._remember(two.d, three.d, state.time, h)
         return Step(
             start=state,
             h=h,
             node_heat=node_heat,
             space_heat=space_heat,
             flows=np.stack([first[2], flows2, flows3]),
-            error=error,
+            temperatures=(state.temperature, two.temperature, three.temperature),
+            ys=(state.y, state.y + two.e, y3),
+            error=float(max(self.system.largest(x), np.max(np.abs(e), initial=0.0))),
         )
 
     def at(self, step: Step, s: float) -> State:
@@ -247,7 +257,7 @@ class Stepper:
         if self.phase is not None:
             return self._melting(state, a, moved, known_nodes, known_spaces, terminals, time, before)
         factor, free = self.solver.factor(a), self.solver.free
-        guess = self._guess(number, h)
+        guess = self._guess(number, state.time, h) if factor.solver.iterative else None
         d, e = self._linear(factor, state, moved, known_nodes[free], known_spaces, terminals, time, before, guess)
         stored = np.zeros(len(moved))
         stored[free] = self.solver.capacity * d
@@ -310,28 +320,58 @@ class Stepper:
         e = solver.newton(factor, known_spaces + a * films, own_heat, np.zeros(system.spaces.n))
         return x + a * (factor.response @ e), e
 
-    def _error(
+    def filtered(
         self, state: State, factor: Factor, nodes: np.ndarray, spaces: np.ndarray, y: np.ndarray, time: float
-    ) -> float:
-        """Return the filtered error estimate's largest entry, K."""
+    ) -> tuple[np.ndarray, np.ndarray]:
+        """Return what heats (J) given to nodes, (n_nodes,), and spaces, (n,), move in one implicit step.
+
+        Parameters
+        ----------
+        state, y, time
+            Which machines run; temperatures of spaces and goods (°C, (n,)) and the time (s) to linearise at.
+        factor
+            Of the step.
+        nodes, spaces
+            The heats.
+
+        Returns
+        -------
+        tuple
+            Changes of the free nodes' temperatures, (n_free,), and of those of spaces and goods, (n,), K.
+        """
         solver, a = self.solver, factor.a
-        x = solver.solve(factor, nodes[solver.free], None)
+        x = solver.solve(factor, nodes[solver.free], None, FILTERED)
         if not self.system.spaces.n:
-            return float(np.max(np.abs(x)))
+            return x, np.zeros(0)
         _, slope = self.system.spaces.flows(y, state.running, time, before=True)
         matrix = np.diag(self._space_capacity() + a * self.system.films) - a * a * factor.schur - a * slope
         e = np.linalg.solve(matrix, spaces + a * (solver.gather @ x))
-        return float(max(np.max(np.abs(x + a * (factor.response @ e)), initial=0.0), np.max(np.abs(e))))
+        return x + a * (factor.response @ e), e
 
-    def _guess(self, number: int, h: float) -> np.ndarray | None:
-        """Extrapolate the increment per second of the last two steps; None at first."""
+    def _guess(self, number: int, time: float, h: float) -> np.ndarray | None:
+        """Extrapolate a stage's increment per second from those of up to three steps before; None at first."""
         past = self.guesses[number]
         if not past:
             return None
-        if len(past) == 1 or past[0][0] != past[1][0]:
-            return past[-1][1] * h / past[-1][0]
-        return (2.0 * past[1][1] - past[0][1]) * h / past[1][0]
+        middles = np.array([start + 0.5 * length for start, length, _ in past])
+        weights = lagrange(middles, time + 0.5 * h)
+        guess = (weights[0] * h / past[0][1]) * past[0][2]
+        for weight, (_, length, d) in zip(weights[1:], past[1:], strict=True):
+            guess += (weight * h / length) * d
+        return guess
 
-    def _remember(self, d2: np.ndarray, d3: np.ndarray, h: float) -> None:
+    def _remember(self, d2: np.ndarray, d3: np.ndarray, time: float, h: float) -> None:
         for number, d in ((2, d2), (3, d3)):
-            self.guesses[number] = [*self.guesses[number][-1:], (h, d)]
+            past = [entry for entry in self.guesses[number] if entry[0] < time]
+            self.guesses[number] = [*past[1 - EXTRAPOLATED :], (time, h, d)]
+
+
+def lagrange(places: np.ndarray, place: float) -> np.ndarray:
+    """Return the weights, (n,), by which values at places, (n,), are interpolated or extrapolated to another.
+
+    >>> lagrange(np.array([0.0, 1.0]), 2.0).tolist()
+    [-1.0, 2.0]
+    """
+    apart = places[:, None] - places[None, :] + np.eye(len(places))
+    away = np.broadcast_to(place - places, apart.shape)
+    return np.prod(np.where(np.eye(len(places), dtype=bool), 1.0, away / apart), axis=1)

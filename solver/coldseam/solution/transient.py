@@ -8,7 +8,7 @@ divided into equal steps of at most the present size. After a jump the step star
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
@@ -18,7 +18,7 @@ from coldseam.solution.causes import Causes
 from coldseam.solution.coefficients import Coefficients
 from coldseam.solution.events import Happened, Watch, first_crossing
 from coldseam.solution.heatsystem import HeatSystem
-from coldseam.solution.record import Column, Gauges, flows_at
+from coldseam.solution.record import Column, Gauges, Weights, flows_at
 from coldseam.solution.refresh import Refresher
 from coldseam.solution.rows import Extremes, Rows
 from coldseam.solution.spaces import outside_range
@@ -158,6 +158,8 @@ class Transient:
         else None.
     on_field
         Called with time (s) and node temperatures (°C) at every time after 0 that a field is asked for.
+    weights
+        What reads its mesh, where another run on it has them already.
     """
 
     def __init__(
@@ -168,13 +170,14 @@ class Transient:
         phase=None,
         refresh: Refresher | None = None,
         on_field: Callable[[float, np.ndarray], None] | None = None,
+        weights: Weights | None = None,
     ):
         self.system, self.phase, self.refresh, self.on_field = system, phase, refresh, on_field
         self.tolerance = tolerance_of(system)
         self.solver = StageSolver(system, self.tolerance)
         self.stepper = Stepper(system, self.solver, phase)
         self.causes = Causes(system, initial)
-        self.gauges = Gauges(system, self.causes, phase)
+        self.gauges = Gauges(system, self.causes, phase, weights)
         time = system.case.time
         self.duration = time.duration
         self.totals = Totals(*(np.zeros(len(channels(system))) for _ in range(3)))
@@ -245,22 +248,24 @@ class Transient:
         SolveError
             The heat that came in is not the heat stored.
         """
-        heat_in, stored = self._heat_in(), self._stored()
+        nodes, spaces = self._moved()
+        heat_in, stored = self._heat_in(), float(nodes.sum() + spaces.sum())
         outside = self._outside_channels()
         crossed = float(self.totals.magnitude[outside].sum()) + abs(self.system.source_flow) * self.time
         # What would move all temperatures by a hundredth of a step's tolerance is the least, or a run at rest fails.
-        least = 1e-2 * self.tolerance * float(self.system.capacity.sum())
-        through = max(0.5 * (crossed + self._rearranged()), least)
+        least = 1e-2 * self.tolerance * float(self.system.whole.capacity.sum())
+        inside = float(np.abs(nodes).sum() + np.abs(spaces).sum())
+        through = max(0.5 * (crossed + inside), least)
         history = History(
-            system=self.system,
+            system=self.system.whole,
             columns=tuple(self.gauges.columns()),
             rows=self.rows.array(),
             extremes=self.extremes.values,
             events=tuple(watch.result() for watch in self.watches),
             totals=self.totals,
-            initial=self.initial,
-            final=self.state,
-            temperature=self.causes.held(self.state),
+            initial=self._expanded(self.initial),
+            final=self._expanded(self.state),
+            temperature=self._read(self.state),
             heat_in=heat_in,
             heat_stored=stored,
             throughput=through,
@@ -332,7 +337,7 @@ class Transient:
         """Return the rung whose step moves no temperature by much more than the tolerance."""
         first = self.stepper._evaluate(self.state, self.state.temperature, self.state.y, self.state.time, before=False)
         capacity = self.system.capacity if self.phase is None else self.phase.slope(self.state.temperature)
-        slope = np.max(np.abs(first[0]) / capacity, initial=0.0)
+        slope = self.system.largest((first[0] / capacity)[self.system.free])
         if self.system.spaces.n:
             slope = max(slope, float(np.max(np.abs(first[1]) / self.system.spaces.capacity)))
         wanted = 4.0 * self.tolerance / slope if slope > 0.0 else self.longest
@@ -422,9 +427,7 @@ class Transient:
         while self.fields and self.fields[0] <= last * (1 + 1e-12):
             time = self.fields.pop(0)
             if self.on_field is not None:
-                self.on_field(
-                    time, self.causes.held(self.stepper.at(step, min((time - step.start.time) / step.h, 1.0)))
-                )
+                self.on_field(time, self._read(self.stepper.at(step, min((time - step.start.time) / step.h, 1.0))))
 
     def _last_row(self, step: Step, s: float) -> None:
         if self.rows.last_time < self.time * (1 - 1e-12):
@@ -440,24 +443,24 @@ class Transient:
         return float(self.totals.heat[self._outside_channels()].sum()) + self.system.source_flow * self.time
 
     def _content(self, now: np.ndarray, then: np.ndarray) -> np.ndarray:
-        """Return what nodes hold more at one temperature than at another, J, (n_nodes,)."""
+        """Return what the unknowns hold more at one temperature than at another, J, (n_nodes,)."""
         if self.phase is None:
             return self.system.capacity * (now - then)
         return self.phase.heat(now) - self.phase.heat(then)
 
-    def _rearranged(self) -> float:
-        """Return the sum of all nodes' absolute changes of heat content, J: heat that moved, inside or from outside."""
-        moved = self._content(self.state.temperature, self.initial.temperature)
-        spaces = self.system.spaces.capacity * (self.state.y - self.initial.y) if self.system.spaces.n else np.zeros(0)
-        return float(np.abs(moved).sum() + np.abs(spaces).sum())
+    def _moved(self) -> tuple[np.ndarray, np.ndarray]:
+        """Return what all nodes, and all spaces and goods, hold more than at the beginning, J, (n_nodes,) and (n,)."""
+        system, expand = self.system, self.system.expand
+        now, then = expand(self.state.temperature), expand(self.initial.temperature)
+        nodes = system.whole.capacity * (now - then) if self.phase is None else self._content(now, then)
+        return nodes, system.spaces.capacity * (self.state.y - self.initial.y) if system.spaces.n else np.zeros(0)
 
-    def _stored(self) -> float:
-        stored = float(self._content(self.state.temperature, self.initial.temperature).sum())
-        return (
-            stored + float(self.system.spaces.capacity @ (self.state.y - self.initial.y))
-            if self.system.spaces.n
-            else stored
-        )
+    def _read(self, state: State) -> np.ndarray:
+        """Return the nodes' temperatures within the range of their causes, °C, (n_nodes,)."""
+        return self.causes.within(self.system.expand(state.temperature), state)
+
+    def _expanded(self, state: State) -> State:
+        return replace(state, temperature=self.system.expand(state.temperature))
 
 
 def field_times(time) -> list[float]:
