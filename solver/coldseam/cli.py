@@ -10,6 +10,7 @@ import argparse
 import os
 import sys
 from collections.abc import Sequence
+from contextlib import nullcontext
 from pathlib import Path
 from typing import TYPE_CHECKING, TextIO
 
@@ -163,11 +164,14 @@ def _run(options: argparse.Namespace) -> int:
     folder = prepare_folder(options.out)  # before the work, not after it
     with _log(options) as log:
         log("starting", "loading the numerics")
+        from coldseam.report.artists import Artists
         from coldseam.report.summary import summary
         from coldseam.study import run
 
-        result = run(case, log, folder=folder, resume=options.resume)
-        written = result.write(folder, pictures=not options.no_pictures, log=log, units=options.units)
+        with nullcontext() if options.no_pictures else Artists(case.model.dimensions) as artists:
+            result = run(case, log, folder=folder, resume=options.resume)
+            drawn = not options.no_pictures
+            written = result.write(folder, pictures=drawn, log=log, units=options.units, artists=artists)
     # As written: drawing adds to the warnings what could not be drawn.
     answers = json.loads((folder / "answers.json").read_text(encoding="utf-8"))
     _say(summary(answers, [str(path) for path in written]))
@@ -233,7 +237,7 @@ def _check(options: argparse.Namespace) -> int:
     folder = None if options.out is None else prepare_folder(options.out)
     with _log(options) as log:
         log("starting", "loading the numerics")
-        from coldseam.report.draw import draw_all
+        from coldseam.report.artists import draw_all
         from coldseam.report.summary import model_summary
         from coldseam.report.view import Drawings
         from coldseam.study import check
@@ -268,7 +272,10 @@ def material_card(entry: Entry) -> str:
         ("kind", entry.category),
         ("conductivity", f"{entry.conductivity:g} W/(m·K)" + (" at 20 °C; follows a law" if entry.law else "")),
         ("density", f"{entry.density:g} kg/m³"),
-        ("specific heat", f"{entry.specific_heat:g} J/(kg·K)"),
+        (
+            "specific heat",
+            f"{entry.specific_heat:g} J/(kg·K)" + (" at 20 °C; follows a law" if entry.heat_law else ""),
+        ),
         ("emissivity", "not known" if entry.emissivity is None else f"{entry.emissivity:g}"),
         ("holds for", entry.holds_for),
         ("source", entry.source),

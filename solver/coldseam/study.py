@@ -20,6 +20,7 @@ from coldseam.geometry.mesher import open_geometry
 from coldseam.mesh.boundaries import claim_facets
 from coldseam.mesh.locate import locate
 from coldseam.mesh.types import Mesh
+from coldseam.report.artists import Artists
 from coldseam.report.shown import Shown
 from coldseam.report.view import View, model_view
 from coldseam.solution.flux import cell_flux
@@ -113,6 +114,7 @@ class Result:
         log: Log | None = None,
         units: str = "metric",
         scale: tuple[float, float] | None = None,
+        artists: Artists | None = None,
     ) -> list[Path]:
         """Write answers.json, tables, fields, pictures and report.html into a folder and return the paths.
 
@@ -128,6 +130,8 @@ class Result:
             Of the report, "metric" or "inch"; files for machines are always metric.
         scale
             Temperatures (°C) that the pictures' colours begin and end with; None for each picture's own.
+        artists
+            Processes that draw, started early so that they are ready; None starts them when they are needed.
 
         Raises
         ------
@@ -138,7 +142,7 @@ class Result:
 
         view = replace(self.view(), scale=scale)
         shown = Shown(system=units, flat=view.mesh.dim == 2 and not view.mesh.axisymmetric)
-        return write_all(view, self.case, Path(folder), shown, pictures=pictures, log=log or _quiet)
+        return write_all(view, self.case, Path(folder), shown, pictures=pictures, log=log or _quiet, artists=artists)
 
 
 def run(

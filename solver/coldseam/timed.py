@@ -18,6 +18,7 @@ from coldseam.case.schedules import Schedule
 from coldseam.geometry.mesher import open_geometry
 from coldseam.mesh.types import Mesh
 from coldseam.physics.melting import heat_content
+from coldseam.report.artists import Artists
 from coldseam.report.history import HistoryView, scale_of
 from coldseam.report.series import FieldSeries
 from coldseam.report.shown import Shown
@@ -79,12 +80,13 @@ class TimedResult:
         log: Log | None = None,
         units: str = "metric",
         scale: tuple[float, float] | None = None,
+        artists: Artists | None = None,
     ) -> list[Path]:
         """Write answers.json, history.csv, tables, the final field, pictures and report.html; return the paths.
 
         Parameters
         ----------
-        folder, pictures, log, units, scale
+        folder, pictures, log, units, scale, artists
             As in :meth:`coldseam.study.Result.write`.
 
         Raises
@@ -96,7 +98,7 @@ class TimedResult:
 
         view, log = replace(self.view(), scale=scale), log or (lambda stage, message: None)
         shown = Shown(system=units, flat=view.mesh.dim == 2 and not view.mesh.axisymmetric)
-        written = write_all(view, self.case, Path(folder), shown, pictures=pictures, log=log)
+        written = write_all(view, self.case, Path(folder), shown, pictures=pictures, log=log, artists=artists)
         save_final(Path(folder) / FINAL, self.history.system, self.history.final)
         checkpoint.remove(Path(folder))
         fields = [path for path in (Path(folder) / "fields.pvd",) if path.is_file()]
@@ -213,7 +215,7 @@ def _model(system: HeatSystem) -> View:
 def history_view(history: History) -> HistoryView:
     """Return the recorded run as the report sees it, with levels and limits to draw in."""
     case = history.system.case
-    levels = [(f"{event.name}: {event.when.level:g} °C", event.when.level) for event in case.event]
+    levels = [(event.name, event.when.level) for event in case.event]
     for name, space in case.spaces.items():
         if space.floating is not None and space.floating.cooling is not None:
             setpoint = space.floating.cooling.setpoint

@@ -126,6 +126,34 @@ def test_mixed_convection_tends_to_its_parts():
     assert both.h > free.h > against.h
 
 
+def test_incropera_example_7_6():
+    """A sphere of 10 mm at 75 falling to 35 °C in air of 23 °C and 10 m/s (table values of the book): Nu 47.4, h 122.
+
+    Example 7.6 of the 7th edition, from memory; mu_s at the mean of 55 °C.
+    """
+    book = {296.0: (0.0258, 181.6e-7), 328.0: (0.0258, 197.8e-7)}
+
+    def properties(t):
+        k, mu = book[min(book, key=lambda kelvin: abs(kelvin - 273.15 - t))]
+        density = 181.6e-7 / 15.36e-6
+        return Properties(
+            density=density, conductivity=k, viscosity=mu, specific_heat=0.709 * k / mu, expansion=1 / 296
+        )
+
+    found = made(55, 23, properties, kind="forced", surface="sphere", length=10, speed=10)
+    assert (found.value, found.nusselt, found.h) == pytest.approx((6510, 47.4, 122), rel=3e-3)
+
+
+def test_mixed_convection_of_a_sphere_tends_to_its_parts():
+    """And to the 2 of conduction into still air where neither is left."""
+    keys = {"kind": "mixed", "surface": "sphere", "mixing": "across"}
+    free = made(30, 20, kind="free", surface="sphere", length=100)
+    forced = made(30, 20, kind="forced", surface="sphere", length=100, speed=5)
+    assert made(30, 20, speed=1e-4, length=100, **keys).h == pytest.approx(free.h, rel=2e-3)
+    assert made(30, 20, speed=5, length=100, **keys).h == pytest.approx(forced.h, rel=2e-3)
+    assert made(20.01, 20, speed=1e-6, length=0.01, **keys).nusselt == pytest.approx(2.0, rel=0.02)
+
+
 def test_out_of_range_is_told():
     assert not made(20.2, 20, kind="free", surface="facing up", length=20).in_range
     assert not made(20, 20, kind="forced", surface="plate", length=5, speed=0.5).in_range

@@ -8,7 +8,7 @@ from pathlib import Path
 
 import numpy as np
 
-from coldseam.answers.maps import SurfaceMap
+from coldseam.answers.surfacemap import SurfaceMap
 from coldseam.case.read import loads
 from coldseam.report.document import write_report
 from coldseam.report.files import answers_text

@@ -1,13 +1,12 @@
 """Drawing in children: a crash costs pictures, never answers; a missing GL is said, with the packages."""
 
-import json
 import os
 import signal
 
 import numpy as np
 import pytest
 
-from coldseam.report import draw, render_probe
+from coldseam.report import artists, draw, render_probe
 from coldseam.report.render_probe import Verdict
 
 CRASH = f"import os; os.kill(os.getpid(), {int(signal.SIGSEGV)})"
@@ -45,7 +44,7 @@ def test_other_failures_are_told(source, words):
 def test_without_gl_sections_remain_and_the_warning_names_packages(view, tmp_path, monkeypatch):
     monkeypatch.setattr(render_probe, "rendering", lambda: Verdict(way=None, window=None, why_not="EGL: crashed"))
     said = []
-    made = draw.draw_all(view("bolted_panel"), tmp_path, lambda stage, message: said.append(message))
+    made = artists.draw_all(view("bolted_panel"), tmp_path, lambda stage, message: said.append(message))
     names = [picture.file for picture in made.pictures]
     assert "temperature_section_1.png" in names and "model.png" not in names
     assert all((tmp_path / name).stat().st_size > 5000 for name in names)
@@ -54,22 +53,27 @@ def test_without_gl_sections_remain_and_the_warning_names_packages(view, tmp_pat
     assert warning in said
 
 
-def test_a_crash_while_drawing_keeps_what_was_drawn(view, tmp_path, monkeypatch):
-    """The child dies at its second picture: the first stays listed, and the sentence says so."""
+def test_a_crash_while_drawing_costs_one_picture(view, tmp_path, monkeypatch):
+    """Whoever draws the temperature dies of it: the others are drawn all the same, and the sentence names it."""
     (tmp_path / "site").mkdir()
     (tmp_path / "site" / "sitecustomize.py").write_text(
         "import os, sys\n"
         "def watch(event, arguments):\n"
-        "    if event == 'open' and 'temperature' in str(arguments[0]) : os.kill(os.getpid(), 11)\n"
         "    if event == 'os.rename' and 'temperature' in str(arguments[1]): os.kill(os.getpid(), 11)\n"
         "if 'coldseam.report.draw' in ' '.join(sys.orig_argv): sys.addaudithook(watch)\n"
     )
     monkeypatch.syspath_prepend(str(tmp_path / "site"))
+    monkeypatch.setattr(artists, "_processors", lambda: 1)  # the retry draws what is left
     out = tmp_path / "out"
     out.mkdir()
-    made = draw.draw_all(view("square"), out)
-    assert [picture.file for picture in made.pictures] == ["model.png"]
-    assert len(made.warnings) == 1 and "crashed (signal 11); 1 were finished before" in made.warnings[0]
+    made = artists.draw_all(view("square"), out)
+    assert [picture.file for picture in made.pictures] == [
+        "model.png",
+        "heat_flow.png",
+        "surface_1.png",
+        "surface_2.png",
+    ]
+    assert made.warnings == ("The picture temperature could not be drawn: drawing crashed (signal 11).",)
 
 
 def test_a_picture_that_fails_is_named_and_the_rest_is_drawn(view, tmp_path, monkeypatch):
@@ -79,15 +83,35 @@ def test_a_picture_that_fails_is_named_and_the_rest_is_drawn(view, tmp_path, mon
         raise ValueError("no reason")
 
     monkeypatch.setattr(pictures2d, "draw_temperature", fail)
-    listing = tmp_path / "list"
-    assert draw.draw_group(view("square"), tmp_path, "flat", listing) == 1
-    pictures, wrong = draw._read_list(listing)
+    assert draw.draw_group(view("square"), tmp_path, "flat", tmp_path, tmp_path / "7.list") == 1
+    pictures, wrong = artists._outcome(tmp_path, {7: ""})
     assert wrong == ["The picture temperature could not be drawn: no reason."]
     assert {picture.file for picture in pictures} == {"model.png", "heat_flow.png", "surface_1.png", "surface_2.png"}
 
 
+def test_two_share_the_pictures_and_their_order_stays(view, tmp_path):
+    one, two = tmp_path / "1.list", tmp_path / "2.list"
+    (tmp_path / "model.taken").touch()
+    (tmp_path / "heat_flow.taken").touch()
+    draw.draw_group(view("square"), tmp_path, "flat", tmp_path, one)
+    for name in ("model", "heat_flow"):
+        (tmp_path / f"{name}.taken").unlink()
+    draw.draw_group(view("square"), tmp_path, "flat", tmp_path, two)
+    pictures, wrong = artists._outcome(tmp_path, {1: "", 2: ""})
+    names = [picture.file for picture in pictures]
+    assert wrong == [] and names == ["model.png", "temperature.png", "heat_flow.png", "surface_1.png", "surface_2.png"]
+    assert len(two.read_text().splitlines()) == 4  # a line before and one after each
+
+
+def test_artists_that_are_not_needed_end_with_the_block():
+    with artists.Artists(2) as idle:
+        children, why_not = idle._started.result()
+        assert children and why_not == "" and all(child.poll() is None for child in children)
+    assert all(child.poll() is not None for child in children)
+
+
 def test_a_missing_folder_is_a_warning(view, tmp_path):
-    made = draw.draw_all(view("tall_panel"), tmp_path / "missing")
+    made = artists.draw_all(view("tall_panel"), tmp_path / "missing")
     assert made.pictures == () and "there is no folder" in made.warnings[0]
 
 
@@ -102,7 +126,7 @@ def test_model_of_a_case(view, tmp_path):
         SimpleNamespace(name="cut", **{**entry, "adiabatic": True}),
     )
     case = SimpleNamespace(title="a case", boundary=boundaries, probe=(SimpleNamespace(name="p", at=(0.1, 0.1)),))
-    made = draw.draw_model(case, shown.mesh, shown.facet_boundary, tmp_path)
+    made = artists.draw_model(case, shown.mesh, shown.facet_boundary, tmp_path)
     (picture,) = made.pictures
     assert made.warnings == () and picture.file == "model.png"
     rows = [(*row[:3], pytest.approx(row[3])) for row in picture.table.rows]
@@ -121,12 +145,9 @@ def test_views_in_space(view, tmp_path):
     """With GL (the everyday machine has EGL): all pictures in space, not blank, colours as on the colour bar."""
     if not render_probe.rendering().able:
         pytest.skip(render_probe.rendering().why_not)
-    scratch = tmp_path / "view"
-    import pickle
-
-    scratch.write_bytes(pickle.dumps(view("bolted_panel")))
-    made, wrong = draw._child(scratch, tmp_path, "space", tmp_path / "list", render_probe.rendering().window)
-    assert wrong == []
+    made = artists.draw_all(view("bolted_panel"), tmp_path)
+    assert made.warnings == ()
+    made = [picture for picture in made.pictures if "section" not in picture.file]
     names = {picture.file for picture in made}
     assert names == {
         "model.png",
@@ -149,5 +170,4 @@ def test_views_in_space(view, tmp_path):
 
     top = np.round(np.array(matplotlib.colormaps["cividis"](1.0)[:3]) * 255)
     assert np.mean(np.abs(image - top).max(axis=1) < 12) > 0.2
-    assert len((tmp_path / "list").read_text().splitlines()) == len(names)
-    assert all(json.loads(line)["alt"] for line in (tmp_path / "list").read_text().splitlines())
+    assert all(picture.alt for picture in made)

@@ -1,6 +1,7 @@
 """Every kind of picture: drawn, not blank, readable in grey, nothing cut, no label on another."""
 
 import itertools
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -204,3 +205,48 @@ def test_same_view_same_bytes(view, tmp_path):
         pictures2d.draw_temperature(shown, section, tmp_path, name)
     assert (tmp_path / "a.png").read_bytes() == (tmp_path / "b.png").read_bytes()
     assert (tmp_path / "a.svg").read_bytes() == (tmp_path / "b.svg").read_bytes()
+
+
+def test_inch_pictures_have_round_fahrenheit_values_and_no_metric_unit(view, tmp_path):
+    import re
+
+    from coldseam.report.shown import Shown
+    from coldseam.report.view import boundary_areas, in_drawing_units
+
+    metric = replace(view("square"), shown=Shown(system="inch", flat=True))
+    drawn = in_drawing_units(metric)
+    assert np.allclose(drawn.temperature, 1.8 * metric.temperature + 32)
+    assert np.allclose(boundary_areas(drawn), boundary_areas(metric))
+    section = section_of_plane_model(drawn)
+    made = [
+        pictures2d.draw_model(drawn, section, tmp_path, "model"),
+        pictures2d.draw_temperature(drawn, section, tmp_path, "temperature"),
+        pictures2d.draw_heat_flow(drawn, section, tmp_path, "flow"),
+    ]
+    told = " ".join([str((picture.alt, picture.table)) for picture in made])
+    assert not re.search(r"°C|\bmm\b|\bW\b|m²", told)
+    assert "area, ft²/ft" in told and "Btu/(h·ft)" in told
+    read = [float(v.replace("−", "-")) for v in re.findall(r"(−?\d+(?:\.\d+)?) °F", made[1].alt.split("Isotherms")[1])]
+    assert len(read) > 3 and all(value % 5 == 0 for value in read)
+
+
+def test_heat_between_inch_lines_is_that_between_metric_ones(view):
+    from coldseam.report.flow import flow_lines
+    from coldseam.report.shown import Shown
+    from coldseam.report.stream import stream_function
+    from coldseam.report.view import in_drawing_units
+
+    metric = replace(view("square"), shown=Shown(system="inch", flat=True))
+    drawn = in_drawing_units(metric)
+    spans = [np.ptp(stream_function(section_of_plane_model(each)).values) for each in (metric, drawn)]
+    assert spans[1] / spans[0] == pytest.approx(3600 * 0.3048 / 1055.05585262)  # W/m -> Btu/(h·ft), by definition
+    assert "Btu/h per foot of depth" in flow_lines(drawn, section_of_plane_model(drawn)).note
+
+
+def test_large_triangles_are_shaded_in_steps_of_the_scale():
+    corner, values = np.array([[[0.0, 0.0], [1.0, 0.0], [0.0, 1.0]]]), np.array([[0.0, 1.0, 1.0]])
+    parts, shades = pictures2d._evenly_shaded(corner, values, 0.3)
+    assert np.ptp(shades, axis=1).max() <= 0.3
+    assert np.allclose(shades, parts.sum(axis=2))  # the same linear field, x + y
+    u, v = parts[:, 1] - parts[:, 0], parts[:, 2] - parts[:, 0]
+    assert 0.5 * np.abs(u[:, 0] * v[:, 1] - u[:, 1] * v[:, 0]).sum() == pytest.approx(0.5)

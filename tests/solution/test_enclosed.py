@@ -1,8 +1,10 @@
 """Air gaps and cavities in solved cases: against layer formulas, and the two ways against one another."""
 
+import numpy as np
 import pytest
 from meshed import MOST_STEPS, on_mesh
 from scipy.optimize import brentq
+from solution.grids import grid, slab_text
 
 from coldseam.case.read import loads, replace
 from coldseam.errors import CaseError
@@ -11,6 +13,7 @@ from coldseam.physics import cavities, iso6946
 from coldseam.solution.heatsystem import heat_system
 from coldseam.solution.refresh import refresher
 from coldseam.solution.starting import starting_state
+from coldseam.solution.steady import solve_on
 from coldseam.solution.transient import Transient
 
 SIGMA = 5.670374419e-8
@@ -261,3 +264,19 @@ def test_bad_cavities():
         loads(HOLLOW.replace('cavity = "hollow"', 'cavity = "hole"'))
     with pytest.raises(CaseError, match="says with what emissivity"):
         on_mesh(loads(HOLLOW.replace("emissivity = 0.9\n", "")))
+
+
+def test_a_cavity_of_an_axisymmetric_section_is_refused_and_told_what_to_do():
+    """View factors over a turn are not computed: the cavity's table is named, and what is accepted instead."""
+    text = slab_text().replace("dimensions = 2", "dimensions = 2\naxisymmetric = true")
+    text = text[: text.index("[time]")] + text[text.index("[spaces.air]") :]
+    text = text.replace('space = "air"', 'cavity = "hollow"\nemissivity = 0.8').replace(
+        "adiabatic = true", 'space = "air"'
+    )
+    case = loads(text + "[cavities.hollow]\nsurroundings = 5\n")
+    mesh = grid(np.linspace(0, 1, 4), np.linspace(0, 0.1, 2), axisymmetric=True)
+    with pytest.raises(
+        CaseError, match="axisymmetric section is not computed; use a section in a plane or 3D"
+    ) as error:
+        solve_on(case, mesh)
+    assert "cavities.hollow" in str(error.value)

@@ -289,6 +289,9 @@ def test_a_stalled_iteration_names_what_moves(monkeypatch):
     monkeypatch.setattr(nonlinear, "MOST_STEPS", 2)
     with pytest.raises(SolveError, match=r"do not settle: after 2 steps those of boundary .*still move by"):
         on_mesh(CASES["thin wall"]())
+    # Between surfaces that are held, only the inside can move.
+    with pytest.raises(SolveError, match='those of body "bar" still move by .* conductivity over temperature'):
+        on_mesh(CASES["cryogenic"](), 400)
 
 
 def test_beyond_the_range_of_a_material():

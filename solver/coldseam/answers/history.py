@@ -17,6 +17,7 @@ from coldseam.errors import CaseError, Fault
 from coldseam.mesh.measure import cell_measure, facet_measure
 from coldseam.mesh.types import Mesh
 from coldseam.solution.fronts import Fronts
+from coldseam.solution.ranges import law_remarks
 from coldseam.solution.spaces import CHANNELS
 from coldseam.solution.stepper import channels
 from coldseam.solution.transient import History
@@ -81,9 +82,14 @@ def timed_answers(
         bodies=_bodies(mesh, history),
         limits=verdicts,
         solver=history.solver | {"steps": history.work.steps, "rejected": history.work.rejected},
-        warnings=(*case.warnings, *remarks, *_event_warnings(history)),
+        warnings=(*case.warnings, *remarks, *_range_warnings(history), *_event_warnings(history)),
         history=history_answer(history, accuracy["over_time"]["share"]) | extra,
     )
+
+
+def _range_warnings(history: History) -> tuple[str, ...]:
+    system = history.system
+    return (*law_remarks(system.case, system.mesh, *history.reached), *history.strayed)
 
 
 def history_answer(history: History, share: float) -> dict[str, Any]:
@@ -254,9 +260,11 @@ def _sizes(low: float, low_at: float, high: float, high_at: float):
 def _boundaries(history: History) -> dict[str, BoundaryAnswer]:
     system = history.system
     area = np.bincount(system.facet_boundary, facet_measure(system.mesh), len(system.case.boundary))
+    films = {} if history.coefficients is None else history.coefficients.films
     found = {}
     for number, boundary in enumerate(system.case.boundary):
-        film = boundary_film(system.case, boundary)
+        used = films.get(boundary.name)
+        film = boundary_film(system.case, boundary) if used is None else used["film"]
         flow = float(history.column("boundary", boundary.name)[-1])
         found[boundary.name] = BoundaryAnswer(
             kind=kind_of(boundary),
@@ -269,6 +277,7 @@ def _boundaries(history: History) -> dict[str, BoundaryAnswer]:
             area=float(area[number]),
             heat_flux_mean=flow / float(area[number]),
             film=float(film) if boundary.space is not None and np.isfinite(film) else None,
+            film_used=used,
             temperature=extremes(system.mesh, history.temperature, system.facet_boundary == number),
         )
     return found
@@ -291,6 +300,7 @@ def _spaces(history: History) -> dict[str, SpaceAnswer]:
 
 def _bodies(mesh: Mesh, history: History) -> dict[str, BodyAnswer]:
     volume, t = cell_measure(mesh), history.temperature
+    gaps = {} if history.coefficients is None else history.coefficients.gaps
     found = {}
     for number, body in enumerate(mesh.bodies):
         cells = mesh.cell_body == number
@@ -306,6 +316,7 @@ def _bodies(mesh: Mesh, history: History) -> dict[str, BodyAnswer]:
             max_temperature=float(t[nodes].max()),
             heat_source=float((history.system.given.source[cells] * volume[cells]).sum()),
             loss_share=0.0,
+            air_gap=gaps.get(body.name),
         )
     return found
 

@@ -3,41 +3,15 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 
 from coldseam.answers.parts import surface_flux
+from coldseam.answers.surfacemap import SurfaceMap
 from coldseam.answers.surfaces import humidity_map
 from coldseam.mesh.measure import facet_measure
 from coldseam.solution.steady import Steady
-
-
-@dataclass(frozen=True, kw_only=True, eq=False)
-class SurfaceMap:
-    """A field on the surface that faces one space.
-
-    Parameters
-    ----------
-    key
-        ``"excess_flux"`` or ``"surface_humidity"``.
-    space
-        Name of the space.
-    values
-        At the nodes, in ``unit``, shape (n_nodes,); nan off the surface.
-    title, unit
-        As printed.
-    note
-        What the field is measured against.
-    """
-
-    key: str
-    space: str
-    values: np.ndarray
-    title: str
-    unit: str
-    note: str
 
 
 def surface_maps(steady: Steady, bridges: Mapping[str, Any], enclosures: Mapping[str, Any]) -> tuple[SurfaceMap, ...]:

@@ -2,19 +2,20 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated, Any, ClassVar
 
-from pydantic import Field, PrivateAttr, WithJsonSchema
+from pydantic import Field, PrivateAttr
 
+from coldseam.case.conducting import Conductivity, HeatOrLaw, MaterialAxes, Row
 from coldseam.case.gaps import Gap
-from coldseam.case.laws import ConductivityLaw
+from coldseam.case.laws import ConductivityLaw, SpecificHeatLaw
 from coldseam.case.shapes import Box, Cone, Cylinder, Disc, Enclosure, Polygon, Repeat, Ring, Sphere, Tube
 from coldseam.case.tables import Context, Table, Trouble, listing
 from coldseam.case.values import (
     SOLIDS,
-    Amount,
     Attached,
     Density,
     Emissivity,
@@ -24,114 +25,17 @@ from coldseam.case.values import (
     LatentHeat,
     MaterialRef,
     Name,
-    Numbers,
     SpecificHeat,
     Temperature,
     Uncertainty,
-    checked,
 )
 
 if TYPE_CHECKING:
     import numpy as np
 
-Row = tuple[float, ...]
-_VALUE = Amount("conductivity", above=0.0)
-_ENTRY = Amount("conductivity")
-_DIRECTION = Amount("ratio")
-ALONG_UNIT = 1e-3
-"""How far axes typed with few digits (0.7071) may be off unit length and right angles."""
-
-
-class _Conductivity:
-    """One number, two or three along the axes, a symmetric matrix, or a law over temperature."""
-
-    def read(self, value: Any, context: Context) -> float | Row | tuple[Row, ...] | ConductivityLaw:
-        """Return the conductivity, W/(m K), in the form it was typed."""
-        if isinstance(value, (dict, ConductivityLaw)):
-            return ConductivityLaw.model_validate(value, context=context)
-        if not isinstance(value, (list, tuple)):
-            return _VALUE.read(value, context)
-        if not value or any(isinstance(row, (list, tuple)) for row in value):
-            return self._matrix(value, context)
-        numbers = Numbers(_VALUE, len(value)).read(value, context)
-        if len(numbers) not in (2, 3) or (context.dim == 3 and len(numbers) == 2):
-            raise ValueError(f"expected one number, [kx, ky, kz] or a 3 x 3 matrix, not {len(numbers)} numbers")
-        return numbers
-
-    def _matrix(self, value: Any, context: Context) -> tuple[Row, ...]:
-        import numpy as np
-
-        size = len(value)
-        if size not in (2, 3) or (context.dim == 3 and size == 2) or any(not isinstance(r, (list, tuple)) or
-                                                                         len(r) != size for r in value):  # fmt: skip
-            raise ValueError("expected a matrix of three rows of three numbers (two of two in a cross-section)")
-        rows = tuple(Numbers(_ENTRY, size).read(row, context) for row in value)
-        matrix = np.array(rows)
-        largest = float(np.max(np.abs(matrix)))
-        if not np.allclose(matrix, matrix.T, rtol=0.0, atol=1e-9 * largest):
-            raise ValueError("the matrix must be symmetric")
-        if float(np.min(np.linalg.eigvalsh(matrix))) <= 1e-12 * largest:
-            raise ValueError(
-                "the matrix must be positive definite: heat must flow from warm to cold in every direction"
-            )
-        return rows
-
-    def __get_pydantic_core_schema__(self, source: Any, handler: Any) -> Any:
-        return checked(self.read)
-
-
-class _Axes:
-    """Rows that are unit vectors at right angles."""
-
-    def read(self, value: Any, context: Context) -> tuple[Row, ...]:
-        """Return the rows as typed; ValueError says which are off."""
-        import numpy as np
-
-        size = len(value) if isinstance(value, (list, tuple)) else 0
-        if size not in (2, 3) or any(not isinstance(row, (list, tuple)) or len(row) != size for row in value):
-            raise ValueError("expected three unit vectors of three numbers each (two of two in a cross-section)")
-        rows = tuple(Numbers(_DIRECTION, size).read(row, context) for row in value)
-        gram = np.array(rows) @ np.array(rows).T
-        for i in range(size):
-            if abs(gram[i, i] - 1.0) > 2 * ALONG_UNIT:
-                raise ValueError(f"row {i + 1} must have unit length; it has {gram[i, i] ** 0.5:.4g}")
-            for j in range(i):
-                if abs(gram[i, j]) > ALONG_UNIT:
-                    raise ValueError(f"rows {j + 1} and {i + 1} must be at right angles")
-        return rows
-
-    def __get_pydantic_core_schema__(self, source: Any, handler: Any) -> Any:
-        return checked(self.read)
-
-
-_AMOUNT_SCHEMA = {"anyOf": [{"type": "number", "exclusiveMinimum": 0}, {"type": "string"}]}
-_ROWS = {
-    "type": "array",
-    "minItems": 2,
-    "maxItems": 3,
-    "items": {"type": "array", "minItems": 2, "maxItems": 3, "items": {"type": ["number", "string"]}},
-}
-_CONDUCTIVITY_SCHEMA = {
-    "anyOf": [
-        *_AMOUNT_SCHEMA["anyOf"],
-        {"type": "array", "minItems": 2, "maxItems": 3, "items": _AMOUNT_SCHEMA},
-        _ROWS,
-        {"type": "object"},
-    ],
-    "description": "W/(m·K): one number, [kx, ky, kz] along the axes, a symmetric matrix, or a law over temperature",
-}
-Conductivity = Annotated[
-    float | Row | tuple[Row, ...] | ConductivityLaw, _Conductivity(), WithJsonSchema(_CONDUCTIVITY_SCHEMA)
-]
-MaterialAxes = Annotated[
-    tuple[Row, ...],
-    _Axes(),
-    WithJsonSchema(_ROWS | {"description": "rows: unit vectors of the directions that conductivity is given in"}),
-]
-
 
 class Melting(Table):
-    """How a material melts and freezes; its specific heat is that of the solid."""
+    """How a material melts and freezes; its specific heat is that of the solid, or a law that goes through both."""
 
     ONE_OF: ClassVar = (("at", "between"),)
     at: Temperature | None = Field(None, description="°C, a single melting point")
@@ -159,7 +63,7 @@ class Material(Table):
     conductivity: Conductivity = Field()
     axes: MaterialAxes | None = None
     density: Density | None = Field(None, description="kg/m³")
-    specific_heat: SpecificHeat | None = Field(None, description="J/(kg·K)")
+    specific_heat: HeatOrLaw | None = Field(None, description="J/(kg·K), or a law over temperature")
     melting: Melting | None = Field(None, description="latent heat, over time")
     emissivity: Emissivity | None = None
     uncertainty: Uncertainty | None = Field(None, description="of the conductivity, a fraction")
@@ -189,7 +93,10 @@ class Material(Table):
         return {key: value for key, value in entry.items() if value is not None} | data, []
 
     def check(self, context: Context) -> Iterator[Trouble]:
-        """Yield a fault when axes don't fit the conductivity."""
+        """Yield axes that don't fit the conductivity, and two specific heats for one liquid."""
+        if self.heat_law is not None and self.melting is not None and self.melting.specific_heat_liquid is not None:
+            what = "has no meaning where specific_heat is a law over temperature: the law holds for the liquid too"
+            yield ("melting", "specific_heat_liquid"), what
         if self.axes is None:
             return
         if isinstance(self.conductivity, (float, ConductivityLaw)):
@@ -201,6 +108,36 @@ class Material(Table):
     def law(self) -> ConductivityLaw | None:
         """The law over temperature that the conductivity follows; None where it is constant."""
         return self.conductivity if isinstance(self.conductivity, ConductivityLaw) else None
+
+    @property
+    def laws(self) -> tuple[ConductivityLaw, ...]:
+        """All laws over temperature that the conductivity follows, in any direction."""
+        values = self.conductivity if isinstance(self.conductivity, tuple) else (self.conductivity,)
+        return tuple(value for value in values if isinstance(value, ConductivityLaw))
+
+    @property
+    def directional(self) -> bool:
+        """Whether the conductivity follows a law in some direction, and not one law in all."""
+        return self.law is None and bool(self.laws)
+
+    def directions(self, dim: int) -> list[tuple[float | ConductivityLaw, np.ndarray]]:
+        """Return each axis's conductivity, W/(m K) or a law, and its direction in the model, (dim,)."""
+        import numpy as np
+
+        values = self.conductivity if isinstance(self.conductivity, tuple) else (self.conductivity,) * 3
+        turn = np.eye(len(values)) if self.axes is None else _orthogonal(self.axes)
+        return [(value, axis[:dim]) for value, axis in zip(values, turn, strict=True) if not isinstance(value, tuple)]
+
+    @property
+    def heat_law(self) -> SpecificHeatLaw | None:
+        """The law over temperature that the specific heat follows; None where it is constant or not given."""
+        return self.specific_heat if isinstance(self.specific_heat, SpecificHeatLaw) else None
+
+    def heat_at(self, celsius: float) -> float:
+        """Return the specific heat at a temperature (°C), J/(kg K); NaN where it is not given."""
+        if isinstance(self.specific_heat, SpecificHeatLaw):
+            return self.specific_heat.held(celsius)
+        return math.nan if self.specific_heat is None else self.specific_heat
 
     def tensor(self, dim: int) -> float | np.ndarray:
         """Return the conductivity in global axes, W/(m K); of a law over temperature its typical value.
@@ -214,17 +151,25 @@ class Material(Table):
             return self.law.typical
         if isinstance(self.conductivity, float):
             return self.conductivity
-        own = np.array(self.conductivity, dtype=float)
+        typical = [k.typical if isinstance(k, ConductivityLaw) else k for k in self.conductivity]
+        own = np.array(typical, dtype=float)
         own = np.diag(own) if own.ndim == 1 else 0.5 * (own + own.T)
         if self.axes is not None:
-            # The nearest exactly orthogonal matrix, for axes are typed with few digits.
-            left, _, right = np.linalg.svd(np.array(self.axes, dtype=float))
-            turn = left @ right
+            turn = _orthogonal(self.axes)
             own = turn.T @ own @ turn
         if len(own) < dim:
             raise ValueError(f"the conductivity of {self.name} is two-dimensional")
         tensor: np.ndarray = 0.5 * (own + own.T)[:dim, :dim]
         return tensor
+
+
+def _orthogonal(axes: tuple[Row, ...]) -> np.ndarray:
+    """Return the nearest exactly orthogonal matrix, for axes are typed with few digits."""
+    import numpy as np
+
+    left, _, right = np.linalg.svd(np.array(axes, dtype=float))
+    turn: np.ndarray = left @ right
+    return turn
 
 
 def library_entry(name: Any) -> tuple[dict[str, Any], str]:

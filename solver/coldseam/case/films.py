@@ -13,8 +13,10 @@ from typing import TYPE_CHECKING, Annotated, Any, ClassVar, Literal
 
 from pydantic import Field, WithJsonSchema
 
+from coldseam.case.schedules import Changing, Schedule
 from coldseam.case.tables import Context, Table, Trouble, fail, listing
-from coldseam.case.values import Amount, Emissivity, Film, Numbers, Ref, Size, Temperature, checked
+from coldseam.case.timing import ScheduledTemperature
+from coldseam.case.values import Amount, Emissivity, Film, Numbers, Ref, Size, checked
 
 if TYPE_CHECKING:
     from coldseam.case.model import Boundary, Space
@@ -24,7 +26,7 @@ FREE = (
     "inside of a box",
 )  # fmt: skip
 """Surfaces of free and mixed convection."""
-FORCED = ("plate", "cylinder", "tube bank", "duct")
+FORCED = ("plate", "cylinder", "sphere", "tube bank", "duct")
 """Surfaces of forced convection."""
 STANDARD = ("up", "horizontal", "down", "outside")
 """Directions of heat flow at an inside surface, and the outside surface, of ISO 6946."""
@@ -39,7 +41,7 @@ Pressure = Annotated[
     float, Amount("pressure", at_least=0.5e5, at_most=2.0e5, hint=" (the air properties hold for 0.5 to 2 bar)")
 ]
 Angle = Annotated[float, Amount("angle", at_least=0.0, at_most=60.0, hint=" (tilt from the vertical, 0 to 60 degrees)")]
-Irradiance = Annotated[float, Amount("flux", at_least=0.0)]
+Irradiance = Annotated[float | Schedule, Changing(Amount("flux", at_least=0.0))]
 Share = Annotated[float, Amount("ratio", at_least=0.0, at_most=1.0)]
 
 
@@ -108,7 +110,7 @@ class Sky(Table):
     """The part of the sky in what a surface sees."""
 
     ONE_OF: ClassVar = (("temperature", "clear"),)
-    temperature: Temperature | None = Field(None, description="°C, of the sky as a black body")
+    temperature: ScheduledTemperature | None = Field(None, description="°C, of the sky as a black body, or a schedule")
     clear: Annotated[bool, Field(strict=True)] | None = Field(
         None, description="true: a clear sky, from the space's temperature"
     )
@@ -124,7 +126,9 @@ class Radiation(Table):
     """A grey surface that exchanges with large surroundings of one temperature, and with the sky."""
 
     emissivity: Emissivity | None = Field(None, description="of the surface; that of its material if not given")
-    surroundings: Temperature | None = Field(None, description="°C; the space's temperature if not given")
+    surroundings: ScheduledTemperature | None = Field(
+        None, description="°C, or a schedule; the space's temperature if not given"
+    )
     sky: Sky | None = None
 
 
@@ -132,15 +136,17 @@ class Sun(Table):
     """Sunshine that a surface absorbs."""
 
     absorptivity: Emissivity = Field(description="of the surface for sunshine")
-    irradiance: Irradiance = Field(description="W/m² on the surface, direct, diffuse and reflected")
+    irradiance: Irradiance = Field(
+        description="W/m² on the surface, direct, diffuse and reflected, or a schedule over time"
+    )
 
 
 class Cavity(Table):
     """A hollow whose surfaces exchange radiation with one another: those of all boundaries that name it."""
 
     film: Film | None = Field(None, description="W/(m²·K), between its surfaces and the air in it; none if not given")
-    surroundings: Temperature | None = Field(
-        None, description="°C, of what is seen through openings; closed if not given"
+    surroundings: ScheduledTemperature | None = Field(
+        None, description="°C, or a schedule, of what is seen through openings; closed if not given"
     )
 
 

@@ -131,24 +131,20 @@ class FoamLaw(Table):
 
 
 class Law(Table):
-    """A value over temperature, the base of :class:`ConductivityLaw`.
+    """A value over temperature, the base of :class:`ConductivityLaw` and :class:`SpecificHeatLaw`.
 
     ``table`` is interpolated without overshoot; ``polynomial`` is ``sum c_i T^i`` and ``log_polynomial`` is
-    ``log10 y = sum c_i (log10 T)^i`` (always in kelvin: the form of the NIST cryogenic fits);
-    ``value`` at the temperature ``at`` is converted by ``exp(per_kelvin (T - at))`` (ISO 10456).
+    ``log10 y = sum c_i (log10 T)^i`` (always in kelvin: the form of the NIST cryogenic fits).
     """
 
-    ONE_OF: ClassVar[tuple[tuple[str, ...], ...]] = (("table", "polynomial", "log_polynomial", "value"),)
+    ONE_OF: ClassVar[tuple[tuple[str, ...], ...]] = (("table", "polynomial", "log_polynomial"),)
     polynomial: Coefficients | None = Field(
         None, description="coefficients over the temperature in °C, or see argument"
     )
     log_polynomial: Coefficients | None = Field(None, description="coefficients of log10 over log10 of kelvin")
-    at: Temperature = Field(10.0, description="°C, the temperature that value holds for")
-    per_kelvin: Annotated[float, Amount("ratio")] | None = Field(None, description="f_T of ISO 10456, 1/K")
     argument: Literal["°C", "K"] = Field("°C", description="what polynomial is a polynomial of")
     range: Range | None = None
     table: Any = None
-    value: Any = None
 
     def check(self, context: Context) -> Iterator[Trouble]:
         """Yield keys that don't go together, a range that is missing, and values that are not positive."""
@@ -160,11 +156,6 @@ class Law(Table):
             return
         if self.table is not None and self.range is not None:
             yield ("range",), "goes with coefficients; a table holds from its first to its last point"
-        if self.value is not None and self.per_kelvin is None:
-            yield ("per_kelvin",), "is required with value: the conversion factor f_T of ISO 10456, 1/K"
-            return
-        if self.value is None and self.per_kelvin is not None:
-            yield ("per_kelvin",), "goes with value"
         if "argument" in self.model_fields_set and self.polynomial is None:
             yield ("argument",), "goes with polynomial"
         if self.range is not None and self.range[0] >= self.range[1]:
@@ -197,6 +188,11 @@ class Law(Table):
         """The value in the middle of the range, for starts and overviews, SI."""
         return self.scalar(0.5 * sum(self.limits))
 
+    def held(self, celsius: float) -> float:
+        """Return the value at one temperature (°C), beyond the range that at its end, SI."""
+        low, high = self.limits
+        return self.scalar(min(max(celsius, low), high))
+
     def scalar(self, celsius: float) -> float:
         """Return the value at one temperature (°C) in SI units; tables are joined by straight lines here."""
         if self.table is not None:
@@ -208,33 +204,56 @@ class Law(Table):
         if self.polynomial is not None:
             x = celsius + (ZERO_CELSIUS if self.argument == "K" else 0.0)
             return math.fsum(c * x**power for power, c in enumerate(self.polynomial))
-        if self.log_polynomial is not None:
-            x = math.log10(celsius + ZERO_CELSIUS)
-            power = math.fsum(c * x**n for n, c in enumerate(self.log_polynomial))
-            return 10.0**power if power < 300.0 else math.inf
-        return float(self.value * math.exp((self.per_kelvin or 0.0) * (celsius - self.at)))
+        x = math.log10(celsius + ZERO_CELSIUS)
+        power = math.fsum(c * x**n for n, c in enumerate(self.log_polynomial or ()))
+        return 10.0**power if power < 300.0 else math.inf
+
+
+class SpecificHeatLaw(Law):
+    """A specific heat over temperature, J/(kg K)."""
+
+    table: Annotated[Points, _Points("specific heat"), WithJsonSchema(_POINTS_SCHEMA)] | None = Field(
+        None, description="pairs of °C and J/(kg·K)"
+    )
 
 
 class ConductivityLaw(Law):
-    """A conductivity over temperature, W/(m K)."""
+    """A conductivity over temperature, W/(m K).
+
+    Beside the forms of :class:`Law`, ``value`` at the temperature ``at`` is converted by
+    ``exp(per_kelvin (T - at))`` (ISO 10456), and ``foam`` makes it from the foam's make-up.
+    """
+
+    ONE_OF: ClassVar = (("table", "polynomial", "log_polynomial", "value", "foam"),)
+    table: Annotated[Points, _Points("conductivity"), WithJsonSchema(_POINTS_SCHEMA)] | None = Field(
+        None, description="pairs of °C and W/(m·K)"
+    )
+    value: Annotated[float, Amount("conductivity", above=0.0)] | None = Field(None, description="W/(m·K)")
+    at: Temperature = Field(10.0, description="°C, the temperature that value holds for")
+    per_kelvin: Annotated[float, Amount("ratio")] | None = Field(None, description="f_T of ISO 10456, 1/K")
+    moisture: Moisture | None = None
+    foam: FoamLaw | None = Field(None, description="a closed-cell foam by its make-up")
+
+    def check(self, context: Context) -> Iterator[Trouble]:
+        """Yield what is wrong with the conversion of a value, then as every law."""
+        if self.value is not None and self.per_kelvin is None:
+            yield ("per_kelvin",), "is required with value: the conversion factor f_T of ISO 10456, 1/K"
+            return
+        if self.value is None and self.per_kelvin is not None:
+            yield ("per_kelvin",), "goes with value"
+        yield from super().check(context)
 
     @property
     def limits(self) -> tuple[float, float]:
         """Lowest and highest temperature that the law holds for, °C."""
         return FOAM_RANGE if self.foam is not None and self.range is None else super().limits
 
-    table: Annotated[Points, _Points("conductivity"), WithJsonSchema(_POINTS_SCHEMA)] | None = Field(
-        None, description="pairs of °C and W/(m·K)"
-    )
-    value: Annotated[float, Amount("conductivity", above=0.0)] | None = Field(None, description="W/(m·K)")
-    moisture: Moisture | None = None
-    foam: FoamLaw | None = Field(None, description="a closed-cell foam by its make-up")
-    ONE_OF: ClassVar = (("table", "polynomial", "log_polynomial", "value", "foam"),)
-
     def scalar(self, celsius: float) -> float:
         """Return the conductivity at one temperature (°C), W/(m K); of a foam no more than a value to start from."""
         if self.foam is not None:
             return TYPICAL_FOAM
+        if self.value is not None:
+            return float(self.value * math.exp((self.per_kelvin or 0.0) * (celsius - self.at))) * self.wet
         return super().scalar(celsius) * self.wet
 
     @property

@@ -42,8 +42,8 @@ class Entry:
         What a user has to know before using the values; "" when there is nothing.
     aliases
         Other names that find the entry.
-    law
-        The conductivity over temperature, in the form of a case file's key; None where it is one number.
+    law, heat_law
+        Conductivity and specific heat over temperature, in the form of a case file's keys; None where it is one number.
     """
 
     name: str
@@ -57,6 +57,7 @@ class Entry:
     note: str = ""
     aliases: tuple[str, ...] = ()
     law: dict[str, Any] | None = None
+    heat_law: dict[str, Any] | None = None
 
 
 class LibraryError(ColdseamError, LookupError):
@@ -121,13 +122,13 @@ def as_material_keys(entry: Entry) -> dict[str, Any]:
     """Return the keys that the entry fills in a case file's ``[materials.<name>]`` table.
 
     Keys: conductivity W/(m K) (a table where it follows a law over temperature), density kg/m3,
-    specific_heat J/(kg K), emissivity (None where unknown)
+    specific_heat J/(kg K) (a table likewise), emissivity (None where unknown)
     and source, in which the entry's name and the temperature it holds for are said too.
     """
     return {
         "conductivity": entry.law or entry.conductivity,
         "density": entry.density,
-        "specific_heat": entry.specific_heat,
+        "specific_heat": entry.heat_law or entry.specific_heat,
         "emissivity": entry.emissivity,
         "source": f"library entry {entry.name!r} ({entry.holds_for}): {entry.source}",
     }
@@ -182,6 +183,6 @@ def _entry(row: dict[str, Any], sources: dict[str, str]) -> Entry:
     for key in ("conductivity", "density", "specific_heat"):
         row[key] = float(row[key])
     row.setdefault("emissivity", None)
-    row["law"] = row.pop("conductivity_law", None)
+    row["law"], row["heat_law"] = row.pop("conductivity_law", None), row.pop("specific_heat_law", None)
     row["aliases"] = tuple(row.get("aliases", ()))
     return Entry(**row, source=source.format_map(sources))

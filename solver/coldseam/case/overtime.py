@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator, Mapping
+from collections.abc import Callable, Iterator, Mapping
 from typing import TYPE_CHECKING, Any
 
 from coldseam.case.schedules import Schedule
 from coldseam.case.tables import Trouble
 
 if TYPE_CHECKING:
+    from coldseam.case.films import Radiation
     from coldseam.case.model import Case
 
 Place = tuple[str | int, ...]
@@ -26,6 +27,7 @@ def _changeable(case: Case) -> Iterator[tuple[Place, Any]]:
     for name, space in case.spaces.items():
         here: Place = ("spaces", name)
         yield (*here, "temperature"), space.temperature
+        yield from _radiant(here, space.radiation)
         if space.floating is None:
             continue
         here = (*here, "floating")
@@ -38,7 +40,20 @@ def _changeable(case: Case) -> Iterator[tuple[Place, Any]]:
             yield (*here, "cooling", "setpoint"), space.floating.cooling.setpoint
             yield (*here, "cooling", "available"), space.floating.cooling.available
     for number, boundary in enumerate(case.boundary):
-        yield ("boundary", number, "temperature"), boundary.temperature
+        here = ("boundary", number)
+        yield (*here, "temperature"), boundary.temperature
+        yield from _radiant(here, boundary.radiation)
+        if boundary.sun is not None:
+            yield (*here, "sun", "irradiance"), boundary.sun.irradiance
+    for name, cavity in case.cavities.items():
+        yield ("cavities", name, "surroundings"), cavity.surroundings
+
+
+def _radiant(here: Place, radiation: Radiation | None) -> Iterator[tuple[Place, Any]]:
+    if radiation is not None:
+        yield (*here, "radiation", "surroundings"), radiation.surroundings
+        if radiation.sky is not None:
+            yield (*here, "radiation", "sky", "temperature"), radiation.sky.temperature
 
 
 def time_troubles(case: Case) -> Iterator[Trouble]:
@@ -130,3 +145,49 @@ def held(case: Case, spaces: Mapping[str, float], boundaries: Mapping[int, float
         for n, boundary in enumerate(case.boundary)
     )
     return case.model_copy(update={"spaces": fixed, "boundary": surfaces, "time": None, "event": ()})
+
+
+def radiant_schedules(case: Case) -> list[Schedule]:
+    """Return the schedules of what surfaces radiate to: surroundings and sky, °C."""
+    return [schedule for place, schedule in schedules(case) if "surroundings" in place or "sky" in place]
+
+
+def held_radiation(
+    case: Case, temperature: Callable[[Schedule], float], irradiance: Callable[[Schedule], float]
+) -> Case:
+    """Return the case with numbers in place of the schedules of irradiances, surroundings and skies.
+
+    Parameters
+    ----------
+    case
+        Any case.
+    temperature, irradiance
+        Make a number of a schedule, °C and W/m².
+    """
+
+    def picked(table: Any, key: str, pick: Callable[[Schedule], float]) -> Any:
+        value = getattr(table, key)
+        return table.model_copy(update={key: pick(value)}) if isinstance(value, Schedule) else table
+
+    def radiation(table: Radiation) -> Radiation:
+        sky = None if table.sky is None else picked(table.sky, "temperature", temperature)
+        table = picked(table, "surroundings", temperature)
+        return table if sky is table.sky else table.model_copy(update={"sky": sky})
+
+    def outside(table: Any) -> Any:
+        changes = {} if table.radiation is None else {"radiation": radiation(table.radiation)}
+        if getattr(table, "sun", None) is not None:
+            changes["sun"] = picked(table.sun, "irradiance", irradiance)
+        return table.model_copy(update=changes) if changes else table
+
+    spaces = {name: outside(space) for name, space in case.spaces.items()}
+    for name, space in spaces.items():
+        space._name = name
+    cavities = {name: picked(cavity, "surroundings", temperature) for name, cavity in case.cavities.items()}
+    surfaces = tuple(outside(boundary) for boundary in case.boundary)
+    return case.model_copy(update={"spaces": spaces, "boundary": surfaces, "cavities": cavities})
+
+
+def at_moment(case: Case, time: float) -> Case:
+    """Return the case with irradiances, surroundings and skies as they are at a time (s)."""
+    return held_radiation(case, lambda schedule: schedule.at(time), lambda schedule: schedule.at(time))

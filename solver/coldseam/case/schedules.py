@@ -102,6 +102,12 @@ def value_at(value: float | Schedule, time: float, *, before: bool = False) -> f
     return value.at(time, before=before) if isinstance(value, Schedule) else value
 
 
+def constant(value: float | Schedule) -> float:
+    """Return a value of a case that is held at a moment, where no schedules are left."""
+    assert not isinstance(value, Schedule)
+    return value
+
+
 def span_of(value: float | Schedule) -> tuple[float, float]:
     """Return lowest and highest value of a constant or a schedule."""
     return value.span if isinstance(value, Schedule) else (value, value)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import unicodedata
 from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path
@@ -129,6 +130,10 @@ class Numbers:
         return {"type": "array", "items": items, "minItems": least, "maxItems": most}
 
 
+BREAKING = ("Cc", "Zl", "Zp")
+"""Unicode's categories of control characters and of what breaks a line or paragraph."""
+
+
 @dataclass(frozen=True)
 class Called:
     """A name: text that is not empty, without line breaks or control characters."""
@@ -137,7 +142,7 @@ class Called:
         """Return the name."""
         if not isinstance(value, str) or not value.strip():
             raise ValueError("expected a name: text that is not empty")
-        if value != value.strip() or any(ord(c) < 32 or ord(c) == 127 for c in value):
+        if value != value.strip() or any(unicodedata.category(c) in BREAKING for c in value):
             raise ValueError("a name must not begin or end with blanks or hold line breaks or control characters")
         return value
 

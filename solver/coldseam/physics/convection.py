@@ -10,8 +10,10 @@ fluid temperature (ducts and tube banks: of the fluid). One film holds for a who
 - horizontal cylinders: Churchill, Chu 1975, ibid. 1049; vertical ones: Popiel 2008 where they are slender
 - spheres: Churchill 2002; inside of a box: its six faces by the above, weighted by area (composition: own)
 - plate along a flow: 0.664 Re^(1/2) Pr^(1/3), above Re = 5e5 (0.037 Re^0.8 - 871) Pr^(1/3) (Incropera, section 7.2)
-- cylinder across a flow: Churchill, Bernstein 1977; tube banks: Žukauskas 1987; ducts: 3.66, or Gnielinski 1976
-- mixed: Nu^n = Nu_forced^n ± Nu_free^n, n = 3; across 7/2, cylinders 4 (Incropera, section 9.9)
+- cylinder across a flow: Churchill, Bernstein 1977; sphere in a flow: Whitaker 1972, AIChE Journal 18, 361
+- tube banks: Žukauskas 1987; ducts: 3.66, or Gnielinski 1976
+- mixed: Nu^n = Nu_forced^n ± Nu_free^n, n = 3; across 7/2, cylinders and spheres 4 (Incropera, section 9.9); of a sphere
+  what both are above the 2 of still air
 - standard: convective part of ISO 6946 (5.0, 2.5, 0.7 inside; 4 + 4 v outside)
 
 A correlation that jumps where its regime changes is bridged by a straight line in the logarithms over ±10 % of that
@@ -226,7 +228,7 @@ def _as(law: Convection, surface: str, length: float) -> Convection:
 def _forced(law: Convection, kind: str, surface: float, outside: float, properties) -> Film:
     import ht
 
-    at = outside if kind in ("duct", "tube bank") else 0.5 * (surface + outside)
+    at = outside if kind in ("duct", "tube bank", "sphere") else 0.5 * (surface + outside)
     p = properties(at)
     length, pr = law.length or 0.0, p.prandtl
     reynolds = (law.speed or 0.0) * length / p.kinematic
@@ -241,6 +243,12 @@ def _forced(law: Convection, kind: str, surface: float, outside: float, properti
         return _made(
             lambda re: ht.Nu_cylinder_Churchill_Bernstein(re, pr), "Re", reynolds, length, p,
             correlation=name, valid=valid, temperature=at,
+        )  # fmt: skip
+    if kind == "sphere":
+        thinner = (p.viscosity / properties(surface).viscosity) ** 0.25
+        return _made(
+            lambda re: 2.0 + (0.4 * re**0.5 + 0.06 * re ** (2.0 / 3.0)) * pr**0.4 * thinner, "Re", reynolds, length, p,
+            correlation="Whitaker 1972, sphere in a flow", valid=(3.5, 7.6e4), temperature=at,
         )  # fmt: skip
     if kind == "tube bank":
         assert law.pitch is not None and law.rows is not None
@@ -282,12 +290,16 @@ def _duct(re: float, pr: float) -> float:
 
 def _mixed(law: Convection, surface: float, outside: float, properties) -> Film:
     free = _free(law, surface, outside, properties)
-    kind = "cylinder" if law.surface == "horizontal cylinder" else "plate"
+    kind = {"horizontal cylinder": "cylinder", "sphere": "sphere"}.get(law.surface, "plate")
     forced = _forced(law, kind, surface, outside, properties)
-    power = 3.0 if law.mixing != "across" else 4.0 if kind == "cylinder" else 3.5
+    power = 3.0 if law.mixing != "across" else 3.5 if kind == "plate" else 4.0
+    still = 2.0 if kind == "sphere" else 0.0
     sign = -1.0 if law.mixing == "opposing" else 1.0
     assert free.nusselt is not None and forced.nusselt is not None and free.length is not None
-    nusselt = abs(forced.nusselt**power + sign * free.nusselt**power) ** (1.0 / power)
+    # The two take their conductivities at different temperatures: as numbers of the free one's.
+    other = forced.h * free.nusselt / free.h
+    parts = max(other - still, 0.0) ** power + sign * max(free.nusselt - still, 0.0) ** power
+    nusselt = still + abs(parts) ** (1.0 / power)
     prandtl = properties(0.5 * (surface + outside)).prandtl
     richardson = (free.value or 0.0) / prandtl / max(forced.value or 0.0, 1e-9) ** 2
     return Film(

@@ -1,4 +1,4 @@
-"""Conductivities over temperature: arrays of temperatures (°C) in, W/(m K) and their slopes out.
+"""Values over temperature: arrays of temperatures (°C) in, conductivities, W/(m K), and their slopes out.
 
 Tables are interpolated by the monotone cubic of Fritsch and Carlson (scipy's PCHIP), which never
 leaves the range of neighbouring points. Nothing is extrapolated: beyond a law's range the value at its end
@@ -18,7 +18,7 @@ from scipy.interpolate import PchipInterpolator
 from coldseam.physics import foam
 
 if TYPE_CHECKING:
-    from coldseam.case.laws import ConductivityLaw
+    from coldseam.case.laws import ConductivityLaw, Law
 
 KELVIN = 273.15
 STEP = 1e-3
@@ -41,16 +41,23 @@ def conductivity(law: ConductivityLaw, temperature: np.ndarray) -> np.ndarray:
     t = np.clip(np.asarray(temperature, dtype=float), low, high)
     if law.foam is not None:
         k = foam.conductivity(law.foam, t)
-    elif law.table is not None:
-        points = np.array(law.table)
-        k = PchipInterpolator(points[:, 0], points[:, 1])(t)
-    elif law.polynomial is not None:
-        k = np.polynomial.polynomial.polyval(t + (KELVIN if law.argument == "K" else 0.0), law.polynomial)
-    elif law.log_polynomial is not None:
-        k = 10.0 ** np.polynomial.polynomial.polyval(np.log10(t + KELVIN), law.log_polynomial)
-    else:
+    elif law.value is not None:
         k = law.value * np.exp((law.per_kelvin or 0.0) * (t - law.at))
+    else:
+        k = value(law, t)
     return k * law.wet
+
+
+def value(law: Law, temperature: np.ndarray) -> np.ndarray:
+    """Return a table or a fit at temperatures in °C, shape (n,) or any other, in SI units of the law."""
+    t = np.clip(np.asarray(temperature, dtype=float), *law.limits)
+    if law.table is not None:
+        points = np.array(law.table)
+        found: np.ndarray = PchipInterpolator(points[:, 0], points[:, 1])(t)
+        return found
+    if law.polynomial is not None:
+        return np.polynomial.polynomial.polyval(t + (KELVIN if law.argument == "K" else 0.0), law.polynomial)
+    return 10.0 ** np.polynomial.polynomial.polyval(np.log10(t + KELVIN), law.log_polynomial)
 
 
 def slope(law: ConductivityLaw, temperature: np.ndarray) -> np.ndarray:
@@ -98,7 +105,7 @@ def mean_conductivity(law: ConductivityLaw, first: np.ndarray, second: np.ndarra
     return total
 
 
-def beyond(law: ConductivityLaw, temperature: np.ndarray) -> tuple[float, float] | None:
+def beyond(law: Law, temperature: np.ndarray) -> tuple[float, float] | None:
     """Return lowest and highest of some temperatures (°C, shape (n,)) where they leave the law's range, else None."""
     low, high = law.limits
     cold, warm = float(np.min(temperature)), float(np.max(temperature))

@@ -143,7 +143,9 @@ def _coupling(answers: Answers, shown: Shown) -> Markup:
                 low, high = intervals.get(one, {}).get(other, (None, None))
                 pair = joined([name(one), " – ", name(other)])
                 rows[frozenset((one, other))] = (pair, shown.bounded("coupling", value, low, high))
-    return table("Thermal coupling coefficients", ("between", "coefficient"), list(rows.values()), (1,))
+    told = (answers.get("solver") or {}).get("linearised")
+    title = "Thermal coupling coefficients" + (f" (linearised: {told})" if told else "")
+    return table(title, ("between", "coefficient"), list(rows.values()), (1,))
 
 
 def _trust(answers: Answers, shown: Shown) -> Markup:
@@ -154,9 +156,13 @@ def _trust(answers: Answers, shown: Shown) -> Markup:
         told.append(accuracy_sentence(accuracy, entries) + ".")
     balance = answers.get("balance")
     if balance:
-        closure = f"{shown.measure('flow').factor * balance['closure']:.1e} {shown.unit('flow')}"
-        told.append(f"Balance: all heat flows add up to {closure}, {balance['relative']:.1e} of what flows through.")
+        closure = f"{_tiny(shown.measure('flow').factor * balance['closure'])} {shown.unit('flow')}"
+        told.append(f"Balance: all heat flows add up to {closure}, {_tiny(balance['relative'])} of what flows through.")
     return joined([tag("p", sentence) for sentence in told])
+
+
+def _tiny(value: float) -> str:
+    return f"{value:.1e}" if value else "0"
 
 
 def losses(answers: Answers, shown: Shown) -> Markup:
@@ -292,6 +298,24 @@ def _moisture(key: str, entry: Answers, shown: Shown) -> tuple:
     point = f"{'frost' if over_ice else 'dew'} point {shown.temperature(found['saturation'])}"
     humidity = f"{100 * found['surface_humidity']:.0f} %" if found["surface_humidity"] <= 1 else "100 % (saturated)"
     return name(key), "" if factor is None else f"{factor:.3f}", verdict, point, humidity
+
+
+def moisture_sentence(answers: Answers, shown: Shown) -> Markup:
+    """Return where surfaces sweat, frost over or can grow mould, in one sentence; empty where none does or none is judged."""
+    wet: dict[str, list[str]] = {}
+    for key, entry in (answers.get("surfaces") or {}).items():
+        found = entry.get("moisture")
+        if found and found["margin_condensation_kelvin"] < 0:
+            wet.setdefault("frosts over" if found["saturation_over"] == "ice" else "sweats", []).append(key)
+        elif found and found["margin_mould"] < 0:
+            wet.setdefault("can grow mould", []).append(key)
+    told = []
+    for does, keys in wet.items():
+        for key in keys:
+            ends = (answers.get("boundaries") or {}).get(key, {}).get("temperature") or {}
+            at = f" ({shown.temperature(ends['min'])})" if "min" in ends else ""
+            told.append(joined([name(key), " ", tag("strong", does), f" at its coldest place{at}"]))
+    return joined(["Moisture: ", joined(told, "; "), "."]) if told else Markup("")
 
 
 def warnings(answers: Answers) -> Markup:

@@ -82,9 +82,11 @@ def document(view: View, case: Case, drawings: Drawings, folder: Path, shown: Sh
         ("case", "The case file", given.case_file(case)),
         ("cautions", "Cautions, and what this does not cover", cautions(case)),
     ]  # fmt: skip
+    wet = chapters.moisture_sentence(answers, shown)
     summary = joined([
-        *(tag("p", line, {"class": "answer"}) for line in event_lines(answers)),
+        *(tag("p", line, {"class": "answer"}) for line in event_lines(answers, shown)),
         tag("p", chapters.answer_sentence(answers, shown), {"class": "answer"}),
+        tag("p", wet, {"class": "answer"}) if wet else "",
         tag("p", chapters.limits_sentence(answers), {"class": "verdict"}),
     ])  # fmt: skip
     return page(title, summary, [part for part in parts if part[2]], scripts=viewer)
@@ -157,6 +159,6 @@ def digest(content: str) -> str:
 def cautions(case: Case) -> Markup:
     """Return the cautions that the case file itself gives, and what no such computation covers."""
     own = given.cautions_of(case)
-    told = joined([tag("h3", "From the case file"), tag("ul", [tag("li", name(each)) for each in own])]) if own else ""
+    told = joined([tag("h3", "From the case file"), tag("ul", [tag("li", tag("bdi", each)) for each in own])]) if own else ""
     general = [tag("h3", "Of this kind of computation"), tag("ul", [tag("li", each) for each in NOT_COVERED])]
     return joined([told, *general])

@@ -1,60 +1,36 @@
-"""All pictures of a result or a model, drawn in child processes so that a crash can't take the answers along.
+"""All pictures of a result or a model, and the child process that draws them.
 
-``python -m coldseam.report.draw`` is that child: it reads a pickled view from a file, draws one
-group of pictures, and writes a line to a list after each, so that what was drawn before a crash
-counts.
+``python -m coldseam.report.draw GROUP ...`` is that child (see :mod:`coldseam.report.artists`): it loads what drawing
+needs, waits until it is told where the view lies, and draws one picture after the other of those that no other
+child has taken. A line in its list before and after each tells what was drawn, and what a crash cost.
 """
 
 from __future__ import annotations
 
 import json
+import os
 import pickle
-import subprocess
 import sys
-import tempfile
 import traceback
 from collections.abc import Callable, Iterator
-from concurrent.futures import ThreadPoolExecutor
 from dataclasses import asdict
+from functools import cache, partial
 from pathlib import Path
 
 from coldseam.errors import OutputError
-from coldseam.report import render_probe
-from coldseam.report.view import Drawings, Picture, Table, View, model_view, without_fields
+from coldseam.report.view import Picture, View, in_drawing_units
 
-TIME_OUT = 600.0
-"""Seconds a group of pictures may take before it is given up."""
+GROUPS = ("flat", "space")
+"""Sections and charts, which need no VTK; views in space."""
+VIEW = "view"
+"""File of the pickled view in the scratch folder."""
+MOST_OUT_OF_PLANE = 0.7
+"""Share of the heat flux through a section from which lines of heat flow in it would mislead."""
 
-Log = Callable[[str, str], None] | None
-
-
-def draw_all(view: View, folder: str | Path, log: Log = None) -> Drawings:
-    """Draw every picture of a result into a folder.
-
-    Parameters
-    ----------
-    view
-        The result.
-    folder
-        Existing output folder.
-    log
-        ``log(stage, message)`` or None.
-
-    Returns
-    -------
-    Drawings
-        The pictures made, and a sentence for each group that could not be. Faults of drawing never raise.
-    """
-    return _draw(view, Path(folder), ("flat", "space") if view.mesh.dim == 3 else ("flat",), log)
+Job = Callable[[Path, str], Picture | None]
 
 
-def draw_model(case, mesh, facet_boundary, folder: str | Path, log: Log = None) -> Drawings:
-    """Draw the bodies and boundaries of a model that was not solved, with names and areas (``coldseam check``)."""
-    view = without_fields(model_view(case, mesh, facet_boundary))
-    return draw_all(view, folder, log)
-
-
-def jobs(view: View, group: str) -> Iterator[tuple[str, Callable[[Path, str], Picture | None]]]:
+def jobs(view: View, group: str) -> Iterator[tuple[str, Job]]:
     """Yield name and drawing function of every picture of a group: "flat" (no VTK) or "space"."""
     if group == "space":
         yield from _space_jobs(view)
@@ -85,25 +61,37 @@ def _plane_jobs(view: View):
         yield name, lambda folder, name, m=field: profiles.draw_map(view, m, folder, name)
 
 
-def _section_jobs(view: View):
+def _section_jobs(view: View) -> Iterator[tuple[str, Job]]:
     from coldseam.report import pictures2d, pictures3d
+    from coldseam.report.plane import Section, cut
 
-    for k, (spot, section) in enumerate(pictures3d.sections(view)):
-        middle = spot.why == "through the middle"
-        if middle:
-            yield f"model_section_{k + 1}", lambda folder, name, s=section: pictures2d.draw_model(view, s, folder, name)
-        if view.temperature is None:
-            continue
-        title = "Temperature" if middle else "Temperature through the coldest point of the warm side"
-        yield (
-            f"temperature_section_{k + 1}",
-            lambda folder, name, s=section, t=title: pictures2d.draw_temperature(view, s, folder, name, t),
+    @cache
+    def section(spot: pictures3d.Spot) -> Section | None:  # cut only by those who draw it
+        return cut(view, spot.axis, spot.at)
+
+    def model(folder: Path, name: str, spot: pictures3d.Spot) -> Picture | None:
+        found = section(spot)
+        return pictures2d.draw_model(view, found, folder, name) if found else None
+
+    def temperature(folder: Path, name: str, spot: pictures3d.Spot) -> Picture | None:
+        found, where = (
+            section(spot),
+            "" if spot.why == pictures3d.MIDDLE else " through the coldest point of the warm side",
         )
-        if view.cell_flux is not None and middle and section.out_of_plane < 0.7:
-            yield (
-                f"heat_flow_section_{k + 1}",
-                lambda folder, name, s=section: pictures2d.draw_heat_flow(view, s, folder, name),
-            )
+        return pictures2d.draw_temperature(view, found, folder, name, f"Temperature{where}") if found else None
+
+    def heat_flow(folder: Path, name: str, spot: pictures3d.Spot) -> Picture | None:
+        found = section(spot)
+        in_plane = found is not None and found.out_of_plane < MOST_OUT_OF_PLANE
+        return pictures2d.draw_heat_flow(view, found, folder, name) if found and in_plane else None
+
+    for k, spot in enumerate(pictures3d.section_spots(view)):
+        if spot.why == pictures3d.MIDDLE:
+            yield f"model_section_{k + 1}", partial(model, spot=spot)
+        if view.temperature is not None:
+            yield f"temperature_section_{k + 1}", partial(temperature, spot=spot)
+        if view.cell_flux is not None and spot.why == pictures3d.MIDDLE:
+            yield f"heat_flow_section_{k + 1}", partial(heat_flow, spot=spot)
 
 
 def _space_jobs(view: View):
@@ -127,104 +115,48 @@ def _space_jobs(view: View):
         yield f"{name}_close", lambda f, n, m=field: pictures3d.draw_map(view, m, f, n, close=True)
 
 
-# ---------------------------------------------------------------------------------------- parent
-
-
-def _draw(view: View, folder: Path, groups: tuple[str, ...], log: Log) -> Drawings:
-    say = log or (lambda stage, message: None)
-    pictures: list[Picture] = []
-    warnings: list[str] = []
-    if not folder.is_dir():
-        return Drawings(pictures=(), warnings=(f"No pictures: there is no folder {folder}.",))
-    with tempfile.TemporaryDirectory(prefix="coldseam-") as scratch:
-        packed = Path(scratch) / "view"
-        try:
-            packed.write_bytes(pickle.dumps(view, protocol=pickle.HIGHEST_PROTOCOL))
-        except OSError as fault:
-            return Drawings(pictures=(), warnings=(f"No pictures: no room for scratch data ({fault.strerror}).",))
-        say("pictures", "drawing")
-        with ThreadPoolExecutor(len(groups)) as pool:  # each draws in a process of its own
-            for made, wrong in pool.map(lambda group: _group(packed, folder, group, Path(scratch)), groups):
-                pictures += made
-                warnings += wrong
-    for warning in warnings:
-        say("pictures", warning)
-    return Drawings(pictures=tuple(pictures), warnings=tuple(warnings))
-
-
-def _group(packed: Path, folder: Path, group: str, scratch: Path) -> tuple[list[Picture], list[str]]:
-    """Draw one group and return its pictures, and a sentence for what could not be."""
-    window = None
-    if group == "space":
-        verdict = render_probe.rendering()
-        if not verdict.able:
-            return [], [_missing(verdict.why_not)]
-        window = verdict.window
-    return _child(packed, folder, group, scratch / f"{group}.list", window)
-
-
-def _missing(why: str) -> str:
-    return (
-        "The 3D pictures (the model with its boundaries and the surface temperatures seen from outside and from each "
-        f"space) are missing: this machine can't draw in space ({why}). On Debian install {render_probe.PACKAGES}; "
-        "answers, tables, field files and sections are complete without them."
-    )
-
-
-def _child(
-    packed: Path, folder: Path, group: str, listing: Path, window: str | None
-) -> tuple[list[Picture], list[str]]:
-    command = [sys.executable, "-m", "coldseam.report.draw", str(packed), str(folder), group, str(listing)]
-    what = {"flat": "sections and charts", "space": "views in space"}[group]
-    trouble = ""
-    try:
-        done = subprocess.run(
-            command,
-            env=render_probe.child_environment(window),
-            timeout=TIME_OUT,
-            capture_output=True,
-            text=True,
-            stdin=subprocess.DEVNULL,
-            check=False,
-        )
-        if done.returncode < 0:
-            trouble = f"drawing crashed (signal {-done.returncode})"
-        elif done.returncode > 0:
-            tail = done.stderr.strip().splitlines()
-            trouble = f"drawing stopped ({tail[-1][:200] if tail else f'code {done.returncode}'})"
-    except subprocess.TimeoutExpired:
-        trouble = f"drawing took more than {TIME_OUT:g} s"
-    except OSError as fault:
-        trouble = f"no child process could be started ({fault.strerror})"
-    made, wrong = _read_list(listing)
-    if trouble:
-        wrong.append(f"Pictures, {what}: {trouble}; {len(made)} were finished before.")
-    return made, wrong
-
-
-def _read_list(listing: Path) -> tuple[list[Picture], list[str]]:
-    pictures, wrong = [], []
-    for line in listing.read_text().splitlines() if listing.exists() else []:
-        entry = json.loads(line)
-        if "fault" in entry:
-            wrong.append(f"The picture {entry['name']} could not be drawn: {entry['fault']}.")
-            continue
-        table = Table(columns=tuple(entry["table"]["columns"]), rows=tuple(map(tuple, entry["table"]["rows"])))
-        pictures.append(Picture(**{**entry, "table": table}))
-    return pictures, wrong
-
-
 # ---------------------------------------------------------------------------------------- child
 
 
-def draw_group(view: View, folder: Path, group: str, listing: Path) -> int:
-    """Draw one group and list what came of it; return how many pictures failed (the child's work)."""
+def warm(groups: tuple[str, ...]) -> None:
+    """Load what drawing groups of pictures needs: the libraries, the font, and for views in space a first window."""
+    from matplotlib.backends import backend_agg, backend_svg  # noqa: F401
+    from scipy import spatial  # noqa: F401
+
+    from coldseam.report import flow, history, labels, pictures2d, pictures3d, profiles, style  # noqa: F401
+
+    style.text_width("x", style.TEXT)
+    if "space" in groups:
+        import pyvista
+
+        plotter = pyvista.Plotter(off_screen=True, window_size=(64, 64))
+        plotter.show(auto_close=False)
+        plotter.close()
+
+
+def draw_group(view: View, folder: Path, group: str, scratch: Path, listing: Path) -> int:
+    """Draw the pictures of a group that nobody has taken yet; return how many failed.
+
+    Parameters
+    ----------
+    view, folder, group
+        What is drawn, and where to.
+    scratch
+        Folder in which a picture is taken by making a file of its name.
+    listing
+        Gets a line of JSON before each picture and one after it.
+    """
     failed = 0
     with listing.open("a") as stream:
-        for name, make in jobs(view, group):
+        for order, (name, make) in enumerate(jobs(view, group)):
+            if not _taken(scratch / f"{name}.taken"):
+                continue
+            place = {"name": name, "order": [GROUPS.index(group), order]}
+            stream.write(json.dumps(place) + "\n")
+            stream.flush()
             try:
                 picture = make(folder, name)
-                entry = None if picture is None else asdict(picture)
+                place["picture"] = None if picture is None else asdict(picture)
             except (
                 OutputError,
                 ValueError,
@@ -235,20 +167,33 @@ def draw_group(view: View, folder: Path, group: str, listing: Path) -> int:
                 MemoryError,
             ) as fault:
                 traceback.print_exc()
-                entry = {"name": name, "fault": f"{fault or type(fault).__name__}"}
+                place["fault"] = f"{fault or type(fault).__name__}"
                 failed += 1
-            if entry is not None:
-                stream.write(json.dumps(entry) + "\n")
-                stream.flush()
+            stream.write(json.dumps(place) + "\n")
+            stream.flush()
     return failed
 
 
-def main(arguments: list[str]) -> int:
-    """Entry point of the child: VIEW FOLDER GROUP LIST."""
-    packed, folder, group, listing = arguments
-    with open(packed, "rb") as stream:
-        view = pickle.load(stream)
-    draw_group(view, Path(folder), group, Path(listing))
+def _taken(file: Path) -> bool:
+    """Return whether this process is the first to make a file."""
+    try:
+        os.close(os.open(file, os.O_CREAT | os.O_EXCL))
+    except FileExistsError:
+        return False
+    return True
+
+
+def main(groups: list[str]) -> int:
+    """Entry point of the child: groups in the order to draw them; scratch and output folder come as JSON on its input."""
+    warm(tuple(groups))
+    told = sys.stdin.read()
+    if not told:  # nothing to draw after all
+        return 0
+    scratch, folder = map(Path, json.loads(told))
+    with (scratch / VIEW).open("rb") as stream:
+        view = in_drawing_units(pickle.load(stream))
+    for group in groups:
+        draw_group(view, folder, group, scratch, scratch / f"{os.getpid()}.list")
     return 0
 
 

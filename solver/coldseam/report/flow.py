@@ -76,7 +76,8 @@ def _contours(view: View, section: Section, psi: StreamFunction) -> FlowLines:
         owners.append(cell)
     segments = np.concatenate(pieces) if pieces else np.empty((0, 2, 2))
     owner = np.concatenate(owners) if owners else np.empty(0, dtype=np.int64)
-    unit = "W" if view.mesh.axisymmetric else "W per metre of depth"
+    unit = view.shown.unit("flow")
+    unit = {"W/m": "W per metre of depth", "Btu/(h·ft)": "Btu/h per foot of depth"}.get(unit, unit)
     about = "about " if len(psi.periods) > 1 or psi.misfit > COARSE else ""
     note = f"Between two neighbouring lines flows {about}{style.number(psi.step)} {unit}; isotherms are grey."
     if view.mesh.axisymmetric:

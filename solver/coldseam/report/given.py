@@ -58,8 +58,12 @@ def materials(case: Case, shown: Shown) -> Markup:
         value = shown.amount("conductivity", k) if isinstance(k, float) else _several(k, shown)
         if material.uncertainty is not None:
             value += f" ± {100 * material.uncertainty:.3g} %"
+        heat = getattr(material, "specific_heat", None)
         others = [
-            shown.amount(quantity, getattr(material, quantity, None)) for quantity in ("density", "specific_heat")
+            shown.amount("density", getattr(material, "density", None)),
+            shown.amount("specific_heat", heat)
+            if isinstance(heat, float) or heat is None
+            else "specific heat by a law",
         ]
         emissivity = f"emissivity {material.emissivity:g}" if material.emissivity is not None else ""
         source = joined([f"library: {material.library}. " if material.library else "", material.source])

@@ -28,7 +28,7 @@ def histories(answers: Mapping[str, Any], folder: Path, shown: Shown) -> Markup:
     history = answers.get("history")
     if not isinstance(history, Mapping) or not history:
         return Markup("")
-    events = _entries(history.get("events"))
+    events = [{**e, "watched": shown.watched(e)} if "watched" in e else e for e in _entries(history.get("events"))]
     events.sort(key=lambda event: (not event.get("happened", True), event.get("time") or 0.0))
     facts = [(key.replace("_", " "), _cell(key, value, shown)) for key, value in history.items()
              if key not in ("events", "file", "asked_duration") and not isinstance(value, Mapping | list | tuple)]  # fmt: skip

@@ -31,7 +31,7 @@ class HistoryView:
     rows
         (n_rows, n_columns).
     levels
-        Lines across the temperatures: label and °C.
+        Lines across the temperatures: what they are and °C; the picture adds the value.
     bounds
         Lines across the heat flows: label and W.
     moments
@@ -77,7 +77,7 @@ def draw_temperatures(view: View, folder: Path, name: str) -> Picture:
         (_label(history, n), n, history.columns[n][1] in history.given and history.columns[n][0] == "space")
         for n in chosen
     ]
-    return _chart(view, folder, name, "Temperatures over time", "temperature, °C", lines, history.levels)
+    return _chart(view, folder, name, "Temperatures over time", "temperature", lines, history.levels)
 
 
 def draw_flows(view: View, folder: Path, name: str) -> Picture | None:
@@ -91,14 +91,13 @@ def draw_flows(view: View, folder: Path, name: str) -> Picture | None:
     ]
     if not chosen:
         return None
-    unit = history.columns[chosen[0]][2]
     lines = [(_label(history, n), n, False) for n in chosen[:MOST_LINES]]
     return _chart(
         view,
         folder,
         name,
         "Heat flows over time",
-        f"heat flow, {unit} (into the solid, or into the space)",
+        "flow",
         lines,
         history.bounds,
     )
@@ -110,13 +109,19 @@ def _label(history: HistoryView, n: int) -> str:
     return f"{words[kind]}{name}" if kind in words else f"{name}: {kind.replace('_', ' ')}"
 
 
-def _chart(view: View, folder: Path, name: str, title: str, label: str, lines, levels) -> Picture:
+def _chart(view: View, folder: Path, name: str, title: str, quantity: str, lines, levels) -> Picture:
     import matplotlib
 
     matplotlib.use("Agg")
     from matplotlib.figure import Figure
 
-    history = view.history
+    history, measured = view.history, view.shown.unit(quantity)
+    label = (
+        f"temperature, {measured}"
+        if quantity == "temperature"
+        else f"heat flow, {measured}\n(into the solid, or into the space)"
+    )
+    values = view.shown.value(quantity, history.rows)
     unit, seconds = scale_of(float(history.rows[-1, 0]))
     time = history.rows[:, 0] / seconds
     with style.applied():
@@ -128,44 +133,52 @@ def _chart(view: View, folder: Path, name: str, title: str, label: str, lines, l
             dash = (0, (1, 1)) if given else style.DASHES[(order // len(style.LINES)) % 4]
             ax.plot(
                 time,
-                history.rows[:, n],
+                values[:, n],
                 color=colour,
                 linestyle=dash,
                 linewidth=1.5,
                 label=style.shortened(text + (" (given)" if given else ""), 40),
             )
-            ends.append(float(history.rows[-1, n]))
-        for text, value in levels:
+            ends.append(float(values[-1, n]))
+        for text, value in [(text, view.shown.value(quantity, value)) for text, value in levels]:
             ax.axhline(value, color=style.SOFT, linestyle=(0, (6, 3)), linewidth=style.THIN)
             ax.annotate(
-                style.shortened(text, 40),
+                f"{style.shortened(text, 40)}: {style.number(value)} {measured}",
                 (time[-1], value),
                 ha="right",
                 va="bottom",
                 fontsize=style.SMALL,
                 color=style.SOFT,
+                path_effects=style.halo(),
             )
         for text, moment in history.moments:
             ax.axvline(moment / seconds, color=style.INK, linestyle=(0, (1, 2)), linewidth=style.THIN)
             ax.annotate(
                 style.shortened(text, 40), (moment / seconds, 0.02), xycoords=("data", "axes fraction"),
                 rotation=90, ha="right",
-                va="bottom", fontsize=style.SMALL,
+                va="bottom", fontsize=style.SMALL, path_effects=style.halo(),
             )  # fmt: skip
         ax.set_xlim(time[0], time[-1] if time[-1] > time[0] else time[0] + 1.0)
         ax.set_xlabel(f"time, {unit}")
         ax.set_ylabel(label)
         ax.grid(True, color=style.FAINT, linewidth=style.HAIR)
-        ax.set_title(style.wrapped(view.title, 7.5, style.TEXT, 2) + f"\n{title}", loc="left", fontsize=style.TEXT)
+        sub = style.wrapped(view.title, 6.0, style.TEXT, 2)
+        ax.set_title(title, loc="left", fontsize=style.HEAD, weight="bold", pad=8 + 12 * (sub.count("\n") + 1))
+        ax.annotate(sub, (0, 1), xytext=(0, 6), xycoords="axes fraction", textcoords="offset points", va="bottom",
+                    color=style.SOFT)  # fmt: skip
         ax.legend(loc="upper left", bbox_to_anchor=(1.01, 1.0), borderaxespad=0.0)
         for ending in ("png", "svg"):
-            figure.savefig(folder / f"{name}.{ending}", dpi=style.DPI)
+            figure.savefig(
+                folder / f"{name}.{ending}",
+                dpi=style.DPI,
+                metadata={"Software": "coldseam"} if ending == "png" else {"Date": None, "Creator": "coldseam"},
+            )
     pick = np.unique(np.linspace(0, len(time) - 1, MOST_POINTS).astype(int))
     table = Table(
-        columns=(f"time, {unit}", *(text for text, _, _ in lines)),
-        rows=tuple((float(time[k]), *(float(history.rows[k, n]) for _, n, _ in lines)) for k in pick),
+        columns=(f"time, {unit}", *(f"{text}, {measured}" for text, _, _ in lines)),
+        rows=tuple((float(time[k]), *(float(values[k, n]) for _, n, _ in lines)) for k in pick),
     )
-    told = "; ".join(f"{text} ends at {value:.4g}" for (text, _, _), value in zip(lines, ends, strict=True))
+    told = "; ".join(f"{text} ends at {value:.4g} {measured}" for (text, _, _), value in zip(lines, ends, strict=True))
     return Picture(
         file=f"{name}.png", vector=f"{name}.svg", title=title, alt=f"{title} of {view.title}: {told}", table=table
     )

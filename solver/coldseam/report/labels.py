@@ -13,6 +13,9 @@ import numpy as np
 
 from coldseam.report import style
 
+CLEAR = 0.25
+"""Least distance of a label's place to the next line, as a part of the label's height."""
+
 
 @dataclass(frozen=True, kw_only=True, eq=False)
 class Wanted:
@@ -30,6 +33,7 @@ def set_labels(
     boxed: bool = False,
     spare_small: bool = False,
     avoid: np.ndarray | None = None,
+    lines: np.ndarray | None = None,
 ) -> list:
     """Set labels on axes and return the text artists.
 
@@ -44,14 +48,17 @@ def set_labels(
     boxed
         Draw a circle round each text, for reference numbers.
     spare_small
-        Leave out labels on lines hardly longer than the label itself.
+        Leave out labels on lines hardly longer than the label itself, or where lines crowd.
     avoid
         Boxes in pixels that no label may touch, shape (n, 4): x0, y0, x1, y1.
+    lines
+        More points, in data coordinates, from which labels keep away, shape (n, 2).
     """
     figure = ax.figure
     frame = ax.get_window_extent().padded(-3.0)
     crowd = [_pixels(ax, _thin(entry.points, 400)) for entry in wanted]
     taken = np.empty((0, 4)) if avoid is None else np.asarray(avoid, dtype=float).reshape(-1, 4)
+    drawn = [] if lines is None else [_pixels(ax, lines)]
     made = []
     # short lines first: they have the fewest places to choose from
     for k in sorted(range(len(wanted)), key=lambda k: len(wanted[k].points)):
@@ -60,8 +67,11 @@ def set_labels(
         if boxed:
             wide = tall = max(wide, tall) + 5
         own = crowd[k][_roomy(crowd[k], 1.5 * wide)] if spare_small else crowd[k]
-        others = [points for j, points in enumerate(crowd) if j != k and len(points)]
-        spot = _spot(own, np.vstack(others) if others else np.empty((0, 2)), taken, (wide, tall), frame)
+        others = drawn + [points for j, points in enumerate(crowd) if j != k and len(points)]
+        points = np.vstack(others) if others else np.empty((0, 2))
+        if spare_small:
+            own = own[_apart(own, points, CLEAR * tall)]
+        spot = _spot(own, points, taken, (wide, tall), frame)
         if spot is None:
             continue
         taken = np.vstack([taken, [spot[0] - wide / 2, spot[1] - tall / 2, spot[0] + wide / 2, spot[1] + tall / 2]])
@@ -116,6 +126,15 @@ def _roomy(points: np.ndarray, least: float) -> np.ndarray:
     np.minimum.at(low, piece, points)
     np.maximum.at(high, piece, points)
     return ((high - low).max(axis=1) >= least)[piece]
+
+
+def _apart(points: np.ndarray, others: np.ndarray, least: float) -> np.ndarray:
+    """Return which points lie at least so far (pixels) from all others: nearer, a label could belong to any line."""
+    if len(points) == 0 or len(others) == 0:
+        return np.ones(len(points), dtype=bool)
+    from scipy.spatial import cKDTree
+
+    return cKDTree(others).query(points)[0] >= least
 
 
 def _pixels(ax, points: np.ndarray) -> np.ndarray:

@@ -58,8 +58,14 @@ def joined(content: object, between: str = "") -> Markup:
     return Markup(between.join(text(part) for part in content))
 
 
+LONGEST_NAME = 300
+"""Letters of a name that are shown; the whole of a longer one stands in the case file."""
+
+
 def name(value: object) -> Markup:
-    """Return a user's name for something, kept from turning the text around it."""
+    """Return a user's name for something, kept from turning the text around it; of a very long one the beginning."""
+    if isinstance(value, str) and not isinstance(value, Markup) and len(value) > LONGEST_NAME:
+        value = f"{value[:LONGEST_NAME]} …"
     return tag("bdi", value)
 
 

@@ -7,8 +7,8 @@ from dataclasses import replace
 from pathlib import Path
 
 from coldseam.case.model import Case
+from coldseam.report.artists import Artists, draw_all
 from coldseam.report.document import write_report
-from coldseam.report.draw import draw_all
 from coldseam.report.files import prepare_folder
 from coldseam.report.shown import Shown
 from coldseam.report.tables import write_answers
@@ -17,7 +17,14 @@ from coldseam.report.vtu import write_field
 
 
 def write_all(
-    view: View, case: Case, folder: Path, shown: Shown, *, pictures: bool, log: Callable[[str, str], None]
+    view: View,
+    case: Case,
+    folder: Path,
+    shown: Shown,
+    *,
+    pictures: bool,
+    log: Callable[[str, str], None],
+    artists: Artists | None = None,
 ) -> list[Path]:
     """Write answers.json, tables, fields, pictures and report.html and return their paths.
 
@@ -35,6 +42,8 @@ def write_all(
         Whether to draw.
     log
         Called with a stage and a message.
+    artists
+        Who draws; None starts them when they are needed.
 
     Raises
     ------
@@ -46,7 +55,7 @@ def write_all(
     written = [*write_answers(folder, view), *write_field(folder, view)]
     if not pictures:
         return [*written, write_report(view, case, Drawings(pictures=()), folder, shown, viewer=False)]
-    drawings = draw_all(view, folder, log)
+    drawings = draw_all(replace(view, shown=shown), folder, log, artists)
     for picture in drawings.pictures:
         written += [folder / name for name in (picture.file, picture.vector) if name]
     listed = [{"file": p.file, "vector": p.vector, "title": p.title, "alt": p.alt} for p in drawings.pictures]

@@ -140,7 +140,7 @@ def _node_fields(
         values = np.full(view.mesh.n_nodes, np.nan)
         for field in fields:
             values = np.where(np.isfinite(values), values, field.values)
-        note = " ".join(dict.fromkeys(f"{field.space}: {field.note}" for field in fields))
+        note = " ".join(dict.fromkeys(f"{field.space}: {shown.sentence(field.note)}" for field in fields))
         quantity = "flux" if fields[0].unit == "W/m²" else None
         found.append(_steps(key, values[kept], fields[0].title, quantity, shown, note, fields[0].unit))
     return found

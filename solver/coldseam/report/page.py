@@ -21,6 +21,8 @@ BAR_ROOM = 0.95
 TALLEST = 5.0
 LONGEST = 6.0
 PAD = 0.22
+PACKED = 3
+"""How hard PNGs are compressed: a half more bytes than the hardest, in a quarter of the time."""
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -59,6 +61,7 @@ def open_page(
     heading: str,
     title: str,
     axes: tuple[str, str],
+    unit: str = "mm",
     bar: bool = False,
     detail: str | None = None,
     legend: tuple[list, list[str]] | None = None,
@@ -72,6 +75,8 @@ def open_page(
         What the picture shows, and the case's title.
     axes
         Names of the coordinates; ("", "") leaves the axes out (views in space).
+    unit
+        Of both coordinates.
     bar
         Leave room for a colour bar at the right.
     detail
@@ -121,7 +126,7 @@ def open_page(
     at += head_tall
     ax = figure.add_axes(box(left, at, wide, tall))
     bar_ax = figure.add_axes(box(left + wide + 0.18, at, 0.16, tall)) if bar else None
-    _axes(ax, low, high, axes, wide, tall)
+    _axes(ax, low, high, axes, unit, wide, tall)
     at += 0.05 if beside else tall + foot
     detail_ax = None
     if detail:
@@ -137,7 +142,7 @@ def open_page(
     return Page(figure=figure, ax=ax, bar=bar_ax, detail=detail_ax, stretch=stretch)
 
 
-def _axes(ax, low, high, names, wide: float, tall: float) -> None:
+def _axes(ax, low, high, names, unit: str, wide: float, tall: float) -> None:
     from matplotlib.ticker import MaxNLocator
 
     if not names[0]:
@@ -148,8 +153,8 @@ def _axes(ax, low, high, names, wide: float, tall: float) -> None:
     pad = PAD * np.maximum(high - low, 1e-12) / (np.array([wide, tall]) - 2 * PAD)
     ax.set_xlim(low[0] - pad[0], high[0] + pad[0])
     ax.set_ylim(low[1] - pad[1], high[1] + pad[1])
-    ax.set_xlabel(f"{names[0]}, mm")
-    ax.set_ylabel(f"{names[1]}, mm")
+    ax.set_xlabel(f"{names[0]}, {unit}")
+    ax.set_ylabel(f"{names[1]}, {unit}")
     ax.xaxis.set_major_locator(MaxNLocator(max(1, min(8, int(wide / 0.7))), steps=[1, 2, 2.5, 5, 10]))
     ax.yaxis.set_major_locator(MaxNLocator(max(1, min(8, int(tall / 0.45))), steps=[1, 2, 2.5, 5, 10]))
     for side in ("top", "right"):
@@ -180,8 +185,7 @@ def _legend(figure, legend, room: float):
         labelspacing=0.55,
         alignment="left",
     )
-    figure.canvas.draw()
-    tall = made.get_window_extent().height / figure.dpi
+    tall = made.get_window_extent(figure.canvas.get_renderer()).height / figure.dpi
     return made, tall + 0.14
 
 
@@ -214,7 +218,9 @@ def save(page: Page, folder: Path, name: str, *, vector: bool) -> tuple[str, str
 
     contents = {}
     stream = io.BytesIO()
-    page.figure.savefig(stream, format="png", dpi=style.DPI, metadata={"Software": "coldseam"})
+    page.figure.savefig(
+        stream, format="png", dpi=style.DPI, metadata={"Software": "coldseam"}, pil_kwargs={"compress_level": PACKED}
+    )
     contents[f"{name}.png"] = stream.getvalue()
     if vector:
         stream = io.BytesIO()

@@ -1,7 +1,7 @@
 """Pictures of plane sections: the model, its temperature, the lines along which heat flows.
 
 A 2D or axisymmetric model is one section; a 3D model is cut (:mod:`coldseam.report.pictures3d`)
-and its sections are drawn here too, so that all look alike. Positions are drawn in mm.
+and its sections are drawn here too, so that all look alike. Positions are drawn in mm, or what the view's units say.
 """
 
 from __future__ import annotations
@@ -20,6 +20,8 @@ EVEN = 0.02
 """Part of the whole model's temperature range below which a section counts as even."""
 THINNEST = 2e-4
 """Least height of a triangle that is shaded, as a part of the picture."""
+SHADES, MOST_SHADED = 24, 20_000
+"""A triangle that spans more than one of so many steps of the scale is quartered before it is shaded, while they are few."""
 MOST_NAMES = 24
 """Names in a legend; the table beside the picture has all."""
 
@@ -54,8 +56,8 @@ def draw_temperature(view: View, section: Section, folder: Path, name: str, titl
     coldest, warmest = float(view.temperature.min()), float(view.temperature.max())
     even = high - low < EVEN * (warmest - coldest)  # isotherms would trace the mesh; the scale is the whole model's
     levels = np.empty(0) if even else style.round_levels(*(view.scale or (low, high)))
-    places = style.decimals(levels) if len(levels) else 2
-    read = (f"From {style.degrees(low, max(1, places))} to {style.degrees(high, max(1, places))} in this section"
+    places, unit = style.decimals(levels) if len(levels) else 2, view.shown.unit("temperature")
+    read = (f"From {style.amount(low, max(1, places), unit)} to {style.amount(high, max(1, places), unit)} in this section"
             f"{'' if len(levels) else '; too even for isotherms'}.",)  # fmt: skip
     low, high = view.scale or ((coldest, warmest) if even else (low, high))
     with style.applied():
@@ -66,12 +68,12 @@ def draw_temperature(view: View, section: Section, folder: Path, name: str, titl
         for level in levels:
             segments, _ = isolines(section.points * 1e3, section.cells, section.temperature, level)
             _lines(made.ax, segments, style.contrast((level - low) / (high - low)), style.THIN)
-            wanted.append(Wanted(text=style.degrees(level, places), points=segments.mean(axis=1)))
+            wanted.append(Wanted(text=style.amount(level, places, unit), points=segments.mean(axis=1)))
         set_labels(made.ax, wanted, spare_small=True)
-        pages.colour_bar(made, low, high, levels)
+        pages.colour_bar(made, low, high, levels, unit)
         file, vector = pages.save(made, folder, name, vector=view.mesh.dim == 2)
     alt = f"{title}{_where(section)}. {read[0]} "
-    alt += f"Isotherms at {', '.join(style.degrees(v, places) for v in levels) or 'no value'}."
+    alt += f"Isotherms at {', '.join(style.amount(v, places, unit) for v in levels) or 'no value'}."
     return Picture(file=file, vector=vector, title=title + _where(section), alt=alt, table=temperature_table(view))
 
 
@@ -92,17 +94,18 @@ def draw_heat_flow(view: View, section: Section, folder: Path, name: str, title:
         _lines(made.ax, flow.segments, "#12457a", 1.0)
         _arrows(made, flow)
         file, vector = pages.save(made, folder, name, vector=view.mesh.dim == 2)
-    rows = tuple((key, entry.get("heat_flow")) for key, entry in view.answers.get("boundaries", {}).items())
-    unit = "W/m" if view.mesh.dim == 2 and not view.mesh.axisymmetric else "W"
-    table = Table(columns=("boundary", f"heat flow into the solid, {unit}"), rows=rows)
+    entries = view.answers.get("boundaries", {})
+    rows = tuple((key, _value(view, "flow", entry.get("heat_flow"))) for key, entry in entries.items())
+    table = Table(columns=("boundary", f"heat flow into the solid, {view.shown.unit('flow')}"), rows=rows)
     return Picture(file=file, vector=vector, title=title + _where(section), alt=f"{title}. {flow.note}", table=table)
 
 
 def model_table(view: View) -> Table:
     """Return name, kind, space and area of every boundary."""
-    unit = "m²/m" if view.mesh.dim == 2 and not view.mesh.axisymmetric else "m²"
-    rows = zip(view.boundary_names, view.boundary_kind, view.boundary_space, boundary_areas(view).tolist(), strict=True)
-    return Table(columns=("boundary", "kind", "space", f"area, {unit}"), rows=tuple(rows))
+    areas = view.shown.value("area", boundary_areas(view)).tolist()
+    kinds = [kind.replace("_", " ") for kind in view.boundary_kind]
+    rows = zip(view.boundary_names, kinds, view.boundary_space, areas, strict=True)
+    return Table(columns=("boundary", "kind", "space", f"area, {view.shown.unit('area')}"), rows=tuple(rows))
 
 
 def temperature_table(view: View) -> Table:
@@ -110,8 +113,13 @@ def temperature_table(view: View) -> Table:
     rows = []
     for name, entry in view.answers.get("boundaries", {}).items():
         surface = entry.get("temperature") or {}
-        rows.append((name, surface.get("min"), surface.get("mean"), surface.get("max")))
-    return Table(columns=("boundary", "lowest, °C", "mean, °C", "highest, °C"), rows=tuple(rows))
+        rows.append((name, *(_value(view, "temperature", surface.get(key)) for key in ("min", "mean", "max"))))
+    unit = view.shown.unit("temperature")
+    return Table(columns=("boundary", f"lowest, {unit}", f"mean, {unit}", f"highest, {unit}"), rows=tuple(rows))
+
+
+def _value(view: View, quantity: str, value: float | None) -> float | None:
+    return None if value is None else view.shown.value(quantity, value)
 
 
 # ---------------------------------------------------------------------------------------- parts
@@ -127,7 +135,7 @@ def _open(section: Section, view: View, title: str, *, bar=False, detail=None, l
     spare = pages.stretch_note(pages.stretch_for(*(high - low)), section.axes)
     return pages.open_page(
         low, high, heading=title + _where(section), title=view.title, axes=section.axes, bar=bar, detail=detail,
-        legend=legend, notes=((spare,) if spare else ()) + tuple(notes),
+        unit=view.shown.unit("length"), legend=legend, notes=((spare,) if spare else ()) + tuple(notes),
     )  # fmt: skip
 
 
@@ -151,7 +159,7 @@ def _boundary_legend(view: View) -> tuple[list, list[str]]:
     for k, name in enumerate(view.boundary_names[:MOST_NAMES]):
         colour, dash = style.boundary_line(k, view.boundary_kind[k])
         handles.append(Line2D([], [], color=colour, linestyle=dash, linewidth=style.BOLD))
-        area = style.area_text(areas[k], view.mesh.dim, view.mesh.axisymmetric)
+        area = style.area_text(areas[k], view.shown)
         labels.append(f"{k + 1}  {style.shortened(name, 32)}, {area}")
     return _counted(handles, labels, len(view.boundary_names), "boundaries")
 
@@ -235,7 +243,10 @@ def _draw_probes(ax, view: View, tags: list) -> None:
         reach = np.array([_data_length(ax, 0, style.text_width(text, style.SMALL) / 2 + 0.10), gap[1]])
         around = np.stack([x + reach[0] * np.cos(ring), y + reach[1] * 1.4 * np.sin(ring)], axis=1)
         wanted.append(Wanted(text=text, points=around))
-    set_labels(ax, wanted, avoid=boxes(tags))
+    edges = view.mesh.points[view.mesh.facets] * 1e3
+    share = np.linspace(0.0, 1.0, 9)[:, None, None]
+    lines = (edges[:, 0] + share * (edges[:, 1] - edges[:, 0])).reshape(-1, 2)
+    set_labels(ax, wanted, avoid=boxes(tags), lines=lines)
 
 
 def _data_length(ax, direction: int, inches: float) -> float:
@@ -250,9 +261,32 @@ def _shade(ax, section: Section, low: float, high: float) -> None:
     from matplotlib.tri import Triangulation
 
     points = section.points * 1e3
-    field = Triangulation(points[:, 0], points[:, 1], _wide_enough(points, section.cells))
-    ax.tripcolor(field, section.temperature, shading="gouraud", cmap=style.COLOUR_MAP, vmin=low,
+    cells = _wide_enough(points, section.cells)
+    corner, values = _evenly_shaded(points[cells], section.temperature[cells], (high - low) / SHADES)
+    field = Triangulation(*corner.reshape(-1, 2).T, np.arange(3 * len(corner)).reshape(-1, 3))
+    ax.tripcolor(field, values.ravel(), shading="gouraud", cmap=style.COLOUR_MAP, vmin=low,
                  vmax=max(high, low + 1e-9), rasterized=True, zorder=1)  # fmt: skip
+
+
+def _evenly_shaded(corner: np.ndarray, values: np.ndarray, most: float) -> tuple[np.ndarray, np.ndarray]:
+    """Return triangles (n, 3, 2) and their values (n, 3) with those quartered that span more than ``most``.
+
+    Colours between corners are mixed from theirs, which over a large step are not those of the map.
+    """
+    for _ in range(3):
+        wide = np.ptp(values, axis=1) > most
+        if not wide.any() or len(values) > MOST_SHADED:
+            break
+        parts = [_quartered(corner[wide]), _quartered(values[wide][:, :, None])[..., 0]]
+        corner, values = np.concatenate([corner[~wide], parts[0]]), np.concatenate([values[~wide], parts[1]])
+    return corner, values
+
+
+def _quartered(corner: np.ndarray) -> np.ndarray:
+    middle = 0.5 * (corner + np.roll(corner, -1, axis=1))  # of the sides 01, 12, 20
+    a, b, c = corner[:, 0], corner[:, 1], corner[:, 2]
+    p, q, r = middle[:, 0], middle[:, 1], middle[:, 2]
+    return np.concatenate([np.stack(part, axis=1) for part in ((a, p, r), (p, b, q), (r, q, c), (p, q, r))])
 
 
 def _wide_enough(points: np.ndarray, cells: np.ndarray) -> np.ndarray:
@@ -323,7 +357,8 @@ def _thin_note(view: View, section: Section) -> tuple[str, ...]:
     thin = _thin_bodies(view, section)
     if not thin:
         return ()
-    names = ", ".join(f"{style.shortened(view.mesh.bodies[k].name, 30)} ({t * 1e3:.2g} mm)" for k, t in thin[:4])
+    unit = view.shown.unit("length")
+    names = ", ".join(f"{style.shortened(view.mesh.bodies[k].name, 30)} ({t * 1e3:.2g} {unit})" for k, t in thin[:4])
     more = f" and {len(thin) - 4} more" if len(thin) > 4 else ""
     return (f"Thinner than the line that shows it: {names}{more}.",)
 
@@ -349,10 +384,11 @@ def _close_up(view: View, section: Section) -> tuple[np.ndarray, np.ndarray, str
     lowest, highest = section.points.min(axis=0) + 0.5 * half, section.points.max(axis=0) - 0.5 * half
     centre = np.clip(centre, np.minimum(lowest, highest), np.maximum(lowest, highest))
     low, high = centre - half, centre + half
-    caption = (f"Close-up A, true scale: {2 * half * 1e3:.3g} mm square about "
-               f"{section.axes[0]}\u00a0=\u00a0{centre[0] * 1e3:.4g}\u00a0mm, "
-               f"{section.axes[1]}\u00a0=\u00a0{centre[1] * 1e3:.4g}\u00a0mm. "
-               f"{style.shortened(view.mesh.bodies[body].name)} is about {thick * 1e3:.2g} mm thick.")  # fmt: skip
+    unit = view.shown.unit("length")
+    caption = (f"Close-up A, true scale: {2 * half * 1e3:.3g} {unit} square about "
+               f"{section.axes[0]}\u00a0=\u00a0{centre[0] * 1e3:.4g}\u00a0{unit}, "
+               f"{section.axes[1]}\u00a0=\u00a0{centre[1] * 1e3:.4g}\u00a0{unit}. "
+               f"{style.shortened(view.mesh.bodies[body].name)} is about {thick * 1e3:.2g} {unit} thick.")  # fmt: skip
     return low, high, caption
 
 

@@ -11,16 +11,17 @@ from pathlib import Path
 
 import numpy as np
 
-from coldseam.answers.maps import SurfaceMap
+from coldseam.answers.surfacemap import SurfaceMap
 from coldseam.report import page as pages
 from coldseam.report import scene as scenes
 from coldseam.report import style
 from coldseam.report.labels import Wanted, set_labels
 from coldseam.report.pictures2d import _counted, _lines, model_table, temperature_table
-from coldseam.report.plane import AXES, Section, cut, isolines
+from coldseam.report.plane import AXES, isolines
 from coldseam.report.view import Picture, View, boundary_areas
 
 EVEN = 0.02
+MIDDLE = "through the middle"
 CORNER_VIEW = np.array([0.62, -0.70, 0.50])
 
 
@@ -36,7 +37,7 @@ class Spot:
 def section_spots(view: View) -> list[Spot]:
     """Return where a 3D model is cut: through its middle, and through the coldest point on the warmest side."""
     low, high = view.mesh.points.min(axis=0), view.mesh.points.max(axis=0)
-    spots = [Spot(axis=k, at=float((low[k] + high[k]) / 2), why="through the middle") for k in range(3)]
+    spots = [Spot(axis=k, at=float((low[k] + high[k]) / 2), why=MIDDLE) for k in range(3)]
     coldest = coldest_point(view)
     if coldest is not None:
         for k in range(3):
@@ -58,12 +59,6 @@ def coldest_point(view: View) -> np.ndarray | None:
     return view.mesh.points[nodes[np.argmin(view.temperature[nodes])]]
 
 
-def sections(view: View) -> list[tuple[Spot, Section]]:
-    """Return the sections that hit the model."""
-    found = [(spot, cut(view, spot.axis, spot.at)) for spot in section_spots(view)]
-    return [(spot, section) for spot, section in found if section is not None]
-
-
 def draw_boundaries(view: View, folder: Path, name: str, *, behind: bool = False) -> Picture:
     """Draw the model from a corner (or the opposite one), boundaries tinted and numbered, named in the legend."""
     mesh = view.mesh
@@ -72,7 +67,7 @@ def draw_boundaries(view: View, folder: Path, name: str, *, behind: bool = False
     title = "Model, boundaries" + (", from the opposite corner" if behind else "")
     handles, labels = _face_legend(view)
     with style.applied():
-        made = _open(view, seen, title, legend=(handles, labels), notes=(_eye_note(seen),))
+        made = _open(view, seen, title, legend=(handles, labels), notes=(_eye_note(view, seen),))
         _edges(made.ax, view, seen)
         set_labels(made.ax, _tags(view, seen), boxed=True)
         file, _ = pages.save(made, folder, name, vector=False)
@@ -90,7 +85,12 @@ def draw_surface(
     title = "Surface temperature" + (", from the opposite corner" if behind else "")
     if space is not None:
         title = f"Surface temperature, side of {style.shortened(space)}"
-    shown = _Shown(values=view.temperature, unit="°C", title=title, mark="lowest" if space is not None else "")
+    shown = _Shown(
+        values=view.temperature,
+        unit=view.shown.unit("temperature"),
+        title=title,
+        mark="lowest" if space is not None else "",
+    )
     rows = np.arange(len(view.mesh.facets)) if space is None else np.flatnonzero(view.faces_space(space))
     toward = _direction(behind) if space is None else _from_space(view, rows)
     return _draw_field(view, shown, rows, toward, folder, name, front_only=space is not None, close=close)
@@ -127,7 +127,7 @@ def _draw_field(
     nodes = np.unique(facets)
     low, high = float(values[nodes].min()), float(values[nodes].max())
     ends = (low, high)
-    if view.scale and shown.unit == "°C":
+    if view.scale and shown.unit == view.shown.unit("temperature"):
         low, high = view.scale
     levels = style.round_levels(low, high)
     levels = levels[
@@ -147,7 +147,7 @@ def _draw_field(
     title = shown.title + (", close-up" if close else "")
     with style.applied():
         mark = f" The white-edged triangle marks the {shown.mark}." if marked else ""
-        notes = (read + mark, *([shown.note] if shown.note else []), _eye_note(seen))
+        notes = (read + mark, *([shown.note] if shown.note else []), _eye_note(view, seen))
         made = _open(view, seen, title, bar=True, notes=notes)
         _edges(made.ax, view, seen, rows)
         _isolines(made.ax, view, seen, facets, filled, (low, high), levels, places, shown.unit)
@@ -222,11 +222,11 @@ def _open(view: View, seen, title: str, *, bar=False, legend=None, notes=()):
     return made
 
 
-def _eye_note(seen) -> str:
+def _eye_note(view: View, seen) -> str:
     """Return from where one looks, in words of the axes."""
     strong = [(abs(seen.toward[k]), f"{'+' if seen.toward[k] > 0 else '−'}{AXES[k]}") for k in range(3)]
     named = [text for size, text in sorted(strong, reverse=True) if size > 0.15]
-    span = f"{style.number((seen.high - seen.low)[0], 2)} mm"
+    span = f"{style.number((seen.high - seen.low)[0], 2)} {view.shown.unit('length')}"
     return f"Seen from {', '.join(named)}, without perspective; the picture is {span} wide."
 
 
@@ -238,7 +238,7 @@ def _face_legend(view: View) -> tuple[list, list[str]]:
     for k, name in enumerate(view.boundary_names[:24]):
         colour = style.face_colour(k, view.boundary_kind[k])
         handles.append(Patch(facecolor=colour, edgecolor=style.SOFT, linewidth=style.HAIR))
-        labels.append(f"{k + 1}  {style.shortened(name, 32)}, {style.area_text(areas[k], 3, False)}")
+        labels.append(f"{k + 1}  {style.shortened(name, 32)}, {style.area_text(areas[k], view.shown)}")
     return _counted(handles, labels, len(view.boundary_names), "boundaries")
 
 

@@ -110,7 +110,7 @@ def cut(view: View, axis: int, at: float) -> Section | None:
         temperature=temperature,
         flux=flux,
         axes=(AXES[plane[0]], AXES[plane[1]]),
-        where=f"{AXES[axis]} = {at * 1e3:.4g} mm",
+        where=f"{AXES[axis]}\u00a0=\u00a0{at * 1e3:.4g}\u00a0{view.shown.unit('length')}",
         out_of_plane=through,
     )
 

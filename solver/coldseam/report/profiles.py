@@ -7,7 +7,7 @@ from pathlib import Path
 
 import numpy as np
 
-from coldseam.answers.maps import SurfaceMap
+from coldseam.answers.surfacemap import SurfaceMap
 from coldseam.report import page as pages
 from coldseam.report import style
 from coldseam.report.plane import chains
@@ -25,7 +25,13 @@ def draw_surface(view: View, space: str, folder: Path, name: str) -> Picture | N
     marked, probes that lie on the surface too.
     """
     title = f"Surface temperature, side of {style.shortened(space)}"
-    shown = _Shown(values=view.temperature, unit="°C", quantity="surface temperature", title=title, mark="lowest")
+    shown = _Shown(
+        values=view.temperature,
+        unit=view.shown.unit("temperature"),
+        quantity="surface temperature",
+        title=title,
+        mark="lowest",
+    )
     return _draw(view, space, shown, folder, name)
 
 
@@ -80,7 +86,8 @@ def _draw(view: View, space: str, shown: _Shown, folder: Path, name: str) -> Pic
 def _position(view: View, node: int) -> str:
     axes = ("r", "z") if view.mesh.axisymmetric else ("x", "y")
     return ", ".join(
-        f"{axis} = {style.number(1e3 * c, 4)} mm" for axis, c in zip(axes, view.mesh.points[node], strict=True)
+        f"{axis} = {style.number(1e3 * c, 4)} {view.shown.unit('length')}"
+        for axis, c in zip(axes, view.mesh.points[node], strict=True)
     )
 
 
@@ -148,7 +155,7 @@ def _chart(view: View, shown: _Shown, strips: list[dict], span: tuple[float, flo
     ax.set_xlim(-0.05 * end, 1.05 * end)
     room = max(span[1] - span[0], 0.1)
     ax.set_ylim(span[0] - 0.12 * room, span[1] + 0.12 * room)
-    ax.set_xlabel("length along the surface, mm")
+    ax.set_xlabel(f"length along the surface, {view.shown.unit('length')}")
     ax.set_ylabel(f"{shown.quantity}, {shown.unit}")
     ax.grid(True, color=style.FAINT, linewidth=style.HAIR)
     return made

@@ -132,9 +132,26 @@ def paint(
     plotter.camera.parallel_scale = float(high[1] - low[1]) / 2
     plotter.camera.clipping_range = (reach * 0.4, reach * 1.6)
     plotter.show(auto_close=False)
-    depth = np.asarray(plotter.get_image_depth(fill_value=np.nan), dtype=float)  # negative distance from the eye
-    image = np.asarray(plotter.screenshot(None, return_img=True))[..., :3]
+    image, depth = _read(plotter.render_window, size, plotter.camera.clipping_range)
     plotter.close()
     image = np.dstack([image, np.where(np.isfinite(depth), 255, 0).astype(np.uint8)])
     return Scene(image=image, low=low * 1e3, high=high * 1e3, right=right, up=up, toward=toward,
                  depth=depth + float((focus + reach * toward) @ toward))  # fmt: skip
+
+
+def _read(window: Any, size: np.ndarray, clipping: tuple[float, float]) -> tuple[np.ndarray, np.ndarray]:
+    """Return the colours and the depth (negative distance from the eye, NaN where nothing is) of a drawn window.
+
+    Both are read from the window as it is: pyvista's own ways draw it anew for each.
+    """
+    from vtkmodules.util.numpy_support import vtk_to_numpy
+    from vtkmodules.vtkCommonCore import vtkFloatArray, vtkUnsignedCharArray
+
+    columns, rows = (int(n) for n in size)
+    colours, nearness = vtkUnsignedCharArray(), vtkFloatArray()
+    window.GetPixelData(0, 0, columns - 1, rows - 1, 0, colours, 0)
+    window.GetZbufferData(0, 0, columns - 1, rows - 1, nearness)
+    image = vtk_to_numpy(colours).reshape(rows, columns, -1)[::-1, :, :3].copy()
+    share = vtk_to_numpy(nearness).reshape(rows, columns)[::-1].astype(float)
+    depth = -(clipping[0] + share * (clipping[1] - clipping[0]))  # linear: there is no perspective
+    return image, np.where(share >= 1.0, np.nan, depth)

@@ -7,14 +7,19 @@ the exact definitions of :mod:`coldseam.case.units`.
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from types import MappingProxyType
+from typing import Any, TypeVar
+
+import numpy as np
 
 from coldseam.case.units import BTU, FAHRENHEIT, FOOT, HOUR, INCH
 from coldseam.errors import ColdseamError
-from coldseam.report.summary import number, with_error
+from coldseam.report.digits import number, with_error
 
+Number = TypeVar("Number", float, "np.ndarray[Any, Any]")
 _PER_HOUR = HOUR / BTU  # W -> Btu/h
 _PER_KELVIN = FAHRENHEIT
 
@@ -51,7 +56,7 @@ _FT2 = FOOT**2
 _INCH = {
     "length": Measure(unit="in", factor=1e-3 / INCH),
     "temperature": Measure(unit="°F", factor=1.8, offset=32.0),
-    "difference": Measure(unit="°F difference", factor=1.8),
+    "difference": Measure(unit="°F", factor=1.8),
     "area": Measure(unit="ft²", factor=1 / _FT2),
     "area_per_m": Measure(unit="ft²/ft", factor=1 / FOOT),
     "volume": Measure(unit="ft³", factor=1 / FOOT**3),
@@ -68,6 +73,8 @@ _INCH = {
     "specific_heat": Measure(unit="Btu/(lb·°F)", factor=0.45359237 * FAHRENHEIT / BTU),
 }
 SYSTEMS: Mapping[str, Mapping[str, Measure]] = MappingProxyType({"metric": _METRIC, "inch": _INCH})
+_QUANTITY = {"°C": "temperature", "W/m²": "flux", "W/(m²·K)": "film"}
+_MEASURED = re.compile(rf"(-?\d+(?:\.\d+)?(?:e[+-]?\d+)?) ({'|'.join(map(re.escape, _QUANTITY))})")
 PER_METRE = {"flow": "flow_per_m", "area": "area_per_m", "volume": "volume_per_m", "coupling": "psi"}
 
 
@@ -99,8 +106,8 @@ class Shown:
         """Return the unit of a quantity."""
         return self.measure(quantity).unit
 
-    def value(self, quantity: str, value: float) -> float:
-        """Return a value of the answers in the unit shown."""
+    def value(self, quantity: str, value: Number) -> Number:
+        """Return a value of the answers, or an array of them, in the unit shown."""
         measure = self.measure(quantity)
         return measure.factor * value + measure.offset
 
@@ -134,6 +141,34 @@ class Shown:
     def difference_fine(self, kelvin: float) -> str:
         """Return a difference of temperatures (K) with two significant digits."""
         return f"{self.value('difference', kelvin):.2g} {self.unit('difference')}"
+
+    def sentence(self, text: str) -> str:
+        """Return a sentence of the program's own, which quotes no name, with its numbers in the units shown.
+
+        >>> Shown(system="inch").sentence("Above this side's median of 9.46 W/m².")
+        "Above this side's median of 3.00 Btu/(h·ft²)."
+        """
+        if self.system == "metric":
+            return text
+
+        def converted(found: re.Match[str]) -> str:
+            quantity = _QUANTITY[found[2]]
+            value = self.value(quantity, float(found[1]))
+            return (
+                self.temperature(float(found[1]))
+                if quantity == "temperature"
+                else f"{number(value, 3)} {self.unit(quantity)}"
+            )
+
+        return _MEASURED.sub(converted, text)
+
+    def watched(self, event: Mapping[str, Any]) -> str:
+        """Return what an event of the answers watches, its level in the unit shown and the names as typed."""
+        words, level = str(event.get("watched") or ""), event.get("level")
+        given = "" if level is None else f"{level:g} °C"
+        if self.system == "metric" or not given or not words.endswith(given):
+            return words
+        return f"{words.removesuffix(given)}{self.value('temperature', level):.4g} {self.unit('temperature')}"
 
     def place(self, at: Sequence[float] | None) -> str:
         """Return a position (mm).

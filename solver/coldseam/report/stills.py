@@ -18,10 +18,6 @@ from coldseam.report.view import Drawings, Picture, View
 LARGEST_VECTOR = 330_000
 """Bytes of an SVG up to which it is embedded; beyond, its raster twin takes less."""
 MOST_ROWS = 40
-METRIC_STILLS = (
-    "The still pictures and their numbers are in °C, mm and W, as the case is solved; the interactive view and all other tables "
-    "are in inch units."
-)
 UNDER_THE_VIEW = ("surface", "temperature")
 """Pictures (of a solid, of a plane model) that the interactive view is laid over."""
 KEYS = (
@@ -50,8 +46,7 @@ def stills(view: View, drawings: Drawings, folder: Path, shown: Shown, *, viewer
     viewer = viewer and under is not None and view.temperature is not None
     figures = [interactive(view, under, folder, shown)] if viewer and under else []
     figures += [figure(picture, folder) for picture in drawings.pictures if not (viewer and picture is under)]
-    metric = "" if shown.system == "metric" else tag("p", METRIC_STILLS)
-    return joined([metric, *figures], "\n") if figures else Markup("")
+    return joined(figures, "\n") if figures else Markup("")
 
 
 def interactive(view: View, still: Picture, folder: Path, shown: Shown) -> Markup:

@@ -17,6 +17,8 @@ from functools import lru_cache
 
 import numpy as np
 
+from coldseam.report.shown import Shown
+
 COLOUR_MAP = "cividis"
 INK, SOFT, FAINT, PAPER = "#1b1f24", "#5b636e", "#b9bfc7", "#ffffff"
 TEXT, SMALL, HEAD = 8.5, 7.5, 11.0
@@ -199,10 +201,12 @@ def number(value: float, digits: int = 3) -> str:
     return text.replace("-", "−")
 
 
-def area_text(area: float, dim: int, axisymmetric: bool) -> str:
-    """Return an area with its unit, m² or m² per metre of depth; small ones in cm²."""
-    per = "/m" if dim == 2 and not axisymmetric else ""
-    return f"{number(area)} m²{per}" if area >= 0.01 else f"{number(area * 1e4)} cm²{per}"
+def area_text(area: float, shown: Shown) -> str:
+    """Return an area (m², or m² per metre of depth) with its unit; small ones in cm² or in²."""
+    if area >= 0.01:
+        return f"{number(shown.value('area', area))} {shown.unit('area')}"
+    unit, small, parts = ("m²", "cm²", 1e4) if shown.system == "metric" else ("ft²", "in²", 144.0)
+    return f"{number(shown.value('area', area) * parts)} {shown.unit('area').replace(unit, small)}"
 
 
 def boundary_line(index: int, kind: str) -> tuple[str, object]:

@@ -6,8 +6,10 @@ from collections.abc import Mapping
 from typing import Any
 
 from coldseam.report.history import scale_of
+from coldseam.report.shown import Shown
 
 Answers = Mapping[str, Any]
+METRIC = Shown()
 
 
 def duration_text(seconds: float) -> str:
@@ -40,7 +42,7 @@ def energy_text(joules: float, per: str) -> str:
     return f"0 J{per}"
 
 
-def event_lines(answers: Answers) -> list[str]:
+def event_lines(answers: Answers, shown: Shown = METRIC) -> list[str]:
     """Return one line for every event, the ones that happened first."""
     events = (answers.get("history") or {}).get("events")
     lines: list[str] = []
@@ -49,11 +51,11 @@ def event_lines(answers: Answers) -> list[str]:
     for name, event in sorted(events.items(), key=lambda item: (not item[1]["happened"], item[1]["time"] or 0.0)):
         if event["happened"]:
             error = f" ± {duration_text(max(event['error'], 1.0))}" if event.get("error") else ""
-            lines.append(f"{name}: after {duration_text(event['time'])}{error} ({event['watched']})")
+            lines.append(f"{name}: after {duration_text(event['time'])}{error} ({shown.watched(event)})")
         else:
             lines.append(
-                f"{name}: not reached; closest {event['closest']:.1f} °C after {duration_text(event['closest_at'])} "
-                f"({event['watched']})"
+                f"{name}: not reached; closest {shown.temperature(event['closest'])} after {duration_text(event['closest_at'])} "
+                f"({shown.watched(event)})"
             )
     return lines
 

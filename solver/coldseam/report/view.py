@@ -11,9 +11,10 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from coldseam.answers.maps import SurfaceMap
+from coldseam.answers.surfacemap import SurfaceMap
 from coldseam.mesh.measure import facet_measure
 from coldseam.mesh.types import Mesh
+from coldseam.report.shown import Shown
 
 if TYPE_CHECKING:
     from coldseam.report.history import HistoryView
@@ -49,6 +50,10 @@ class View:
         The recorded rows of a run over time.
     scale
         Temperatures (°C) that the colours of pictures begin and end with; None for each picture's own.
+    shown
+        Units of the pictures.
+    metre
+        How long a metre is in the mesh's points: 1, save in views that :func:`in_drawing_units` has made.
     """
 
     mesh: Mesh
@@ -64,6 +69,8 @@ class View:
     maps: tuple[SurfaceMap, ...] = ()
     history: HistoryView | None = None
     scale: tuple[float, float] | None = None
+    shown: Shown = Shown()
+    metre: float = 1.0
 
     def __post_init__(self):
         if len(self.facet_boundary) != len(self.mesh.facets):
@@ -163,4 +170,37 @@ def without_fields(view: View) -> View:
 
 def boundary_areas(view: View) -> np.ndarray:
     """Return the area of every boundary, m² (m² per metre of depth in a cross-section), shape (n_boundaries,)."""
-    return np.bincount(view.facet_boundary, weights=facet_measure(view.mesh), minlength=len(view.boundary_names))
+    power = 1 if view.mesh.dim == 2 and not view.mesh.axisymmetric else 2
+    areas = np.bincount(view.facet_boundary, weights=facet_measure(view.mesh), minlength=len(view.boundary_names))
+    return areas / view.metre**power
+
+
+def in_drawing_units(view: View) -> View:
+    """Return a view as pictures draw it: fields in the units of ``view.shown``, answers as they are.
+
+    Points are in thousands of the unit of length (m where that is mm), so that pictures turn them alike; the flux is
+    such that flux times length is a heat flow in the unit shown.
+    """
+    shown, mesh = view.shown, view.mesh
+    metre = shown.measure("length").factor
+    if shown.system == "metric":
+        return view
+    power = 1 if mesh.dim == 2 and not mesh.axisymmetric else 2
+    flow = shown.measure("flow").factor / metre**power
+    return replace(
+        view,
+        mesh=replace(mesh, points=mesh.points * metre),
+        metre=metre,
+        temperature=None if view.temperature is None else shown.value("temperature", view.temperature),
+        cell_flux=None if view.cell_flux is None else view.cell_flux * flow,
+        probes={name: np.asarray(at) * metre for name, at in view.probes.items()},
+        maps=tuple(_drawn_map(field, shown) for field in view.maps),
+        scale=None if view.scale is None else tuple(shown.value("temperature", end) for end in view.scale),
+    )
+
+
+def _drawn_map(field: SurfaceMap, shown: Shown) -> SurfaceMap:
+    if field.unit != "W/m²":
+        return field
+    values, unit = shown.value("flux", field.values), shown.unit("flux")
+    return replace(field, values=values, unit=unit, note=shown.sentence(field.note))

@@ -28,10 +28,14 @@ class Causes:
     """
 
     def __init__(self, system: HeatSystem, initial: State):
+        courses = system.terminal_course[: system.network.n_terminals]
+        sun = system.terminal_course[system.network.n_terminals :]
         begun = system.expand(initial.temperature)
-        spans = [span_of(course) for course in system.terminal_course if course is not None]
+        spans = [span_of(course) for course in courses if course is not None]
         self.low = min([float(begun.min()), *(low for low, _ in spans)])
         self.high = max([float(begun.max()), *(high for _, high in spans)])
+        if any(course is not None and span_of(course)[1] > 0.0 for course in sun):
+            self.high = np.inf
         self.given: Conditions | None = None
         self.look(system, initial)
 

@@ -144,6 +144,7 @@ def save(folder: Path, transient: Transient, extra: dict[str, Any]) -> None:
             }
             for watch in transient.watches
         ],
+        "strayed": {} if transient.refresh is None else transient.refresh.strayed,
         "extra": extra,
     }
     guesses = {
@@ -167,6 +168,7 @@ def save(folder: Path, transient: Transient, extra: dict[str, Any]) -> None:
             "peak": transient.totals.peak,
             "extremes": transient.extremes.values,
             "causes": np.array([transient.causes.low, transient.causes.high]),
+            "reached": transient.reached,
             **guesses,
             **{f"refresh_{name}": array for name, array in refresh.items()},
         },
@@ -217,10 +219,12 @@ def restore(folder: Path, transient: Transient) -> dict[str, Any]:
     transient.rows.recall(folder / ROWS, told["rows"])
     transient.extremes.values = stored["extremes"]
     transient.causes.low, transient.causes.high = stored["causes"].tolist()
+    transient.reached = stored["reached"]
     transient.rung, transient.patience = told["rung"], told["patience"]
     transient.recorded, transient.fields = told["recorded"], told["fields"]
     transient.work = Work(**told["work"])
     if transient.refresh is not None:
+        transient.refresh.strayed = told["strayed"]
         kept = {name.removeprefix("refresh_"): array for name, array in stored.items() if name.startswith("refresh_")}
         system = transient.refresh.recall(kept)
         if system is not None:

@@ -20,13 +20,15 @@ which couples nothing and so leaves the matrix as sparse and symmetric as it is.
 from __future__ import annotations
 
 import dataclasses
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from coldseam.case.films import ATMOSPHERE, Exchange, exchange
+from coldseam.case.laws import ConductivityLaw
+from coldseam.case.schedules import constant
 from coldseam.errors import CaseError, Fault
 from coldseam.mesh.types import Mesh
 from coldseam.physics import convection, fluids, laws, radiation
@@ -37,7 +39,7 @@ from coldseam.volumes.operator import cell_pairs
 from coldseam.volumes.section import facet_shares
 
 if TYPE_CHECKING:
-    from coldseam.case.model import Boundary, Case
+    from coldseam.case.model import Boundary, Case, Material
 
 LEAST_FILM = 1e-9
 """W/(m² K): keeps a boundary that exchanges nothing (emissivity 0) in the network."""
@@ -71,7 +73,7 @@ class Coefficients:
 def depends(case: Case) -> bool:
     """Return whether anything in a case depends on the answer's temperatures."""
     return (
-        any(m.law is not None for m in case.materials.values())
+        any(m.laws for m in case.materials.values())
         or bool(case.cavities)
         or any(body.air_gap is not None for body in case.body)
         or any(found.depends for _, found in exchanges(case))
@@ -159,9 +161,12 @@ def evaluate(
         dataclasses.replace(terminal, temperature=t) for terminal, t in zip(base.terminals, temperatures, strict=True)
     )
     gaps = air_gaps(case, mesh, temperature)
+    conductivity, tensors = _conductivity(case, mesh, base, temperature, gaps)
     given = dataclasses.replace(
         base,
-        conductivity=_conductivity(case, mesh, base, temperature, gaps),
+        conductivity=conductivity,
+        tensors=base.tensors if tensors is None else tensors,
+        turned=tensors is not None,
         film=film,
         flux=flux,
         terminals=terminals,
@@ -236,32 +241,60 @@ def _outside(case: Case, terminal, air: Mapping[str, float]) -> float:
     return air[spaces.pop()] if spaces else terminal.temperature
 
 
-def _conductivity(case: Case, mesh: Mesh, base: Conditions, temperature: np.ndarray, gaps: Gaps) -> np.ndarray:
-    """Return every cell's conductivity, W/(m K), (n_cells,)."""
+def _conductivity(
+    case: Case, mesh: Mesh, base: Conditions, temperature: np.ndarray, gaps: Gaps
+) -> tuple[np.ndarray, np.ndarray | None]:
+    """Return every cell's conductivity, W/(m K), (n_cells,), and unit tensor, (n_cells, dim, dim), where laws turn it."""
     k, pairs = base.conductivity.copy(), cell_pairs(mesh.dim)
     for number, (value, _) in gaps.items():
         k[mesh.cell_body == number] = value
+    tensors: np.ndarray | None = None
     for number, body in enumerate(mesh.bodies):
-        law = case.materials[body.material].law
-        if law is None or number in gaps:
+        material = case.materials[body.material]
+        if not material.laws or number in gaps:
             continue
         cells = np.flatnonzero(mesh.cell_body == number)
         t = temperature[mesh.cells[cells]]
         first, second = t[:, pairs[:, 0]], t[:, pairs[:, 1]]
         weight = (first - second) ** 2
         weight += 1e-12 * weight.max(initial=0.0) + 1e-30  # cells of one temperature: the plain mean
-        k[cells] = (weight * laws.mean_conductivity(law, first, second)).sum(axis=1) / weight.sum(axis=1)
-    return k
+
+        def mean(law: float | ConductivityLaw, first=first, second=second, weight=weight) -> np.ndarray | float:
+            if isinstance(law, float):
+                return law
+            return (weight * laws.mean_conductivity(law, first, second)).sum(axis=1) / weight.sum(axis=1)
+
+        if material.law is not None:
+            k[cells] = mean(material.law)
+            continue
+        if tensors is None:
+            assert base.tensors is not None
+            tensors = base.tensors[mesh.cell_body]
+        k[cells], tensors[cells] = _along(material, mesh.dim, mean)
+    return k, tensors
+
+
+def _along(material: Material, dim: int, value: Callable[[Any], Any]) -> tuple[np.ndarray, np.ndarray]:
+    """Return conductivity, (n,), and unit tensor, (n, dim, dim), of cells whose axes have conductivities of their own."""
+    whole: Any = sum(np.multiply.outer(value(k), np.outer(axis, axis)) for k, axis in material.directions(dim))
+    k = np.trace(whole, axis1=-2, axis2=-1) / dim
+    return k, whole / k[..., None, None]
 
 
 def other_average(case: Case, mesh: Mesh, given: Conditions, temperature: np.ndarray) -> np.ndarray:
     """Return the conductivity at each cell's mean temperature, W/(m K), (n_cells,); the field in °C, (n_nodes,)."""
     k = given.conductivity.copy()
     for number, body in enumerate(mesh.bodies):
-        law = case.materials[body.material].law
-        if law is not None and case.body[body.source].air_gap is None:
-            cells = np.flatnonzero(mesh.cell_body == number)
-            k[cells] = laws.conductivity(law, temperature[mesh.cells[cells]].mean(axis=1))
+        material = case.materials[body.material]
+        if not material.laws or case.body[body.source].air_gap is not None:
+            continue
+        cells = np.flatnonzero(mesh.cell_body == number)
+        middle = temperature[mesh.cells[cells]].mean(axis=1)
+
+        def there(law: float | ConductivityLaw, at: np.ndarray = middle) -> np.ndarray | float:
+            return law if isinstance(law, float) else laws.conductivity(law, at)
+
+        k[cells] = there(material.law) if material.law is not None else _along(material, mesh.dim, there)[0]
     return k
 
 
@@ -311,7 +344,7 @@ def _surface(
             "temperature": radiant,
             "heat_flow": float(area @ (h_r * (radiant - surface))),
         }
-    sun = 0.0 if found.sun is None else found.sun.absorptivity * found.sun.irradiance
+    sun = 0.0 if found.sun is None else found.sun.absorptivity * constant(found.sun.irradiance)
     if found.sun is not None:
         used["sun"] = {"absorbed": sun, "heat_flow": sun * float(area.sum())}
     used["convection"]["heat_flow"] = float(area @ (h * (air - surface)))
@@ -368,10 +401,10 @@ def fluid_range(case: Case, law) -> tuple[float, float]:
 def _radiant(found: Exchange, air: float) -> float:
     law = found.radiation
     assert law is not None
-    around = air if law.surroundings is None else law.surroundings
+    around = air if law.surroundings is None else constant(law.surroundings)
     if law.sky is None:
         return around
-    sky = law.sky.temperature if law.sky.temperature is not None else radiation.clear_sky(air)
+    sky = radiation.clear_sky(air) if law.sky.temperature is None else constant(law.sky.temperature)
     return radiation.radiant_temperature(around, sky, law.sky.share)
 
 
@@ -391,29 +424,3 @@ def _emissivity(case: Case, mesh: Mesh, boundary: Boundary, found: Exchange, fac
         number = next(n for n, b in enumerate(case.boundary) if b.name == boundary.name)
         raise CaseError([Fault(path=("boundary", number), what=what)])
     return found_here
-
-
-def range_remarks(case: Case, mesh: Mesh, temperature: np.ndarray, films: dict[str, dict[str, Any]]) -> tuple[str, ...]:
-    """Return a warning for every body and every boundary where a law was used beyond its range; °C, (n_nodes,)."""
-    told = []
-    for number, body in enumerate(mesh.bodies):
-        law = case.materials[body.material].law
-        cells = mesh.cells[mesh.cell_body == number]
-        reached = laws.beyond(law, temperature[cells]) if law is not None and len(cells) else None
-        if law is not None and reached is not None:
-            told.append(
-                f'body "{body.name}": its temperatures of {reached[0]:.1f} to {reached[1]:.1f} °C leave the range '
-                f'of the conductivity of "{body.material}", {law.limits[0]:.1f} to {law.limits[1]:.1f} °C; beyond it '
-                "the value at the end of the range was taken"
-            )
-    for name, used in films.items():
-        found = used["convection"]
-        if not found.get("in_range", True):
-            symbol = "Ra" if "Ra" in found else "Re"
-            low, high = found["valid"]
-            told.append(
-                f'boundary "{name}": {symbol} = {found[symbol]:.3g} or a part of the film is outside the range of '
-                f'"{found["correlation"]}", {low:.3g} to {high:.3g}; the film coefficient of {found["film"]:.3g} '
-                "W/(m²·K) is an extrapolation"
-            )
-    return tuple(told)

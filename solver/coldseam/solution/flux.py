@@ -17,4 +17,4 @@ def cell_flux(steady: Steady) -> np.ndarray:
     flux = -steady.given.conductivity[:, None] * gradient
     if steady.given.tensors is None:
         return flux
-    return np.einsum("cij,cj->ci", steady.given.tensors[mesh.cell_body], flux)
+    return np.einsum("cij,cj->ci", steady.given.tensors[steady.given.tensor_of(mesh)], flux)

@@ -33,10 +33,15 @@ def conductivity_of(steady: Steady, material: str) -> float | np.ndarray:
     The harmonic mean is that of slices through which heat flows in series, as it does through the layers of a wall.
     """
     given = steady.case.materials[material]
-    if given.law is None:
+    if not given.laws:
         return given.tensor(steady.mesh.dim)
     made = np.array([body.material == material for body in steady.mesh.bodies])[steady.mesh.cell_body]
     if not made.any():
         return given.tensor(steady.mesh.dim)
     volume = cell_measure(steady.mesh)[made]
-    return float(volume.sum() / (volume @ (1.0 / steady.given.conductivity[made])))
+    k = steady.given.conductivity[made]
+    if given.directional and steady.given.tensors is not None:
+        whole = k[:, None, None] * steady.given.tensors[steady.given.tensor_of(steady.mesh)[made]]
+        mean: np.ndarray = np.linalg.inv(np.einsum("c,cij->ij", volume / volume.sum(), np.linalg.inv(whole)))
+        return mean
+    return float(volume.sum() / (volume @ (1.0 / k)))

@@ -5,6 +5,8 @@
 
 A, b and the film conductances to the terminals are those of the steady network; G gathers the columns of the
 terminals that a floating space stands behind, B keeps the others. Heat flows are read from the same balances.
+The sun is a further column of B for each sunlit boundary, absorptivity times area of every node, and its irradiance
+a further entry of t: so it is integrated as exactly as the temperatures outside.
 """
 
 from __future__ import annotations
@@ -31,6 +33,7 @@ from coldseam.volumes.operator import EdgeOperator
 from coldseam.volumes.section import facet_shares
 
 if TYPE_CHECKING:
+    from coldseam.case.films import Sun
     from coldseam.case.model import Case
 
 
@@ -43,7 +46,7 @@ class HeatSystem:
     case, mesh, facet_boundary, given, network
         The case, its mesh with contacts opened, the boundary of every facet, conditions and steady network.
     capacity
-        J/K of every node, (n_nodes,).
+        J/K of every node, (n_nodes,); specific heats over temperature at the middle of what the case names.
     spaces
         The unknowns outside the mesh.
     coupling
@@ -51,9 +54,10 @@ class HeatSystem:
     gather, films
         Its transpose, and its sum over the nodes, W/K, (n,).
     drive
-        B: that between nodes and the terminals with a given temperature, W/K, (n_nodes, n_terminals).
+        B: that between nodes and the terminals with a given temperature, W/K, then what nodes absorb of the sun on
+        each sunlit boundary, m², (n_nodes, n_terminals + n_sunlit).
     terminal_course
-        Temperature (°C, or a schedule) of every terminal; None for a floating one.
+        Temperature (°C, or a schedule) of every terminal, None for a floating one; then the irradiances, W/m².
     readers
         How boundary flows are read, see :class:`FlowReaders`.
     source_flow
@@ -101,7 +105,7 @@ class HeatSystem:
         return float(np.max(np.abs(change), initial=0.0))
 
     def terminals(self, time: float, *, before: bool = False) -> np.ndarray:
-        """Return the temperature of every terminal, °C, 0 for floating ones, (n_terminals,)."""
+        """Return every terminal's temperature, °C, 0 for floating ones, then irradiances, (n_terminals + n_sunlit,)."""
         return np.array([0.0 if c is None else value_at(c, time, before=before) for c in self.terminal_course])
 
     def with_fixed(self, temperature: np.ndarray, terminals: np.ndarray) -> np.ndarray:
@@ -141,6 +145,7 @@ class HeatSystem:
         r = self.readers
         outside = np.where(r.unknown >= 0, y[r.unknown] if self.spaces.n else 0.0, terminals[r.terminal])
         flow = r.constant + r.film * outside - r.film_nodes @ temperature
+        flow[list(r.sunlit)] += r.sunlit_area * terminals[len(terminals) - len(r.sunlit) :]
         return flow - r.fixed_nodes @ node_heat if r.fixed_nodes.nnz else flow
 
 
@@ -160,6 +165,8 @@ class FlowReaders:
         Share of a fixed node's balance that belongs to a boundary, (n_boundaries, n_nodes).
     terminal, unknown
         Terminal of every boundary (0 where none) and the floating space behind it (-1 where none).
+    sunlit, sunlit_area
+        Boundaries in the sun, and absorptivity times area of each, m², (n_sunlit,).
     """
 
     constant: np.ndarray
@@ -168,6 +175,8 @@ class FlowReaders:
     fixed_nodes: sparse.csr_array
     terminal: np.ndarray
     unknown: np.ndarray
+    sunlit: tuple[int, ...]
+    sunlit_area: np.ndarray
 
 
 def heat_system(case: Case, mesh: Mesh) -> HeatSystem:
@@ -193,16 +202,17 @@ def heat_system(case: Case, mesh: Mesh) -> HeatSystem:
     network = node_network(mesh, given, operator)
     require_temperatures(mesh, network)
     spaces = floating_spaces(case)
-    courses = _courses(case, given)
+    courses = (*_courses(case, given), *(sun.irradiance for _, sun in _sunlit(case)))
     behind = _behind(case, given, spaces)
     coupling, drive = _split(network.exchange, behind, spaces.n)
+    drive = sparse.hstack([drive, sun_on_nodes(case, mesh, facet_boundary)], format="csr")
     return HeatSystem(
         case=case,
         mesh=mesh,
         facet_boundary=facet_boundary,
         given=given,
         network=network,
-        capacity=node_capacities(case, mesh),
+        capacity=node_capacities(case, mesh, 0.5 * sum(outside_range(case))),
         spaces=spaces,
         coupling=coupling,
         gather=sparse.csr_array(coupling.T),
@@ -228,6 +238,7 @@ def with_conditions(system: HeatSystem, given: Conditions) -> HeatSystem:
     network = node_network(system.mesh, given, system.operator)
     behind = _behind(system.case, given, system.spaces)
     coupling, drive = _split(network.exchange, behind, system.spaces.n)
+    drive = sparse.hstack([drive, system.drive[:, network.n_terminals :]], format="csr")
     return replace(
         system,
         given=given,
@@ -242,7 +253,10 @@ def with_conditions(system: HeatSystem, given: Conditions) -> HeatSystem:
 
 
 def held_for_structure(case: Case) -> Case:
-    """Return a steady case with the same structure: equal temperatures exactly where the schedules are equal."""
+    """Return a steady case with the same structure: equal temperatures exactly where the schedules are equal.
+
+    Without the sun, which drives the nodes by itself; what surfaces radiate to keeps its schedules.
+    """
     kinds: dict[object, float] = {}
 
     def stand_in(course: object) -> float:
@@ -251,7 +265,26 @@ def held_for_structure(case: Case) -> Case:
     middle = 0.5 * sum(outside_range(case))
     spaces = {name: middle if s.temperature is None else stand_in(s.temperature) for name, s in case.spaces.items()}
     surfaces = {n: stand_in(b.temperature) for n, b in enumerate(case.boundary) if b.temperature is not None}
-    return held(case, spaces, surfaces)
+    steady = held(case, spaces, surfaces)
+    return steady.model_copy(update={"boundary": tuple(b.model_copy(update={"sun": None}) for b in steady.boundary)})
+
+
+def _sunlit(case: Case) -> list[tuple[int, Sun]]:
+    return [(number, boundary.sun) for number, boundary in enumerate(case.boundary) if boundary.sun is not None]
+
+
+def sun_on_nodes(case: Case, mesh: Mesh, facet_boundary: np.ndarray) -> sparse.csr_array:
+    """Return absorptivity times area of every node on each sunlit boundary, m², (n_nodes, n_sunlit).
+
+    ``facet_boundary`` is the boundary of every exterior facet, (n_facets,).
+    """
+    shares = facet_shares(mesh, mesh.facets)
+    columns = [
+        sun.absorptivity * np.bincount(mesh.facets[own].ravel(), shares[own].ravel(), mesh.n_nodes)
+        for number, sun in _sunlit(case)
+        for own in (facet_boundary == number,)
+    ]
+    return sparse.csr_array(np.column_stack([np.zeros((mesh.n_nodes, 0)), *columns]))
 
 
 def _course(case: Case, boundary):
@@ -311,6 +344,8 @@ def _readers(case: Case, mesh: Mesh, facet_boundary: np.ndarray, given: Conditio
         terminal[list(entry.boundaries)] = number
     with_terminal = {b for entry in given.terminals for b in entry.boundaries}
     unknown = np.array([behind[terminal[b]] if b in with_terminal else -1 for b in range(count)])
+    sunlit = _sunlit(case)
+    area = np.bincount(facet_boundary, shares.sum(axis=1), count)
     return FlowReaders(
         constant=np.bincount(facet_boundary, given.flux * shares.sum(axis=1), count),
         film=np.asarray(film_nodes.sum(axis=1)).ravel(),
@@ -318,4 +353,6 @@ def _readers(case: Case, mesh: Mesh, facet_boundary: np.ndarray, given: Conditio
         fixed_nodes=fixed_nodes,
         terminal=terminal,
         unknown=unknown,
+        sunlit=tuple(number for number, _ in sunlit),
+        sunlit_area=np.array([sun.absorptivity * area[number] for number, sun in sunlit]),
     )

@@ -6,7 +6,8 @@ Each step freezes the coefficients at the present field T (solution/coefficients
 
 With the excess of the films this is Newton's method at the boundaries. Conductivities and the mean temperatures of
 convective films lag by one step (their exact derivatives would make the matrix unsymmetric, the latter also
-full); Anderson's acceleration (1965, J. ACM 12, 547) of depth ``DEPTH`` makes up for that. The first step solves with
+full); Anderson's acceleration (1965, J. ACM 12, 547) of depth ``DEPTH`` makes up for that once steps are small against the
+temperatures' range (``NEAR``); before, it would only spoil Newton's. The first step solves with
 the usual films of :func:`coldseam.volumes.conditions.boundary_film`, so the start is the field of a linear case.
 
 In three dimensions the multigrid hierarchy of the first step stays the preconditioner of all.
@@ -27,13 +28,11 @@ from coldseam.mesh.types import Mesh
 from coldseam.solution.coefficients import (
     Coefficients,
     evaluate,
-    exchanges,
-    fluid_range,
     other_average,
-    range_remarks,
 )
 from coldseam.solution.enclosed import cavity_models
 from coldseam.solution.linear import DIRECT_LIMIT, DirectSolver, MultigridSolver, node_hierarchy
+from coldseam.solution.ranges import film_remark, law_remarks, require_fluids
 from coldseam.volumes.conditions import Conditions
 from coldseam.volumes.network import Network
 from coldseam.volumes.nodes import node_network
@@ -49,6 +48,7 @@ LEAST_RANGE = 1.0
 """K: the range that the tolerance is a part of where all temperatures are alike."""
 MOST_STEPS = 40
 DEPTH = 4
+NEAR = 0.1
 INNER_TOLERANCE = 1e-8
 INNER_RESTARTS = 6
 COLDEST = 1.0
@@ -149,8 +149,9 @@ def settle(
             raise SolveError(_stalled(case, mesh, facet_boundary, field, step, history))
         field = np.maximum(mixer.next(field, step), COLDEST - 273.15)
     found = evaluate(case, mesh, facet_boundary, base, field, outside, models)
-    _require_fluids(case, found)
-    remarks = range_remarks(case, mesh, field, found.films)
+    require_fluids(case, found)
+    of_films = (film_remark(name, used) for name, used in found.films.items())
+    remarks = (*law_remarks(case, mesh, field, field), *filter(None, of_films))
     other = other_average(case, mesh, found.given, field)
     return Settled(
         coefficients=found,
@@ -253,6 +254,11 @@ class _Anderson:
 
     def next(self, x: np.ndarray, step: np.ndarray) -> np.ndarray:
         """Return the next field from the present one and its plain step, all (n,)."""
+        if np.abs(step).max() > NEAR * max(float(np.ptp(x)), LEAST_RANGE):  # far off: Newton's steps as they are
+            self.moves.clear()
+            self.changes.clear()
+            self.before = None
+            return x + step
         if self.before is not None:
             if np.abs(step).max() > 2.0 * np.abs(self.before[1]).max():  # astray: begin again from here
                 self.moves.clear()
@@ -280,20 +286,3 @@ def _stalled(case: Case, mesh: Mesh, facet_boundary, field, step, history) -> st
         f"the temperatures do not settle: after {len(history)} steps those of {where} still move by {history[-1]:.3g} "
         f"K (at {field[node]:.1f} °C). Look there at the films, the emissivity and the conductivity over temperature"
     ).replace("'", '"')
-
-
-def _require_fluids(case: Case, found: Coefficients) -> None:
-    """Raise where a film was made from properties beyond what they hold for."""
-    for boundary, outside in exchanges(case):
-        law = outside.convection
-        if law is None or law.kind == "standard" or boundary.name not in found.films:
-            continue
-        at = found.films[boundary.name]["convection"]["property_temperature"]
-        low, high = fluid_range(case, law)
-        if not low <= at <= high:
-            fluid = "air" if law.fluid is None else f'the fluid "{law.fluid}"'
-            raise SolveError(
-                f'boundary "{boundary.name}": its film is at {at:.1f} °C, and the properties of {fluid} hold for '
-                f"{low:g} to {high:g} °C. Give it a film coefficient, or a fluid that covers it (a table in "
-                "[fluids.NAME])"
-            )

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 import numpy as np
 from scipy.spatial import cKDTree
 
-from coldseam.case.overtime import held
+from coldseam.case.overtime import at_moment, held
 from coldseam.case.schedules import value_at
 from coldseam.errors import CaseError, Fault, SolveError
 from coldseam.mesh.types import Mesh
@@ -79,7 +80,7 @@ def _by_body(system: HeatSystem, table: dict[str, float]) -> np.ndarray:
         values.append(table.get(name, table.get("rest", 0.0)))
     if faults:
         raise CaseError(faults)
-    heat = volumetric_capacity(system.case, mesh)
+    heat = volumetric_capacity(system.case, mesh, np.array(values))
     return node_shares_of_cells(mesh, heat * np.array(values)[mesh.cell_body]) / node_shares_of_cells(mesh, heat)
 
 
@@ -112,8 +113,9 @@ def _guessed(system: HeatSystem) -> np.ndarray:
 
 def _steady(system: HeatSystem) -> State:
     """Return the steady state of the conditions at time 0, machines running as much as they must."""
-    network, spaces = system.network, system.spaces
+    spaces = system.spaces
     response, outside, behind = _response(system)
+    network = response.network
     y = balance(spaces, network.energy(response.fields), behind, outside).y if spaces.n else np.zeros(0)
     terminals = np.where(behind >= 0, y[np.maximum(behind, 0)], outside) if spaces.n else outside
     reference = 0.5 * float(terminals.min() + terminals.max())
@@ -122,9 +124,16 @@ def _steady(system: HeatSystem) -> State:
 
 
 def _response(system: HeatSystem) -> tuple[Response, np.ndarray, np.ndarray]:
-    """Return unit fields, temperature of every terminal at time 0 (°C) and the floating space behind it (-1: none)."""
-    response = respond(system.network, system.mesh.dim, NODE_TOLERANCE)
-    outside = np.array([0.0 if course is None else value_at(course, 0.0) for course in system.terminal_course])
+    """Return unit fields, temperature of every terminal at time 0 (°C) and the floating space behind it (-1: none).
+
+    The sun is among the loads.
+    """
+    network = system.network
+    outside, sun = np.split(system.terminals(0.0), [network.n_terminals])
+    if sun.any():
+        load = network.load + system.drive[:, network.n_terminals :] @ sun
+        network = replace(network, load=load, has_load=True)
+    response = respond(network, system.mesh.dim, NODE_TOLERANCE)
     names = system.spaces.names
     rooms = [system.case.boundary[terminal.boundaries[0]].space for terminal in system.given.terminals]
     return response, outside, np.array([names.index(name) if name in names else -1 for name in rooms])
@@ -142,7 +151,7 @@ def machine_outlook(system: HeatSystem) -> tuple[str, ...]:
     if not any(coolings) or any(c is not None and value_at(c.available, 0.0) < 1.0 for c in coolings):
         return ()
     response, outside, behind = _response(system)
-    found = balance(system.spaces, system.network.energy(response.fields), behind, outside)
+    found = balance(system.spaces, response.network.energy(response.fields), behind, outside)
     return machine_remarks(system.spaces, found, " in the conditions of the start")
 
 
@@ -200,4 +209,4 @@ def held_at_start(case: Case, floating: Mapping[str, float] | None = None) -> Ca
         for n, s in case.spaces.items()
     }
     surfaces = {n: value_at(b.temperature, 0.0) for n, b in enumerate(case.boundary) if b.temperature is not None}
-    return held(case, spaces | dict(floating or {}), surfaces)
+    return at_moment(held(case, spaces | dict(floating or {}), surfaces), 0.0)

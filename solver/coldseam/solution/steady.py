@@ -160,6 +160,8 @@ def solve_on(case: Case, mesh: Mesh, before: Steady | None = None) -> Steady:
         start = None if before is None else interpolate(before.mesh, before.temperature[:, None], mesh.points)[:, 0]
         settled = settle(case, mesh, facet_boundary, given, operator, start)
         given = settled.given
+        if given.turned:
+            operator, weights = node_operator(mesh, given)
         network = node_network(mesh, given, operator)
     alike = before is not None and before.response.network.has_load == network.has_load  # as many unit fields
     guess = _from(before, mesh) if alike else None

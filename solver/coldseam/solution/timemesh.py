@@ -19,7 +19,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 from scipy.spatial import cKDTree
 
-from coldseam.case.overtime import held
+from coldseam.case.overtime import held, held_radiation, radiant_schedules
 from coldseam.case.schedules import span_of
 from coldseam.mesh.types import Mesh
 from coldseam.solution.adapt import size_field
@@ -38,20 +38,21 @@ RELAX = 1.2
 def held_at_extremes(case: Case) -> Case:
     """Return a steady case at the largest temperature differences: spaces alternately at the ends of what they reach.
 
-    Spaces and surfaces are taken at the end of their range that lies farther from the middle of all of them; a
-    floating space at its setpoint, or else at its start.
+    Spaces and surfaces, and what they radiate to, are taken at the end of their range that lies farther from the middle
+    of all of them; a floating space at its setpoint, or else at its start; the sun at its strongest.
     """
     ranges = {name: _range(case, name) for name in case.spaces}
     surfaces = {n: span_of(b.temperature) for n, b in enumerate(case.boundary) if b.temperature is not None}
-    every = [*ranges.values(), *surfaces.values()]
+    every = [*ranges.values(), *surfaces.values(), *(schedule.span for schedule in radiant_schedules(case))]
     middle = 0.5 * (min(low for low, _ in every) + max(high for _, high in every))
 
     def far(span: tuple[float, float]) -> float:
         return max(span, key=lambda value: abs(value - middle))
 
-    return held(
+    steady = held(
         case, {name: far(span) for name, span in ranges.items()}, {n: far(span) for n, span in surfaces.items()}
     )
+    return held_radiation(steady, lambda schedule: far(schedule.span), lambda schedule: schedule.span[1])
 
 
 def _range(case: Case, name: str) -> tuple[float, float]:
@@ -106,7 +107,7 @@ def sizes_over_time(case: Case, solution: Solution) -> tuple[np.ndarray, float]:
     centres = mesh.points[mesh.cells].mean(axis=1)
     active = (steady.given.terminal >= 0) | (steady.given.flux != 0)
     distance = _distance(mesh, mesh.facets[active], centres)
-    diffusivity = steady.given.conductivity / volumetric_capacity(case, mesh)
+    diffusivity = steady.given.conductivity / volumetric_capacity(case, mesh, float(steady.temperature.mean()))
     growth = GROWTH * np.sqrt(np.clip(case.model.accuracy / 0.01, 0.1, 2.0))
     wanted = LENGTH * np.sqrt(diffusivity * case.time.record) + growth * distance
     most = case.model.max_nodes or MOST_NODES[mesh.dim]

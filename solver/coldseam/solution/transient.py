@@ -15,6 +15,7 @@ import numpy as np
 from coldseam.errors import SolveError
 from coldseam.physics.melting import HeatContent
 from coldseam.solution.causes import Causes
+from coldseam.solution.coefficients import Coefficients
 from coldseam.solution.events import Happened, Watch, first_crossing
 from coldseam.solution.heatsystem import HeatSystem
 from coldseam.solution.record import Column, Gauges, Weights, flows_at
@@ -102,6 +103,12 @@ class History:
         Heat content where bodies melt, or None.
     solver
         Method and counts of the linear solver.
+    reached
+        Lowest and highest temperature of every node, °C, (2, n_nodes).
+    coefficients
+        Films, air gaps and conductivities at the end; None where none depend on the temperatures.
+    strayed
+        Warnings of boundaries whose films left their correlations' ranges.
     """
 
     system: HeatSystem
@@ -118,8 +125,11 @@ class History:
     throughput: float
     tolerance: float
     work: Work
+    reached: np.ndarray
     phase: HeatContent | None = None
     solver: dict[str, object] = field(default_factory=dict)
+    coefficients: Coefficients | None = None
+    strayed: tuple[str, ...] = ()
 
     @property
     def relative_closure(self) -> float:
@@ -144,7 +154,8 @@ class Transient:
     phase
         Heat content where bodies melt.
     refresh
-        Called with the state before every step; returns a new system when coefficients have changed, else None.
+        Called with state and length of every step to be tried; returns a new system when coefficients have changed,
+        else None.
     on_field
         Called with time (s) and node temperatures (°C) at every time after 0 that a field is asked for.
     weights
@@ -172,6 +183,7 @@ class Transient:
         self.totals = Totals(*(np.zeros(len(channels(system))) for _ in range(3)))
         self.initial = initial
         self.state = self._settled(initial)
+        self.reached = np.stack([self.state.temperature, self.state.temperature])
         self.ends = [*system.corners(0.0, self.duration), self.duration]
         self.longest = min(time.longest_step or np.inf, self.duration / LONGEST)
         self.rung = self._first_rung()
@@ -204,10 +216,10 @@ class Transient:
         """
         if self.status != "running":
             raise ValueError(f"the run is {self.status}")
-        self._refresh()
         end = next(e for e in self.ends if e > self.time * (1 + 1e-14) + 1e-12)
         while True:
             h = self._length(end)
+            self._refresh(h)
             try:
                 step = self.stepper.attempt(self.state, h)
                 error = step.error
@@ -240,7 +252,10 @@ class Transient:
         heat_in, stored = self._heat_in(), float(nodes.sum() + spaces.sum())
         outside = self._outside_channels()
         crossed = float(self.totals.magnitude[outside].sum()) + abs(self.system.source_flow) * self.time
-        through = 0.5 * (crossed + float(np.abs(nodes).sum() + np.abs(spaces).sum()))  # inside, or from outside
+        # What would move all temperatures by a hundredth of a step's tolerance is the least, or a run at rest fails.
+        least = 1e-2 * self.tolerance * float(self.system.whole.capacity.sum())
+        inside = float(np.abs(nodes).sum() + np.abs(spaces).sum())
+        through = max(0.5 * (crossed + inside), least)
         history = History(
             system=self.system.whole,
             columns=tuple(self.gauges.columns()),
@@ -257,6 +272,9 @@ class Transient:
             tolerance=self.tolerance,
             work=self.work,
             phase=self.phase,
+            reached=self.reached,
+            coefficients=None if self.refresh is None else self.refresh.told(self.state),
+            strayed=() if self.refresh is None else tuple(self.refresh.strayed.values()),
             solver={
                 "method": self.solver.method,
                 "factorisations": self.solver.factorisations,
@@ -295,8 +313,8 @@ class Transient:
             running=running,
         )
 
-    def _refresh(self) -> None:
-        changed = None if self.refresh is None else self.refresh(self.state)
+    def _refresh(self, h: float) -> None:
+        changed = None if self.refresh is None else self.refresh(self.state, h)
         if changed is not None:
             self.adopt(changed)
 
@@ -335,6 +353,8 @@ class Transient:
             if found is not None and stop:
                 s, stopped, switch = (found - step.start.time) / step.h, True, None
                 state = self.stepper.at(step, s)
+        held = self.causes.held(state)
+        self.reached = np.stack([np.minimum(self.reached[0], held), np.maximum(self.reached[1], held)])
         self._integrate(step, s, state)
         self._record(step, s, state)
         self.work.steps += 1

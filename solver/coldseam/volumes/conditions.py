@@ -54,7 +54,8 @@ class Conditions:
     conductivity
         Scalar conductivity of every cell, W/(m K), shape (n_cells,).
     tensors
-        Unit conductivity tensor of every body, (n_bodies, dim, dim), or None when all are isotropic.
+        Unit conductivity tensor of every body, (n_bodies, dim, dim), or None when all are isotropic; of every cell,
+        (n_cells, dim, dim), where laws over temperature change it.
     source
         Heat per volume of every cell, W/m³, shape (n_cells,).
     film
@@ -71,6 +72,8 @@ class Conditions:
         Conductance of the contact at every link, W/(m² K), shape (n_links,).
     clashes
         Pairs of terminals that touch at different fixed temperatures: the flow there is unbounded.
+    turned
+        Whether tensors are of cells.
     """
 
     conductivity: np.ndarray
@@ -85,6 +88,11 @@ class Conditions:
     link_conductance: np.ndarray
     clashes: tuple[tuple[int, int], ...]
     sheet_number: np.ndarray | None = None
+    turned: bool = False
+
+    def tensor_of(self, mesh: Mesh) -> np.ndarray:
+        """Return which of the tensors every cell has, (n_cells,)."""
+        return np.arange(mesh.n_cells) if self.turned else mesh.cell_body
 
     @property
     def uneven(self) -> bool:

@@ -204,7 +204,7 @@ def _loads(mesh, given, cell_facets, exterior, n) -> tuple[np.ndarray, np.ndarra
         heat = given.source * measure * weight
         load += np.bincount(cell_facets.ravel(), np.repeat(heat / (dim + 1), dim + 1), n)
         arms = mesh.points[mesh.cells] - mesh.points[mesh.cells].mean(axis=1, keepdims=True)
-        inverse = np.eye(dim)[None] if given.tensors is None else np.linalg.inv(given.tensors)[mesh.cell_body]
+        inverse = np.eye(dim)[None] if given.tensors is None else np.linalg.inv(given.tensors)[given.tensor_of(mesh)]
         spread = np.einsum("cia,cab,cib->c", arms, np.broadcast_to(inverse, (mesh.n_cells, dim, dim)), arms)
         moment = measure * weight * spread / ((dim + 1) * (dim + 2))
         energy = (given.source / dim) ** 2 * moment / given.conductivity

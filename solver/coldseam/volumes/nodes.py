@@ -21,7 +21,7 @@ from coldseam.volumes.sheets import laplacian, sheet_laplacian, sheet_weights
 
 def node_operator(mesh: Mesh, given: Conditions) -> tuple[EdgeOperator, np.ndarray]:
     """Return the operator P of a mesh and its cells' plain edge weights (3 or 6, n_cells)."""
-    weights = cell_weights(mesh, given.tensors)
+    weights = cell_weights(mesh, given.tensors, tensor_of=given.tensor_of(mesh))
     radius = cell_radius(mesh)
     return edge_operator(mesh, weights if radius is None else weights * radius), weights
 
@@ -39,6 +39,8 @@ def node_network(mesh: Mesh, given: Conditions, operator: EdgeOperator) -> Netwo
         From :func:`node_operator`.
     """
     n = mesh.n_nodes
+    if given.turned:  # the operator is of other tensors
+        operator = node_operator(mesh, given)[0]
     matrix = operator.matrix(given.conductivity)
     for extra in (sheet_matrix(mesh, given), link_matrix(mesh, given)):
         if extra is not None:

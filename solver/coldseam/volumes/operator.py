@@ -71,7 +71,12 @@ def cell_pairs(dim: int) -> np.ndarray:
     return np.array(_PAIRS[dim])
 
 
-def cell_weights(mesh: Mesh, tensors: np.ndarray | None = None, scale: np.ndarray | None = None) -> np.ndarray:
+def cell_weights(
+    mesh: Mesh,
+    tensors: np.ndarray | None = None,
+    scale: np.ndarray | None = None,
+    tensor_of: np.ndarray | None = None,
+) -> np.ndarray:
     """Return the edge weights w_cij of every cell.
 
     Parameters
@@ -82,6 +87,8 @@ def cell_weights(mesh: Mesh, tensors: np.ndarray | None = None, scale: np.ndarra
         Unit conductivity tensor of every body, shape (n_bodies, dim, dim); None when all are isotropic.
     scale
         A factor for every cell, shape (n_cells,), for the turn of an axisymmetric section.
+    tensor_of
+        Which of the tensors every cell has, shape (n_cells,); that of its body if not given.
 
     Returns
     -------
@@ -91,10 +98,11 @@ def cell_weights(mesh: Mesh, tensors: np.ndarray | None = None, scale: np.ndarra
     kernel = _triangle_weights if mesh.dim == 2 else _tetrahedron_weights
     weights = np.empty((len(_PAIRS[mesh.dim]), mesh.n_cells))
     coordinates = np.ascontiguousarray(mesh.points.T)
+    tensor_of = mesh.cell_body if tensor_of is None else tensor_of
     for start in range(0, mesh.n_cells, CHUNK):  # a loop over chunks, not over cells
         part = slice(start, min(start + CHUNK, mesh.n_cells))
         corners = np.take(coordinates, np.ascontiguousarray(mesh.cells[part].T), axis=1)
-        tensor = None if tensors is None else np.moveaxis(tensors[mesh.cell_body[part]], 0, -1)
+        tensor = None if tensors is None else np.moveaxis(tensors[tensor_of[part]], 0, -1)
         kernel(corners, tensor, weights[:, part])
     if scale is not None:
         weights *= scale
