@@ -29,7 +29,7 @@ def answers(text: str):
     )
     while made.status == "running":
         made.step()
-    return timed_answers(made.result(), {}, {}, (), {}), made
+    return timed_answers(made.result(), {}, (), {}), made
 
 
 def test_films_at_the_end_stand_in_the_answers():

@@ -104,7 +104,7 @@ class History:
     solver
         Method and counts of the linear solver.
     reached
-        Lowest and highest temperature of every node, °C, (2, n_nodes); of a run in a reduced model only the start's.
+        Lowest and highest temperature of every node, °C, (2, n_nodes).
     coefficients
         Films, air gaps and conductivities at the end; None where none depend on the temperatures.
     strayed
@@ -183,7 +183,7 @@ class Transient:
         self.totals = Totals(*(np.zeros(len(channels(system))) for _ in range(3)))
         self.initial = initial
         self.state = self._settled(initial)
-        self.reached = np.stack([system.expand(self.state.temperature)] * 2)
+        self.reached = np.stack([self.state.temperature, self.state.temperature])
         self.ends = [*system.corners(0.0, self.duration), self.duration]
         self.longest = min(time.longest_step or np.inf, self.duration / LONGEST)
         self.rung = self._first_rung()
@@ -353,9 +353,8 @@ class Transient:
             if found is not None and stop:
                 s, stopped, switch = (found - step.start.time) / step.h, True, None
                 state = self.stepper.at(step, s)
-        if self.system.whole is self.system:  # a reduced model stands for no laws, whose ranges this is for
-            held = self._read(state)
-            self.reached = np.stack([np.minimum(self.reached[0], held), np.maximum(self.reached[1], held)])
+        held = self.causes.held(state)
+        self.reached = np.stack([np.minimum(self.reached[0], held), np.maximum(self.reached[1], held)])
         self._integrate(step, s, state)
         self._record(step, s, state)
         self.work.steps += 1
