@@ -251,7 +251,7 @@ def test_coefficients_may_follow_the_temperature():
     double = with_conditions(
         plain.system, replace(plain.system.given, conductivity=2.0 * plain.system.given.conductivity)
     )
-    changed = run_on(mesh, slab_text(film=1, tolerance=1e-3), refresh=lambda state: double)
+    changed = run_on(mesh, slab_text(film=1, tolerance=1e-3), refresh=lambda state, h: double)
     expected = run_on(mesh, slab_text(film=1, k=2, tolerance=1e-3))
     assert changed.column("probe", "centre") == pytest.approx(expected.column("probe", "centre"), abs=2e-3)
     assert changed.relative_closure < 1e-10

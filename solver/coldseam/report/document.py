@@ -159,6 +159,10 @@ def digest(content: str) -> str:
 def cautions(case: Case) -> Markup:
     """Return the cautions that the case file itself gives, and what no such computation covers."""
     own = given.cautions_of(case)
-    told = joined([tag("h3", "From the case file"), tag("ul", [tag("li", tag("bdi", each)) for each in own])]) if own else ""
+    told = (
+        joined([tag("h3", "From the case file"), tag("ul", [tag("li", tag("bdi", each)) for each in own])])
+        if own
+        else ""
+    )
     general = [tag("h3", "Of this kind of computation"), tag("ul", [tag("li", each) for each in NOT_COVERED])]
     return joined([told, *general])

@@ -183,7 +183,7 @@ class Transient:
         self.totals = Totals(*(np.zeros(len(channels(system))) for _ in range(3)))
         self.initial = initial
         self.state = self._settled(initial)
-        self.reached = np.stack([self.state.temperature, self.state.temperature])
+        self.reached = np.stack([self._read(self.state)] * 2)
         self.ends = [*system.corners(0.0, self.duration), self.duration]
         self.longest = min(time.longest_step or np.inf, self.duration / LONGEST)
         self.rung = self._first_rung()
@@ -353,8 +353,9 @@ class Transient:
             if found is not None and stop:
                 s, stopped, switch = (found - step.start.time) / step.h, True, None
                 state = self.stepper.at(step, s)
-        held = self.causes.held(state)
-        self.reached = np.stack([np.minimum(self.reached[0], held), np.maximum(self.reached[1], held)])
+        if self.refresh is not None or self.phase is not None:  # else no law has a range to leave
+            read = self._read(state)
+            self.reached = np.stack([np.minimum(self.reached[0], read), np.maximum(self.reached[1], read)])
         self._integrate(step, s, state)
         self._record(step, s, state)
         self.work.steps += 1
