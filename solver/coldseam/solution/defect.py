@@ -8,8 +8,9 @@ reduced run's residual as the only heat,
 and likewise e_y of the spaces, whose own balances have no residual. r is integrated over intervals with the stepper's
 own weights, so that what it does between two moments can't be missed and the step's own error is not taken for the
 basis's. Then e is stepped by implicit Euler over these intervals, with a few kept factors: one solve of the full system
-each. Intervals grow in a ladder from the start and from the largest jumps, where a basis is worst, and keep to the bends
-of the first schedules' pieces; everything else is gathered in long ones. Implicit Euler smears and meets the worst
+each. Intervals grow in a ladder from the start, from the largest jumps, where a basis is worst, and late in the run where
+a machine may go on and off; they keep to the first bends after these. What lies between is gathered in long ones, whose
+means hide what alternates within: the same inputs have been seen closely before. Implicit Euler smears and meets the worst
 moment only by chance, hence SAFETY; on runs compared with full stepping the estimate without it was off by a factor of
 2 at most (tests/solution/test_reduced.py compares again). What it does not tell: where the error of a step lies at a
 threshold, either run may take a longer step than the other and a thermostat switch a little earlier, which moves the
@@ -32,6 +33,8 @@ EACH = 3
 """Intervals of one length before the next longer one."""
 WINDOWS = 2
 """Jumps besides the start from which intervals begin short again."""
+LATE = 0.75
+"""Part of the run after which intervals begin short once more where a machine may switch on and off."""
 PIECES = 8
 """Bends after the start or such a jump at which intervals end: a period of a sine (``CORNERS_OF_A_SINE``)."""
 QUIET = 0.01  # of the mean flow: boundaries' errors are relative to no less
@@ -118,7 +121,8 @@ def intervals_of(
         return float(np.abs(system.terminals(bend) - system.terminals(bend, before=True)).max(initial=0.0))
 
     largest = sorted(inner, key=lambda bend: (-jump(bend), abs(bend - 0.5 * duration)))[:WINDOWS]
-    starts = [0.0, *sorted(largest), duration]
+    late = [LATE * duration] if any(machine is not None for machine in system.spaces.machines) else []
+    starts = sorted({0.0, *largest, *late, duration})
     found: list[Interval] = []
     for start, end in zip(starts[:-1], starts[1:], strict=True):
         cuts = [bend for bend in inner if start < bend < end][:PIECES]

@@ -148,9 +148,9 @@ class Gauges:
         room = [spaces.temperature_of(name, state.y, state.time, before=True) for name in case.spaces]
         t = state.temperature
         surface = self.surface @ t
-        read = [self.probes @ t, np.minimum.reduceat(surface, self.starts), self.mean @ t]
-        read = self.causes.within(np.concatenate([*read, np.maximum.reduceat(surface, self.starts)]), state)
-        found = [room, state.y[len(spaces.names) :], read]
+        coldest, warmest = (pick.reduceat(surface, self.starts) for pick in (np.minimum, np.maximum))
+        read = self.causes.within(np.concatenate([self.probes @ t, coldest, self.mean @ t, warmest]), state)
+        found = [np.array(room), state.y[len(spaces.names) :], read]
         if self.phase is not None and self.fronts is not None:
             nodes = self.causes.within(t, state)
             found += [self.phase.melted(nodes), self.fronts.extents(nodes).ravel() * MM]

@@ -275,8 +275,8 @@ def _searched(run: Transient, solver: StageSolver, vectors: np.ndarray, lengths:
             f"reduced model of {vectors.shape[1]} unknowns, off by {found.largest:.2g} K ({allowed:.2g} K allowed)",
         )
         why = ""
-        if worst > 1.0:
-            if turn == MOST_ROUNDS or worst > SLOW * before:
+        if not worst <= 1.0:  # nor where it is not a number
+            if turn == MOST_ROUNDS or not worst <= SLOW * before:
                 why = f"its error stayed at {found.largest:.2g} K"
             elif vectors.shape[1] >= MOST_VECTORS:
                 why = f"{vectors.shape[1]} vectors were not enough"
