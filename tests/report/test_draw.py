@@ -132,7 +132,7 @@ def test_model_of_a_case(view, tmp_path):
     rows = [(*row[:3], pytest.approx(row[3])) for row in picture.table.rows]
     assert rows == [
         ("cold", "space", "freezer", 0.8),
-        ("hot plate", "heat_flux", None, 0.4),
+        ("hot plate", "heat flux", None, 0.4),
         ("cut", "adiabatic", None, 0.4),
     ]
 
