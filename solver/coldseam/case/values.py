@@ -41,7 +41,9 @@ class Amount:
     def read(self, value: Any, context: Context) -> float:
         """Return the value in SI units; ValueError says what would be accepted."""
         if isinstance(value, dict):
-            raise ValueError("a value that changes (a table) is not supported yet; this version takes one constant")
+            raise ValueError(
+                f"takes one number, or text with its unit; a table of keys is not accepted here{self.hint}"
+            )
         number = parse(self.quantity(context), value)
         wrong = (
             f"must be above {self.above:g}" if self.above is not None and number <= self.above
