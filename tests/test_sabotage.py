@@ -158,7 +158,7 @@ def test_a_radius_that_does_not_count_is_noticed(monkeypatch):
 def test_wrong_heat_capacities_are_noticed(monkeypatch, factor):
     """Over time; 3 % shift the temperatures of a half-space by more than the accuracy asked."""
     honest = heatsystem.node_capacities
-    monkeypatch.setattr(heatsystem, "node_capacities", lambda case, mesh: factor * honest(case, mesh))
+    monkeypatch.setattr(heatsystem, "node_capacities", lambda *given: factor * honest(*given))
     assert notices("half-space-with-film")
 
 

@@ -229,3 +229,10 @@ def test_importing_the_models_is_light():
     code = f"import sys; sys.path.insert(0, {root!r}); {code}"
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert done.stdout.strip() == "[]"
+
+
+def test_more_copies_than_can_be_meshed_are_refused(tmp_path):
+    """Not tried for hours: 200 000 by 200 000 bolts."""
+    text = (SHIPPED / "freezer-panel.toml").read_text().replace("count = [2, 2]", "count = [200000, 200000]", 1)
+    with pytest.raises(CaseError, match="40 000 000 000 copies; at most 10 000"):
+        read.loads(text)

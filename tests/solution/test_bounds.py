@@ -13,7 +13,7 @@ from coldseam.case import read
 from coldseam.errors import SolveError
 from coldseam.solution import bounds as bounds_module
 from coldseam.solution import linear
-from coldseam.solution.bounds import bounds_of, check_gap, facet_temperatures, local_gap, prove
+from coldseam.solution.bounds import bounds_of, check_gap, facet_fields, local_gap, prove
 from coldseam.solution.linear import MultigridSolver, facet_hierarchy, node_hierarchy
 from coldseam.solution.respond import respond
 from coldseam.volumes.facets import facet_system
@@ -175,7 +175,7 @@ def test_small_sections_are_factorised_once_a_network(monkeypatch):
 def test_the_facets_tell_the_nodes_a_layered_wall_exactly():
     """Piecewise linear: both networks hold it to rounding, and the jump of the conductivity (1 to 5) blurs no interface."""
     steady = study.run(read.load(PUBLISHED / "two-layers.toml")).solution.steady
-    told = steady.reference + facet_temperatures(steady.mesh, steady.given, steady.bounds, steady.state)
+    told = steady.reference + facet_fields(steady.mesh, steady.given, steady.bounds) @ steady.state
     assert told == pytest.approx(steady.temperature, abs=1e-6)
 
 
@@ -184,7 +184,7 @@ def test_read_temperatures_are_the_mean_of_both_networks_and_nearer():
     case = read.replace(read.load(PUBLISHED / "iso10211-case-4.toml"), "model.accuracy", 0.02)
     steady = study.run(case).solution.steady
     end = int(np.argmax(np.where(np.isclose(steady.mesh.points[:, 2], 0.0), steady.temperature, -np.inf)))
-    facets = steady.reference + facet_temperatures(steady.mesh, steady.given, steady.bounds, steady.state)[end]
+    facets = steady.reference + (facet_fields(steady.mesh, steady.given, steady.bounds) @ steady.state)[end]
     assert steady.temperature[end] < 0.805 < facets
     assert steady.read_temperature[end] == pytest.approx(0.5 * (steady.temperature[end] + facets))
     assert abs(steady.read_temperature[end] - 0.805) < 0.5 * abs(steady.temperature[end] - 0.805)

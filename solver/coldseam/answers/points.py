@@ -36,7 +36,7 @@ def weighting(steady: Steady) -> dict[str, dict[str, dict]]:
     if steady.case.probe:
         at = np.array([probe.at for probe in steady.case.probe], dtype=float)
         cells, weights = locate(steady.mesh, at)
-        unit = (steady.response.fields[steady.mesh.cells[cells]] * weights[:, :, None]).sum(axis=1)
+        unit = (steady.read_fields[steady.mesh.cells[cells]] * weights[:, :, None]).sum(axis=1)
         for probe, row, point in zip(steady.case.probe, unit, at, strict=True):
             found["probes"][probe.name] = _entry(steady, points, row, point)
     for number, boundary in enumerate(steady.case.boundary):
@@ -45,7 +45,7 @@ def weighting(steady: Steady) -> dict[str, dict[str, dict]]:
         nodes = np.unique(steady.mesh.facets[steady.facet_boundary == number])
         values = steady.read_temperature[nodes]
         found["surfaces"][boundary.name] = {
-            which: _entry(steady, points, steady.response.fields[node], steady.mesh.points[node])
+            which: _entry(steady, points, steady.read_fields[node], steady.mesh.points[node])
             for which, node in (("coldest", nodes[np.argmin(values)]), ("warmest", nodes[np.argmax(values)]))
         }
     return found

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator
 from typing import Annotated, Any, ClassVar, Literal, NamedTuple
 
@@ -11,6 +12,7 @@ from coldseam.case.tables import Context, Table, Trouble, context_of, fail, list
 from coldseam.case.values import Amount, Length, MaterialRef, Pair, Ref, Size, SizeOrZero, Vector
 
 AXES = ("x", "y", "z")
+MOST_COPIES = 10_000  # of one body; each is a solid of its own for the mesher
 FACES = ("-x", "+x", "-y", "+y", "-z", "+z")
 
 
@@ -287,6 +289,9 @@ class Repeat(Table):
         """Yield mismatched lists and steps of no length."""
         if not self.step or len(self.step) != len(self.count):
             yield ("count",), f"needs one number for each of the {len(self.step)} vectors in step"
+        copies = math.prod(self.count)
+        if copies > MOST_COPIES:
+            yield ("count",), f"makes {copies:_} copies; at most {MOST_COPIES:_} can be meshed".replace("_", " ")
         for position, vector in enumerate(self.step):
             if not any(vector):
                 yield ("step", position), "the step has no length"

@@ -121,29 +121,26 @@ def bounds_of(mesh: Mesh, given: Conditions, system: FacetSystem, nodes: Respons
     )
 
 
-def facet_temperatures(mesh: Mesh, given: Conditions, bounds: Bounds, state: np.ndarray) -> np.ndarray:
-    """Return the facet field at the nodes, K above the reference, (n_nodes,); NaN where it tells nothing.
+def facet_fields(mesh: Mesh, given: Conditions, bounds: Bounds) -> np.ndarray:
+    """Return the facet network's unit fields at the nodes, K per K, (n_nodes, n_terminals [+ 1]); NaN where they tell nothing.
 
-    It is linear in every cell; a node gets the mean of its cells, each by volume times conductivity: across a jump of the
+    They are linear in every cell; a node gets the mean of its cells, each by volume times conductivity: across a jump of the
     conductivity the better conductor's value holds, where the field is smooth (the averaging of Ainsworth 2005, SIAM J.
     Numer. Anal. 42, 2320; from memory). Cells that the facet network leaves out along an axis have no say.
-
-    Parameters
-    ----------
-    state
-        Terminal temperatures and load scale, (n_terminals [+ 1],).
     """
-    system = bounds.facets
-    values = (system.spread @ (bounds.response.fields @ state))[system.cell_facets]
-    at_corner = values.sum(axis=1, keepdims=True) - mesh.dim * values  # facet k lies opposite node k
     weight = cell_measure(mesh) * given.conductivity
     harmonic = harmonic_radius_of_cells(mesh)
     if harmonic is not None:
         weight = np.where(harmonic > 0.0, weight, 0.0)
     weight, corners = np.repeat(weight, mesh.dim + 1), mesh.cells.ravel()
     total = np.bincount(corners, weight, mesh.n_nodes)
-    summed = np.bincount(corners, weight * at_corner.ravel(), mesh.n_nodes)
-    return np.divide(summed, total, out=np.full(mesh.n_nodes, np.nan), where=total > 0.0)
+    fields = np.full((mesh.n_nodes, bounds.response.fields.shape[1]), np.nan)
+    for number, field in enumerate((bounds.facets.spread @ bounds.response.fields).T):
+        values = field[bounds.facets.cell_facets]
+        at_corner = values.sum(axis=1, keepdims=True) - mesh.dim * values  # facet k lies opposite node k
+        summed = np.bincount(corners, weight * at_corner.ravel(), mesh.n_nodes)
+        np.divide(summed, total, out=fields[:, number], where=total > 0.0)
+    return fields
 
 
 def facet_solver(system: FacetSystem, nodes: Response, dim: int, uneven: bool):

@@ -16,6 +16,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from coldseam.errors import CaseError, Fault
 from coldseam.mesh.locate import locate
 from coldseam.mesh.types import Mesh, SizeField
 from coldseam.solution.adapt import refine_near, size_field, wanted_sizes
@@ -248,11 +249,23 @@ def _relative_gap(steady: Steady) -> float | None:
 
 
 def watched_points(steady: Steady) -> dict[tuple, tuple[np.ndarray, float]]:
-    """Return place (m) and temperature (°C) of every probe and of each facing surface's extremes."""
+    """Return place (m) and temperature (°C) of every probe and of each facing surface's extremes.
+
+    Raises
+    ------
+    CaseError
+        A probe lies outside the model.
+    """
     watched: dict[tuple, tuple[np.ndarray, float]] = {}
     if steady.case.probe:
         at = np.array([probe.at for probe in steady.case.probe], dtype=float)
         cells, weights = locate(steady.mesh, at)
+        outside = [
+            Fault(path=("probe", int(n), "at"), what=f'the probe "{steady.case.probe[n].name}" lies outside the model')
+            for n in np.flatnonzero(cells < 0)
+        ]
+        if outside:
+            raise CaseError(outside)
         values = (steady.read_temperature[steady.mesh.cells[cells]] * weights).sum(axis=1)
         for probe, place, value in zip(steady.case.probe, at, values, strict=True):
             watched["probe", probe.name] = (place, float(value))
