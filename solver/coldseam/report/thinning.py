@@ -1,7 +1,7 @@
 """A mesh with fewer cells for the viewer of a report.
 
-Nodes are merged into a neighbour (half-edge collapse), many at once: in every round from among those round which the
-temperature is smoothest, no two in one cell. A merge is made only if every cell it changes keeps a part of its
+Nodes are merged into a neighbour (half-edge collapse), many at once: every round draws nodes, no two in one cell, and merges
+those round which the temperature is smoothest. All work of a round is on the cells round the nodes drawn. A merge is made only if every cell it changes keeps a part of its
 volume and the volume of all of them together stays what it was, and a node on a face between bodies or on a
 boundary goes only to a node on all of its planes. So no part changes its shape, no name is lost, and what was a tiling stays one.
 The temperatures kept are those solved; the largest difference at the nodes left out is measured and told.
@@ -21,8 +21,12 @@ MOST_ROUNDS = 40
 LEAST_GAIN = 0.01
 """Part of the cells that a round must save; after ``PATIENCE`` rounds that save less no more follow."""
 PATIENCE = 3
-SMOOTHEST = 0.4
-"""Part of the nodes that could be merged, the smoothest in temperature, that one round considers."""
+SMOOTHEST = 0.6
+"""Part of the nodes that could be merged, the smoothest in temperature, that one round merges."""
+CHOICES = 3
+"""Times that candidates are drawn among the nodes with no candidate around them."""
+TRIES = 4
+"""Neighbours that a candidate tries, the nearest first."""
 KEEPS = 0.05
 """Part of its volume that a changed cell must keep."""
 NEAR = (24, 400)
@@ -72,11 +76,12 @@ def thinned(view: View, most: int = MOST_CELLS) -> Thinned:
     if mesh.dim == 2 or mesh.n_cells <= most:
         return thin
     temperature = np.asarray(view.temperature, dtype=float)
-    fixed = _linked_nodes(mesh.links, mesh.n_nodes)
+    planes = _planes_of_nodes(thin)
+    free = ~_linked_nodes(mesh.links, mesh.n_nodes) & (planes.many <= 2)
     idle = 0
     for turn in range(MOST_ROUNDS):
         before = len(thin.cells)
-        thin = _merge(thin, temperature, fixed, before - most, turn)
+        thin = _merge(thin, temperature, planes, free, before - most, turn)
         idle = idle + 1 if len(thin.cells) > (1 - LEAST_GAIN) * before else 0
         if len(thin.cells) <= most or idle == PATIENCE:
             break
@@ -91,77 +96,137 @@ def _linked_nodes(links: np.ndarray | None, count: int) -> np.ndarray:
     return fixed
 
 
-def _merge(thin: Thinned, temperature: np.ndarray, fixed: np.ndarray, surplus: int, turn: int) -> Thinned:
-    """Return the mesh after one round of merges; node numbers stay those of the whole mesh.
-
-    A node tries one neighbour a round, the nearest first, the next nearest in the next ``turn``.
-    """
+def _merge(
+    thin: Thinned, temperature: np.ndarray, planes: _Planes, free: np.ndarray, surplus: int, turn: int
+) -> Thinned:
+    """Return the mesh after one round of merges; node numbers stay those of the whole mesh."""
     cells, points = thin.cells, thin.points
-    start, end = _edges(cells)
-    allowed = _on_all_planes(thin, start, end) & ~fixed[start]
-    start, end = start[allowed], end[allowed]
-    length = np.linalg.norm(points[start] - points[end], axis=1)
-    order = np.lexsort((end, length, start))
-    start, end = start[order], end[order]
-    first = np.flatnonzero(np.diff(start, prepend=-1))
-    several = np.diff(first, append=len(start))
-    target = np.full(len(points), -1)
-    target[start[first]] = end[first + turn % np.maximum(several, 1)]
-    rank = np.full(len(points), np.iinfo(np.int64).max)
-    nodes = np.flatnonzero(_stays_valid(cells, points, target))
-    rough = _roughness(cells, points, temperature, target)[nodes]
-    smooth = rough <= np.quantile(rough, SMOOTHEST) if len(nodes) else np.zeros(0, dtype=bool)
-    nodes = nodes[smooth]
-    # Ranked by chance, always the same: ranked by roughness, which varies evenly, few nodes would be first of all round them.
-    rank[nodes] = np.random.default_rng(turn).permutation(len(nodes))
-    chosen = _apart(cells, rank, len(points)) & (rank < np.iinfo(np.int64).max)
-    nodes = np.flatnonzero(chosen)
-    nodes = nodes[np.argsort(rank[nodes])][: max(1, surplus // 4)]  # a merge saves some five cells
+    column = _apart(cells, free, turn)
+    rows = np.flatnonzero(column >= 0)
+    node = cells[rows, column[rows]]
+    # Each row is a cell round its one candidate, which stands first.
+    star = np.take_along_axis(cells[rows], (column[rows, None] + np.arange(4)) % 4, axis=1)
+    # Turning four corners by one or three places is odd: two of the others change places so that volumes stay positive.
+    odd = column[rows] % 2 == 1
+    star[odd, 2], star[odd, 3] = star[odd, 3], star[odd, 2].copy()
+    target = _targets(star, points, planes)
+    nodes = np.flatnonzero(target >= 0)
+    if not len(nodes):
+        return thin
+    rough = _roughness(star, points, temperature, target)[nodes]
+    saved = np.bincount(node[(star[:, 1:] == target[node][:, None]).any(axis=1)], minlength=len(points))[nodes]
+    order = np.argsort(rough, kind="stable")[: max(1, round(SMOOTHEST * len(nodes)))]
+    order = order[: np.searchsorted(np.cumsum(saved[order]), surplus) + 1]
     move = np.arange(len(points))
-    move[nodes] = target[nodes]
-    kept = _distinct(move[cells])
+    move[nodes[order]] = target[nodes[order]]
+    kept = np.ones(len(cells), dtype=bool)
+    kept[rows] = ~(star[:, 1:] == move[node][:, None]).any(axis=1)
     facets = move[thin.facets]
     whole = _distinct(facets)
-    return replace(thin, cells=move[cells][kept], body=thin.body[kept], flux=thin.flux[kept], facets=facets[whole],
+    return replace(thin, cells=move[cells[kept]], body=thin.body[kept], flux=thin.flux[kept], facets=facets[whole],
                    facet_boundary=thin.facet_boundary[whole])  # fmt: skip
 
 
-def _edges(cells: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """Return all edges of tetrahedra in both directions."""
-    pairs = np.concatenate([cells[:, [i, j]] for i in range(4) for j in range(4) if i != j])
-    count = int(cells.max()) + 1
-    code = np.unique(pairs[:, 0].astype(np.int64) * count + pairs[:, 1])
-    return code // count, code % count
+def _apart(cells: np.ndarray, free: np.ndarray, turn: int) -> np.ndarray:
+    """Return which corner of each cell is a candidate, shape (m,), -1 for none: free nodes by chance, no two in a cell."""
+    last = np.iinfo(np.int32).max
+    rank = np.full(len(free), last, dtype=np.int32)
+    nodes = np.flatnonzero(free)
+    # By chance, always the same: by roughness, which varies evenly, few nodes would be first of all round them.
+    rank[nodes] = np.random.default_rng(turn).permutation(len(nodes))
+    around = np.bincount(cells.ravel(), minlength=len(free))
+    chosen = np.full(len(free), False)
+    for _ in range(CHOICES):
+        ranked = rank[cells]
+        best = cells[np.arange(len(cells)), ranked.argmin(axis=1)]
+        new = (np.bincount(best, minlength=len(free)) == around) & (rank < last)
+        chosen |= new
+        rank[cells[new[cells].any(axis=1)]] = last
+    held = chosen[cells]
+    return np.where(held.any(axis=1), held.argmax(axis=1), -1)
 
 
-def _on_all_planes(thin: Thinned, start: np.ndarray, end: np.ndarray) -> np.ndarray:
-    """Return which edges lead to a node on all planes of named faces that their start lies on."""
+def _targets(star: np.ndarray, points: np.ndarray, planes: _Planes) -> np.ndarray:
+    """Return the nearest of its neighbours that each candidate can be merged into, shape (n,), -1 for none.
+
+    ``star`` holds the cells round the candidates, each with its candidate first.
+    """
+    count = len(points)
+    code = np.unique(np.repeat(star[:, 0].astype(np.int64), 3) * count + star[:, 1:].ravel())
+    start, end = code // count, code % count
+    allowed = planes.hold(start, end)
+    start, end = start[allowed], end[allowed]
+    order = np.lexsort((np.linalg.norm(points[start] - points[end], axis=1), start))
+    start, end = start[order], end[order]
+    first = np.flatnonzero(np.diff(start, prepend=-1))
+    several = np.diff(first, append=len(start))
+    found = np.full(count, -1)
+    for turn in range(TRIES):
+        left = (several > turn) & (found[start[first]] < 0)
+        target = np.full(count, -1)
+        target[start[first[left]]] = end[first[left] + turn]
+        good = _stays_valid(star[target[star[:, 0]] >= 0], points, target)
+        found[good] = target[good]
+    return found
+
+
+@dataclass(frozen=True, kw_only=True, eq=False)
+class _Planes:
+    """The planes of named faces that nodes lie on; merges leave them as they are.
+
+    ``key`` is node * count + plane, ascending; a node's keys are the ``many`` from ``begin`` on.
+    """
+
+    key: np.ndarray
+    count: int
+    begin: np.ndarray
+    many: np.ndarray
+
+    def hold(self, start: np.ndarray, end: np.ndarray) -> np.ndarray:
+        """Return which ends lie on all planes that their starts lie on (two at most)."""
+        good = self.many[start] <= 2
+        for turn in (0, 1):
+            rows = np.flatnonzero(good & (self.many[start] > turn))
+            wanted = end[rows] * self.count + self.key[self.begin[start[rows]] + turn] % self.count
+            place = np.minimum(np.searchsorted(self.key, wanted), len(self.key) - 1)
+            good[rows] = self.key[place] == wanted
+        return good
+
+
+def _planes_of_nodes(thin: Thinned) -> _Planes:
     triangles, label = _named_faces(thin)
     plane = _planes(thin.points, triangles, label)
     count = int(plane.max()) + 1
     key = np.unique(triangles.ravel().astype(np.int64) * count + np.repeat(plane, 3))
-    node, plane = key // count, key % count
-    begin = np.searchsorted(node, np.arange(len(thin.points) + 1))
-    many = np.diff(begin)
-    good = many[start] <= 2
-    for turn in (0, 1):
-        rows = np.flatnonzero(good & (many[start] > turn))
-        wanted = end[rows].astype(np.int64) * count + plane[begin[start[rows]] + turn]
-        place = np.minimum(np.searchsorted(key, wanted), len(key) - 1)
-        good[rows] = key[place] == wanted
-    return good
+    begin = np.searchsorted(key // count, np.arange(len(thin.points) + 1))
+    return _Planes(key=key, count=count, begin=begin[:-1], many=np.diff(begin))
 
 
 def _named_faces(thin: Thinned) -> tuple[np.ndarray, np.ndarray]:
     """Return the triangles on boundaries and between bodies with a number for what they part."""
-    faces = np.sort(np.concatenate([np.delete(thin.cells, k, axis=1) for k in range(4)]), axis=1)
-    body = np.tile(thin.body, 4)
+    shared = _shared_nodes(thin)
+    faces, body = [], []
+    for column in range(4):
+        others = np.delete(thin.cells, column, axis=1)
+        rows = shared[others].all(axis=1)
+        faces.append(np.sort(others[rows], axis=1))
+        body.append(thin.body[rows])
+    faces, body = np.concatenate(faces), np.concatenate(body)
     order = np.lexsort((body, *faces.T[::-1]))
     faces, body = faces[order], body[order]
     twin = np.flatnonzero((faces[1:] == faces[:-1]).all(axis=1) & (body[1:] != body[:-1]))
     between = body[twin].astype(np.int64) * (thin.body.max() + 1) + body[twin + 1]
     label = np.concatenate([between, -1 - thin.facet_boundary.astype(np.int64)])
     return np.concatenate([faces[twin], np.sort(thin.facets, axis=1)]), label
+
+
+def _shared_nodes(thin: Thinned) -> np.ndarray:
+    """Return which nodes belong to more than one body, shape (n,)."""
+    one = np.zeros(len(thin.points), dtype=thin.body.dtype)
+    one[thin.cells] = thin.body[:, None]
+    shared = np.zeros(len(thin.points), dtype=bool)
+    shared[thin.cells[one[thin.cells] != thin.body[:, None]]] = True
+    return shared
 
 
 def _planes(points: np.ndarray, triangles: np.ndarray, label: np.ndarray) -> np.ndarray:
@@ -176,44 +241,33 @@ def _planes(points: np.ndarray, triangles: np.ndarray, label: np.ndarray) -> np.
     return np.unique(rows, axis=0, return_inverse=True)[1].ravel()
 
 
-def _roughness(cells: np.ndarray, points: np.ndarray, temperature: np.ndarray, target: np.ndarray) -> np.ndarray:
-    """Return by how much the field bends between each node and its target, K, shape (n,): 0 where it is linear.
+def _roughness(star: np.ndarray, points: np.ndarray, temperature: np.ndarray, target: np.ndarray) -> np.ndarray:
+    """Return by how much the field bends between each candidate and its target, K, shape (n,): 0 where it is linear.
 
     The temperature at the node is held against that of its target plus the gradient of each cell at the node times the way;
     the worst cell counts.
     """
-    corner, value = points[cells], temperature[cells]
-    edge, rise = corner[:, 1:] - corner[:, :1], value[:, 1:] - value[:, :1]
-    gradient = np.linalg.solve(edge, rise[:, :, None])[:, :, 0]
-    away, fall = points - points[target], temperature - temperature[target]
+    star = star[target[star[:, 0]] >= 0]
+    node, corner, value = star[:, 0], points[star], temperature[star]
+    a, b, c = np.moveaxis(corner[:, 1:] - corner[:, :1], 1, 0)
+    rise = value[:, 1:] - value[:, :1]
+    across = rise[:, :1] * np.cross(b, c) + rise[:, 1:2] * np.cross(c, a) + rise[:, 2:] * np.cross(a, b)
+    away, fall = points[node] - points[target[node]], temperature[node] - temperature[target[node]]
+    bend = np.abs(fall - np.einsum("nd,nd->n", across, away) / np.einsum("nd,nd->n", np.cross(a, b), c))
     worst = np.zeros(len(points))
-    for column in range(4):
-        node = cells[:, column]
-        np.maximum.at(worst, node, np.abs(fall[node] - np.einsum("nd,nd->n", gradient, away[node])))
+    np.maximum.at(worst, node, bend)
     return worst
 
 
-def _apart(cells: np.ndarray, rank: np.ndarray, count: int) -> np.ndarray:
-    """Return which nodes rank before all nodes that they share a cell with, shape (n,)."""
-    best = np.take_along_axis(cells, rank[cells].argmin(axis=1)[:, None], axis=1)[:, 0]
-    return np.bincount(best, minlength=count) == np.bincount(cells.ravel(), minlength=count)
-
-
-def _stays_valid(cells: np.ndarray, points: np.ndarray, target: np.ndarray) -> np.ndarray:
-    """Return which merges leave positive cells that fill the space they filled before, each by itself, shape (n,)."""
-    count, before = len(points), _volumes(points, cells)
-    bad, was, now = np.zeros(count, dtype=bool), np.zeros(count), np.zeros(count)
-    for column in range(4):
-        node = cells[:, column]
-        rows = np.flatnonzero(target[node] >= 0)
-        node = node[rows]
-        new = cells[rows]
-        gone = (new == target[node][:, None]).any(axis=1)
-        new[:, column] = target[node]
-        after = np.where(gone, 0.0, _volumes(points, new))
-        bad[node[~gone & (after < KEEPS * before[rows])]] = True
-        was += np.bincount(node, before[rows], count)
-        now += np.bincount(node, after, count)
+def _stays_valid(star: np.ndarray, points: np.ndarray, target: np.ndarray) -> np.ndarray:
+    """Return which merges leave positive cells that fill the space they filled before, shape (n,)."""
+    count, node = len(points), star[:, 0]
+    before = _volumes(points, star)
+    gone = (star[:, 1:] == target[node][:, None]).any(axis=1)
+    after = np.where(gone, 0.0, _volumes(points, np.column_stack([target[node], star[:, 1:]])))
+    bad = np.zeros(count, dtype=bool)
+    bad[node[~gone & (after < KEEPS * before)]] = True
+    was, now = np.bincount(node, before, count), np.bincount(node, after, count)
     return (target >= 0) & ~bad & (np.abs(now - was) <= 1e-6 * was)
 
 
