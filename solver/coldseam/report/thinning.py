@@ -1,9 +1,10 @@
 """A mesh with fewer cells for the viewer of a report.
 
-Nodes are merged into a neighbour (half-edge collapse), many at once: every round draws nodes, no two in one cell, and merges
-those round which the temperature is smoothest. All work of a round is on the cells round the nodes drawn. A merge is made only if every cell it changes keeps a part of its
-volume and the volume of all of them together stays what it was, and a node on a face between bodies or on a
-boundary goes only to a node on all of its planes. So no part changes its shape, no name is lost, and what was a tiling stays one.
+Nodes are merged into a neighbour (half-edge collapse), many at once: every round draws nodes, no two in one cell, and
+merges those round which the temperature is smoothest. All work of a round is on the cells round the nodes drawn. A merge
+is made only if every cell it changes keeps a part of its volume and the volume of all of them together stays what it was,
+and a node on a face between bodies or on a boundary goes only to a node on all of its planes. So no part changes its
+shape, no name is lost, and what was a tiling stays one.
 The temperatures kept are those solved; the largest difference at the nodes left out is measured and told.
 """
 
