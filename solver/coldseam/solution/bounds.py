@@ -32,7 +32,7 @@ from coldseam.solution.respond import Response, respond
 from coldseam.volumes.conditions import Conditions
 from coldseam.volumes.facets import FacetSystem, facet_system, sheet_heat
 from coldseam.volumes.operator import cell_pairs
-from coldseam.volumes.section import cell_radius, facet_shares, harmonic_radius_of_cells
+from coldseam.volumes.section import cell_radius, facet_length, facet_shares, harmonic_radius_of_cells
 from coldseam.volumes.sheets import sheet_pairs, sheet_weights
 
 FACET_TOLERANCE = 1e-10
@@ -124,21 +124,34 @@ def bounds_of(mesh: Mesh, given: Conditions, system: FacetSystem, nodes: Respons
 def facet_fields(mesh: Mesh, given: Conditions, bounds: Bounds) -> np.ndarray:
     """Return the facet network's unit fields at the nodes, K per K, (n_nodes, n_terminals [+ 1]); NaN where they tell nothing.
 
-    They are linear in every cell; a node gets the mean of its cells, each by volume times conductivity: across a jump of the
-    conductivity the better conductor's value holds, where the field is smooth (the averaging of Ainsworth 2005, SIAM J.
-    Numer. Anal. 42, 2320; from memory). Cells that the facet network leaves out along an axis have no say.
+    Under a film a node gets the mean of its facets' values, each by area times conductivity: what they exchange heat with.
+    Elsewhere the fields are linear in every cell, and a node gets the mean of its cells, each by volume times conductivity
+    (as Ainsworth 2005, SIAM J. Numer. Anal. 42, 2320, averages; from memory): across a jump of the conductivity the better
+    conductor's value holds, where the field is smooth. Cells that the facet network leaves out along an axis have no say,
+    and nodes on the axis no value.
     """
-    weight = cell_measure(mesh) * given.conductivity
+    volume = cell_measure(mesh) * given.conductivity
     harmonic = harmonic_radius_of_cells(mesh)
     if harmonic is not None:
-        weight = np.where(harmonic > 0.0, weight, 0.0)
-    weight, corners = np.repeat(weight, mesh.dim + 1), mesh.cells.ravel()
-    total = np.bincount(corners, weight, mesh.n_nodes)
+        volume = np.where(harmonic > 0.0, volume, 0.0)
+    films = np.flatnonzero((given.film > 0) & (volume[mesh.facet_cell] > 0.0))
+    volume, corners = np.repeat(volume, mesh.dim + 1), mesh.cells.ravel()
+    area = facet_length(mesh.points, mesh.facets[films]) * given.conductivity[mesh.facet_cell[films]]
+    area, ends = np.repeat(area, mesh.dim), mesh.facets[films].ravel()
+    inside, outside = (np.bincount(nodes, weight, mesh.n_nodes) for nodes, weight in ((corners, volume), (ends, area)))
+    total = np.where(outside > 0.0, outside, inside)
+    if mesh.axisymmetric:
+        total[mesh.points[:, 0] <= 0.0] = 0.0
     fields = np.full((mesh.n_nodes, bounds.response.fields.shape[1]), np.nan)
     for number, field in enumerate((bounds.facets.spread @ bounds.response.fields).T):
         values = field[bounds.facets.cell_facets]
         at_corner = values.sum(axis=1, keepdims=True) - mesh.dim * values  # facet k lies opposite node k
-        summed = np.bincount(corners, weight * at_corner.ravel(), mesh.n_nodes)
+        at_facet = np.repeat(field[bounds.facets.exterior[films]], mesh.dim)
+        summed = np.where(
+            outside > 0.0,
+            np.bincount(ends, area * at_facet, mesh.n_nodes),
+            np.bincount(corners, volume * at_corner.ravel(), mesh.n_nodes),
+        )
         np.divide(summed, total, out=fields[:, number], where=total > 0.0)
     return fields
 
