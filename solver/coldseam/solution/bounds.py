@@ -127,22 +127,19 @@ def facet_fields(mesh: Mesh, given: Conditions, bounds: Bounds) -> np.ndarray:
     Under a film a node gets the mean of its facets' values, each by area times conductivity: what they exchange heat with.
     Elsewhere the fields are linear in every cell, and a node gets the mean of its cells, each by volume times conductivity
     (as Ainsworth 2005, SIAM J. Numer. Anal. 42, 2320, averages; from memory): across a jump of the conductivity the better
-    conductor's value holds, where the field is smooth. Cells that the facet network leaves out along an axis have no say,
-    and nodes on the axis no value.
+    conductor's value holds, where the field is smooth. A section that reaches its axis gets none: cells there are left out
+    of the facet network, and what is beside them is far off.
     """
-    volume = cell_measure(mesh) * given.conductivity
+    fields = np.full((mesh.n_nodes, bounds.response.fields.shape[1]), np.nan)
     harmonic = harmonic_radius_of_cells(mesh)
-    if harmonic is not None:
-        volume = np.where(harmonic > 0.0, volume, 0.0)
-    films = np.flatnonzero((given.film > 0) & (volume[mesh.facet_cell] > 0.0))
-    volume, corners = np.repeat(volume, mesh.dim + 1), mesh.cells.ravel()
+    if harmonic is not None and np.any(harmonic <= 0.0):
+        return fields
+    volume, corners = np.repeat(cell_measure(mesh) * given.conductivity, mesh.dim + 1), mesh.cells.ravel()
+    films = np.flatnonzero(given.film > 0)
     area = facet_length(mesh.points, mesh.facets[films]) * given.conductivity[mesh.facet_cell[films]]
     area, ends = np.repeat(area, mesh.dim), mesh.facets[films].ravel()
     inside, outside = (np.bincount(nodes, weight, mesh.n_nodes) for nodes, weight in ((corners, volume), (ends, area)))
     total = np.where(outside > 0.0, outside, inside)
-    if mesh.axisymmetric:
-        total[mesh.points[:, 0] <= 0.0] = 0.0
-    fields = np.full((mesh.n_nodes, bounds.response.fields.shape[1]), np.nan)
     for number, field in enumerate((bounds.facets.spread @ bounds.response.fields).T):
         values = field[bounds.facets.cell_facets]
         at_corner = values.sum(axis=1, keepdims=True) - mesh.dim * values  # facet k lies opposite node k
