@@ -12,6 +12,9 @@ import pytest
 from published import runs
 from scipy.integrate import quad
 
+from coldseam import study
+from coldseam.case import read
+
 PIR, PUR, XPS = (0.027, 1400 * 32.0), (0.026, 1400 * 35.0), (0.035, 1450 * 35.0)
 """W/(m K) as in the sources of the library, and J/(m³ K) of about the right size: they only widen a bracket."""
 CHECKED = {
@@ -138,3 +141,34 @@ def test_frost_reaches_the_ground_no_sooner_than_in_a_half_space():
     film = 1 / (0.17 + 0.15 / XPS[0])
     soonest = (low * 2.0 / film) ** 2 * (1950 * 1045) / 2.0
     assert 0.9 * soonest < event("ground-under-cold-store", "frost under the middle") < 730 * 86400
+
+
+def test_a_body_that_starts_at_its_melting_point_is_told_to_be_half_melted():
+    """Half way is what the enthalpy law says there, and hardly what anyone means."""
+    text = """
+    title = "ice"
+    [model]
+    dimensions = 2
+    [time]
+    duration = "2 min"
+    start = 0
+    [spaces.room]
+    temperature = 20
+    film = 8
+    [materials.ice]
+    conductivity = 2
+    density = 917
+    specific_heat = 2000
+    melting = { at = 0, latent_heat = 334000 }
+    [[body]]
+    name = "pack"
+    material = "ice"
+    box = { from = [0, 0], to = [20, 10] }
+    [[boundary]]
+    name = "all"
+    on = "rest"
+    space = "room"
+    """
+    cold = text.replace("start = 0", "start = -5")
+    assert any('"pack" starts' in warning for warning in study.run(read.loads(text)).answers.warnings)
+    assert not any('"pack" starts' in warning for warning in study.run(read.loads(cold)).answers.warnings)

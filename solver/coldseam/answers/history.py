@@ -82,7 +82,13 @@ def timed_answers(
         bodies=_bodies(mesh, history),
         limits=verdicts,
         solver=history.solver | {"steps": history.work.steps, "rejected": history.work.rejected},
-        warnings=(*case.warnings, *remarks, *_range_warnings(history), *_event_warnings(history)),
+        warnings=(
+            *case.warnings,
+            *remarks,
+            *_melting_warnings(history),
+            *_range_warnings(history),
+            *_event_warnings(history),
+        ),
         history=history_answer(history, accuracy["over_time"]["share"]) | extra,
     )
 
@@ -186,6 +192,17 @@ def _late_share(history: History, name: str) -> float:
     time, share = history.column("time"), history.column("share", name)
     late = time >= 0.8 * time[-1]
     return float(share[late].mean()) if late.any() else float(share[-1])
+
+
+def _melting_warnings(history: History) -> list[str]:
+    """Say of bodies that start half way: a start at the very melting point says neither solid nor liquid."""
+    parts = [(name, melted["at_start"]) for name, melted in _melted(history).items()]
+    return [
+        f'body "{name}" starts {100 * part:.0f} % melted: its start lies within its melting range; start it below or above to '
+        "begin with it frozen or melted"
+        for name, part in parts
+        if 0.01 < part < 0.99
+    ]
 
 
 def _event_warnings(history: History) -> list[str]:
