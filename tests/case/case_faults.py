@@ -74,7 +74,7 @@ FAULTS = [
     (PANEL, "temperature = -20", "floating = { air_exchange = { with = 'freezer', flow = 1 } }", "floating",
      "spaces.freezer.floating.air_exchange", "needs another space"),
     # not in this version
-    (PANEL, "film = 8", "film = { vertical = 1 }", "vertical", "spaces.freezer.film", "not supported yet"),
+    (PANEL, "film = 8", "film = { vertical = 1 }", "vertical", "spaces.freezer.film", "a table of keys"),
     (PANEL, FOAM, FOAM + "\nair_gap = true", "air_gap", "materials.foam.air_gap", "stands in the [[body]]"),
     # spaces
     (PANEL, "film = 8", "", "[spaces.freezer]", "spaces.freezer", "needs at least one of film, surface"),
