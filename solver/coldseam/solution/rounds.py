@@ -54,6 +54,7 @@ MOST_NODES = {2: 400_000, 3: 300_000}
 CALIBRATION = {2: 0.9, 3: 0.78}
 """Size to ask of the mesher for a wanted mean edge; corrected by what each round's mesh turned out to need."""
 PROOF_TOLERANCE = 1e-5  # of the accuracy: keeps what the proof's own iteration leaves open far below it
+NOTHING = 1e-9  # of the conductance to the outside: a coupling below this is rounding
 EXACT = 1e-6  # a relative gap below this: the field is linear, a finer mesh changes nothing
 
 
@@ -344,7 +345,9 @@ def _gap_indicator(steady: Steady, flows) -> np.ndarray:
     ranked = sorted(flows, key=lambda flow: -flow[0].error / tolerated(steady, flow[0]))
     late = [vector for interval, vector in ranked if interval.error > tolerated(steady, interval)]
     if len(steady.given.terminals) > 2 or steady.response.network.has_load:
-        states += late[:MOST_READINGS]
+        # Where one space is all there is outside, its reading is a uniform field: nothing flows, there is no gap to spread.
+        least = NOTHING * float(steady.response.network.exchange.sum(axis=0).max())
+        states += [reading for reading in late if reading @ steady.bounds.high @ reading > least][:MOST_READINGS]
     total = np.zeros(steady.mesh.n_cells)
     averaging = np.abs(averaging_energy(steady))  # in the cells' proportions, of the size of its estimate
     averaging *= averaging_error(steady) * float(cell_energy(steady).sum()) / max(float(averaging.sum()), 1e-300)
